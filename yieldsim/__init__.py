@@ -1,0 +1,22 @@
+"""yieldsim: which light absorber wins at which site, by how much, how surely."""
+
+from __future__ import annotations
+
+import importlib
+from typing import Any
+
+__version__ = "0.1.0"
+
+_HOME = {"load_study": "yieldsim.api", "run_study": "yieldsim.api"}
+
+__all__ = ["__version__", *sorted(_HOME)]
+
+
+def __getattr__(name: str) -> Any:
+    if name in _HOME:
+        return getattr(importlib.import_module(_HOME[name]), name)
+    raise AttributeError(f"module 'yieldsim' has no attribute {name!r}")
+
+
+def __dir__() -> list[str]:
+    return sorted(__all__)

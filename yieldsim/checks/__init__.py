@@ -1,0 +1,1 @@
+"""The published references behind ``yieldsim verify``."""

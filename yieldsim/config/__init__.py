@@ -1,0 +1,1 @@
+"""The study file: its schema, and YAML to validated plan."""

@@ -1,0 +1,1 @@
+"""Absorbers: from band spectra and temperature to current and power."""

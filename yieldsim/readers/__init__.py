@@ -1,0 +1,1 @@
+"""One file per weather format, each making a Weather."""

@@ -1,0 +1,1 @@
+"""Results to files a person reads: tables, plots and one page."""

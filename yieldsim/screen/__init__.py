@@ -1,0 +1,1 @@
+"""Whether a weather file can be believed: findings, limits and mending."""

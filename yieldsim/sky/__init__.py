@@ -1,0 +1,1 @@
+"""The sun, the column of air and the light on a plane."""

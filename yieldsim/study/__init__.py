@@ -1,0 +1,1 @@
+"""The year's account: hours, sums, comparisons, and where results are kept."""
