@@ -50,9 +50,9 @@ class AtmospherePlan:
 
 @dataclass(frozen=True, slots=True)
 class GroundPlan:
-    """What lies under the modules: ``albedo`` [1] for all wavelengths."""
+    """What lies under the modules: ``albedo`` [1] for all wavelengths; None = the file's own, else 0.2."""
 
-    albedo: float = 0.2
+    albedo: float | None = None
 
 
 @dataclass(frozen=True, slots=True)

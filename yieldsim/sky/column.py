@@ -1,0 +1,322 @@
+"""One column of air for every sky: three layers over a ground, with or without a cloud, band by band."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+from functools import cache
+
+import numpy as np
+from numpy.typing import NDArray
+
+from yieldsim import reference, spectrum
+from yieldsim.sky.layer import Layer, add_layers, delta_eddington
+from yieldsim.sky.sun import ozone_air_mass, relative_air_mass
+
+Array = NDArray[np.float64]
+
+# Shares of each constituent above, in and below the cloud, top first.
+AIR_SHARE = np.array([0.8, 0.1, 0.1])
+WATER_SHARE = np.array([0.42, 0.18, 0.40])
+HAZE_SHARE = np.array([0.2, 0.1, 0.7])
+DIFFUSIVITY = 1.66  # mean slant of diffuse light, Elsasser (1942)
+CLOUD_PATH = 1.2  # how much longer light's way through gas is inside a cloud than across it
+CLOUD_ASYMMETRY = 0.85  # water drops of 10 um in the visible, Hu & Stamnes (1993)
+DROP_RADIUS_NM = 10_000.0
+BIRD_PRESSURE = 101300.0  # Pa, the standard pressure of Bird & Riordan (1984)
+HAZE_ASYMMETRY = 0.65  # Bird & Riordan (1984), rural aerosol
+DARK_SHARE = 0.1  # bands where the reference spectrum is below this share of the extraterrestrial one count as dark
+FACTOR_BOUNDS = (0.5, 2.0)
+REFERENCE_TILT_DEG = 37.0
+_OPEN_SKY = 1e-12  # scattering and absorption below this depth change no digit that is kept
+
+
+@dataclass(frozen=True, slots=True)
+class Air:
+    """What the column holds in each hour; every field (n,) unless said otherwise.
+
+    Parameters
+    ----------
+    cos_zenith : [1], cosine of the apparent zenith of the sun, above 0
+    pressure : [Pa]
+    water_cm : [cm], precipitable water
+    ozone_atm_cm : [atm-cm]
+    aod500 : [1], aerosol optical depth at 500 nm
+    angstrom_exponent : [1]
+    albedo : (n,) or (n, n_band) [1], of the ground
+    """
+
+    cos_zenith: Array
+    pressure: Array
+    water_cm: Array
+    ozone_atm_cm: Array
+    aod500: Array
+    angstrom_exponent: Array
+    albedo: Array
+
+    def only(self, chosen: NDArray[np.bool_] | NDArray[np.intp] | slice) -> Air:
+        """Return the chosen hours."""
+        return Air(**{name: getattr(self, name)[chosen] for name in self.__slots__})
+
+    def with_aod500(self, aod500: Array) -> Air:
+        """Return the same air with another haze."""
+        return Air(**{name: aod500 if name == "aod500" else getattr(self, name) for name in self.__slots__})
+
+
+@dataclass(frozen=True, slots=True)
+class Optics:
+    """Band constants of the column, each (n_band,).
+
+    Parameters
+    ----------
+    extraterrestrial : [W m-2], at the mean earth-sun distance
+    factor : [1], reference band energy over that of the model at the reference conditions
+    gas_scale : [1], factor on gas optical depths, other than 1 in dark bands only
+    rayleigh : [1], optical depth at standard pressure
+    ozone, water, mixed_gas : absorption coefficients of Bird & Riordan (1984)
+    haze_shape : [1], ln(wavelength/500 nm)
+    haze_albedo : [1], single-scattering albedo of haze
+    haze_asymmetry : [1]
+    cloud_albedo : [1], single-scattering albedo of cloud drops
+    """
+
+    extraterrestrial: Array
+    factor: Array
+    gas_scale: Array
+    rayleigh: Array
+    ozone: Array
+    water: Array
+    mixed_gas: Array
+    haze_shape: Array
+    haze_albedo: Array
+    haze_asymmetry: Array
+    cloud_albedo: Array
+
+    def replace(self, **fields: Array) -> Optics:
+        """Return a copy with some band constants changed."""
+        return Optics(**{name: fields.get(name, getattr(self, name)) for name in self.__slots__})
+
+
+@dataclass(frozen=True, slots=True)
+class Transmittance:
+    """Share of the light on a horizontal plane above the air that arrives below, each (n, n_band) [1].
+
+    Parameters
+    ----------
+    beam : unscattered
+    total : on the horizontal ground, with what ground and air throw to and fro
+    """
+
+    beam: Array
+    total: Array
+
+
+def bare_optics() -> Optics:
+    """Return the band constants before the reference spectrum is folded in (factor and gas_scale 1)."""
+    table = reference.table("bird_riordan_1984")
+    wavelength = spectrum.band_wavelengths()
+    solar = reference.table("astm_g173_03")
+    um = wavelength / 1000.0
+    water_k = reference.table("water_segelstein_1981")
+    k = np.exp(np.interp(wavelength, water_k["wavelength_nm"], np.log(water_k["k"])))
+    absorbed = (1 - np.exp(-1.7 * 4 * np.pi * k / wavelength * DROP_RADIUS_NM)) / 2
+    one = np.ones_like(wavelength)
+    return Optics(
+        extraterrestrial=spectrum.integrate_bands(solar["wavelength_nm"], solar["extraterrestrial"]),
+        factor=one,
+        gas_scale=one,
+        rayleigh=1.0 / (um**4 * (115.6406 - 1.3366 / um**2)),
+        ozone=table["ozone"],
+        water=table["water"],
+        mixed_gas=table["mixed_gas"],
+        haze_shape=np.log(wavelength / 500.0),
+        haze_albedo=0.945 * np.exp(-0.095 * np.log(wavelength / 400.0) ** 2),
+        haze_asymmetry=HAZE_ASYMMETRY * one,
+        cloud_albedo=1 - absorbed,
+    )
+
+
+@cache
+def optics() -> Optics:
+    """Return the band constants with the reference spectrum folded in.
+
+    Notes
+    -----
+    At the conditions of ASTM G173-03 the column times ``factor`` gives the standard's band energies. Bands that the
+    standard leaves nearly dark get no factor, which would ruin dry air; there the gas optical depths are scaled
+    instead, which is exact at the reference and fades as the gas does.
+    """
+    bare = bare_optics()
+    wanted = spectrum.reference_bands()
+    dark = wanted < DARK_SHARE * bare.extraterrestrial
+    low, high = np.zeros_like(wanted), np.full_like(wanted, 50.0)
+    for _ in range(60):  # halving: 50 / 2**60 is below rounding
+        middle = (low + high) / 2
+        bright = reference_plane(bare.replace(gas_scale=middle)) > wanted
+        low, high = np.where(bright, middle, low), np.where(bright, high, middle)
+    scaled = bare.replace(gas_scale=np.where(dark, (low + high) / 2, 1.0))
+    factor = np.ones_like(wanted)
+    for _ in range(20):  # the sky's share of circumsolar light makes it slightly nonlinear; each pass gains a digit
+        factor = np.where(dark, 1.0, np.clip(factor * wanted / reference_plane(scaled.replace(factor=factor)), *FACTOR_BOUNDS))
+    return scaled.replace(factor=factor)
+
+
+def reference_air() -> Air:
+    """Return the air of ASTM G173-03: air mass 1.5, 1.4164 cm water, 0.3438 atm-cm ozone, AOD500 0.084; one hour."""
+    cos_zenith = np.array([np.cos(np.radians(48.236))])  # where Kasten & Young (1989) give air mass 1.5
+    return Air(
+        cos_zenith=cos_zenith,
+        pressure=np.array([101325.0]),
+        water_cm=np.array([1.4164]),
+        ozone_atm_cm=np.array([0.3438]),
+        aod500=np.array([0.084]),
+        angstrom_exponent=np.array([1.14]),
+        albedo=np.array([0.2]),
+    )
+
+
+def reference_plane(constants: Optics) -> Array:
+    """Return band energies on the standard's plane (37 deg towards the sun) under its air, (n_band,) [W m-2]."""
+    from yieldsim.sky.plane import isotropic_parts, sky_on_plane
+
+    air = reference_air()
+    passed = transmit(air, np.zeros(1), constants)
+    cos_zenith = float(air.cos_zenith[0])
+    normal = constants.extraterrestrial * passed.beam[0] * constants.factor
+    horizontal = constants.extraterrestrial * passed.total[0] * constants.factor * cos_zenith
+    cos_aoi = float(np.cos(np.arccos(cos_zenith) - np.radians(REFERENCE_TILT_DEG)))
+    sky_view, ground_view = isotropic_parts(REFERENCE_TILT_DEG)
+    circumsolar, isotropic = sky_on_plane(
+        (horizontal - normal * cos_zenith)[None],
+        passed.beam * constants.factor,
+        np.array([cos_aoi / cos_zenith]),
+    )
+    sky = circumsolar[0] + isotropic[0] * sky_view
+    return normal * cos_aoi + sky + horizontal * float(air.albedo[0]) * ground_view
+
+
+def transmit(air: Air, cloud_depth: Array, constants: Optics | None = None) -> Transmittance:
+    """Send sunlight through the column.
+
+    Parameters
+    ----------
+    air : Air of n hours
+    cloud_depth : (n,) array [1], optical depth of the cloud layer in the visible; 0 = no cloud
+    constants : Optics, those with the reference folded in unless given; ``factor`` is *not* applied here
+
+    Returns
+    -------
+    Transmittance
+
+    Notes
+    -----
+    Ozone is a pure absorber on top. Below it three layers hold air, vapour, mixed gas and haze in the shares above,
+    the middle one also the cloud. Slant paths are those of a curved atmosphere: the beam meets each layer under
+    mu = 1/m(z) with the air mass of Kasten & Young (1989). Gas absorption follows the curves of growth of Bird &
+    Riordan (1984) as increments down the column: along the slant of the beam where the beam reaches, along 1.66
+    (1.2 times that inside the cloud) where a cloud has scattered it.
+    """
+    constants = optics() if constants is None else constants
+    air_mass = relative_air_mass(air.cos_zenith)[:, None]
+    mu = 1.0 / air_mass
+    pressure_ratio = air.pressure[:, None] / BIRD_PRESSURE
+    cloud = np.asarray(cloud_depth, dtype=np.float64)[:, None]
+    haze = air.aod500[:, None] * np.exp(-air.angstrom_exponent[:, None] * constants.haze_shape)
+    rayleigh = pressure_ratio * constants.rayleigh
+    slants = _slants(air_mass, cloud)
+    gas = _gas_depths(air.water_cm[:, None], pressure_ratio, slants, constants)
+
+    layers: list[Layer] = []
+    depth = np.zeros_like(haze)
+    for i, gas_depth in enumerate(gas):
+        cloud_part = cloud if i == 1 else None
+        layers.append(_layer(rayleigh * AIR_SHARE[i], haze * HAZE_SHARE[i], gas_depth, cloud_part, mu, constants))
+        depth = depth + rayleigh * AIR_SHARE[i] + haze * HAZE_SHARE[i] + gas_depth
+    ozone = np.exp(
+        -constants.gas_scale * constants.ozone * air.ozone_atm_cm[:, None] * ozone_air_mass(air.cos_zenith)[:, None]
+    )
+    albedo = air.albedo[:, None] if air.albedo.ndim == 1 else air.albedo
+    total = add_layers(layers, albedo) * ozone
+    beam = np.exp(-(depth + cloud) * air_mass) * ozone
+    return Transmittance(beam, np.maximum(total, beam))
+
+
+def beam_transmittance(air: Air, constants: Optics | None = None) -> tuple[Array, Array]:
+    """Return what the cloudless column does to the beam, haze apart.
+
+    Returns
+    -------
+    without_haze : (n, n_band) array [1], transmittance of the beam through all but the haze
+    haze_slope : (n, n_band) array [1], optical depth of haze along the beam per unit of AOD at 500 nm
+    """
+    constants = optics() if constants is None else constants
+    air_mass = relative_air_mass(air.cos_zenith)[:, None]
+    pressure_ratio = air.pressure[:, None] / BIRD_PRESSURE
+    depth = water_depth(constants.water, air.water_cm[:, None] * air_mass)
+    depth += mixed_gas_depth(constants.mixed_gas, pressure_ratio * air_mass)
+    depth += constants.ozone * air.ozone_atm_cm[:, None] * ozone_air_mass(air.cos_zenith)[:, None]
+    depth *= constants.gas_scale
+    depth += pressure_ratio * constants.rayleigh * air_mass
+    slope = np.exp(-air.angstrom_exponent[:, None] * constants.haze_shape) * air_mass
+    return np.exp(-depth), slope
+
+
+def water_depth(coefficient: Array, path_cm: Array) -> Array:
+    """Return the optical depth of vapour along a slant path [cm] (Bird & Riordan 1984, eq. 2-8)."""
+    product = coefficient * path_cm
+    return np.asarray(0.2385 * product / (1 + 20.07 * product) ** 0.45)
+
+
+def mixed_gas_depth(coefficient: Array, air_mass: Array) -> Array:
+    """Return the optical depth of uniformly mixed gas along an air mass (Bird & Riordan 1984, eq. 2-11)."""
+    product = coefficient * air_mass
+    return np.asarray(1.41 * product / (1 + 118.3 * product) ** 0.45)
+
+
+def _slants(air_mass: Array, cloud: Array) -> tuple[Array, Array, Array]:
+    """Return the slant of light's way through gas above, in and below the cloud, each (n, 1) [1].
+
+    Where the cloud is thin, light still goes the beam's way: the two slants are mixed by the share of light that the
+    cloud has not turned aside, exp(-(1 - g^2) tau m), the delta-scaled beam.
+    """
+    straight = np.exp(-(1 - CLOUD_ASYMMETRY**2) * cloud * air_mass)
+    below = straight * air_mass + (1 - straight) * DIFFUSIVITY
+    inside = straight * air_mass + (1 - straight) * DIFFUSIVITY * CLOUD_PATH
+    return air_mass, inside, below
+
+
+def _gas_depths(
+    water_cm: Array, pressure_ratio: Array, slants: tuple[Array, Array, Array], constants: Optics
+) -> list[Array]:
+    """Return the vertical optical depth of absorbing gas in each layer, three (n, n_band) arrays."""
+    wet, mixed = constants.water > 0, constants.mixed_gas > 0
+    water_path, air_path = np.zeros_like(water_cm), np.zeros_like(pressure_ratio)
+    n = np.broadcast_shapes(water_cm.shape, pressure_ratio.shape, slants[1].shape)[0]
+    before_water, before_mixed = np.zeros((n, int(wet.sum()))), np.zeros((n, int(mixed.sum())))
+    depths = []
+    for i, slant in enumerate(slants):
+        water_path = water_path + water_cm * WATER_SHARE[i] * slant
+        air_path = air_path + pressure_ratio * AIR_SHARE[i] * slant
+        after_water = water_depth(constants.water[wet], water_path)
+        after_mixed = mixed_gas_depth(constants.mixed_gas[mixed], air_path)
+        depth = np.zeros((n, len(constants.water)))
+        depth[:, wet] = (after_water - before_water) * (constants.gas_scale[wet] / slant)
+        depth[:, mixed] += (after_mixed - before_mixed) * (constants.gas_scale[mixed] / slant)
+        depths.append(depth)
+        before_water, before_mixed = after_water, after_mixed
+    return depths
+
+
+def _layer(rayleigh: Array, haze: Array, gas: Array, cloud: Array | None, mu: Array, constants: Optics) -> Layer:
+    """Mix the constituents of one layer and solve it."""
+    haze_scattered = haze * constants.haze_albedo
+    depth = rayleigh + haze + gas + _OPEN_SKY
+    scattered = rayleigh + haze_scattered + _OPEN_SKY
+    forward = haze_scattered * constants.haze_asymmetry
+    peak = forward * constants.haze_asymmetry
+    if cloud is not None:
+        cloud_scattered = cloud * constants.cloud_albedo
+        depth = depth + cloud
+        scattered = scattered + cloud_scattered
+        forward = forward + cloud_scattered * CLOUD_ASYMMETRY
+        peak = peak + cloud_scattered * CLOUD_ASYMMETRY**2
+    return delta_eddington(depth, scattered / depth, forward / scattered, peak / scattered, mu)

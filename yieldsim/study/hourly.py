@@ -1,0 +1,304 @@
+"""One site's year, hour by hour: air, band spectra, light on each plane, current, temperature and power."""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+from dataclasses import dataclass
+
+import numpy as np
+from numpy.typing import NDArray
+
+from yieldsim.constants import STANDARD_CELL_TEMPERATURE
+from yieldsim.device.stack import Absorber, Bank
+from yieldsim.device.thermal import faiman
+from yieldsim.sky import atmosphere, closing, column, plane, sun
+from yieldsim.study.plan import AtmospherePlan, Monthly, MountingPlan, SitePlan
+from yieldsim.units import kelvin
+from yieldsim.weather import Weather
+
+Array = NDArray[np.float64]
+
+DEFAULT_ALBEDO = 0.2  # a mixed ground of grass and soil (common practice, no source)
+DEFAULT_WATER_CM = 1.4164  # the water of ASTM G173-03, where a file says nothing of humidity
+
+
+@dataclass(frozen=True, slots=True)
+class SiteSky:
+    """The light of a site's lit intervals, ready to be put on any plane.
+
+    Parameters
+    ----------
+    weather : Weather of all intervals, position overrides applied
+    lit : (n,) int array, indices of the lit intervals in ``weather``
+    month : (n,) int array, 0 to 11, month of each lit interval in local standard time
+    sun : SunCourse of the lit intervals
+    air : Air of the lit intervals, haze as given or expected
+    sky : ClosedSky of the lit intervals, averages over the whole interval
+    sources : (input, where it came from) for each atmospheric input
+    """
+
+    weather: Weather
+    lit: NDArray[np.intp]
+    month: NDArray[np.intp]
+    sun: sun.SunCourse
+    air: column.Air
+    sky: closing.ClosedSky
+    sources: tuple[tuple[str, str], ...]
+
+
+@dataclass(frozen=True, slots=True)
+class PlaneYear:
+    """What a plane received and what each absorber made of it in every lit interval.
+
+    Parameters
+    ----------
+    mounting : MountingPlan
+    parts : PlaneParts of the front
+    plane_of_array : (n,) array [W m-2], H
+    entered : (n_absorber, n) array [W m-2], S
+    current : (n_junction, n) array [A m-2]
+    cell_temperature : (n_absorber, n) array [K]
+    power_cool : (n_junction, n) array [W m-2], each junction at its own power point, 25 degC
+    power_warm : (n_junction, n) array [W m-2], the same at the cell temperature
+    power : (n_absorber, n) array [W m-2], at the terminals
+    """
+
+    mounting: MountingPlan
+    parts: plane.PlaneParts
+    plane_of_array: Array
+    entered: Array
+    current: Array
+    cell_temperature: Array
+    power_cool: Array
+    power_warm: Array
+    power: Array
+
+
+def placed(site: SitePlan, weather: Weather) -> Weather:
+    """Return the weather with the study's position in place of the file's where the study gives one."""
+    given = {
+        name: value
+        for name in ("latitude_deg", "longitude_deg", "elevation_m")
+        if (value := getattr(site, name)) is not None
+    }
+    fields = {name: given.get(name, getattr(weather, name)) for name in Weather.__slots__}
+    return Weather(**fields)
+
+
+def local_month_and_day(weather: Weather) -> tuple[NDArray[np.intp], NDArray[np.intp]]:
+    """Return month (0-11) and day of the year (1-366) of each interval's middle in local standard time, each (n,)."""
+    local = weather.time + weather.interval_s // 2 + round(weather.utc_offset_h * 3600)
+    days = local.astype("datetime64[s]").astype("datetime64[D]")
+    month = days.astype("datetime64[M]").astype(np.intp) % 12
+    day = (days - days.astype("datetime64[Y]")).astype(np.intp) + 1
+    return month, day
+
+
+def site_sky(site: SitePlan, weather: Weather) -> SiteSky:
+    """Return the band spectra of a site's lit intervals.
+
+    Parameters
+    ----------
+    site : SitePlan
+    weather : Weather, screened: no NaN in its required columns
+    """
+    weather = placed(site, weather)
+    course = sun.course(
+        weather.time,
+        weather.interval_s,
+        weather.latitude_deg,
+        weather.longitude_deg,
+        weather.elevation_m,
+        atmosphere.pressure_at(weather.elevation_m) / 100,
+    )
+    lit = np.flatnonzero(course.lit > 0)
+    month, day = local_month_and_day(weather)
+    course = course.only(course.lit > 0)
+    air, sources = _air(site, weather, lit, month[lit], day[lit], course.cos_zenith)
+    # Light is closed over the lit part of an interval, then spread over the whole of it.
+    dni, dhi = weather["dni"][lit], weather["dhi"][lit]
+    consecutive = np.diff(weather.time[lit], prepend=weather.time[0] - 1) == weather.interval_s
+    closed = closing.close(
+        air,
+        course.earth_sun,
+        dni / course.lit,
+        dhi / course.lit,
+        consecutive,
+        haze_hourly=site.atmosphere.haze == "hourly",
+    )
+    share = course.lit[:, None]
+    closed = closing.ClosedSky(
+        closed.beam * share,
+        closed.diffuse * share,
+        closed.aod500,
+        closed.cloud_depth,
+        closed.open_share,
+        closed.clear,
+    )
+    return SiteSky(weather, lit, month[lit], course, air, closed, sources)
+
+
+def _air(
+    site: SitePlan,
+    weather: Weather,
+    lit: NDArray[np.intp],
+    month: NDArray[np.intp],
+    day: NDArray[np.intp],
+    cos_zenith: Array,
+) -> tuple[column.Air, tuple[tuple[str, str], ...]]:
+    """Gather the air from the study, then the file, then what can be derived; say which it was."""
+    plan = site.atmosphere
+    exponent, exponent_source = _given_or(
+        plan.angstrom_exponent, month, np.full(12, atmosphere.DEFAULT_ANGSTROM_EXPONENT)[month], "Bird & Riordan 1984"
+    )
+    water, water_source = _water(plan, weather, lit, month)
+    ozone_default = atmosphere.ozone_van_heuklon(weather.latitude_deg, weather.longitude_deg, day)
+    ozone, ozone_source = _given_or(plan.ozone_atm_cm, month, ozone_default, "van Heuklon 1979")
+    haze, haze_source = _haze(plan, weather, lit, month, water, exponent)
+    from_height = np.full(len(lit), atmosphere.pressure_at(weather.elevation_m))
+    pressure, pressure_source = _column_or(weather, "pressure", lit, from_height, "standard atmosphere at the elevation")
+    if site.ground.albedo is not None:
+        albedo, albedo_source = np.full(len(lit), site.ground.albedo), "study"
+    else:
+        albedo, albedo_source = _column_or(
+            weather, "albedo", lit, np.full(len(lit), DEFAULT_ALBEDO), f"{DEFAULT_ALBEDO:g}, common practice"
+        )
+    air = column.Air(cos_zenith, pressure, water, ozone, haze, exponent, albedo)
+    sources = (
+        ("aod500", haze_source + (", then each clear hour's own" if plan.haze == "hourly" else "")),
+        ("angstrom_exponent", exponent_source),
+        ("precipitable_water", water_source),
+        ("ozone", ozone_source),
+        ("pressure", pressure_source),
+        ("albedo", albedo_source),
+    )
+    return air, sources
+
+
+def _given_or(given: Monthly | None, month: NDArray[np.intp], default: Array, source: str) -> tuple[Array, str]:
+    """Return the study's monthly values by hour, or the default."""
+    return (default, source) if given is None else (np.asarray(given)[month], "study")
+
+
+def _column_or(weather: Weather, name: str, lit: NDArray[np.intp], default: Array, source: str) -> tuple[Array, str]:
+    """Return a file's column where it is filled, the default elsewhere, and where both came from."""
+    if name not in weather:
+        return default, source
+    values = weather[name][lit]
+    filled = np.isfinite(values)
+    if not filled.any():
+        return default, source
+    if filled.all():
+        return values, f"file ({name})"
+    return np.where(filled, values, default), f"file ({name}) in {filled.mean():.1%} of lit hours, else {source}"
+
+
+def _water(
+    plan: AtmospherePlan, weather: Weather, lit: NDArray[np.intp], month: NDArray[np.intp]
+) -> tuple[Array, str]:
+    if plan.water_cm is not None:
+        return np.asarray(plan.water_cm)[month], "study"
+    default, source = np.full(len(lit), DEFAULT_WATER_CM), "that of ASTM G173-03, assumed"
+    humidity = _humidity(weather)
+    if humidity is not None:
+        derived = atmosphere.water_from_humidity(weather["temp_air"][lit], humidity[lit])
+        filled = np.isfinite(derived)
+        default = np.where(filled, derived, default)
+        source = "temperature and humidity (Gueymard 1994)"
+        if not filled.all():
+            source += f" in {filled.mean():.1%} of lit hours, else assumed"
+    return _column_or(weather, "precipitable_water", lit, default, source)
+
+
+def _humidity(weather: Weather) -> Array | None:
+    """Return relative humidity [%], from the dew point (Magnus, WMO-No. 8) where the file has no humidity."""
+    if "relative_humidity" in weather:
+        return weather["relative_humidity"]
+    if "temp_dew" not in weather:
+        return None
+    dew, air = weather["temp_dew"], weather["temp_air"]
+    return np.asarray(100 * np.exp(17.62 * dew / (243.12 + dew) - 17.62 * air / (243.12 + air)))
+
+
+def _haze(
+    plan: AtmospherePlan,
+    weather: Weather,
+    lit: NDArray[np.intp],
+    month: NDArray[np.intp],
+    water: Array,
+    exponent: Array,
+) -> tuple[Array, str]:
+    if plan.aod500 is not None:
+        return np.asarray(plan.aod500)[month], "study"
+    turbidity = atmosphere.turbidity_climatology(weather.latitude_deg, weather.longitude_deg)
+    count = np.maximum(np.bincount(month, minlength=12), 1)
+    monthly_water = np.bincount(month, water, minlength=12) / count
+    monthly_exponent = np.bincount(month, exponent, minlength=12) / count
+    monthly = atmosphere.aod500_from_turbidity(turbidity, monthly_water, monthly_exponent)
+    default, source = monthly[month], "Linke turbidity climatology (Remund et al. 2003)"
+    if "aod_broadband" in weather:
+        broadband = atmosphere.aod500_from_broadband(weather["aod_broadband"][lit], exponent)
+        filled = np.isfinite(broadband)
+        if filled.any():
+            default = np.where(filled, np.clip(broadband, *atmosphere.AOD_RANGE), default)
+            part = "" if filled.all() else f" in {filled.mean():.1%} of lit hours, else {source}"
+            source = f"file (aod_broadband, Bird & Hulstrom 1981){part}"
+    haze, source = _column_or(weather, "aod500", lit, default, source)
+    return np.clip(haze, *atmosphere.AOD_RANGE), source
+
+
+def plane_parts(site: SiteSky, mounting: MountingPlan) -> plane.PlaneParts:
+    """Return the band spectra on the front of a mounting, hour means."""
+    extraterrestrial = column.optics().extraterrestrial * (site.sun.earth_sun * site.sun.lit)[:, None]
+    return plane.on_plane(
+        site.sky.beam,
+        site.sky.diffuse,
+        extraterrestrial,
+        site.sun,
+        site.air.albedo,
+        mounting.tilt_deg,
+        mounting.azimuth_deg,
+    )
+
+
+def entered_light(site: SiteSky, mounting: MountingPlan, parts: plane.PlaneParts, modifier: float | None) -> Array:
+    """Return the band spectra that pass the front, (n, n_band) [W m-2]; modifier = Martin-Ruiz a_r, None = all passes."""
+    if modifier is None:
+        return parts.beam + parts.sky + parts.ground
+    beam_share = plane.entered_beam(site.sun, mounting.tilt_deg, mounting.azimuth_deg, modifier)
+    sky_share, ground_share = plane.incidence_modifier_diffuse(mounting.tilt_deg, modifier)
+    return parts.beam * beam_share[:, None] + parts.sky * sky_share + parts.ground * ground_share
+
+
+def plane_year(site: SiteSky, mounting: MountingPlan, absorbers: Sequence[Absorber]) -> PlaneYear:
+    """Return what absorbers make of a mounting's light, interval by interval.
+
+    Absorbers whose fronts are alike share one spectrum and one matrix product.
+    """
+    parts = plane_parts(site, mounting)
+    plane_of_array = (parts.beam + parts.sky + parts.ground).sum(axis=1)
+    n, n_absorber = len(plane_of_array), len(absorbers)
+    temp_air = kelvin(site.weather["temp_air"][site.lit])
+    wind = site.weather["wind_speed"][site.lit]
+    heat_losses = sorted({absorber.heat_loss for absorber in absorbers})
+    warmth = {loss: faiman(plane_of_array, temp_air, wind, *loss) for loss in heat_losses}
+    temperature = np.array([warmth[absorber.heat_loss] for absorber in absorbers])
+
+    counts = [len(absorber.junctions) for absorber in absorbers]
+    offsets = np.concatenate([[0], np.cumsum(counts)])
+    entered = np.empty((n_absorber, n))
+    current, cool, warm = (np.empty((offsets[-1], n)) for _ in range(3))
+    power = np.empty((n_absorber, n))
+    fronts = sorted({absorber.incidence_modifier for absorber in absorbers}, key=lambda a_r: -1.0 if a_r is None else a_r)
+    standard = np.full(n, STANDARD_CELL_TEMPERATURE)
+    for front in fronts:
+        members = [i for i, absorber in enumerate(absorbers) if absorber.incidence_modifier == front]
+        junctions = np.concatenate([np.arange(offsets[i], offsets[i + 1]) for i in members])
+        bank = Bank.of([absorbers[i] for i in members])
+        light = entered_light(site, mounting, parts, front)
+        entered[members] = light.sum(axis=1)
+        current[junctions] = bank.currents(light, temperature[members])
+        cool[junctions] = bank.power(current[junctions], standard)
+        warm[junctions] = bank.power(current[junctions], temperature[members])
+        power[members] = bank.terminal_power(current[junctions], temperature[members])
+    return PlaneYear(mounting, parts, plane_of_array, entered, current, temperature, cool, warm, power)

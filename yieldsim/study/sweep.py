@@ -1,0 +1,71 @@
+"""Energy over gap: a year's light met by a row of gaps of one quality, beside the standard spectrum."""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+
+import numpy as np
+
+from yieldsim.constants import STANDARD_IRRADIANCE
+from yieldsim.device.stack import Absorber
+from yieldsim.study import annual
+from yieldsim.study.annual import Ratings
+from yieldsim.study.compare import Row
+from yieldsim.study.hourly import SiteSky, plane_year
+from yieldsim.study.plan import GapSweepPlan, LossesPlan, MountingPlan
+
+STANDARD_SITE = "standard spectrum"
+STANDARD_LIGHT_KWH_M2 = 1000.0  # insolation of the rows for the standard spectrum: their energy is per 1000 kWh/m2
+
+
+def sweep_rows(
+    site: str, sky: SiteSky, mounting: MountingPlan, hours: annual.Array, plan: GapSweepPlan, losses: LossesPlan
+) -> list[Row]:
+    """Return one row per quality and gap: the year's energy [kWh m-2] and the efficiency at standard conditions [1]."""
+    rows: list[Row] = []
+    for quality, absorbers in plan.absorbers.items():
+        total = annual.sums(
+            plane_year(sky, mounting, absorbers), sky.month, hours, sky.weather.interval_s, losses
+        ).year()
+        light = float(total.light[0])
+        efficiency = _efficiency(absorbers)
+        area = np.array([absorber.area_fraction for absorber in absorbers])
+        energy = total.delivered[:, 0] * area / 1000.0
+        rows.extend(
+            {
+                "site": site,
+                "mounting": mounting.name,
+                "quality": quality,
+                "gap_ev": gap,
+                "poa_kwh_m2": light / 1000.0,
+                "energy_kwh_m2": float(energy[i]),
+                "standard_efficiency": float(efficiency[i]),
+            }
+            for i, gap in enumerate(plan.gaps_ev)
+        )
+    return rows
+
+
+def standard_rows(plan: GapSweepPlan) -> list[Row]:
+    """Return the same rows for 1000 kWh/m2 of the standard spectrum on cells at 25 degC, nothing lost."""
+    rows: list[Row] = []
+    for quality, absorbers in plan.absorbers.items():
+        efficiency = _efficiency(absorbers)
+        rows.extend(
+            {
+                "site": STANDARD_SITE,
+                "mounting": "",
+                "quality": quality,
+                "gap_ev": gap,
+                "poa_kwh_m2": STANDARD_LIGHT_KWH_M2,
+                "energy_kwh_m2": float(efficiency[i]) * STANDARD_LIGHT_KWH_M2,
+                "standard_efficiency": float(efficiency[i]),
+            }
+            for i, gap in enumerate(plan.gaps_ev)
+        )
+    return rows
+
+
+def _efficiency(absorbers: Sequence[Absorber]) -> annual.Array:
+    area = np.array([absorber.area_fraction for absorber in absorbers])
+    return np.asarray(Ratings.of(absorbers).terminals * area / STANDARD_IRRADIANCE)
