@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import re
 from collections.abc import Mapping
 from dataclasses import dataclass, field
 from enum import IntFlag
@@ -12,7 +13,7 @@ from numpy.typing import NDArray
 
 from yieldsim.errors import InputError, Problem
 
-#: Columns a Weather may hold, by pvlib's names, with unit and physically possible range (outside it a value is refused).
+#: Columns a Weather may hold, by pvlib's names, with unit and possible range (outside it a value is refused).
 COLUMNS: Mapping[str, tuple[str, float, float]] = MappingProxyType(
     {
         "ghi": ("W m-2", -50.0, 2500.0),
@@ -66,6 +67,52 @@ class Finding:
 
 
 @dataclass(frozen=True, slots=True)
+class Stamp:
+    """Where time labels sit, as a study says it with ``timestamps:``.
+
+    Parameters
+    ----------
+    label : ``start``, ``middle`` or ``end`` of the interval; None = as the format documents
+    utc_offset_s : int [s], the labels' clock less UTC; None = as the file says
+    shift_s : int [s], to be added to every label
+    """
+
+    label: str | None = None
+    utc_offset_s: int | None = None
+    shift_s: int = 0
+
+
+LABELS = ("start", "middle", "end")
+STAMP_FORM = "start, middle or end, then optionally UTC, UTC+1 or UTC-03:30, then optionally a shift such as +10 min"
+_STAMP = re.compile(
+    r"(?P<label>start|middle|end)?\s*(?P<utc>UTC\s*(?:(?P<sign>[+-])(?P<hours>\d{1,2})(?::(?P<minutes>[0-5]\d))?)?)?"
+    r"\s*(?:(?P<shift>[+-]\s*\d{1,4})\s*min)?",
+    re.IGNORECASE,
+)
+
+
+def parse_stamp(text: str) -> Stamp:
+    """Return what a ``timestamps:`` text says: ``end``, ``start UTC+1``, ``middle UTC-03:30 +10 min``.
+
+    Raises
+    ------
+    ValueError
+        If the text is not of that form or goes beyond UTC-14 to UTC+14 or a day of shift.
+    """
+    match = _STAMP.fullmatch(text.strip())
+    if not match or not text.strip():
+        raise ValueError(f"{text!r} is not: {STAMP_FORM}")
+    offset = None
+    if match["utc"]:
+        size = 3600 * int(match["hours"] or 0) + 60 * int(match["minutes"] or 0)
+        offset = -size if match["sign"] == "-" else size
+    shift = 60 * int((match["shift"] or "0").replace(" ", ""))
+    if abs(offset or 0) > 14 * 3600 or abs(shift) > 86400:
+        raise ValueError(f"{text!r} is beyond UTC-14 to UTC+14 or a shift of 1440 min")
+    return Stamp(match["label"].lower() if match["label"] else None, offset, shift)
+
+
+@dataclass(frozen=True, slots=True)
 class Weather:
     """Weather of one place over one stretch of time.
 
@@ -83,6 +130,9 @@ class Weather:
     row : (n,) int64 array, line of the file each interval came from; 0 where there is none
     notes : what the reader wants people to know (``invented``)
     findings : what the reader already found and did
+    name : str, of the place as the file gives it; may be empty
+    typical : bool, months of several years set together; ``time`` then runs through one year without a leap day
+    stated : bool, the study said where the time labels sit, so that no check may move them
 
     Raises
     ------
@@ -103,19 +153,26 @@ class Weather:
     row: NDArray[np.int64]
     notes: tuple[str, ...] = ()
     findings: tuple[Finding, ...] = field(default=())
+    name: str = ""
+    typical: bool = False
+    stated: bool = False
 
     def __post_init__(self) -> None:
+        """Refuse what cannot be used."""
         problems = [Problem(self.source, 0, where, found, allowed) for where, found, allowed in _faults(self)]
         if problems:
             raise InputError(problems)
 
     def __len__(self) -> int:
+        """Return the number of intervals."""
         return len(self.time)
 
     def __getitem__(self, name: str) -> NDArray[np.float64]:
+        """Return a column by name."""
         return self.columns[name]
 
     def __contains__(self, name: object) -> bool:
+        """Return whether there is a column of that name."""
         return name in self.columns
 
 
@@ -139,10 +196,11 @@ def _faults(weather: Weather) -> list[tuple[str, str, str]]:
         faults.append(("time", f"time goes back or repeats at row {weather.row[at]}", "rising time"))
     if not 60 <= weather.interval_s <= 3600:
         faults.append(("interval", f"{weather.interval_s} s", "60 to 3600 s"))
-    for name, values in (("flags", weather.flags), ("row", weather.row), *weather.columns.items()):
-        if values.shape != (n,):
-            faults.append((name, f"shape {values.shape}", f"({n},)"))
-        elif name in COLUMNS:
+    shapes = {"flags": weather.flags.shape, "row": weather.row.shape}
+    shapes |= {name: values.shape for name, values in weather.columns.items()}
+    faults.extend((name, f"shape {shape}", f"({n},)") for name, shape in shapes.items() if shape != (n,))
+    for name, values in weather.columns.items():
+        if name in COLUMNS and values.shape == (n,):
             faults.extend(_column_faults(weather, name, values))
     faults.extend((name, "unknown column", ", ".join(COLUMNS)) for name in weather.columns if name not in COLUMNS)
     faults.extend((name, "column missing", "a column of that name") for name in REQUIRED if name not in weather.columns)
