@@ -9,7 +9,8 @@ import numpy as np
 from numpy.typing import NDArray
 
 from yieldsim import reference, spectrum
-from yieldsim.sky.layer import Layer, add_layers, delta_eddington
+from yieldsim.sky import kernel
+from yieldsim.sky.layer import MOMENTS, Layer, add_layers, four_stream
 from yieldsim.sky.sun import ozone_air_mass, relative_air_mass
 
 Array = NDArray[np.float64]
@@ -23,6 +24,7 @@ CLOUD_PATH = 1.2  # how much longer light's way through gas is inside a cloud th
 CLOUD_ASYMMETRY = 0.85  # water drops of 10 um in the visible, Hu & Stamnes (1993)
 DROP_RADIUS_NM = 10_000.0
 BIRD_PRESSURE = 101300.0  # Pa, the standard pressure of Bird & Riordan (1984)
+RAYLEIGH_MOMENT = 0.1  # second Legendre moment of Rayleigh's phase function
 HAZE_ASYMMETRY = 0.65  # Bird & Riordan (1984), rural aerosol
 DARK_SHARE = 0.1  # bands where the reference spectrum is below this share of the extraterrestrial one count as dark
 FACTOR_BOUNDS = (0.5, 2.0)
@@ -216,6 +218,33 @@ def transmit(air: Air, cloud_depth: Array, constants: Optics | None = None) -> T
     (1.2 times that inside the cloud) where a cloud has scattered it.
     """
     constants = optics() if constants is None else constants
+    air_mass = relative_air_mass(air.cos_zenith)
+    cloud = np.asarray(cloud_depth, dtype=np.float64)
+    fields = (air_mass, ozone_air_mass(air.cos_zenith), air.pressure / BIRD_PRESSURE, air.water_cm, air.ozone_atm_cm)
+    hours = np.stack([*fields, air.aod500, air.angstrom_exponent], axis=1)
+    slants = np.concatenate([*_slants(air_mass[:, None], cloud[:, None]), cloud[:, None]], axis=1)
+    albedo = air.albedo[:, None] if air.albedo.ndim == 1 else air.albedo
+    n_band = len(constants.factor)
+    beam, total = np.empty((len(cloud), n_band)), np.empty((len(cloud), n_band))
+    bands = np.zeros((len(kernel.BAND_ROWS), kernel.STRIDE))
+    for row, name in zip(bands, kernel.BAND_ROWS, strict=True):
+        row[:n_band] = getattr(constants, name)
+    shares = np.stack([AIR_SHARE, WATER_SHARE, HAZE_SHARE], axis=1)
+    # fmt: off
+    kernel.transmit(
+        hours, np.ascontiguousarray(albedo), slants, shares, bands.ravel(), n_band,
+        CLOUD_ASYMMETRY, RAYLEIGH_MOMENT, _OPEN_SKY, beam, total,
+    )
+    # fmt: on
+    return Transmittance(beam, total)
+
+
+def transmit_plain(air: Air, cloud_depth: Array, constants: Optics | None = None) -> Transmittance:
+    """Send sunlight through the column in plain numpy: the form `transmit` is held to.
+
+    Parameters and result as for `transmit`.
+    """
+    constants = optics() if constants is None else constants
     air_mass = relative_air_mass(air.cos_zenith)[:, None]
     mu = 1.0 / air_mass
     pressure_ratio = air.pressure[:, None] / BIRD_PRESSURE
@@ -311,12 +340,14 @@ def _layer(rayleigh: Array, haze: Array, gas: Array, cloud: Array | None, mu: Ar
     haze_scattered = haze * constants.haze_albedo
     depth = rayleigh + haze + gas + _OPEN_SKY
     scattered = rayleigh + haze_scattered + _OPEN_SKY
-    forward = haze_scattered * constants.haze_asymmetry
-    peak = forward * constants.haze_asymmetry
+    turned = haze_scattered
+    moments = [scattered]
+    for order in range(1, MOMENTS):
+        turned = turned * constants.haze_asymmetry
+        moments.append(turned + (rayleigh * RAYLEIGH_MOMENT if order == 2 else 0.0))
     if cloud is not None:
         cloud_scattered = cloud * constants.cloud_albedo
         depth = depth + cloud
-        scattered = scattered + cloud_scattered
-        forward = forward + cloud_scattered * CLOUD_ASYMMETRY
-        peak = peak + cloud_scattered * CLOUD_ASYMMETRY**2
-    return delta_eddington(depth, scattered / depth, forward / scattered, peak / scattered, mu)
+        moments = [moment + cloud_scattered * CLOUD_ASYMMETRY**order for order, moment in enumerate(moments)]
+        scattered = moments[0]
+    return four_stream(depth, scattered / depth, [moment / scattered for moment in moments], mu)
