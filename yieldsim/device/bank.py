@@ -1,0 +1,225 @@
+"""All junctions of a study at once: currents and powers for every hour without a loop over hours or bands."""
+
+from __future__ import annotations
+
+from collections.abc import Iterable
+from dataclasses import dataclass
+
+import numpy as np
+from numpy.typing import NDArray
+
+from yieldsim.constants import STANDARD_CELL_TEMPERATURE, STANDARD_IRRADIANCE
+from yieldsim.device import diode
+from yieldsim.device.junction import Junction, diode_at, saturation_current
+from yieldsim.device.response import folded
+from yieldsim.device.stack import Absorber, responses_at
+from yieldsim.spectrum import reference_bands
+
+Array = NDArray[np.float64]
+
+#: Cell temperatures [K] at which responses are folded; between them currents are interpolated linearly.
+FOLD_TEMPERATURES = STANDARD_CELL_TEMPERATURE + 20.0 * np.arange(-4, 5)
+#: Inverse temperatures [K-1] at which saturation currents are tabulated, evenly spaced, -55 to 125 degC.
+_INVERSE_HOT, _INVERSE_COLD, _INVERSE_STEPS = 1 / 398.15, 1 / 218.15, 256
+_BLOCK = 2048  # hours at once: intermediate arrays stay in the processor's cache
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class Standard:
+    """What the absorbers do under the reference spectrum at exactly 1000 W/m2 and 25 degC, per collecting area.
+
+    Parameters
+    ----------
+    photocurrent, power : (n_junction,) arrays [A m-2], [W m-2], each junction at its own power point
+    terminal_power : (n_absorber,) array [W m-2]
+    short_circuit, open_circuit, fill_factor : (n_absorber,) arrays [A m-2], [V], [1]; NaN for 4 terminals
+    efficiency : (n_absorber,) array [1]
+    power_temperature_coefficient : (n_absorber,) array [K-1], relative, around 25 degC
+    """
+
+    photocurrent: Array
+    power: Array
+    terminal_power: Array
+    short_circuit: Array
+    open_circuit: Array
+    fill_factor: Array
+    efficiency: Array
+    power_temperature_coefficient: Array
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class Bank:
+    """Junctions of many absorbers in one row, folded onto the bands; made by `Bank.of`.
+
+    Parameters
+    ----------
+    absorbers : tuple of Absorber
+    junctions : tuple of Junction, of all absorbers one after the other
+    absorber_of : (n_junction,) int array, the absorber each belongs to
+    yields : (n_temperature, n_junction, n_band) array [A W-1], at `FOLD_TEMPERATURES`
+    log_saturation : (n_junction, n_steps + 1) array [ln(A m-2)], over evenly spaced inverse temperature
+    """
+
+    absorbers: tuple[Absorber, ...]
+    junctions: tuple[Junction, ...]
+    absorber_of: NDArray[np.intp]
+    yields: Array
+    log_saturation: Array
+
+    @classmethod
+    def of(cls, absorbers: Iterable[Absorber]) -> Bank:
+        """Fold absorbers onto the bands and tabulate their saturation currents."""
+        absorbers = tuple(absorbers)
+        junctions = tuple(junction for absorber in absorbers for junction in absorber.junctions)
+        absorber_of = np.repeat(np.arange(len(absorbers)), [len(absorber.junctions) for absorber in absorbers])
+        yields = np.concatenate([_fold(absorber) for absorber in absorbers], axis=1)
+        temperatures = 1 / np.linspace(_INVERSE_HOT, _INVERSE_COLD, _INVERSE_STEPS + 1)
+        table = np.log([saturation_current(junction, temperatures) for junction in junctions])
+        return cls(absorbers, junctions, absorber_of, yields, table)
+
+    def currents(self, light: Array, temperature: Array, rear: Array | None = None) -> Array:
+        """Return the photocurrent of each junction.
+
+        Parameters
+        ----------
+        light : (n_time, n_band) array [W m-2], energy in each band on the cells' plane, after incidence losses
+        temperature : (n_time,) or (n_absorber, n_time) array [K], of the cells
+        rear : (n_time, n_band) array [W m-2] or None, light on the rear, after its incidence losses, before bifaciality
+
+        Returns
+        -------
+        (n_junction, n_time) array [A m-2]
+
+        Notes
+        -----
+        The edge drifts with temperature, so responses are folded at nodes 20 K apart and the currents interpolated
+        linearly between them, exact at 25 degC. Linear on purpose: a current follows the photons under the moving
+        edge, whose water bands make higher-order interpolation overshoot.
+        """
+        temperature = self._per_absorber(temperature)
+        front = self._collected(self.yields, np.asarray(light), temperature)
+        if rear is None:
+            return front
+        gain = np.array([absorber.bifaciality for absorber in self.absorbers])[self.absorber_of]
+        return np.asarray(front + gain[:, None] * self._collected(self.yields, np.asarray(rear), temperature))
+
+    def power(self, currents: Array, temperature: Array) -> Array:
+        """Return each junction's power at its own power point.
+
+        Parameters
+        ----------
+        currents : (n_junction, n_time) array [A m-2]
+        temperature : (n_time,) or (n_absorber, n_time) array [K]
+
+        Returns
+        -------
+        (n_junction, n_time) array [W m-2]
+        """
+        temperature = self._per_absorber(temperature)
+        currents = np.asarray(currents)
+        out = np.empty_like(currents)
+        for j in range(len(self.junctions)):
+            for block in _blocks(out.shape[1]):
+                out[j, block] = diode.maximum_power(self._diode(j, currents[j, block], temperature, block))[0]
+        return out
+
+    def terminal_power(self, currents: Array, temperature: Array) -> Array:
+        """Return the power of each absorber at its terminals.
+
+        Parameters
+        ----------
+        currents : (n_junction, n_time) array [A m-2]
+        temperature : (n_time,) or (n_absorber, n_time) array [K]
+
+        Returns
+        -------
+        (n_absorber, n_time) array [W m-2]
+        """
+        single = self.power(currents, temperature)
+        starts = np.searchsorted(self.absorber_of, np.arange(len(self.absorbers)))
+        return np.asarray(np.add.reduceat(single, starts, axis=0))
+
+    def standard(self) -> Standard:
+        """Return what the absorbers do at standard conditions, by the code that computes the hours."""
+        bands = reference_bands()
+        light = (bands * (STANDARD_IRRADIANCE / bands.sum()))[None]
+        temperature = np.array(
+            [STANDARD_CELL_TEMPERATURE - 1, STANDARD_CELL_TEMPERATURE, STANDARD_CELL_TEMPERATURE + 1]
+        )
+        currents = self.currents(np.repeat(light, 3, axis=0), temperature)
+        cold, mid, hot = self.terminal_power(currents, temperature).T
+        single = self.power(currents[:, 1:2], temperature[1:2])[:, 0]
+        short, opened = self._ends(currents[:, 1])
+        return Standard(
+            photocurrent=currents[:, 1],
+            power=single,
+            terminal_power=mid,
+            short_circuit=short,
+            open_circuit=opened,
+            fill_factor=mid / (short * opened),
+            efficiency=mid / STANDARD_IRRADIANCE,
+            power_temperature_coefficient=(hot - cold) / 2 / mid,
+        )
+
+    def saturation(self, temperature: Array) -> Array:
+        """Return the saturation current of each junction, (n_junction, n_time) [A m-2], at (..., n_time) [K]."""
+        temperature = self._per_absorber(temperature)
+        return np.array([self._saturation(j, temperature[self.absorber_of[j]]) for j in range(len(self.junctions))])
+
+    def _saturation(self, j: int, temperature: Array) -> Array:
+        """Interpolate ln J0 linearly in 1/T, in which it is nearly straight: 2e-6 off at most over -55 to 125 degC."""
+        place = (1 / temperature - _INVERSE_HOT) * (_INVERSE_STEPS / (_INVERSE_COLD - _INVERSE_HOT))
+        at = np.clip(np.nan_to_num(place), 0, _INVERSE_STEPS - 1).astype(np.intp)
+        table = self.log_saturation[j]
+        return np.asarray(np.exp(table[at] + (place - at) * (table[at + 1] - table[at])))
+
+    def _diode(self, j: int, currents: Array, temperature: Array, block: slice) -> diode.Diode:
+        heat = temperature[self.absorber_of[j], block]
+        return diode_at(self.junctions[j], currents, heat, self._saturation(j, heat))
+
+    def _ends(self, currents: Array) -> tuple[Array, Array]:
+        """Return short-circuit current and open-circuit voltage (n_absorber,) [A m-2], [V] at 25 degC."""
+        temperature = np.full((len(self.absorbers), 1), STANDARD_CELL_TEMPERATURE)
+        ends = np.full((2, len(self.absorbers)), np.nan)
+        for j in range(len(self.junctions)):
+            one = self._diode(j, currents[j : j + 1], temperature, slice(0, 1))
+            ends[:, self.absorber_of[j]] = diode.short_circuit(one)[0], diode.open_circuit(one)[0]
+        return ends[0], ends[1]
+
+    def _per_absorber(self, temperature: Array) -> Array:
+        temperature = np.atleast_1d(np.asarray(temperature, dtype=np.float64))
+        return np.broadcast_to(temperature, (len(self.absorbers), temperature.shape[-1]))
+
+    def _collected(self, yields: Array, light: Array, temperature: Array) -> Array:
+        """Return currents (n_junction, n_time) [A m-2] of light (n_time, n_band), interpolated between fold nodes."""
+        n_node, _, n_band = yields.shape
+        middle = n_node // 2
+        out = np.ascontiguousarray((light @ yields[middle].T).T)
+        moving = np.flatnonzero(np.any(yields != yields[middle], axis=(0, 2)))
+        if not len(moving):
+            return out
+        matrix = np.ascontiguousarray(yields[:, moving]).reshape(-1, n_band).T
+        place = (temperature - FOLD_TEMPERATURES[0]) / (FOLD_TEMPERATURES[1] - FOLD_TEMPERATURES[0])
+        at = np.clip(np.nan_to_num(place), 0, n_node - 2).astype(np.intp)
+        weight = place - at
+        for block in _blocks(len(light)):
+            nodes = (light[block] @ matrix).reshape(-1, n_node, len(moving))
+            rows = np.arange(len(nodes))
+            for column, j in enumerate(moving):
+                a = self.absorber_of[j]
+                low = nodes[rows, at[a, block], column]
+                high = nodes[rows, at[a, block] + 1, column]
+                out[j, block] = low + weight[a, block] * (high - low)
+        return out
+
+
+def _fold(absorber: Absorber) -> Array:
+    """Return (n_temperature, n_junction, n_band) [A W-1]; the same fold at all temperatures if no edge drifts."""
+    if all(junction.gap_shift_ev_per_k == 0 for junction in absorber.junctions):
+        fixed = np.array([folded(response) for response in responses_at(absorber, STANDARD_CELL_TEMPERATURE)])
+        return np.repeat(fixed[None], len(FOLD_TEMPERATURES), axis=0)
+    return np.array([[folded(r) for r in responses_at(absorber, float(t))] for t in FOLD_TEMPERATURES])
+
+
+def _blocks(n: int) -> list[slice]:
+    return [slice(start, min(start + _BLOCK, n)) for start in range(0, n, _BLOCK)]

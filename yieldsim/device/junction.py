@@ -1,0 +1,181 @@
+"""One light-absorbing junction: its response, its losses, and its curve at any temperature."""
+
+from __future__ import annotations
+
+import math
+from dataclasses import dataclass, replace
+from typing import Any
+
+import numpy as np
+from numpy.typing import NDArray
+
+from yieldsim.constants import STANDARD_CELL_TEMPERATURE, STANDARD_IRRADIANCE, THERMAL_EV_PER_K
+from yieldsim.device import balance, diode
+from yieldsim.device.response import Response, folded, shifted
+from yieldsim.spectrum import reference_bands
+
+Array = NDArray[np.float64]
+
+_M2_PER_CM2 = 1e-4
+
+#: Field -> lowest and highest sane value; what lies outside is a slip of unit or sign.
+LIMITS: dict[str, tuple[float, float]] = {
+    "gap_ev": (0.35, 4.0),
+    "external_radiative_efficiency": (1e-20, 1.0),
+    "ideality": (1.0, 3.0),
+    "series_resistance_ohm_cm2": (0.0, 1000.0),
+    "shunt_resistance_ohm_cm2": (1.0, math.inf),
+    "gap_shift_ev_per_k": (-2e-3, 2e-3),
+    "recombination_v": (0.0, 0.5),
+    "built_in_v": (0.3, math.inf),
+    "recombination_activation_ev": (0.0, 1.0),
+}
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class Junction:
+    """A junction by what a datasheet or a measurement says of it.
+
+    Parameters
+    ----------
+    gap_ev : float [eV], gap at 25 degC
+    response : Response, external quantum efficiency at 25 degC and short circuit
+    external_radiative_efficiency : float [1], pairs that leave as light at open circuit over all pairs, at the
+        standard photocurrent; sets how far the voltage stays below the radiative limit
+    ideality : float [1], ideality of the diode, 1-3
+    series_resistance_ohm_cm2 : float [ohm cm2]
+    shunt_resistance_ohm_cm2 : float [ohm cm2], inf = none
+    gap_shift_ev_per_k : float [eV K-1], drift of the gap with temperature, negative = narrows when hot
+    recombination_v : float [V], d^2/(mu tau) of an i-layer at 25 degC: loss of generated carriers that grows as the
+        field in it falls (Merten et al. 1998); 0 = none
+    built_in_v : float [V], built-in voltage of that i-layer
+    recombination_activation_ev : float [eV], thermal activation of its mobility-lifetime product
+
+    Raises
+    ------
+    ValueError
+        For a value outside `LIMITS`, or a response that does not reach the gap.
+    """
+
+    gap_ev: float
+    response: Response
+    external_radiative_efficiency: float = 1.0
+    ideality: float = 1.0
+    series_resistance_ohm_cm2: float = 0.0
+    shunt_resistance_ohm_cm2: float = math.inf
+    gap_shift_ev_per_k: float = 0.0
+    recombination_v: float = 0.0
+    built_in_v: float = math.inf
+    recombination_activation_ev: float = 0.0
+
+    def __post_init__(self) -> None:
+        """Refuse what cannot be."""
+        faults = [
+            f"{name} is {getattr(self, name):g}; it must lie in {low:g} to {high:g}"
+            for name, (low, high) in LIMITS.items()
+            if not low <= getattr(self, name) <= high
+        ]
+        if self.recombination_v > 0 and not self.recombination_v < self.built_in_v / 4:
+            faults.append(
+                f"recombination_v is {self.recombination_v:g} V with a built-in voltage of {self.built_in_v:g} V; "
+                "it must stay below a quarter of it, or little is collected at all"
+            )
+        if self.recombination_v > 0 and math.isinf(self.built_in_v):
+            faults.append("recombination_v needs a finite built_in_v")
+        if faults:
+            raise ValueError("; ".join(faults))
+
+
+def standard_photocurrent(response: Response) -> float:
+    """Return the current [A m-2] that a response collects from the reference spectrum scaled to 1000 W/m2."""
+    bands = reference_bands()
+    return float(folded(response) @ bands * (STANDARD_IRRADIANCE / bands.sum()))
+
+
+def response_at(junction: Junction, temperature: float) -> Response:
+    """Return the response [1] at a cell temperature [K]: the edge drifts with the gap."""
+    drift = junction.gap_shift_ev_per_k * (temperature - STANDARD_CELL_TEMPERATURE)
+    return shifted(junction.response, drift, junction.gap_ev)
+
+
+def saturation_current(junction: Junction, temperature: Any) -> Any:
+    """Return the diode's saturation current at cell temperatures.
+
+    Parameters
+    ----------
+    junction : Junction
+    temperature : (...) array [K]
+
+    Returns
+    -------
+    (...) array [A m-2]
+
+    Notes
+    -----
+    Detailed balance with the response at each temperature, see `balance`. One response is built for each different
+    temperature: meant for tables and single values; `bank.Bank` interpolates for hours.
+    """
+    temperature = np.asarray(temperature, dtype=np.float64)
+    levels, where = np.unique(temperature, return_inverse=True)
+    radiative = np.array([_radiative_current(junction, float(level)) for level in levels])
+    collected = standard_photocurrent(junction.response)
+    values = balance.saturation_current(radiative, collected, junction.external_radiative_efficiency, junction.ideality)
+    return values[where].reshape(temperature.shape)[()]
+
+
+def _radiative_current(junction: Junction, temperature: float) -> float:
+    if not math.isfinite(temperature):
+        return math.nan
+    response = response_at(junction, temperature)
+    return float(balance.radiative_current(response.wavelength_nm, response.quantum_efficiency, temperature))
+
+
+def diode_at(junction: Junction, photocurrent: Any, temperature: Any, saturation: Any = None) -> diode.Diode:
+    """Return the parameters of a junction's curve.
+
+    Parameters
+    ----------
+    junction : Junction
+    photocurrent : (...) array [A m-2], what its response collects
+    temperature : (...) array [K], cell temperature
+    saturation : (...) array [A m-2], its saturation current at that temperature if known already
+
+    Returns
+    -------
+    Diode
+
+    Notes
+    -----
+    A response is measured at short circuit, where an i-layer has lost the share chi/Vbi already: what is generated is
+    larger by that much, so that at 25 degC the curve passes through the measured current. The loss eases when hot,
+    chi(T) = chi exp[Ea/k (1/T - 1/298.15 K)].
+    """
+    temperature = np.asarray(temperature, dtype=np.float64)[()]
+    if saturation is None:
+        saturation = saturation_current(junction, temperature)
+    chi: Any = junction.recombination_v
+    if chi > 0:
+        photocurrent = photocurrent / (1 - chi / junction.built_in_v)
+        slowness = 1 / temperature - 1 / STANDARD_CELL_TEMPERATURE
+        chi = chi * np.exp(junction.recombination_activation_ev / THERMAL_EV_PER_K * slowness)
+    return diode.Diode(
+        photocurrent=photocurrent,
+        saturation_current=saturation,
+        thermal_voltage=junction.ideality * THERMAL_EV_PER_K * temperature,
+        series_resistance=junction.series_resistance_ohm_cm2 * _M2_PER_CM2,
+        shunt_conductance=1 / (junction.shunt_resistance_ohm_cm2 * _M2_PER_CM2),
+        recombination_voltage=chi,
+        built_in_voltage=junction.built_in_v,
+    )
+
+
+def moved_to_gap(junction: Junction, gap_ev: float) -> Junction:
+    """Return a junction of the same quality at another gap [eV]: its response's edge moves there, all else stays.
+
+    Raises
+    ------
+    ValueError
+        If the gap is outside `LIMITS` or beyond the response's blue end.
+    """
+    response = shifted(junction.response, gap_ev - junction.gap_ev, junction.gap_ev)
+    return replace(junction, gap_ev=gap_ev, response=response)
