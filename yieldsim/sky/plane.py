@@ -31,6 +31,10 @@ class PlaneParts:
     ground: Array
     cos_aoi: Array
 
+    def total(self) -> Array:
+        """Return the plane-of-array irradiance, (n,) [W m-2]."""
+        return np.asarray(self.beam.sum(axis=1) + self.sky.sum(axis=1) + self.ground.sum(axis=1))
+
 
 def isotropic_parts(tilt_deg: float) -> tuple[float, float]:
     """Return the shares of a uniform sky and a uniform ground that a tilted plane sees [1]."""
@@ -142,8 +146,8 @@ def incidence_modifier_diffuse(tilt_deg: float, a_r: float) -> tuple[float, floa
     """
     from pvlib.iam import martin_ruiz_diffuse
 
-    sky, ground = martin_ruiz_diffuse(tilt_deg, a_r=a_r)
-    return float(sky), float(ground)
+    entered = martin_ruiz_diffuse(tilt_deg, a_r=a_r)
+    return float(entered["sky"]), float(entered["ground"])
 
 
 def entered_beam(sun: SunCourse, tilt_deg: float, azimuth_deg: float, a_r: float) -> Array:

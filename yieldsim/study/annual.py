@@ -9,8 +9,8 @@ import numpy as np
 from numpy.typing import NDArray
 
 from yieldsim.constants import STANDARD_IRRADIANCE
-from yieldsim.device.stack import Absorber, Bank
-from yieldsim.study.hourly import PlaneYear
+from yieldsim.device.stack import Absorber
+from yieldsim.study.hourly import PlaneYear, bank_of
 from yieldsim.study.plan import LossesPlan
 
 Array = NDArray[np.float64]
@@ -70,9 +70,9 @@ class Ratings:
     @classmethod
     def of(cls, absorbers: Sequence[Absorber]) -> Ratings:
         """Rate absorbers with the code that computes the hours."""
-        bank = Bank.of(absorbers)
+        bank = bank_of(tuple(absorbers))
         standard = bank.standard()
-        return cls(np.asarray(bank.absorber_of), standard.current, standard.power, standard.terminal_power)
+        return cls(np.asarray(bank.absorber_of), standard.photocurrent, standard.power, standard.terminal_power)
 
 
 @dataclass(frozen=True, slots=True)

@@ -4,12 +4,14 @@ from __future__ import annotations
 
 from collections.abc import Sequence
 from dataclasses import dataclass
+from functools import lru_cache
 
 import numpy as np
 from numpy.typing import NDArray
 
 from yieldsim.constants import STANDARD_CELL_TEMPERATURE
-from yieldsim.device.stack import Absorber, Bank
+from yieldsim.device.bank import Bank
+from yieldsim.device.stack import Absorber
 from yieldsim.device.thermal import faiman
 from yieldsim.sky import atmosphere, closing, column, plane, sun
 from yieldsim.study.plan import AtmospherePlan, Monthly, MountingPlan, SitePlan
@@ -270,35 +272,61 @@ def entered_light(site: SiteSky, mounting: MountingPlan, parts: plane.PlaneParts
     return parts.beam * beam_share[:, None] + parts.sky * sky_share + parts.ground * ground_share
 
 
-def plane_year(site: SiteSky, mounting: MountingPlan, absorbers: Sequence[Absorber]) -> PlaneYear:
-    """Return what absorbers make of a mounting's light, interval by interval.
+@lru_cache(maxsize=8)
+def bank_of(absorbers: tuple[Absorber, ...]) -> Bank:
+    """Return the bank of absorbers, made once for all sites and mountings of a run."""
+    return Bank.of(absorbers)
 
-    Absorbers whose fronts are alike share one spectrum and one matrix product.
-    """
-    parts = plane_parts(site, mounting)
-    plane_of_array = (parts.beam + parts.sky + parts.ground).sum(axis=1)
-    n, n_absorber = len(plane_of_array), len(absorbers)
+
+def cell_temperatures(site: SiteSky, plane_of_array: Array, absorbers: Sequence[Absorber]) -> Array:
+    """Return cell temperatures (n_absorber, n) [K]."""
     temp_air = kelvin(site.weather["temp_air"][site.lit])
     wind = site.weather["wind_speed"][site.lit]
     heat_losses = sorted({absorber.heat_loss for absorber in absorbers})
     warmth = {loss: faiman(plane_of_array, temp_air, wind, *loss) for loss in heat_losses}
-    temperature = np.array([warmth[absorber.heat_loss] for absorber in absorbers])
+    return np.array([warmth[absorber.heat_loss] for absorber in absorbers])
 
-    counts = [len(absorber.junctions) for absorber in absorbers]
-    offsets = np.concatenate([[0], np.cumsum(counts)])
-    entered = np.empty((n_absorber, n))
+
+def by_front(absorbers: Sequence[Absorber]) -> list[tuple[float | None, list[int]]]:
+    """Return (incidence modifier, members) of absorbers whose fronts are alike: they share spectrum and product."""
+    groups: dict[float | None, list[int]] = {}
+    for i, absorber in enumerate(absorbers):
+        groups.setdefault(absorber.incidence_modifier, []).append(i)
+    return list(groups.items())
+
+
+def terminal_powers(
+    site: SiteSky, mounting: MountingPlan, parts: plane.PlaneParts, absorbers: Sequence[Absorber]
+) -> Array:
+    """Return the power of each absorber at its terminals in every lit interval, (n_absorber, n) [W m-2]."""
+    temperature = cell_temperatures(site, parts.total(), absorbers)
+    power = np.empty((len(absorbers), len(site.lit)))
+    for front, members in by_front(absorbers):
+        bank = bank_of(tuple(absorbers[i] for i in members))
+        light = entered_light(site, mounting, parts, front)
+        power[members] = bank.terminal_power(bank.currents(light, temperature[members]), temperature[members])
+    return power
+
+
+def plane_year(
+    site: SiteSky, mounting: MountingPlan, parts: plane.PlaneParts, absorbers: Sequence[Absorber]
+) -> PlaneYear:
+    """Return what absorbers make of a mounting's light, interval by interval."""
+    plane_of_array = parts.total()
+    n, n_absorber = len(plane_of_array), len(absorbers)
+    temperature = cell_temperatures(site, plane_of_array, absorbers)
+    offsets = np.concatenate([[0], np.cumsum([len(absorber.junctions) for absorber in absorbers])])
+    entered, power = np.empty((n_absorber, n)), np.empty((n_absorber, n))
     current, cool, warm = (np.empty((offsets[-1], n)) for _ in range(3))
-    power = np.empty((n_absorber, n))
-    fronts = sorted({absorber.incidence_modifier for absorber in absorbers}, key=lambda a_r: -1.0 if a_r is None else a_r)
     standard = np.full(n, STANDARD_CELL_TEMPERATURE)
-    for front in fronts:
-        members = [i for i, absorber in enumerate(absorbers) if absorber.incidence_modifier == front]
+    for front, members in by_front(absorbers):
         junctions = np.concatenate([np.arange(offsets[i], offsets[i + 1]) for i in members])
-        bank = Bank.of([absorbers[i] for i in members])
+        bank = bank_of(tuple(absorbers[i] for i in members))
         light = entered_light(site, mounting, parts, front)
         entered[members] = light.sum(axis=1)
         current[junctions] = bank.currents(light, temperature[members])
         cool[junctions] = bank.power(current[junctions], standard)
         warm[junctions] = bank.power(current[junctions], temperature[members])
-        power[members] = bank.terminal_power(current[junctions], temperature[members])
+        alone = len(junctions) == len(members)
+        power[members] = warm[junctions] if alone else bank.terminal_power(current[junctions], temperature[members])
     return PlaneYear(mounting, parts, plane_of_array, entered, current, temperature, cool, warm, power)

@@ -13,8 +13,8 @@ import yieldsim
 from yieldsim.study import annual, compare, datasets, store, sweep
 from yieldsim.study.annual import Ratings
 from yieldsim.study.compare import Row
-from yieldsim.study.hourly import SiteSky, local_month_and_day, plane_year, site_sky
-from yieldsim.study.plan import MountingPlan, SitePlan, StudyPlan
+from yieldsim.study.hourly import SiteSky, local_month_and_day, plane_parts, plane_year, site_sky
+from yieldsim.study.plan import SitePlan, StudyPlan
 from yieldsim.weather import Weather
 
 
@@ -45,9 +45,12 @@ def compute(plan: StudyPlan, site: SitePlan, years: Sequence[Weather], folder: P
     piece["weather_quality"] = [row for sky in skies for row in quality_rows(site.name, sky)]
     first_year: list[Any] = []
     for mounting in site.mountings:
-        totals = []
+        totals, swept = [], []
         for sky in skies:
-            year = plane_year(sky, mounting, plan.absorbers)
+            parts = plane_parts(sky, mounting)
+            year = plane_year(sky, mounting, parts, plan.absorbers)
+            if plan.gap_sweep is not None:
+                swept.append(sweep.sweep_rows(site.name, sky, mounting, parts, plan.gap_sweep, plan.losses))
             total = annual.sums(year, sky.month, monthly_hours(sky), sky.weather.interval_s, plan.losses)
             totals.append(total)
             if sky is skies[0]:
@@ -59,24 +62,19 @@ def compute(plan: StudyPlan, site: SitePlan, years: Sequence[Weather], folder: P
         total = annual.mean(totals)
         piece["annual"] += compare.annual_rows(site.name, mounting.name, plan.absorbers, ratings, total)
         piece["monthly"] += compare.monthly_rows(site.name, mounting.name, plan.absorbers, ratings, total)
-        if plan.gap_sweep is not None:
-            piece["gap_sweep"] += _swept(plan, site, mounting, skies)
+        piece["gap_sweep"] += _mean_rows(swept)
     files = _write_datasets(plan, site, skies[0], first_year, folder)
     store.write_piece(folder, store.file_stem(site.name), key(plan, site), piece, files)
     return piece
 
 
-def _swept(plan: StudyPlan, site: SitePlan, mounting: MountingPlan, skies: Sequence[SiteSky]) -> list[Row]:
-    """Return the sweep's rows, energies averaged over the years."""
-    assert plan.gap_sweep is not None
-    by_year = [
-        sweep.sweep_rows(site.name, sky, mounting, monthly_hours(sky), plan.gap_sweep, plan.losses) for sky in skies
+def _mean_rows(by_year: Sequence[list[Row]]) -> list[Row]:
+    """Return the sweep's rows, insolation and energies averaged over the years."""
+    measures = ("poa_kwh_m2", "energy_kwh_m2")
+    return [
+        {**rows[0], **{measure: float(np.mean([row[measure] for row in rows])) for measure in measures}}
+        for rows in zip(*by_year, strict=True)
     ]
-    rows = by_year[0]
-    for i, row in enumerate(rows):
-        for measure in ("poa_kwh_m2", "energy_kwh_m2"):
-            row[measure] = float(np.mean([year[i][measure] for year in by_year]))
-    return rows
 
 
 def _write_datasets(

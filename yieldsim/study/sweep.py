@@ -8,10 +8,11 @@ import numpy as np
 
 from yieldsim.constants import STANDARD_IRRADIANCE
 from yieldsim.device.stack import Absorber
+from yieldsim.sky.plane import PlaneParts
 from yieldsim.study import annual
 from yieldsim.study.annual import Ratings
 from yieldsim.study.compare import Row
-from yieldsim.study.hourly import SiteSky, plane_year
+from yieldsim.study.hourly import SiteSky, terminal_powers
 from yieldsim.study.plan import GapSweepPlan, LossesPlan, MountingPlan
 
 STANDARD_SITE = "standard spectrum"
@@ -19,18 +20,18 @@ STANDARD_LIGHT_KWH_M2 = 1000.0  # insolation of the rows for the standard spectr
 
 
 def sweep_rows(
-    site: str, sky: SiteSky, mounting: MountingPlan, hours: annual.Array, plan: GapSweepPlan, losses: LossesPlan
+    site: str, sky: SiteSky, mounting: MountingPlan, parts: PlaneParts, plan: GapSweepPlan, losses: LossesPlan
 ) -> list[Row]:
     """Return one row per quality and gap: the year's energy [kWh m-2] and the efficiency at standard conditions [1]."""
     rows: list[Row] = []
+    kept = annual.kept_share(losses)[sky.month]
+    step_h = sky.weather.interval_s / 3600.0
+    light = float(parts.total().sum() * step_h)
     for quality, absorbers in plan.absorbers.items():
-        total = annual.sums(
-            plane_year(sky, mounting, absorbers), sky.month, hours, sky.weather.interval_s, losses
-        ).year()
-        light = float(total.light[0])
+        power = terminal_powers(sky, mounting, parts, absorbers)
         efficiency = _efficiency(absorbers)
         area = np.array([absorber.area_fraction for absorber in absorbers])
-        energy = total.delivered[:, 0] * area / 1000.0
+        energy = (power @ (kept * step_h)) * area / 1000.0
         rows.extend(
             {
                 "site": site,
