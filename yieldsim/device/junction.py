@@ -28,7 +28,6 @@ LIMITS: dict[str, tuple[float, float]] = {
     "gap_shift_ev_per_k": (-2e-3, 2e-3),
     "recombination_v": (0.0, 0.5),
     "built_in_v": (0.3, math.inf),
-    "recombination_activation_ev": (0.0, 1.0),
 }
 
 
@@ -49,7 +48,6 @@ class Junction:
     recombination_v : float [V], d^2/(mu tau) of an i-layer at 25 degC: loss of generated carriers that grows as the
         field in it falls (Merten et al. 1998); 0 = none
     built_in_v : float [V], built-in voltage of that i-layer
-    recombination_activation_ev : float [eV], thermal activation of its mobility-lifetime product
 
     Raises
     ------
@@ -66,7 +64,6 @@ class Junction:
     gap_shift_ev_per_k: float = 0.0
     recombination_v: float = 0.0
     built_in_v: float = math.inf
-    recombination_activation_ev: float = 0.0
 
     def __post_init__(self) -> None:
         """Refuse what cannot be."""
@@ -147,8 +144,7 @@ def diode_at(junction: Junction, photocurrent: Any, temperature: Any, saturation
     Notes
     -----
     A response is measured at short circuit, where an i-layer has lost the share chi/Vbi already: what is generated is
-    larger by that much, so that at 25 degC the curve passes through the measured current. The loss eases when hot,
-    chi(T) = chi exp[Ea/k (1/T - 1/298.15 K)].
+    larger by that much, so that at 25 degC the curve passes through the measured current.
     """
     temperature = np.asarray(temperature, dtype=np.float64)[()]
     if saturation is None:
@@ -156,8 +152,6 @@ def diode_at(junction: Junction, photocurrent: Any, temperature: Any, saturation
     chi: Any = junction.recombination_v
     if chi > 0:
         photocurrent = photocurrent / (1 - chi / junction.built_in_v)
-        slowness = 1 / temperature - 1 / STANDARD_CELL_TEMPERATURE
-        chi = chi * np.exp(junction.recombination_activation_ev / THERMAL_EV_PER_K * slowness)
     return diode.Diode(
         photocurrent=photocurrent,
         saturation_current=saturation,
