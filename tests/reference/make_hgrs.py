@@ -65,9 +65,10 @@ def main(path):
     header = [
         "Transmittance of absorbing gases along slant paths, mean over each band weighted with ASTM G173-03's "
         "extraterrestrial spectrum. Bands that pass more than 0.999995 are left out.",
-        "Source: optical depths at 1 cm-1 of the hgrs package 1.1.2 (T. Harmel; Apache-2.0), which takes them from "
+        "Source: optical depths at 1 cm-1 of the hgrs package 1.1.2 (T. Harmel), which takes them from "
         "REPTRAN: J. Gasteiger et al., Representative wavelengths absorption parameterization applied to satellite "
         "channels and spectral bands, J. Quant. Spectrosc. Radiat. Transf. 148 (2014) 99.",
+        "Licence: Apache-2.0 (hgrs).",
         "Obtained: tests/reference/make_hgrs.py",
         "gas: 1 water vapour, path in cm; 2 ozone, path in atm-cm; 3 oxygen with its collision pairs, 4 carbon "
         "dioxide, 5 methane (1.8 ppm), 6 all mixed gases (3, 4, 5, CO, N2O), path in air masses at 1013.25 hPa.",
