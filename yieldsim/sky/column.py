@@ -163,7 +163,10 @@ def optics() -> Optics:
 
 
 def reference_air() -> Air:
-    """Return the air of ASTM G173-03: air mass 1.5, 1.4164 cm water, 0.3438 atm-cm ozone, AOD500 0.084; one hour."""
+    """Return the air of ASTM G173-03: air mass 1.5, 1.4164 cm water, 0.3438 atm-cm ozone, AOD500 0.084; one hour.
+
+    The standard's ground is a light sandy soil; here the dry soil of the ground library stands for it.
+    """
     cos_zenith = np.array([np.cos(np.radians(48.236))])  # where Kasten & Young (1989) give air mass 1.5
     return Air(
         cos_zenith=cos_zenith,
@@ -172,7 +175,7 @@ def reference_air() -> Air:
         ozone_atm_cm=np.array([0.3438]),
         aod500=np.array([0.084]),
         angstrom_exponent=np.array([1.14]),
-        albedo=np.array([0.2]),
+        albedo=reference.table("ground_albedo")["dry_soil"][None, :],
     )
 
 
@@ -189,11 +192,11 @@ def reference_plane(constants: Optics) -> Array:
     sky_view, ground_view = isotropic_parts(REFERENCE_TILT_DEG)
     circumsolar, isotropic = sky_on_plane(
         (horizontal - normal * cos_zenith)[None],
-        passed.beam * constants.factor,
+        passed.beam * constants.factor * forward_share(air, constants),
         np.array([cos_aoi / cos_zenith]),
     )
     sky = circumsolar[0] + isotropic[0] * sky_view
-    return normal * cos_aoi + sky + horizontal * float(air.albedo[0]) * ground_view
+    return np.asarray(normal * cos_aoi + sky + horizontal * air.albedo[0] * ground_view)
 
 
 def transmit(air: Air, cloud_depth: Array, constants: Optics | None = None) -> Transmittance:
@@ -267,6 +270,14 @@ def transmit_plain(air: Air, cloud_depth: Array, constants: Optics | None = None
     total = add_layers(layers, albedo) * ozone
     beam = np.exp(-(depth + cloud) * air_mass) * ozone
     return Transmittance(beam, np.maximum(total, beam))
+
+
+def forward_share(air: Air, constants: Optics | None = None) -> Array:
+    """Return haze's share of all scattering by clear air, (n, n_band) [1]: the part that keeps near the sun."""
+    constants = optics() if constants is None else constants
+    haze = air.aod500[:, None] * np.exp(-air.angstrom_exponent[:, None] * constants.haze_shape)
+    haze = haze * constants.haze_albedo
+    return np.asarray(haze / (haze + air.pressure[:, None] / BIRD_PRESSURE * constants.rayleigh))
 
 
 def beam_transmittance(air: Air, constants: Optics | None = None) -> tuple[Array, Array]:

@@ -132,7 +132,7 @@ def _tanh_over(k_squared: Array, tau: Array) -> Array:
     x = np.sqrt(k_squared) * tau / 2
     square = x**2
     series = 1 - square / 3 * (1 - square * 2 / 5 * (1 - square * 17 / 42))
-    ratio = np.divide(np.tanh(x), x, out=series, where=x > _SERIES)
+    ratio = np.where(x > _SERIES, np.tanh(x) / np.maximum(x, _SERIES), series)
     return np.asarray(ratio * tau / 2)
 
 

@@ -42,13 +42,14 @@ def isotropic_parts(tilt_deg: float) -> tuple[float, float]:
     return (1 + cosine) / 2, (1 - cosine) / 2
 
 
-def sky_on_plane(diffuse: Array, beam_transmittance: Array, geometric_factor: Array) -> tuple[Array, Array]:
+def sky_on_plane(diffuse: Array, anisotropy: Array, geometric_factor: Array) -> tuple[Array, Array]:
     """Split diffuse light into what comes from around the sun and what comes from the whole sky.
 
     Parameters
     ----------
     diffuse : (n, n_band) array [W m-2], on the horizontal
-    beam_transmittance : (n, n_band) array [1], normal beam over extraterrestrial: the band's own anisotropy
+    anisotropy : (n, n_band) array [1], share of the band's diffuse light that comes from around the sun: the normal
+        beam over the extraterrestrial, times haze's share of the scattering
     geometric_factor : (n,) array [1], cosine of incidence over cosine of zenith
 
     Returns
@@ -61,8 +62,7 @@ def sky_on_plane(diffuse: Array, beam_transmittance: Array, geometric_factor: Ar
     J. E. Hay, J. A. Davies, Calculations of the solar radiation incident on an inclined surface, Proc. First Canadian
     Solar Radiation Data Workshop (1980) 59; here for each band.
     """
-    share = np.clip(beam_transmittance, 0.0, 1.0)
-    around_sun = diffuse * share
+    around_sun = diffuse * np.clip(anisotropy, 0.0, 1.0)
     return around_sun * geometric_factor[:, None], diffuse - around_sun
 
 
@@ -86,7 +86,7 @@ def lit_mean(values: Array, up: NDArray[np.bool_]) -> Array:
 
 
 def on_plane(
-    beam: Array, diffuse: Array, extraterrestrial: Array, sun: SunCourse, albedo: Array, tilt_deg: float, azimuth_deg: float
+    beam: Array, diffuse: Array, anisotropy: Array, sun: SunCourse, albedo: Array, tilt_deg: float, azimuth_deg: float
 ) -> PlaneParts:
     """Put horizontal band spectra on a fixed plane.
 
@@ -94,7 +94,7 @@ def on_plane(
     ----------
     beam : (n, n_band) array [W m-2], on a plane facing the sun
     diffuse : (n, n_band) array [W m-2], on the horizontal
-    extraterrestrial : (n, n_band) array [W m-2], facing the sun
+    anisotropy : (n, n_band) array [1], see `sky_on_plane`
     sun : SunCourse of the n hours
     albedo : (n,) or (n, n_band) array [1]
     tilt_deg, azimuth_deg : float [deg]
@@ -105,7 +105,7 @@ def on_plane(
     """
     cos_aoi = lit_mean(cos_incidence(sun, tilt_deg, azimuth_deg), sun.up)
     factor = cos_aoi / np.maximum(sun.cos_zenith, _LEAST_COS_ZENITH)
-    circumsolar, isotropic = sky_on_plane(diffuse, beam / extraterrestrial, factor)
+    circumsolar, isotropic = sky_on_plane(diffuse, anisotropy, factor)
     sky_view, ground_view = isotropic_parts(tilt_deg)
     reflected = albedo[:, None] if albedo.ndim == 1 else albedo
     horizontal = beam * sun.cos_zenith[:, None] + diffuse

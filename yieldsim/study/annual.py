@@ -9,6 +9,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from yieldsim.constants import STANDARD_IRRADIANCE
+from yieldsim.device.bank import Standard
 from yieldsim.device.stack import Absorber
 from yieldsim.study.hourly import PlaneYear, bank_of
 from yieldsim.study.plan import LossesPlan
@@ -70,9 +71,13 @@ class Ratings:
     @classmethod
     def of(cls, absorbers: Sequence[Absorber]) -> Ratings:
         """Rate absorbers with the code that computes the hours."""
-        bank = bank_of(tuple(absorbers))
-        standard = bank.standard()
-        return cls(np.asarray(bank.absorber_of), standard.photocurrent, standard.power, standard.terminal_power)
+        standard = cls.standard(absorbers)
+        return cls(np.asarray(bank_of(tuple(absorbers)).absorber_of), standard.photocurrent, standard.power, standard.terminal_power)
+
+    @staticmethod
+    def standard(absorbers: Sequence[Absorber]) -> Standard:
+        """Return the whole rating: currents, voltages, efficiencies, temperature coefficients."""
+        return bank_of(tuple(absorbers)).standard()
 
 
 @dataclass(frozen=True, slots=True)
@@ -162,4 +167,3 @@ def factors(total: Sums, ratings: Ratings) -> Factors:
 
 def _ratio(above: Array, below: Array) -> Array:
     return np.divide(above, below, out=np.full(np.shape(above), np.nan), where=below > 0)
-

@@ -252,10 +252,11 @@ def _haze(
 def plane_parts(site: SiteSky, mounting: MountingPlan) -> plane.PlaneParts:
     """Return the band spectra on the front of a mounting, hour means."""
     extraterrestrial = column.optics().extraterrestrial * (site.sun.earth_sun * site.sun.lit)[:, None]
+    anisotropy = site.sky.beam / extraterrestrial * column.forward_share(site.air.with_aod500(site.sky.aod500))
     return plane.on_plane(
         site.sky.beam,
         site.sky.diffuse,
-        extraterrestrial,
+        anisotropy,
         site.sun,
         site.air.albedo,
         mounting.tilt_deg,

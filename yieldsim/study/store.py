@@ -8,12 +8,13 @@ import json
 import os
 import re
 import unicodedata
-from collections.abc import Iterator, Mapping
+from collections.abc import Iterator, Mapping, Sequence
 from contextlib import contextmanager
 from pathlib import Path
 from typing import Any
 
 import numpy as np
+import xarray as xr
 
 from yieldsim.errors import PlaceError
 
@@ -105,7 +106,7 @@ def write_json(path: Path, content: Any) -> None:
     write_text(path, json.dumps(content, indent=1, ensure_ascii=False, allow_nan=True) + "\n")
 
 
-def write_netcdf(path: Path, dataset: Any) -> None:
+def write_netcdf(path: Path, dataset: xr.Dataset) -> None:
     """Write an xarray Dataset as NetCDF 4, compressed, whole or not at all."""
     encoding = {name: {"zlib": True, "complevel": 1} for name, data in dataset.data_vars.items() if data.ndim}
     with whole_file(path) as temporary:
@@ -133,3 +134,14 @@ def write_piece(folder: Path, stem: str, key: str, piece: Mapping[str, Any], fil
     """Keep a finished piece; written last, after its files."""
     sizes = {file.relative_to(folder).as_posix(): file.stat().st_size for file in files}
     write_json(folder / PIECES / f"{stem}.json", {"key": key, "files": sizes, "piece": dict(piece)})
+
+
+def open_spectra(folder: Path, sites: Sequence[str]) -> dict[str, xr.Dataset]:
+    """Return the kept spectra of each site that has any, read into memory."""
+    found = {}
+    for site in sites:
+        path = folder / "spectra" / f"{file_stem(site)}.nc"
+        if path.is_file():
+            with xr.open_dataset(path, engine="h5netcdf") as dataset:
+                found[site] = dataset.load()
+    return found

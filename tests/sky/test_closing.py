@@ -1,0 +1,113 @@
+"""Hours closed on measured light: sums, haze and cloud given back, and nothing invented."""
+
+import numpy as np
+import pytest
+
+from yieldsim.sky import closing, column
+
+
+def some_air(n, seed=3, **changes):
+    rng = np.random.default_rng(seed)
+    fields = {
+        "cos_zenith": rng.uniform(0.05, 1.0, n), "pressure": np.full(n, 98000.0), "water_cm": rng.uniform(0.3, 5.0, n),
+        "ozone_atm_cm": np.full(n, 0.3), "aod500": np.full(n, 0.12), "angstrom_exponent": np.full(n, 1.2),
+        "albedo": np.full(n, 0.2),
+    }  # fmt: skip
+    return column.Air(**{**fields, **changes})
+
+
+def light_of(air, cloud, open_share):
+    """Measured beam and diffuse light of a sky with a cloud over a share of each hour."""
+    optics = column.optics()
+    top = optics.extraterrestrial * optics.factor
+    clear, cloudy = column.transmit(air, np.zeros(len(cloud))), column.transmit(air, cloud)
+    dni = (clear.beam @ top) * open_share
+    dhi = ((clear.total - clear.beam) @ top) * air.cos_zenith * open_share
+    return dni, dhi + (cloudy.total @ top) * air.cos_zenith * (1 - open_share)
+
+
+def close(air, dni, dhi, **options):
+    n = len(dni)
+    return closing.close(air, np.ones(n), dni, dhi, np.ones(n, dtype=bool), **options)
+
+
+def test_sums_are_the_measured_light():
+    """Invariant: band sums equal beam and diffuse light to 1e-6 relative, for anything a file may hold."""
+    rng = np.random.default_rng(5)
+    air = some_air(600)
+    dni = rng.uniform(0, 1100, 600) * (rng.random(600) < 0.7)
+    dhi = rng.uniform(0, 600, 600) * (rng.random(600) < 0.95)
+    sky = close(air, dni, dhi)
+    np.testing.assert_allclose(sky.beam.sum(axis=1), dni, rtol=1e-6, atol=1e-9)
+    np.testing.assert_allclose(sky.diffuse.sum(axis=1), dhi, rtol=1e-6, atol=1e-9)
+    assert np.all(sky.beam >= 0)
+    assert np.all(sky.diffuse >= 0)
+
+
+def test_haze_of_clear_hours_comes_back():
+    """A cloudless file made by the column gives its haze back: 1e-6 is Newton's last step."""
+    rng = np.random.default_rng(2)
+    truth = np.repeat(0.12 * 2 ** rng.uniform(-1, 1, 60), 10)
+    air = some_air(600)
+    dni, dhi = light_of(air.with_aod500(truth), np.zeros(600), np.ones(600))
+    sky = close(air, dni, dhi)
+    assert sky.clear.mean() > 0.95
+    np.testing.assert_allclose(sky.aod500[sky.clear], truth[sky.clear], rtol=1e-6)
+
+
+def test_cloud_depth_comes_back():
+    """Overcast hours made by the column give their cloud back: the search stops at 2e-4 of transmittance."""
+    rng = np.random.default_rng(4)
+    cloud = rng.uniform(2.0, 80.0, 300)
+    air = some_air(300, cos_zenith=rng.uniform(0.2, 1.0, 300))
+    sky = close(air, *light_of(air, cloud, np.zeros(300)))
+    np.testing.assert_allclose(sky.cloud_depth, cloud, rtol=0.01)
+    assert np.all(sky.open_share == 0)
+
+
+def test_broken_cloud_is_split_into_open_and_hidden():
+    rng = np.random.default_rng(6)
+    share = rng.uniform(0.2, 0.8, 200)
+    air = some_air(200, cos_zenith=np.full(200, 0.7))
+    sky = close(air, *light_of(air, np.full(200, 15.0), share), haze_hourly=False)
+    np.testing.assert_allclose(sky.open_share, share, rtol=1e-9)
+    np.testing.assert_allclose(sky.cloud_depth, 15.0, rtol=0.02)
+
+
+def test_fixed_haze_keeps_the_given_one():
+    air = some_air(50)
+    sky = close(air, *light_of(air.with_aod500(np.full(50, 0.3)), np.zeros(50), np.ones(50)), haze_hourly=False)
+    np.testing.assert_array_equal(sky.aod500, air.aod500)
+    assert not sky.clear.any()
+
+
+def test_lone_hours_are_not_called_clear():
+    """An hour whose neighbours disagree may be thin cloud: it keeps the prior unless it is brighter than that allows."""
+    air = some_air(3, cos_zenith=np.full(3, 0.7))
+    dni, dhi = light_of(air.with_aod500(np.array([0.9, 0.15, 0.9])), np.zeros(3), np.ones(3))
+    sky = close(air, dni, dhi)
+    assert not sky.clear.any()
+
+
+def test_darkness_stays_dark():
+    air = some_air(4)
+    sky = close(air, np.zeros(4), np.zeros(4))
+    assert np.all(sky.beam == 0)
+    assert np.all(sky.diffuse == 0)
+
+
+@pytest.mark.parametrize("n", [1, 255, 256, 257])
+def test_block_size_changes_nothing(n):
+    air = some_air(600)
+    dni, dhi = light_of(air, np.full(600, 8.0), np.full(600, 0.5))
+    whole = close(air, dni, dhi, haze_hourly=False)
+    part = close(air.only(slice(0, n)), dni[:n], dhi[:n], haze_hourly=False)
+    np.testing.assert_allclose(part.diffuse, whole.diffuse[:n], rtol=1e-9, atol=1e-12)
+
+
+def test_low_hazy_sun_on_the_horizon_is_finite():
+    """Every band of the clear beam lies below the smallest number; its shape is still formed."""
+    air = some_air(2, cos_zenith=np.full(2, 0.001), aod500=np.full(2, 3.0))
+    sky = close(air, np.array([5.0, 0.0]), np.array([3.0, 2.0]), haze_hourly=False)
+    assert np.all(np.isfinite(sky.beam))
+    assert sky.beam[0].sum() == pytest.approx(5.0)

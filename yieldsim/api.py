@@ -1,0 +1,156 @@
+"""Load a study, run it, get the result: what a notebook uses and the commands call; where all parts meet."""
+
+from __future__ import annotations
+
+import platform
+import sys
+import time
+from collections.abc import Sequence
+from dataclasses import replace
+from datetime import UTC, datetime
+from importlib import metadata
+from pathlib import Path
+from typing import Any
+
+import pandas as pd
+
+import yieldsim
+from yieldsim import config, readers, report, screen
+from yieldsim.errors import PlaceError
+from yieldsim.study import compare, run, store, sweep
+from yieldsim.study.annual import Ratings
+from yieldsim.study.plan import SitePlan, StudyPlan
+from yieldsim.study.result import StudyResult
+from yieldsim.weather import Weather
+
+_VERSIONS_OF = ("numpy", "scipy", "pandas", "xarray", "pvlib", "numba", "h5py", "h5netcdf", "matplotlib", "pydantic")
+
+
+def load_study(path: str | Path) -> StudyPlan:
+    """Read and validate a study file.
+
+    Parameters
+    ----------
+    path : str or Path of the YAML file
+
+    Returns
+    -------
+    StudyPlan
+
+    Raises
+    ------
+    InputError
+        With everything that is wrong, each with file, line, key path, what was found and what is allowed.
+    """
+    return config.load(Path(path))
+
+
+def load_weather(site: SitePlan) -> Sequence[Weather]:
+    """Read and screen the weather of a site, one Weather a year."""
+    overrides = {name: getattr(site, name) for name in ("latitude_deg", "longitude_deg", "elevation_m")}
+    return [
+        screen.screen(
+            readers.read(file.path, file.format, file.timestamps, shown=file.shown, **overrides), site.allow_gaps
+        )
+        for file in site.weather
+    ]
+
+
+def run_study(
+    plan: StudyPlan,
+    out: str | Path | None = None,
+    *,
+    workers: int = 1,
+    fresh: bool = False,
+    progress: run.Progress | None = None,
+) -> StudyResult:
+    """Compute a study and write its files.
+
+    Parameters
+    ----------
+    plan : StudyPlan, from `load_study`
+    out : folder of the results; ``outputs/<study>`` under the current folder unless given
+    workers : int, processes that share the sites
+    fresh : compute again what an earlier run into the same folder finished
+    progress : called with (what, steps finished, steps in all)
+
+    Returns
+    -------
+    StudyResult
+
+    Raises
+    ------
+    InputError
+        When weather cannot be used; sites that can are finished and kept.
+    PlaceError
+        When the folder cannot be written.
+    """
+    start, clock = datetime.now(UTC), time.perf_counter()
+    folder = Path("outputs", store.file_stem(plan.name)) if out is None else Path(out)
+    try:
+        folder.mkdir(parents=True, exist_ok=True)
+    except OSError as error:
+        raise PlaceError(f"cannot make the folder {folder}: {error.strerror}") from error
+    pieces, seconds = run.site_pieces(plan, load_weather, folder, workers=workers, fresh=fresh, progress=progress)
+    swept = run.rows(pieces, "gap_sweep")
+    if plan.gap_sweep is not None:
+        swept += sweep.standard_rows(plan.gap_sweep)
+    details = {
+        "study": plan.name,
+        "yieldsim": yieldsim.__version__,
+        "started": start.strftime("%Y-%m-%dT%H:%M:%SZ"),
+        "python": platform.python_version(),
+        "platform": platform.platform(),
+        "versions": {name: metadata.version(name) for name in _VERSIONS_OF},
+        "inputs": {file.shown: file.sha256 for site in plan.sites for file in site.weather},
+        "seconds": {name: round(value, 3) for name, value in seconds.items()},
+        "config": dict(plan.resolved),
+    }
+    result = StudyResult(
+        study=plan.name,
+        resolved=plan.resolved,
+        annual=pd.DataFrame(run.rows(pieces, "annual")),
+        yearly=pd.DataFrame(yearly) if (yearly := run.rows(pieces, "yearly")) else None,
+        monthly=pd.DataFrame(run.rows(pieces, "monthly")),
+        gap_sweep=pd.DataFrame(swept) if swept else None,
+        weather_quality=pd.DataFrame(run.rows(pieces, "weather_quality")),
+        standard=standard_table(plan),
+        spectra=store.open_spectra(folder, [site.name for site in plan.sites]),
+        run=details,
+    )
+    if progress is not None:
+        progress("report", len(plan.sites), len(plan.sites))
+    report.write(result, folder, plan.keep)
+    details |= {"seconds_in_all": round(time.perf_counter() - clock, 3), "peak_memory_mb": peak_memory_mb()}
+    store.write_json(folder / "run.json", details)
+    return replace(result, run=details)
+
+
+def standard_table(plan: StudyPlan) -> pd.DataFrame:
+    """Return what each absorber does at standard test conditions, one row per absorber."""
+    standard = Ratings.standard(plan.absorbers)
+    efficiency = standard.efficiency * [absorber.area_fraction for absorber in plan.absorbers]
+    return pd.DataFrame(
+        {
+            "absorber": [absorber.name for absorber in plan.absorbers],
+            "terminals": [absorber.terminals for absorber in plan.absorbers],
+            "gap_ev": [compare.gap_text(absorber) for absorber in plan.absorbers],
+            "stc_efficiency": efficiency,
+            "jsc_a_m2": standard.short_circuit,
+            "voc_v": standard.open_circuit,
+            "ff": standard.fill_factor,
+            "power_temperature_coefficient_per_k": standard.power_temperature_coefficient,
+            "rank_at_stc": compare.rank(efficiency),
+        }
+    )
+
+
+def peak_memory_mb() -> float | None:
+    """Return the most memory this process has held [MB], where the system tells."""
+    try:
+        import resource
+    except ImportError:
+        return None
+    peak = resource.getrusage(resource.RUSAGE_SELF).ru_maxrss
+    scale: Any = 2**20 if sys.platform == "darwin" else 2**10
+    return round(peak / scale, 1)
