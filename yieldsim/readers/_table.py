@@ -131,7 +131,6 @@ def _parse(
             sep=delimiter,
             skipinitialspace=True,
             quoting=csv.QUOTE_NONE,
-            float_precision="round_trip",
             engine="c",
         )
     except ValueError:
