@@ -1,1 +1,7 @@
 """The study file: its schema, and YAML to validated plan."""
+
+from __future__ import annotations
+
+from yieldsim.config.loader import load
+
+__all__ = ["load"]

@@ -1,0 +1,7 @@
+"""``python -m yieldsim``."""
+
+import sys
+
+from yieldsim.cli import main
+
+sys.exit(main())

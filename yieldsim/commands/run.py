@@ -1,0 +1,129 @@
+"""``yieldsim run``: compute a study and write its tables, pictures and report."""
+
+from __future__ import annotations
+
+import argparse
+from collections.abc import Mapping, Sequence
+from pathlib import Path
+from typing import Any, cast
+
+from yieldsim.commands._terminal import Progress, bold, cut, plain, table
+
+EXAMPLE = """example:
+  yieldsim run mine.yaml --out results --workers 2
+        computes mine.yaml with two processes into the folder results;
+        after a stop, the same line picks up where it left off
+"""
+
+Row = Mapping[str, Any]
+
+
+def arguments(parser: argparse.ArgumentParser) -> None:
+    """Declare the options of the command."""
+    parser.add_argument("study", metavar="STUDY.yaml", type=Path, help="the study file")
+    parser.add_argument("--out", metavar="DIR", type=Path, help="folder of the results (default: outputs/STUDY)")
+    parser.add_argument("--workers", metavar="N", type=workers, default=1, help="processes that share the sites")
+    parser.add_argument("--fresh", action="store_true", help="compute again what an earlier run finished")
+    parser.add_argument("--quiet", action="store_true", help="no progress and no summary")
+
+
+def workers(text: str) -> int:
+    """Return a number of processes from the command line."""
+    if not text.isascii() or not text.isdigit() or not 1 <= int(text) <= 1024:
+        raise argparse.ArgumentTypeError(f"found {text!r}; allowed: a whole number from 1 to 1024")
+    return int(text)
+
+
+def run(options: argparse.Namespace) -> int:
+    """Compute the study, show progress, print the summary."""
+    from yieldsim import api
+
+    plan = api.load_study(options.study)
+    out = options.out if options.out is not None else Path("outputs") / plan.name
+    progress = Progress(options.quiet)
+    try:
+        result = api.run_study(plan, out, workers=options.workers, fresh=options.fresh, progress=progress)
+    finally:
+        progress.close()
+    if not options.quiet:
+        rows = cast("list[Row]", result.annual.to_dict("records"))
+        print(summary(rows, plan.reference, out))
+    return 0
+
+
+def summary(rows: Sequence[Row], reference: str, out: Path) -> str:
+    """Return what a run found, in words and tables.
+
+    Parameters
+    ----------
+    rows : rows of annual.csv
+    reference : name of the absorber the others are set against
+    out : folder of the results
+    """
+    planes: dict[tuple[str, str], list[Row]] = {}
+    for row in rows:
+        planes.setdefault((row["site"], row["mounting"]), []).append(row)
+    several = len({mounting for _, mounting in planes}) > 1
+    parts = [
+        _plane(f"{plain(site)}, {plain(mounting)}" if several else plain(site), each, reference)
+        for (site, mounting), each in planes.items()
+    ]
+    files = f"Report {out / 'report.html'}, tables {out / 'annual.csv'} and others in {out}{_slash(out)}"
+    return "\n\n".join([*parts, files])
+
+
+def _slash(folder: Path) -> str:
+    return "" if str(folder).endswith("/") else "/"
+
+
+def _plane(title: str, rows: Sequence[Row], reference: str) -> str:
+    ranked = sorted(rows, key=lambda row: int(row["rank_by_yield"]))
+    base = next((row for row in rows if row["absorber"] == reference), None)
+    lines = [
+        [
+            f"{int(row['rank_by_yield'])}. {cut(row['absorber'], 40)}",
+            f"{row['specific_yield_kwh_kwp']:.0f}",
+            _against(row, base),
+            f"{row['energy_kwh_m2']:.1f}",
+            _place(row),
+        ]
+        for row in ranked
+    ]
+    light = f"{float(rows[0]['poa_kwh_m2']):.0f} kWh/m2 on the plane in {float(rows[0]['hours']):.0f} h"
+    head = ["by yield", "kWh/kWp", f"vs {cut(reference, 16)}", "kWh/m2", "rank (datasheet)"]
+    return "\n".join([f"{bold(title)}: {light}", table(head, lines), f"  {departure(rows)}"])
+
+
+def _against(row: Row, base: Row | None) -> str:
+    if base is None or row is base:
+        return ""
+    return f"{100 * (row['specific_yield_kwh_kwp'] / base['specific_yield_kwh_kwp'] - 1):+.1f} %"
+
+
+def _place(row: Row) -> str:
+    """Return the rank by energy per area, with that of the datasheet where it differs."""
+    energy, sheet = int(row["rank_by_energy"]), int(row["rank_at_stc"])
+    return f"{energy} ({sheet})" if energy != sheet else f"{energy}    "
+
+
+def departure(rows: Sequence[Row]) -> str:
+    """Return in a sentence how far the ranking by energy per area departs from that by datasheet efficiency."""
+    moved = [row for row in rows if row["rank_by_energy"] != row["rank_at_stc"]]
+    yields = [float(row["specific_yield_kwh_kwp"]) for row in rows]
+    spread = f"per kWp they lie {100 * (max(yields) / min(yields) - 1):.1f} % apart" if min(yields) > 0 else ""
+    if not moved:
+        text = "Per area the order is that of the datasheet efficiencies"
+    else:
+        moved.sort(key=lambda row: int(row["rank_by_energy"]))
+        names = ", ".join(
+            f"{plain(row['absorber'])} {_ordinal(row['rank_by_energy'])} instead of {_ordinal(row['rank_at_stc'])}"
+            for row in moved
+        )
+        text = f"Per area the order departs from that of the datasheet efficiencies: {names}"
+    return "; ".join(part for part in (text, spread) if part) + "."
+
+
+def _ordinal(number: Any) -> str:
+    n = int(number)
+    ending = "th" if n % 100 in (11, 12, 13) else {1: "st", 2: "nd", 3: "rd"}.get(n % 10, "th")
+    return f"{n}{ending}"

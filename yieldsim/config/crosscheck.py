@@ -1,0 +1,124 @@
+"""What only the whole study can tell: names given twice, names that nothing bears.
+
+Looks at the plain data, so that it has its say also where other parts of the study are wrong.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Iterator
+from typing import Any
+
+from yieldsim.config.fields import nearest, show
+from yieldsim.config.schema import folded
+from yieldsim.config.tree import Document, KeyPath
+from yieldsim.errors import Problem
+
+RESERVED = ("standard spectrum",)  # what gap_sweep.csv calls the rows without a site
+
+Named = list[tuple[KeyPath, str]]
+
+
+def problems(document: Document) -> list[Problem]:
+    """Return everything that is wrong between the parts of a study."""
+    study = document.data
+    if not isinstance(study, dict):
+        return []
+    return [
+        *_repeated(document, _names(study, "sites"), "sites"),
+        *_repeated(document, _names(study, "absorbers"), "absorbers"),
+        *_reserved(document, _names(study, "sites")),
+        *_repeated(document, _sweep_names(study), "qualities"),
+        *_reference(document, study),
+        *_mountings(document, study),
+        *_weather_twice(document, study),
+    ]
+
+
+def _items(study: dict[str, Any], section: str) -> Iterator[tuple[KeyPath, dict[str, Any]]]:
+    items = study.get(section)
+    for i, item in enumerate(items if isinstance(items, list) else []):
+        if isinstance(item, dict):
+            yield (section, i), item
+
+
+def _names(study: dict[str, Any], section: str) -> Named:
+    return [
+        ((*path, "name"), item["name"])
+        for path, item in _items(study, section)
+        if isinstance(item.get("name"), str) and item["name"]
+    ]
+
+
+def _sweep_names(study: dict[str, Any]) -> Named:
+    sweep = study.get("gap_sweep")
+    qualities = sweep.get("quality") if isinstance(sweep, dict) else None
+    if not isinstance(qualities, list):
+        return []
+    names = []
+    for i, quality in enumerate(qualities):
+        path: KeyPath = ("gap_sweep", "quality", i)
+        if isinstance(quality, str):
+            names.append((path, quality))
+        elif isinstance(quality, dict) and isinstance(quality.get("name"), str):
+            names.append(((*path, "name"), quality["name"]))
+    return names
+
+
+def _repeated(document: Document, names: Named, of: str) -> Iterator[Problem]:
+    first: dict[str, KeyPath] = {}
+    for path, name in names:
+        earlier = first.setdefault(folded(name), path)
+        if earlier != path:
+            found = f"the name {show(name)} again (first in line {document.mark(earlier).line})"
+            yield document.problem(path, found, f"names of {of} that differ by more than case")
+
+
+def _reserved(document: Document, names: Named) -> Iterator[Problem]:
+    for path, name in names:
+        if folded(name) in RESERVED:
+            yield document.problem(path, f"the name {show(name)}", "another name: the results use this one")
+
+
+def _reference(document: Document, study: dict[str, Any]) -> Iterator[Problem]:
+    name = study.get("reference")
+    names = [absorber for _, absorber in _names(study, "absorbers")]
+    if isinstance(name, str) and names and name not in names:
+        yield document.problem(("reference",), show(name), f"the name of an absorber{nearest(name, names)}")
+
+
+def _mountings(document: Document, study: dict[str, Any]) -> Iterator[Problem]:
+    shared = study.get("mounting")
+    names: dict[str, Any] = {}
+    if isinstance(shared, dict) and shared:
+        several = "kind" not in shared and all(isinstance(each, dict) for each in shared.values())
+        names = shared if several else {str(shared.get("kind", "fixed")): shared}
+    if shared is not None:
+        yield from _repeated_keys(document, ("mounting",), names)
+    for path, site in _items(study, "sites"):
+        own = site.get("mounting")
+        if own is None and shared is None:
+            yield document.problem(path, "no mounting", "`mounting` here, or one for the whole study")
+        if isinstance(own, dict):
+            yield from _repeated_keys(document, (*path, "mounting"), own)
+        for name in own if isinstance(own, list) else [own] if isinstance(own, str) else []:
+            if isinstance(name, str) and name not in names:
+                allowed = "a mounting of this site, or the name of one of the study's"
+                yield document.problem((*path, "mounting"), show(name), allowed + nearest(name, names))
+
+
+def _repeated_keys(document: Document, path: KeyPath, mapping: dict[str, Any]) -> Iterator[Problem]:
+    names = [((*path, key), key) for key in mapping if isinstance(key, str) and (*path, key) in document.keys]
+    yield from _repeated(document, names, "mountings")
+
+
+def _weather_twice(document: Document, study: dict[str, Any]) -> Iterator[Problem]:
+    for path, site in _items(study, "sites"):
+        files = site.get("weather")
+        if not isinstance(files, list):
+            continue
+        seen: set[str] = set()
+        for i, file in enumerate(files):
+            if isinstance(file, str):
+                if file in seen:
+                    yield document.problem((*path, "weather", i), f"{show(file)} again", "each weather file once")
+                seen.add(file)
