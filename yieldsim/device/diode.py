@@ -24,9 +24,11 @@ from numpy.typing import NDArray
 
 Array = NDArray[np.float64]
 
-#: Steps that bring every start below 1e-10 of the power (tests/device/test_diode.py shows how the error falls).
-NEWTON_STEPS = 10
+#: At most so many steps: enough for 1e-10 of the power from every start (tests/device/test_diode.py).
+NEWTON_STEPS = 12
 ROOT_STEPS = 60
+#: Newton stops once all voltages moved by less than this share of the thermal voltage; squared, that is rounding.
+SETTLED = 1e-7
 
 
 @dataclass(frozen=True, slots=True)
@@ -55,32 +57,28 @@ class Diode:
 
 def curve(diode: Diode, junction_voltage: Any) -> tuple[Any, Any]:
     """Return current density [A m-2] and terminal voltage [V] at a junction voltage [V], equations (1) and (2)."""
-    current = _current(diode, junction_voltage)
+    current = _derivatives(diode, junction_voltage)[0]
     return current, junction_voltage - current * diode.series_resistance
 
 
-def _current(diode: Diode, vj: Any) -> Any:
-    lost = diode.recombination_voltage / (diode.built_in_voltage - vj)
-    dark = diode.saturation_current * np.expm1(vj / diode.thermal_voltage)
-    return diode.photocurrent * (1 - lost) - dark - vj * diode.shunt_conductance
-
-
-def _slope_and_bend(diode: Diode, vj: Any) -> tuple[Any, Any]:
-    """Return -dJ/dVj [A m-2 V-1] and -d2J/dVj2 [A m-2 V-2], both positive."""
-    diffusion = diode.saturation_current * np.exp(vj / diode.thermal_voltage) / diode.thermal_voltage
-    room = diode.built_in_voltage - vj
-    recombination = diode.photocurrent * diode.recombination_voltage / (room * room)
-    slope = diffusion + diode.shunt_conductance + recombination
-    return slope, diffusion / diode.thermal_voltage + 2 * recombination / room
+def _derivatives(diode: Diode, vj: Any) -> tuple[Any, Any, Any]:
+    """Return J [A m-2], -dJ/dVj [A m-2 V-1] and -d2J/dVj2 [A m-2 V-2] of equation (1); the last two are positive."""
+    growth = np.expm1(vj / diode.thermal_voltage)
+    current = diode.photocurrent - diode.saturation_current * growth - vj * diode.shunt_conductance
+    diffusion = diode.saturation_current * (growth + 1) / diode.thermal_voltage
+    slope, bend = diffusion + diode.shunt_conductance, diffusion / diode.thermal_voltage
+    if np.any(np.asarray(diode.recombination_voltage) > 0):
+        room = diode.built_in_voltage - vj
+        lost = diode.photocurrent * diode.recombination_voltage / room
+        current, slope, bend = current - lost, slope + lost / room, bend + 2 * lost / (room * room)
+    return current, slope, bend
 
 
 def _upper_bound(diode: Diode) -> Any:
     """Return a voltage [V] over the junction at which no current is left: each loss alone would take all of it."""
+    by_diode = diode.thermal_voltage * np.log1p(np.asarray(diode.photocurrent) / diode.saturation_current)
     with np.errstate(divide="ignore", invalid="ignore"):
-        by_diode = diode.thermal_voltage * np.log1p(diode.photocurrent / diode.saturation_current)
-        by_shunt = np.where(
-            np.asarray(diode.shunt_conductance) > 0, diode.photocurrent / diode.shunt_conductance, np.inf
-        )
+        by_shunt = np.divide(diode.photocurrent, diode.shunt_conductance)  # inf without a shunt
     return np.minimum(np.minimum(by_diode, by_shunt), diode.built_in_voltage - diode.recombination_voltage)
 
 
@@ -145,16 +143,19 @@ def _root(diode: Diode) -> Array:
     vj = np.where(start < 0.99 * high, start, high / 2)
     rs = diode.series_resistance
     for _ in range(NEWTON_STEPS):
-        current = _current(diode, vj)
-        slope, bend = _slope_and_bend(diode, vj)
-        alive = current > 0
+        current, slope, bend = _derivatives(diode, vj)
         brake = 1 + 2 * rs * slope
-        flow = np.where(alive, current, 1.0)
+        alive = current > 0
+        flow = np.where(alive, current, np.nan)
         value = np.log(slope * vj / (flow * brake))
-        below = alive & (value < 0)
+        below = value < 0
         low, high = np.where(below, vj, low), np.where(below, high, vj)
         trial = vj - value / (bend / (slope * brake) + 1 / vj + slope / flow)
-        vj = np.where(alive & (trial >= low) & (trial <= high), trial, (low + high) / 2)
+        trial = np.where((trial >= low) & (trial <= high), trial, (low + high) / 2)  # also where no current was left
+        moved = np.abs(trial - vj)
+        vj = trial
+        if not np.any(moved > SETTLED * diode.thermal_voltage):
+            break
     return np.asarray(vj)
 
 
@@ -172,12 +173,12 @@ def open_circuit(diode: Diode) -> Any:
 
 def short_circuit(diode: Diode) -> Any:
     """Return the current density [A m-2] at zero terminal voltage; 0 without photocurrent, NaN where one is NaN."""
-    return _current(diode, _falling_root(diode, _bound_or_dark(diode), to_current=False))[()]
+    return _derivatives(diode, _falling_root(diode, _bound_or_dark(diode), to_current=False))[0][()]
 
 
 def _bound_or_dark(diode: Diode) -> Array:
-    with np.errstate(invalid="ignore"):
-        return np.where(np.asarray(diode.photocurrent) == 0, 0.0, _upper_bound(diode))
+    bound = _upper_bound(diode)
+    return np.where(np.asarray(diode.photocurrent) == 0, 0.0, bound)
 
 
 def _falling_root(diode: Diode, high: Array, *, to_current: bool) -> Array:
@@ -185,8 +186,7 @@ def _falling_root(diode: Diode, high: Array, *, to_current: bool) -> Array:
     low, vj = np.zeros_like(high), high
     rs = diode.series_resistance
     for _ in range(ROOT_STEPS):
-        current = _current(diode, vj)
-        slope, _ = _slope_and_bend(diode, vj)
+        current, slope, _ = _derivatives(diode, vj)
         value = current if to_current else current * rs - vj
         fall = slope if to_current else 1 + slope * rs
         low, high = np.where(value < 0, low, vj), np.where(value < 0, vj, high)

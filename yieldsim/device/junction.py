@@ -11,7 +11,8 @@ from numpy.typing import NDArray
 
 from yieldsim.constants import STANDARD_CELL_TEMPERATURE, STANDARD_IRRADIANCE, THERMAL_EV_PER_K
 from yieldsim.device import balance, diode
-from yieldsim.device.response import Response, folded, shifted
+from yieldsim.device.fold import folded
+from yieldsim.device.response import Response, shifted
 from yieldsim.spectrum import reference_bands
 
 Array = NDArray[np.float64]

@@ -8,7 +8,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from yieldsim.device.gap import steepest_edge_ev
-from yieldsim.spectrum import FIRST_EDGE_NM, LAST_EDGE_NM, band_yield
+from yieldsim.spectrum import FIRST_EDGE_NM, LAST_EDGE_NM
 from yieldsim.units import photon_energy_ev, wavelength_nm
 
 Array = NDArray[np.float64]
@@ -104,8 +104,3 @@ def scaled(response: Response, factor: float) -> Response:
 def at(response: Response, wavelength: Array) -> Array:
     """Return the quantum efficiency (n,) [1] at wavelengths (n,) [nm]; at a step the short-wave side."""
     return np.interp(wavelength, response.wavelength_nm, response.quantum_efficiency, left=0.0, right=0.0)
-
-
-def folded(response: Response) -> Array:
-    """Return charge per energy of each band, (122,) [A W-1]."""
-    return band_yield(response.wavelength_nm, response.quantum_efficiency)
