@@ -3,10 +3,10 @@
     python weather_samples/make_samples.py [FOLDER]
 
 Nothing here was measured. Each year is made of: the sun at twelve moments an hour; the clear sky of
-`pvlib.clearsky.bird` with the place's own daily haze, vapour, ozone and pressure (on purpose not yieldsim's own column of
-air: a simulator that is fed its own sky would always agree with itself); cloud cover and depth that linger, from random
-processes with memory; temperature, humidity, wind and snow that follow season, sun and cloud. Numbers of the places are
-chosen to look like their climates (from memory).
+`pvlib.clearsky.bird` with the place's own daily haze, vapour, ozone and pressure (on purpose not yieldsim's own column
+of air: a simulator that is fed its own sky would always agree with itself); cloud cover and depth that linger, from
+random processes with memory; temperature, humidity, wind and snow that follow season, sun and cloud. Numbers of the
+places are chosen to look like their climates (from memory).
 """
 
 from __future__ import annotations
@@ -42,9 +42,7 @@ class Place:
     aod: tuple[float, float, float]  # aod500: mean, summer less mean, spread of its logarithm
     dust_days: int  # days of blown dust
     angstrom: float
-    temp: tuple[
-        float, float, float, float
-    ]  # degC: mean, half the yearly range, half the daily range in sun, weather's spread
+    temp: tuple[float, float, float, float]  # degC: mean, half the yearly and the daily range, the weather's spread
     dew_gap: tuple[float, float]  # degC between temperature and dew point: mean, summer less mean
     wind: float  # m s-1, mean
     albedo: float

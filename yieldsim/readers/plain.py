@@ -59,12 +59,14 @@ class _Header:
 
 
 def claims(source: Source) -> bool:
-    """Return whether the file is of this format: ``#`` lines or none, then a line of our column names."""
+    """Return whether the file is of this format: our header lines, or three or more of our column names."""
     for line in source.lines_of_head[:_LONGEST_HEADER]:
-        if line.startswith("#") or not line.strip():
-            continue
-        names = _table.split(line)
-        return names[0] == "time" and any(name in COLUMNS for name in names)
+        if line.startswith("#"):
+            if line[1:].partition(":")[0].strip() in _NUMBERS:
+                return True
+        elif line.strip():
+            names = _table.split(line)
+            return sum(name == "time" or name in COLUMNS for name in names) >= 3
     return False
 
 
