@@ -74,7 +74,8 @@ class Optics:
     factor : [1], reference band energy over that of the model at the reference conditions
     gas_scale : [1], factor on gas optical depths, other than 1 in dark bands only
     rayleigh : [1], optical depth at standard pressure
-    ozone, water, mixed_gas : absorption coefficients of Bird & Riordan (1984)
+    ozone : absorption coefficient of Bird & Riordan (1984)
+    water, mixed_gas : absorption coefficients for their curves of growth, set on ASTM G173's direct beam
     haze_shape : [1], ln(wavelength/500 nm)
     haze_albedo : [1], single-scattering albedo of haze
     haze_asymmetry : [1]
@@ -114,7 +115,7 @@ class Transmittance:
 
 def bare_optics() -> Optics:
     """Return the band constants before the reference spectrum is folded in (factor and gas_scale 1)."""
-    table = reference.table("bird_riordan_1984")
+    table, gas = reference.table("bird_riordan_1984"), reference.table("gas_coefficients")
     wavelength = spectrum.band_wavelengths()
     solar = reference.table("astm_g173_03")
     um = wavelength / 1000.0
@@ -128,8 +129,8 @@ def bare_optics() -> Optics:
         gas_scale=one,
         rayleigh=1.0 / (um**4 * (115.6406 - 1.3366 / um**2)),
         ozone=table["ozone"],
-        water=table["water"],
-        mixed_gas=table["mixed_gas"],
+        water=gas["water"],
+        mixed_gas=gas["mixed_gas"],
         haze_shape=np.log(wavelength / 500.0),
         haze_albedo=0.945 * np.exp(-0.095 * np.log(wavelength / 400.0) ** 2),
         haze_asymmetry=HAZE_ASYMMETRY * one,
