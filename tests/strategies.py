@@ -2,6 +2,8 @@
 
 from hypothesis import strategies as st
 
+from yieldsim.config.crosscheck import RESERVED
+from yieldsim.config.schema import folded
 from yieldsim.constants import CELSIUS_ZERO, THERMAL_EV_PER_K
 from yieldsim.device.balance import radiative_current, saturation_current
 from yieldsim.device.diode import Diode
@@ -28,3 +30,181 @@ def diodes(draw):
         recombination_voltage=draw(st.floats(0.01, 0.1)) if recombines else 0.0,
         built_in_voltage=draw(st.floats(0.9, 1.4)) if recombines else float("inf"),
     )
+
+
+# ------------------------------------------------------------------------------------------------- studies
+
+STATIONS = ("pvlib:723170TYA.CSV", "pvlib:703165TY.csv")
+
+
+def _number(low, high):
+    return st.floats(low, high, allow_nan=False) | st.integers(int(-(-low // 1)), int(high // 1))
+
+
+def _monthly(low, high):
+    return st.floats(low, high) | st.lists(st.floats(low, high), min_size=12, max_size=12)
+
+
+def names():
+    """Return names as hostile as a study may hold: any printable text of up to 200 characters."""
+    unprintable = ("Cc", "Cs", "Cn", "Zl", "Zp")
+    text = st.text(st.characters(exclude_categories=unprintable), min_size=1, max_size=200)
+    return text.filter(lambda name: name == name.strip())
+
+
+def _unique_names(least, most):
+    return st.lists(names(), min_size=least, max_size=most, unique_by=folded).filter(
+        lambda found: not any(folded(name) in RESERVED for name in found)
+    )
+
+
+def mountings():
+    """Return one plane as a study holds it."""
+    return st.fixed_dictionaries(
+        {"tilt_deg": _number(0, 90), "azimuth_deg": _number(0, 360)}, optional={"kind": st.just("fixed")}
+    )
+
+
+def _atmospheres():
+    return st.fixed_dictionaries(
+        {},
+        optional={
+            "aod500": _monthly(0, 5),
+            "angstrom_exponent": _monthly(-0.5, 3),
+            "water_cm": _monthly(0, 12),
+            "ozone_atm_cm": _monthly(0.05, 0.7),
+            "haze": st.sampled_from(["hourly", "fixed"]),
+        },
+    )
+
+
+_QUALITY = {
+    "ideality": st.floats(1, 3),
+    "series_resistance_ohm_cm2": st.floats(0, 100),
+    "shunt_resistance_ohm_cm2": st.floats(1, 1e6),
+}
+_MODULE = {
+    "bifaciality": st.floats(0, 1),
+    "incidence_modifier": st.floats(0.05, 0.5) | st.just("none"),
+    "area_fraction": st.floats(0.1, 1),
+    "heat_loss": st.fixed_dictionaries({"constant_w_m2_k": st.floats(5, 100), "wind_w_s_m3_k": st.floats(0, 30)}),
+    "gap_shift_ev_per_k": st.floats(-1e-3, 1e-3),
+}
+
+
+def _absorbers(name):
+    like = st.sampled_from(["c-si", "cdte", "cigs", "gaas", "perovskite-1.55"])
+    efficiency = st.floats(1e-8, 1)
+    gap = st.floats(0.6, 2.5)
+    given = {"name": st.just(name)}
+    return st.one_of(
+        st.fixed_dictionaries({**given, "like": like}, optional={**_QUALITY, **_MODULE}),
+        st.fixed_dictionaries({**given, "gap_ev": gap, "quality": st.just("ideal")}, optional=_MODULE),
+        st.fixed_dictionaries(
+            {**given, "gap_ev": gap, "external_radiative_efficiency": efficiency}, optional={**_QUALITY, **_MODULE}
+        ),
+    )
+
+
+def _sweeps():
+    quality = st.one_of(
+        st.just("ideal"),
+        st.fixed_dictionaries({"like": st.sampled_from(["c-si", "gaas"])}, optional=_QUALITY),
+        st.fixed_dictionaries({"external_radiative_efficiency": st.floats(1e-8, 1), "collected": st.floats(0.1, 1)}),
+    )
+    return st.fixed_dictionaries(
+        {"from_ev": st.floats(0.9, 1.1), "to_ev": st.floats(1.2, 1.6), "step_ev": st.floats(0.1, 1)},
+        optional={"quality": quality},
+    )
+
+
+@st.composite
+def studies(draw):
+    """Return a valid study as plain data: any names, weather that pvlib ships."""
+    sites = [
+        draw(
+            st.fixed_dictionaries(
+                {"name": st.just(name), "weather": st.sampled_from(STATIONS)},
+                optional={
+                    "mounting": mountings(),
+                    "atmosphere": _atmospheres(),
+                    "ground": st.fixed_dictionaries({}, optional={"albedo": st.floats(0, 1)}),
+                    "latitude_deg": _number(-90, 90),
+                    "longitude_deg": _number(-180, 180),
+                    "elevation_m": _number(-450, 9000),
+                    "timestamps": st.sampled_from(["start", "end", "middle UTC+1"]),
+                    "allow_gaps": st.booleans(),
+                },
+            )
+        )
+        for name in draw(_unique_names(1, 3))
+    ]
+    absorbers = [draw(_absorbers(name)) for name in draw(_unique_names(1, 4))]
+    study = {
+        "study": draw(st.from_regex(r"[A-Za-z0-9](?:[a-z \-]{0,20}[a-z0-9])?", fullmatch=True)),
+        "mounting": draw(mountings()),
+        "sites": sites,
+        "absorbers": absorbers,
+    }
+    optional = {
+        "reference": st.sampled_from([absorber["name"] for absorber in absorbers]),
+        "losses": st.dictionaries(
+            st.sampled_from(["soiling", "snow", "wiring", "inverter", "availability"]), _monthly(0, 0.9)
+        ),
+        "gap_sweep": _sweeps(),
+        "keep": st.lists(st.sampled_from(["annual", "monthly", "plots"]), min_size=1, max_size=3, unique=True),
+    }
+    return study | draw(st.fixed_dictionaries({}, optional=optional))
+
+
+#: What can be wrong: key path in the study, what to put there (None = take the key away), key path the message names.
+DAMAGES = (
+    (("study",), None, "study"),
+    (("study",), "../elsewhere", "study"),
+    (("study",), "a\nb", "study"),
+    (("sites",), [], "sites"),
+    (("sites",), {"table": "sites.csv"}, "sites"),
+    (("sites", 0, "name"), "", "sites[0].name"),
+    (("sites", 0, "weather"), "no/such/file.csv", "sites[0].weather"),
+    (("sites", 0, "weather"), "pvlib:no such file.csv", "sites[0].weather"),
+    (("sites", 0, "weather"), 7, "sites[0].weather"),
+    (("sites", 0, "wether"), "a.csv", "sites[0].wether"),
+    (("sites", 0, "latitude_deg"), 91, "sites[0].latitude_deg"),
+    (("sites", 0, "longitude_deg"), "2.3 E", "sites[0].longitude_deg"),
+    (("sites", 0, "elevation_m"), float("nan"), "sites[0].elevation_m"),
+    (("sites", 0, "allow_gaps"), 1, "sites[0].allow_gaps"),
+    (("sites", 0, "mounting"), "not a mounting", "sites[0].mounting"),
+    (("sites", 0, "atmosphere"), {"aod500": [0.1] * 11}, "sites[0].atmosphere.aod500"),
+    (("mounting", "tilt_deg"), 200, "mounting.tilt_deg"),
+    (("mounting", "tilt_deg"), None, "mounting.tilt_deg"),
+    (("mounting", "azimuth_deg"), float("inf"), "mounting.azimuth_deg"),
+    (("mounting", "kind"), "flying", "mounting.kind"),
+    (("absorbers",), [], "absorbers"),
+    (("absorbers", 0, "gap_ev"), -1, "absorbers[0].gap_ev"),
+    (("absorbers", 0, "like"), "unobtainium", "absorbers[0].like"),
+    (("absorbers", 0, "bifaciality"), 1.5, "absorbers[0].bifaciality"),
+    (("absorbers", 0, "external_radiative_efficiency"), 0, "absorbers[0].external_radiative_efficiency"),
+    (("reference",), "nobody of this name", "reference"),
+    (("losses",), {"soiling": 2}, "losses.soiling"),
+    (("losses",), {"dust": 0.1}, "losses.dust"),
+    (("gap_sweep",), {"from_ev": 2, "to_ev": 1, "step_ev": 0.1}, "gap_sweep"),
+    (("gap_sweep",), {"from_ev": 1, "to_ev": 2, "step_ev": 0}, "gap_sweep.step_ev"),
+    (("keep",), ["everything"], "keep[0]"),
+    (("chance",), {"draws": 10}, "chance"),
+)
+
+
+@st.composite
+def broken_studies(draw, most=3):
+    """Return a study with one to three things wrong, and the key paths that the messages must name."""
+    study = draw(studies())
+    damages = draw(st.lists(st.sampled_from(DAMAGES), min_size=1, max_size=most, unique_by=lambda damage: damage[0][0]))
+    for path, value, _ in damages:
+        place = study
+        for part in path[:-1]:
+            place = place[part]
+        if value is None:
+            del place[path[-1]]
+        else:
+            place[path[-1]] = value
+    return study, [named for _, _, named in damages]

@@ -19,6 +19,7 @@ from yieldsim.commands import COMMANDS
 from yieldsim.errors import InputError, Problem, YieldsimError
 
 DONE, WRONG_INPUT, NOT_HERE, BUG, INTERRUPTED = 0, 1, 2, 3, 130
+_SHOWN_PROBLEMS = 200  # a file with more wants another look as a whole
 
 _ABOUT = "Which light absorber wins at which site, by how much, how surely: energy yield from hourly band spectra."
 _EXAMPLE = """example:
@@ -51,8 +52,10 @@ def main(arguments: Sequence[str] | None = None) -> int:
         _say("interrupted; what was finished is kept")
         return INTERRUPTED
     except InputError as error:
-        for problem in error.problems:
+        for problem in error.problems[:_SHOWN_PROBLEMS]:
             _say(f"error: {problem}")
+        if len(error.problems) > _SHOWN_PROBLEMS:
+            _say(f"error: and {len(error.problems) - _SHOWN_PROBLEMS} problems more, not shown")
         return error.exit_code
     except YieldsimError as error:
         _say(f"error: {error}")

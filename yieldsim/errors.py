@@ -23,6 +23,7 @@ class Problem:
     where : str, key path (``sites[0].weather``) or column name; may be empty
     found : str, what was found
     allowed : str, what is allowed
+    excerpt : str, the line of the file with the place marked; shown below the message; may be empty
     """
 
     file: str
@@ -30,12 +31,15 @@ class Problem:
     where: str
     found: str
     allowed: str
+    excerpt: str = ""
 
     def __str__(self) -> str:
+        """Return the problem as people read it: place, key, found, allowed."""
         place = ":".join(part for part in (self.file, str(self.line) if self.line else "") if part)
         head = ": ".join(part for part in (place, self.where) if part)
         body = f"found {self.found}; allowed: {self.allowed}" if self.allowed else self.found
-        return f"{head}: {body}" if head else body
+        text = f"{head}: {body}" if head else body
+        return f"{text}\n{self.excerpt}" if self.excerpt else text
 
 
 class InputError(YieldsimError):
@@ -44,6 +48,7 @@ class InputError(YieldsimError):
     exit_code = 1
 
     def __init__(self, problems: Problem | Iterable[Problem]) -> None:
+        """Take one problem or several."""
         self.problems: tuple[Problem, ...] = (problems,) if isinstance(problems, Problem) else tuple(problems)
         super().__init__("\n".join(str(problem) for problem in self.problems))
 

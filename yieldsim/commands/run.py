@@ -37,9 +37,10 @@ def workers(text: str) -> int:
 def run(options: argparse.Namespace) -> int:
     """Compute the study, show progress, print the summary."""
     from yieldsim import api
+    from yieldsim.study.store import file_stem
 
     plan = api.load_study(options.study)
-    out = options.out if options.out is not None else Path("outputs") / plan.name
+    out = options.out if options.out is not None else Path("outputs", file_stem(plan.name))
     progress = Progress(options.quiet)
     try:
         result = api.run_study(plan, out, workers=options.workers, fresh=options.fresh, progress=progress)

@@ -55,7 +55,7 @@ def _problem(model: type[BaseModel], document: Document, error: Any, not_yet: fr
     if kind == REFUSED:
         return document.problem(path, error["ctx"]["found"], error["ctx"]["allowed"])
     if kind == "missing":
-        return document.problem(path, "nothing", _meaning(model, path))
+        return document.problem(path, f"no key `{path[-1]}`", _meaning(model, path))
     if kind in ("extra_forbidden", "invalid_key"):
         return _unknown(document, path, _fields(_models_at(model, path[:-1])), not_yet)
     if kind in ("model_type", "model_attributes_type", "dict_type"):
@@ -68,6 +68,7 @@ def _problem(model: type[BaseModel], document: Document, error: Any, not_yet: fr
 
 def _unknown(document: Document, path: KeyPath, fields: Mapping[str, Any], not_yet: frozenset[str]) -> Problem:
     key = str(path[-1])
+    path = (*path[:-1], key)  # a number as a key is spelt and found like any other
     if key in not_yet:
         found, close = f"key `{key}`, which this version does not take yet", ""
     else:
@@ -103,7 +104,12 @@ def _models_at(model: type[BaseModel], path: KeyPath) -> list[type[BaseModel]]:
 
 
 def _fields(models: Iterable[type[BaseModel]]) -> dict[str, Any]:
-    return {name: field for model in models for name, field in model.model_fields.items()}
+    """Return the fields of models by name, a model's own before those it has from its base."""
+    fields = {}
+    for model in models:
+        own = [name for name in model.model_fields if name in model.__annotations__]
+        fields.update({name: model.model_fields[name] for name in (*own, *model.model_fields)})
+    return fields
 
 
 def _keys(fields: Mapping[str, Any]) -> str:
@@ -116,4 +122,4 @@ def _meaning(model: type[BaseModel], path: KeyPath) -> str:
     if field is None:
         return f"a value for `{path[-1]}`"
     kinds = [kind.allowed for kind in field.metadata if hasattr(kind, "allowed")]
-    return "; ".join(["this key", *([field.description] if field.description else []), *kinds])
+    return "; ".join([*([field.description] if field.description else []), *kinds]) or "this key, which has no default"

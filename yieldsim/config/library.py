@@ -15,15 +15,17 @@ from pydantic import Field
 from yieldsim.config import tree
 from yieldsim.config.explain import demand
 from yieldsim.config.fields import Choice, Kind, Length, Number, Section, Text
-from yieldsim.device import junction as junction_module
-from yieldsim.device import stack as stack_module
 from yieldsim.device.junction import Junction
 from yieldsim.device.response import Response
 from yieldsim.device.stack import Absorber
 
 SUFFIX = ".yaml"
-JUNCTION_NUMBERS = tuple(junction_module.LIMITS)
-MODULE_NUMBERS = tuple(stack_module.LIMITS)
+#: Numbers of a junction and of a module that a study or an entry may give; the names of their records' fields.
+JUNCTION_NUMBERS = (
+    "gap_ev", "external_radiative_efficiency", "ideality", "series_resistance_ohm_cm2", "shunt_resistance_ohm_cm2",
+    "recombination_v", "built_in_v", "gap_shift_ev_per_k",
+)  # fmt: skip
+MODULE_NUMBERS = ("bifaciality", "incidence_modifier", "area_fraction")
 
 _Source = Annotated[str, Text(1000, "where the value comes from")]
 
@@ -123,7 +125,8 @@ def _entry(name: str, file: _File) -> Entry:
     numbers = {field: each.value for field, each in sourced.items()}
     points = file.eqe.value.items() if isinstance(file.eqe.value, dict) else file.eqe.value
     response = Response(*np.array([list(point) for point in points], dtype=np.float64).T)
-    only = Junction(response=response, **{field: numbers[field] for field in JUNCTION_NUMBERS if field in numbers})
+    given: dict[str, Any] = {field: numbers[field] for field in JUNCTION_NUMBERS if field in numbers}
+    only = Junction(response=response, **given)
     module: dict[str, Any] = {field: numbers[field] for field in MODULE_NUMBERS if field in numbers}
     if file.heat_loss is not None:
         module["heat_loss"] = tuple(file.heat_loss.value)
