@@ -1,0 +1,119 @@
+"""The summary of a run, and what is handed to the engine."""
+
+from pathlib import Path
+from types import SimpleNamespace
+
+import pytest
+
+from yieldsim import api
+from yieldsim.cli import main
+from yieldsim.commands.run import departure, summary
+from yieldsim.errors import PlaceError
+
+
+def row(absorber, yields, energy, ranks, site="Saltmarsh Point", mounting="fixed"):
+    """Return a row of annual.csv; ranks: by yield, by energy, at standard conditions."""
+    return {
+        "site": site,
+        "mounting": mounting,
+        "absorber": absorber,
+        "hours": 8760.0,
+        "poa_kwh_m2": 1234.5,
+        "specific_yield_kwh_kwp": yields,
+        "energy_kwh_m2": energy,
+        "rank_by_yield": ranks[0],
+        "rank_by_energy": ranks[1],
+        "rank_at_stc": ranks[2],
+    }
+
+
+ROWS = [
+    row("silicon", 1000.0, 210.0, (3, 1, 1)),
+    row("cadmium telluride", 1031.0, 191.0, (1, 2, 3)),
+    row("perovskite", 1010.0, 190.0, (2, 3, 2)),
+]
+
+
+def test_the_summary_ranks_by_yield_and_sets_it_against_the_reference():
+    lines = summary(ROWS, "silicon", Path("out")).splitlines()
+    assert lines[0] == "Saltmarsh Point: 1234 kWh/m2 on the plane in 8760 h"
+    assert [line.split()[1] for line in lines[2:5]] == ["cadmium", "perovskite", "silicon"]
+    assert "+3.1 %" in lines[2]
+    assert "+1.0 %" in lines[3]
+    assert "%" not in lines[4]  # the reference itself
+    assert lines[2].endswith("2 (3)")
+    assert lines[4].rstrip().endswith("1")
+    assert lines[-1] == "Report out/report.html, tables out/annual.csv and others in out/"
+
+
+def test_the_departure_from_the_datasheet_ranking_is_a_sentence():
+    assert departure(ROWS) == (
+        "Per area the order departs from that of the datasheet efficiencies: cadmium telluride 2nd instead of 3rd, "
+        "perovskite 3rd instead of 2nd; per kWp they lie 3.1 % apart."
+    )
+
+
+def test_no_departure():
+    rows = [row("a", 1000.0, 2.0, (1, 1, 1)), row("b", 950.0, 1.0, (2, 2, 2))]
+    assert departure(rows) == (
+        "Per area the order is that of the datasheet efficiencies; per kWp they lie 5.3 % apart."
+    )
+
+
+@pytest.mark.parametrize(("number", "said"), [(1, "1st"), (2, "2nd"), (3, "3rd"), (11, "11th"), (21, "21st")])
+def test_ordinals(number, said):
+    assert f"a {said} instead" in departure([row("a", 1.0, 1.0, (1, number, 99))])
+
+
+def test_each_site_and_mounting_has_its_own_table():
+    rows = [
+        row("a", 1.0, 1.0, (1, 1, 1), site, mounting) for site in ("North", "South") for mounting in ("flat", "steep")
+    ]
+    titles = [line.split(":")[0] for line in summary(rows, "a", Path("o")).splitlines() if "on the plane" in line]
+    assert titles == ["North, flat", "North, steep", "South, flat", "South, steep"]
+
+
+def test_hostile_names_are_shown_as_text():
+    text = summary([row("a\x1b[2J", 1.0, 1.0, (1, 1, 1), "s\nite")], "a", Path("o"))
+    assert "\x1b" not in text
+    assert "s?ite" in text
+
+
+class Frame:
+    def to_dict(self, orient):
+        assert orient == "records"
+        return ROWS
+
+
+@pytest.fixture
+def engine(monkeypatch):
+    """Return the calls that a run makes to the engine, which computes nothing here."""
+    calls = []
+
+    def run_study(plan, out, **options):
+        calls.append((plan, out, options))
+        return SimpleNamespace(annual=Frame())
+
+    monkeypatch.setattr(api, "load_study", lambda path: SimpleNamespace(name=Path(path).stem, reference="silicon"))
+    monkeypatch.setattr(api, "run_study", run_study)
+    return calls
+
+
+def test_run_hands_its_options_to_the_engine(engine, capsys):
+    assert main(["run", "two-coasts.yaml"]) == 0
+    assert main(["run", "x.yaml", "--out", "there", "--workers", "2", "--fresh", "--quiet"]) == 0
+    (_, first, one), (_, second, two) = engine
+    assert (first, one["workers"], one["fresh"]) == (Path("outputs/two-coasts"), 1, False)
+    assert (second, two["workers"], two["fresh"]) == (Path("there"), 2, True)
+    said = capsys.readouterr()
+    assert said.err == ""  # no progress where nobody watches
+    assert said.out.count("Saltmarsh Point") == 1  # the quiet run says nothing
+
+
+def test_what_the_engine_cannot_do_here_is_2(engine, monkeypatch, capsys):
+    def full(plan, out, **options):
+        raise PlaceError("cannot write out/annual.csv: No space left on device")
+
+    monkeypatch.setattr(api, "run_study", full)
+    assert main(["run", "x.yaml"]) == 2
+    assert "No space left" in capsys.readouterr().err
