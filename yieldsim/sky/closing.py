@@ -21,6 +21,11 @@ DIFFUSE_TOLERANCE = 0.15  # a clear hour's haze explains its diffuse light withi
 DIFFUSE_FLOOR = 8.0  # W m-2, on top: what pyranometers leave at low sun (common practice, no source)
 NEIGHBOUR_RATIO = 1.5  # haze of neighbouring clear hours agrees within this factor ...
 NEIGHBOUR_STEP = 0.05  # ... or within this optical depth, whichever is wider
+STEADY_STEP = 0.03  # haze of three hours in a row differs by no more than this depth ...
+STEADY_SHARE = 0.2  # ... or this share, whichever is wider, where it is to tell of a month
+PRIOR_DAYS = 1.0  # how many clear days the climatology counts for
+_DAY_HOURS = 2  # clear hours a day needs to tell of its haze
+_LEAST_COS_ZENITH = 0.2  # lower suns tell more of refraction and of the horizon than of haze
 _LEAST_BEAM = 1.0  # W m-2: below it a beam tells nothing about haze
 _OPEN = 1e-3  # share of the hour under cloud below which there is no cloud to solve
 _CLOUD_TOLERANCE = 2e-4  # of transmittance: moves no band over broadband by more than 0.01 %
@@ -40,6 +45,8 @@ class ClosedSky:
     cloud_depth : (n,) array [1], of the obscured part of the hour; 0 = none
     open_share : (n,) array [1], share of the hour with open sun
     clear : (n,) bool array, hours whose haze explains beam and diffuse light
+    monthly_aod500 : (12,) array [1], haze expected of each month, from its clear days and the prior; NaN where it has none
+    clear_days : (12,) int array, days of each month with enough clear hours
     """
 
     beam: Array
@@ -48,6 +55,8 @@ class ClosedSky:
     cloud_depth: Array
     open_share: Array
     clear: Mask
+    monthly_aod500: Array
+    clear_days: NDArray[np.intp]
 
 
 def close(
@@ -58,6 +67,8 @@ def close(
     consecutive: Mask,
     *,
     haze_hourly: bool = True,
+    day: NDArray[np.intp] | None = None,
+    month: NDArray[np.intp] | None = None,
     constants: Optics | None = None,
 ) -> ClosedSky:
     """Return band spectra that sum to the measured light.
@@ -69,6 +80,8 @@ def close(
     dni, dhi : (n,) array [W m-2], not negative, over the lit part of the hour
     consecutive : (n,) bool array, hour follows the one before it without a gap
     haze_hourly : solve the haze of clear hours, and of hours with more beam than the prior lets through
+    day, month : (n,) int arrays, number of the day and month (0-11) of each hour; where given, hours that tell nothing of
+        their haze get that of their month's clear days instead of the prior
     constants : Optics, those with the reference folded in unless given
 
     Returns
@@ -83,8 +96,16 @@ def close(
     """
     constants = column.optics() if constants is None else constants
     haze, clear = air.aod500, np.zeros(len(dni), dtype=bool)
+    monthly, clear_days = np.full(12, np.nan), np.zeros(12, dtype=np.intp)
     if haze_hourly:
-        haze, clear = _solve_haze(air, earth_sun, dni, dhi, consecutive, constants)
+        solved, clear = _solve_haze(air, earth_sun, dni, dhi, consecutive, constants)
+        prior = air.aod500
+        if day is not None and month is not None:
+            usable = clear & steady(solved, consecutive) & (air.cos_zenith > _LEAST_COS_ZENITH)
+            monthly, clear_days = monthly_haze(solved, prior, usable, day, month)
+            prior = monthly[month]
+        brighter = (dni > _beam_shape(air.with_aod500(prior), earth_sun, constants)[1]) & (dni > _LEAST_BEAM)
+        haze = np.where(clear | brighter, solved, prior)
     air = air.with_aod500(haze)
     n_band = len(constants.factor)
     beam, diffuse = np.empty((len(dni), n_band)), np.empty((len(dni), n_band))
@@ -93,14 +114,14 @@ def close(
         beam[part], diffuse[part], cloud_depth[part], open_share[part] = _close_block(
             air.only(part), earth_sun[part], dni[part], dhi[part], constants
         )
-    return ClosedSky(beam, diffuse, haze, cloud_depth, open_share, clear)
+    return ClosedSky(beam, diffuse, haze, cloud_depth, open_share, clear, monthly, clear_days)
 
 
 def _blocks(n: int) -> Iterator[slice]:
     return (slice(start, min(start + BLOCK, n)) for start in range(0, n, BLOCK))
 
 
-def beam_haze(air: Air, earth_sun: Array, dni: Array, constants: Optics) -> tuple[Array, Array]:
+def beam_haze(air: Air, earth_sun: Array, dni: Array, constants: Optics) -> Array:
     """Return the haze that lets the measured beam through.
 
     Parameters
@@ -111,8 +132,7 @@ def beam_haze(air: Air, earth_sun: Array, dni: Array, constants: Optics) -> tupl
 
     Returns
     -------
-    aod500 : (n,) array [1], kept within `AOD_RANGE`
-    prior_beam : (n,) array [W m-2], the beam under the haze of ``air``
+    (n,) array [1], kept within `AOD_RANGE`
 
     Notes
     -----
@@ -120,7 +140,6 @@ def beam_haze(air: Air, earth_sun: Array, dni: Array, constants: Optics) -> tupl
     """
     passed, slope = column.beam_transmittance(air, constants)
     passed *= constants.extraterrestrial * constants.factor * earth_sun[:, None]
-    prior = (passed * np.exp(-air.aod500[:, None] * slope)).sum(axis=1)
     haze = air.aod500.copy()
     wanted = np.log(np.maximum(dni, 1e-3))
     for _ in range(_HAZE_STEPS):
@@ -131,23 +150,74 @@ def beam_haze(air: Air, earth_sun: Array, dni: Array, constants: Optics) -> tupl
         haze = np.clip(haze + step, *AOD_RANGE)
         if np.max(np.abs(step), initial=0.0) < 1e-10:
             break
-    return haze, prior
+    return haze
 
 
 def _solve_haze(
     air: Air, earth_sun: Array, dni: Array, dhi: Array, consecutive: Mask, constants: Optics
 ) -> tuple[Array, Mask]:
-    """Return each hour's haze, solved where the hour is clear or brighter than the prior allows, and which are clear."""
-    solved, prior_beam, explained = np.empty_like(dni), np.empty_like(dni), np.zeros(len(dni), dtype=bool)
+    """Return the haze that each hour's beam tells of, and which hours are clear."""
+    solved, explained = np.empty_like(dni), np.zeros(len(dni), dtype=bool)
     for part in _blocks(len(dni)):
         hours = air.only(part)
-        solved[part], prior_beam[part] = beam_haze(hours, earth_sun[part], dni[part], constants)
+        solved[part] = beam_haze(hours, earth_sun[part], dni[part], constants)
         explained[part] = _diffuse_explained(
             hours.with_aod500(solved[part]), earth_sun[part], dni[part], dhi[part], constants
         )
-    clear = explained & _neighbours_agree(solved, explained, consecutive)
-    brighter = (dni > prior_beam) & (dni > _LEAST_BEAM)
-    return np.where(clear | brighter, solved, air.aod500), clear
+    return solved, explained & _neighbours_agree(solved, explained, consecutive)
+
+
+def steady(haze: Array, consecutive: Mask) -> Mask:
+    """Return the hours whose haze is that of the hours right before and after: cloud does not hold so still.
+
+    Parameters
+    ----------
+    haze : (n,) array [1]
+    consecutive : (n,) bool array, hour follows the one before it without a gap
+    """
+    still = np.zeros(len(haze), dtype=bool)
+    if len(haze) < 3:
+        return still
+    three = np.stack([haze[:-2], haze[1:-1], haze[2:]])
+    least = three.min(axis=0)
+    near = three.max(axis=0) - least <= np.maximum(STEADY_STEP, STEADY_SHARE * least)
+    still[1:-1] = near & consecutive[1:-1] & consecutive[2:]
+    return still
+
+
+def monthly_haze(
+    solved: Array, prior: Array, clear: Mask, day: NDArray[np.intp], month: NDArray[np.intp]
+) -> tuple[Array, NDArray[np.intp]]:
+    """Return the haze to expect of each month from its clear days, drawn to the prior where they are few.
+
+    Parameters
+    ----------
+    solved, prior : (n,) arrays [1]
+    clear : (n,) bool array, hours whose solved haze is to be believed
+    day, month : (n,) int arrays, number of the day, month 0-11
+
+    Returns
+    -------
+    aod500 : (12,) array [1]; NaN in a month without any hour
+    clear_days : (12,) int array
+
+    Notes
+    -----
+    A day's haze is the median of its clear hours, of which it needs two; a month's the median of its days. The prior counts
+    as `PRIOR_DAYS` days, in logarithms, since haze scatters by factors.
+    """
+    expected, days = np.full(12, np.nan), np.zeros(12, dtype=np.intp)
+    for m in np.unique(month):
+        inside = month == m
+        expected[m] = np.exp(np.mean(np.log(prior[inside])))
+        chosen = inside & clear
+        numbers, count = np.unique(day[chosen], return_counts=True)
+        hazes = [np.median(solved[chosen & (day == number)]) for number in numbers[count >= _DAY_HOURS]]
+        days[m] = len(hazes)
+        if hazes:
+            found = np.log(np.median(hazes))
+            expected[m] = np.exp((found * len(hazes) + np.log(expected[m]) * PRIOR_DAYS) / (len(hazes) + PRIOR_DAYS))
+    return expected, days
 
 
 def _diffuse_explained(air: Air, earth_sun: Array, dni: Array, dhi: Array, constants: Optics) -> Mask:

@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from functools import lru_cache
 
 import numpy as np
@@ -21,6 +21,8 @@ from yieldsim.weather import Weather
 Array = NDArray[np.float64]
 
 DEFAULT_ALBEDO = 0.2  # a mixed ground of grass and soil (common practice, no source)
+HOURLY = "; each clear hour's own from its beam"
+CLIMATOLOGY = "Linke turbidity climatology (Remund et al. 2003)"
 DEFAULT_WATER_CM = 1.4164  # the water of ASTM G173-03, where a file says nothing of humidity
 
 
@@ -127,17 +129,25 @@ def site_sky(site: SitePlan, weather: Weather) -> SiteSky:
         dhi / course.lit,
         consecutive,
         haze_hourly=site.atmosphere.haze == "hourly",
+        **_calendar(weather, lit, month, sources),
     )
     share = course.lit[:, None]
-    closed = closing.ClosedSky(
-        closed.beam * share,
-        closed.diffuse * share,
-        closed.aod500,
-        closed.cloud_depth,
-        closed.open_share,
-        closed.clear,
-    )
+    closed = replace(closed, beam=closed.beam * share, diffuse=closed.diffuse * share)
+    if closed.clear_days.any():
+        days = ", ".join(str(count) for count in closed.clear_days)
+        note = f"monthly medians of clear days from their beam (days a month: {days}), prior "
+        sources = (("aod500", note + sources[0][1]), *sources[1:])
     return SiteSky(weather, lit, month[lit], course, air, closed, sources)
+
+
+def _calendar(
+    weather: Weather, lit: NDArray[np.intp], month: NDArray[np.intp], sources: Sequence[tuple[str, str]]
+) -> dict[str, NDArray[np.intp]]:
+    """Return day and month for the monthly haze, where the air's haze is a climatology that the beam may correct."""
+    if not dict(sources)["aod500"].startswith(CLIMATOLOGY):
+        return {}
+    day = (weather.time[lit] + round(weather.utc_offset_h * 3600)) // 86400
+    return {"day": day.astype(np.intp), "month": month[lit]}
 
 
 def _air(
@@ -167,7 +177,7 @@ def _air(
         )
     air = column.Air(cos_zenith, pressure, water, ozone, haze, exponent, albedo)
     sources = (
-        ("aod500", haze_source + (", then each clear hour's own" if plan.haze == "hourly" else "")),
+        ("aod500", haze_source + (HOURLY if plan.haze == "hourly" else "")),
         ("angstrom_exponent", exponent_source),
         ("precipitable_water", water_source),
         ("ozone", ozone_source),
@@ -237,7 +247,7 @@ def _haze(
     monthly_water = np.bincount(month, water, minlength=12) / count
     monthly_exponent = np.bincount(month, exponent, minlength=12) / count
     monthly = atmosphere.aod500_from_turbidity(turbidity, monthly_water, monthly_exponent)
-    default, source = monthly[month], "Linke turbidity climatology (Remund et al. 2003)"
+    default, source = monthly[month], CLIMATOLOGY
     if "aod_broadband" in weather:
         broadband = atmosphere.aod500_from_broadband(weather["aod_broadband"][lit], exponent)
         filled = np.isfinite(broadband)
