@@ -20,7 +20,7 @@ from yieldsim.errors import PlaceError
 from yieldsim.study import compare, run, store, sweep
 from yieldsim.study.annual import Ratings
 from yieldsim.study.plan import SitePlan, StudyPlan
-from yieldsim.study.result import StudyResult
+from yieldsim.study.result import StudyResult, by_hour_table, responses_table
 from yieldsim.weather import Weather
 
 _VERSIONS_OF = ("numpy", "scipy", "pandas", "xarray", "pvlib", "numba", "h5py", "h5netcdf", "matplotlib", "pydantic")
@@ -92,10 +92,14 @@ def run_study(
     except OSError as error:
         raise PlaceError(f"cannot make the folder {folder}: {error.strerror}") from error
     pieces, seconds = run.site_pieces(plan, load_weather, folder, workers=workers, fresh=fresh, progress=progress)
+    standard = standard_table(plan)
+    rated = dict(zip(standard["absorber"], Ratings.of(plan.absorbers).terminals, strict=True))
+    kept = store.open_hourly(folder, [site.name for site in plan.sites] if "hourly" in plan.keep else [])
+    by_hour = [by_hour_table({name: hours}, rated) for name, hours in kept]
     swept = run.rows(pieces, "gap_sweep")
     if plan.gap_sweep is not None:
         swept += sweep.standard_rows(plan.gap_sweep)
-    details = {
+    details: dict[str, Any] = {
         "study": plan.name,
         "yieldsim": yieldsim.__version__,
         "started": start.strftime("%Y-%m-%dT%H:%M:%SZ"),
@@ -114,7 +118,9 @@ def run_study(
         monthly=pd.DataFrame(run.rows(pieces, "monthly")),
         gap_sweep=pd.DataFrame(swept) if swept else None,
         weather_quality=pd.DataFrame(run.rows(pieces, "weather_quality")),
-        standard=standard_table(plan),
+        standard=standard,
+        responses=responses_table(plan.absorbers),
+        by_hour=pd.concat(by_hour, ignore_index=True) if by_hour else None,
         spectra=store.open_spectra(folder, [site.name for site in plan.sites]),
         run=details,
     )
@@ -152,5 +158,4 @@ def peak_memory_mb() -> float | None:
     except ImportError:
         return None
     peak = resource.getrusage(resource.RUSAGE_SELF).ru_maxrss
-    scale: Any = 2**20 if sys.platform == "darwin" else 2**10
-    return round(peak / scale, 1)
+    return round(float(peak) / (2**20 if sys.platform == "darwin" else 2**10), 1)

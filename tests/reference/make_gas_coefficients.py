@@ -2,9 +2,11 @@
 
     python tests/reference/make_gas_coefficients.py
 
-Bird & Riordan's curves of growth are kept; the coefficient of each band is chosen so that the direct beam of the standard
+Bird & Riordan's curves of growth are kept; the coefficient of each band is chosen so that the direct beam of the
+standard
 comes out under the standard's air. Where less than LEAST of depth is at stake, the standard's haze and ozone, which are
-not known to that depth, would be taken for gas: there the mean depth of two line-by-line sources is taken. They also say
+not known to that depth, would be taken for gas: there the mean depth of two line-by-line sources is taken. They also
+say
 how a band's depth is shared between vapour and mixed gas. Needs yieldsim installed; reads its published tables only.
 """
 
@@ -36,7 +38,9 @@ def depth_at(name, gas, path):
     chosen = table["gas"] == gas
     paths = np.unique(table["path"][chosen])
     passed = np.ones((len(paths), len(wavelength)))
-    for nm, at, share in zip(table["wavelength_nm"][chosen], table["path"][chosen], table["transmittance"][chosen], strict=True):
+    for nm, at, share in zip(
+        table["wavelength_nm"][chosen], table["path"][chosen], table["transmittance"][chosen], strict=True
+    ):
         passed[np.searchsorted(paths, at), np.argmin(np.abs(wavelength - nm))] = share
     log_depth = np.log(np.maximum(-np.log(np.maximum(passed, 1e-12)), 1e-9))
     return np.array([np.exp(np.interp(np.log(path), np.log(paths), row)) for row in log_depth.T])

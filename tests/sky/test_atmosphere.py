@@ -18,7 +18,8 @@ def test_turbidity_is_read_from_the_same_pixel_as_pvlib_does(latitude, longitude
 
 
 def test_turbidity_three_is_a_slightly_hazy_sky():
-    """physics of Kasten (1996): a Linke turbidity of 3 with 2 cm of water is an AOD500 of about 0.085 (prototype figure)."""
+    """physics of Kasten (1996): a Linke turbidity of 3 with 2 cm of water is an AOD500 of about 0.085 (prototype
+    figure)."""
     found = atmosphere.aod500_from_turbidity(np.array([3.0]), np.array([2.0]), np.array([1.14]))
     assert found[0] == pytest.approx(0.085, abs=0.002)
 

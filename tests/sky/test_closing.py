@@ -82,7 +82,8 @@ def test_fixed_haze_keeps_the_given_one():
 
 
 def test_lone_hours_are_not_called_clear():
-    """An hour whose neighbours disagree may be thin cloud: it keeps the prior unless it is brighter than that allows."""
+    """An hour whose neighbours disagree may be thin cloud: it keeps the prior unless it is brighter than that
+    allows."""
     air = some_air(3, cos_zenith=np.full(3, 0.7))
     dni, dhi = light_of(air.with_aod500(np.array([0.9, 0.15, 0.9])), np.zeros(3), np.ones(3))
     sky = close(air, dni, dhi)
@@ -129,7 +130,11 @@ class TestMonthlyHaze:
         scatter = np.exp(0.3 * rng.standard_normal(366))[day - day[0]]
         n = len(time)
         air = some_air(
-            n, cos_zenith=course.cos_zenith, water_cm=np.full(n, 1.5), aod500=truth * scatter, pressure=np.full(n, 101325.0)
+            n,
+            cos_zenith=course.cos_zenith,
+            water_cm=np.full(n, 1.5),
+            aod500=truth * scatter,
+            pressure=np.full(n, 101325.0),
         )
         overcast = (rng.random(366) < 0.5)[day - day[0]]
         share = np.where(overcast, rng.uniform(0, 0.7, n), 1.0)
@@ -139,7 +144,7 @@ class TestMonthlyHaze:
         prior = air.with_aod500(np.full(len(dni), 0.15))
         follows = np.diff(time, prepend=time[0] - 1) == 3600
         return closing.close(
-            prior, course.earth_sun, dni / course.lit, dhi / course.lit, follows, day=day, month=month.astype(np.intp)
+            prior, course.earth_sun, dni / course.lit, dhi / course.lit, follows, calendar=(day, month.astype(np.intp))
         )
 
     def median(self, air, month, day, open_share):
@@ -149,7 +154,8 @@ class TestMonthlyHaze:
         return np.array([np.median([air.aod500[day == d][0] for d in numbers]) for numbers in days])
 
     def test_file_made_by_the_column(self):
-        """Within max(0.02, 15 %) of each month's median over its sunny days, with 2 % of noise in both irradiances and half the days cloudy."""
+        """Within max(0.02, 15 %) of each month's median over its sunny days, with 2 % of noise in both irradiances
+        and half the days cloudy."""
         rng = np.random.default_rng(8)
         time, month, day, course, air, _, share = self.year(rng)
         dni, dhi = light_of(air, np.full(len(time), 12.0), share)
@@ -161,7 +167,8 @@ class TestMonthlyHaze:
         assert np.all(np.abs(found.monthly_aod500 - truth) <= np.maximum(0.02, 0.15 * truth))
 
     def test_file_made_by_bird(self):
-        """Reference: pvlib.clearsky.bird, an independent broadband model: within max(0.04, 30 %), since the two differ by a few
+        """Reference: pvlib.clearsky.bird, an independent broadband model: within max(0.04, 30 %), since the two
+        differ by a few
         percent of beam under the same haze."""
         from pvlib import clearsky
 

@@ -2,7 +2,8 @@
 
 import numpy as np
 import pytest
-from pvlib import clearsky, spectrum as pvlib_spectrum
+from pvlib import clearsky
+from pvlib import spectrum as pvlib_spectrum
 from scipy.optimize import brentq
 
 from yieldsim import reference, spectrum
@@ -29,7 +30,9 @@ def air(n=1, **changes):
         "cos_zenith": 0.7, "pressure": 101325.0, "water_cm": 1.4164, "ozone_atm_cm": 0.3438, "aod500": 0.084,
         "angstrom_exponent": 1.14, "albedo": 0.2,
     }  # fmt: skip
-    return column.Air(**{name: np.broadcast_to(changes.get(name, value), n).astype(float) for name, value in fields.items()})
+    return column.Air(
+        **{name: np.broadcast_to(changes.get(name, value), n).astype(float) for name, value in fields.items()}
+    )
 
 
 def horizontal(given, cloud=0.0):
@@ -40,13 +43,15 @@ def horizontal(given, cloud=0.0):
 
 @pytest.mark.parametrize("gap_ev", np.linspace(0.7, 2.2, 31))
 def test_spectral_factor_is_one_at_the_reference(gap_ev):
-    """Closed form: under the standard's air on its plane, every gap has a factor of 1; 2e-4 is what the issue allows."""
+    """Closed form: under the standard's air on its plane, every gap has a factor of 1; 2e-4 is what the issue
+    allows."""
     plane = column.reference_plane(column.optics())
     assert spectral_factor(plane, (gap_ev,))[0] == pytest.approx(1.0, abs=2e-4)
 
 
 def test_reference_factors_are_corrections_not_inventions():
-    """Where the reference is bright, bands are corrected by less than the bound; from 350 to 700 nm by less than 3 %."""
+    """Where the reference is bright, bands are corrected by less than the bound; from 350 to 700 nm by less than 3
+    %."""
     optics, wavelength = column.optics(), spectrum.band_wavelengths()
     low, high = column.FACTOR_BOUNDS
     assert np.all((optics.factor > low) & (optics.factor < high))
@@ -55,7 +60,8 @@ def test_reference_factors_are_corrections_not_inventions():
 
 
 def test_direct_beam_of_the_standard():
-    """Reference: ASTM G173-03 direct beam, not used in the making of the factors: 450-1700 nm within 2 % of each band that
+    """Reference: ASTM G173-03 direct beam, not used in the making of the factors: 450-1700 nm within 2 % of each
+    band that
     the air hardly absorbs, and 1 % in sum. The standard's direct column holds 2.9 deg of bright sky around the sun."""
     table = reference.table("astm_g173_03")
     direct = spectrum.integrate_bands(table["wavelength_nm"], table["direct"])
@@ -68,7 +74,7 @@ def test_direct_beam_of_the_standard():
 
 
 class TestSixS:
-    """6S with its Continental haze, the same optics fed to our column, flat air in both (header of sixs_clear_skies)."""
+    """6S with its Continental haze, the same optics fed to our column, flat air in both."""
 
     conditions = reference.table("sixs_conditions")
     haze = reference.table("sixs_haze_optics")
@@ -128,7 +134,8 @@ class TestSixS:
 @pytest.mark.parametrize("aod500", [0.05, 0.1, 0.2, 0.4])
 @pytest.mark.parametrize("elevation_deg", [20.0, 30.0, 45.0, 60.0, 90.0])
 def test_clear_light_against_pvlib_bird(aod500, elevation_deg):
-    """Reference: Bird & Hulstrom (1981) through pvlib with the same inputs: GHI 5 %, DNI 7 % above 30 deg of sun and up to
+    """Reference: Bird & Hulstrom (1981) through pvlib with the same inputs: GHI 5 %, DNI 7 % above 30 deg of sun and
+    up to
     an AOD of 0.2; 10 % down to 20 deg and 0.4. It is itself a fit, good to a few percent."""
     zenith = 90.0 - elevation_deg
     given = air(cos_zenith=np.cos(np.radians(zenith)), aod500=aod500)
@@ -145,7 +152,7 @@ def test_clear_light_against_pvlib_bird(aod500, elevation_deg):
 
 
 def test_shared_coefficients_against_the_published_example():
-    """Reference: output of spectrl2_2.c kept in pvlib's tests (header of spectrl2_example): our beam with its constants.
+    """Reference: output of spectrl2_2.c kept in pvlib's tests: our beam with its constants.
 
     Same coefficients, same curves of growth: 2e-3 of each band above 1 % of the brightest; its air mass is rounded.
     """
@@ -183,7 +190,8 @@ class TestDirections:
 
 
 def test_overcast_shape_is_daylight():
-    """Reference: CIE daylight D65 over 400-700 nm, the standard's picture of overcast daylight: within 8 %, as shapes."""
+    """Reference: CIE daylight D65 over 400-700 nm, the standard's picture of overcast daylight: within 8 %, as
+    shapes."""
     table = reference.table("cie_d65")
     daylight = spectrum.integrate_bands(table["wavelength_nm"], table["relative_power"])
     ours = horizontal(air(cos_zenith=0.6, albedo=0.2), 30.0)[0]
@@ -222,8 +230,6 @@ def test_thin_cloud_joins_the_clear_sky():
 
 class TestPublishedRegressions:
     """Spectral factors that others fitted to measured or modelled spectra, through pvlib."""
-
-    responses = {"monosi": 1.12, "multisi": 1.12, "cdte": 1.45}
 
     @pytest.mark.parametrize("elevation_deg", [20.0, 42.0, 70.0])
     @pytest.mark.parametrize("water", [0.5, 1.5, 4.0])

@@ -24,7 +24,8 @@ def one_layer():
 def test_light_below_one_layer(sun_above_deg, limit):
     """Reference: PythonicDISORT, 32 streams, cloud and haze layers over black ground (the table's header).
 
-    Four streams cannot follow a narrow phase function at low sun; what is left of the flux deviates by the limits asked.
+    Four streams cannot follow a narrow phase function at low sun; what is left of the flux deviates by the limits
+    asked.
     """
     solved = one_layer()
     ours = solved.beam + layer.flux(solved.down)
@@ -106,7 +107,9 @@ def band_over_broadband(zenith_deg, aod, albedo):
         return column_of(AIR, np.arange(n)[None, :], np.asarray(cloud)[:, None], aod, albedo, mu)
 
     solved = depths.copy()
-    for _ in range(30):  # fixed point on 1/T, which is nearly linear in the depth: the root next to the table's own depth
+    for _ in range(
+        30
+    ):  # fixed point on 1/T, which is nearly linear in the depth: the root next to the table's own depth
         got, wanted = ours(solved) @ weight, theirs @ weight
         slope = (ours(solved * 1.001 + 1e-4) @ weight - got) / (solved * 0.001 + 1e-4)
         steep = np.where(np.abs(slope) < 1e-3 * wanted.max(), -np.inf, slope)
@@ -119,7 +122,8 @@ def band_over_broadband(zenith_deg, aod, albedo):
 @pytest.mark.parametrize("aod", [0.1, 0.4])
 @pytest.mark.parametrize("albedo", [0.2, 0.7])
 def test_bands_over_broadband_under_cloud(zenith_deg, aod, albedo):
-    """Reference: PythonicDISORT, 32 streams. Band over broadband within 1.5 % for 400-1100 nm, cloud 0.5-50, sun > 10 deg."""
+    """Reference: PythonicDISORT, 32 streams. Band over broadband within 1.5 % for 400-1100 nm, cloud 0.5-50, sun >
+    10 deg."""
     depths, off = band_over_broadband(zenith_deg, aod, albedo)
     visible = (AIR["wavelength_nm"] >= 400) & (AIR["wavelength_nm"] <= 1100)
     assert np.max(np.abs(off[depths >= 0.5][:, visible])) <= 0.015
@@ -127,7 +131,9 @@ def test_bands_over_broadband_under_cloud(zenith_deg, aod, albedo):
 
 def test_scalar_and_broadcast():
     """A scalar hour equals the same hour among many; a new leading axis changes nothing."""
-    many = layer.four_stream(np.array([1.0, 5.0]), np.array([0.9, 1.0]), moments_of(np.array([0.5, 0.8])), np.array([0.5, 0.7]))
+    many = layer.four_stream(
+        np.array([1.0, 5.0]), np.array([0.9, 1.0]), moments_of(np.array([0.5, 0.8])), np.array([0.5, 0.7])
+    )
     one = layer.four_stream(np.array(5.0), np.array(1.0), moments_of(np.array(0.8)), np.array(0.7))
     np.testing.assert_allclose(one.back, many.back[1], rtol=1e-12)
     np.testing.assert_allclose(one.down, many.down[1], rtol=1e-12)

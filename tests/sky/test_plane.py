@@ -25,7 +25,9 @@ def test_level_plane_sees_the_horizontal(course):
     beam, diffuse, share, albedo = light(course)
     parts = plane.on_plane(beam, diffuse, share, course, albedo, 0.0, 180.0)
     high = course.cos_zenith > 0.02
-    np.testing.assert_allclose(parts.total()[high], (beam[:, 0] * course.cos_zenith + diffuse[:, 0])[high] * 4, rtol=1e-12)
+    np.testing.assert_allclose(
+        parts.total()[high], (beam[:, 0] * course.cos_zenith + diffuse[:, 0])[high] * 4, rtol=1e-12
+    )
     assert np.all(parts.ground == 0)
 
 

@@ -69,7 +69,8 @@ def test_earth_sun_distance_swings_by_three_percent():
 
 
 def test_air_mass_of_the_published_table():
-    """Kasten & Young (1989), table: 1.00 overhead, 1.5 at 48.2 deg, 5.6 at 80 deg, 38 at the horizon; its last digits."""
+    """Kasten & Young (1989), table: 1.00 overhead, 1.5 at 48.2 deg, 5.6 at 80 deg, 38 at the horizon; its last
+    digits."""
     mass = sun.relative_air_mass(np.cos(np.radians([0.0, 48.236, 80.0, 90.0])))
     np.testing.assert_allclose(mass, [1.0, 1.5, 5.58, 38.0], rtol=3e-3)
     assert np.all(np.diff(mass) > 0)

@@ -42,9 +42,12 @@ def factor(bands, yields):
 @pytest.mark.parametrize("mass", [1.0, 1.5, 2.0, 3.0])
 @pytest.mark.parametrize("water_cm", [0.5, 1.42, 2.5, 4.0])
 def test_clear_sky_factor(name, mass, water_cm, yields):
-    """References: spectral_factor_firstsolar (Lee & Panchula 2016) and spectral_factor_caballero (2018), each relative to its
-    own value at air mass 1.5 and 1.42 cm: ours lies in the span of the two widened by 2 %, which is how far they and the
-    cells they stand for differ. At air mass 4 and 5 the span is left by up to 4 % (dry CIGS and c-Si below, wet CdTe above,
+    """References: spectral_factor_firstsolar (Lee & Panchula 2016) and spectral_factor_caballero (2018), each
+    relative to its
+    own value at air mass 1.5 and 1.42 cm: ours lies in the span of the two widened by 2 %, which is how far they and
+    the
+    cells they stand for differ. At air mass 4 and 5 the span is left by up to 4 % (dry CIGS and c-Si below, wet CdTe
+    above,
     on the horizontal; on a plane facing the sun, nearer to their data, only dry CIGS, by 1 %)."""
     i, key = NAMES.index(name), CLEAR_KEYS[name]
     ours = factor(light(mass, water_cm), yields)[0, i] / factor(light(1.5, 1.42), yields)[0, i]
@@ -66,8 +69,10 @@ REGRESSIONS = {
 @pytest.mark.parametrize("name", REGRESSIONS)
 @pytest.mark.parametrize("clearness", [0.2, 0.4, 0.6, 0.8])
 def test_cloud_effect(name, clearness, yields):
-    """References: spectral_factor_pvspec (Pelland et al. 2020), spectral_factor_jrc (Huld et al. 2009), factor at a clear-sky
-    index over that at 1, air mass 1.5, water of the standard: inside the span widened by 2 or 3 %. Measured cloudy air also
+    """References: spectral_factor_pvspec (Pelland et al. 2020), spectral_factor_jrc (Huld et al. 2009), factor at a
+    clear-sky
+    index over that at 1, air mass 1.5, water of the standard: inside the span widened by 2 or 3 %. Measured cloudy
+    air also
     holds more water, which the regressions include and this comparison leaves out. The two CdTe fits differ by 6 %."""
     models, width = REGRESSIONS[name]
     depths = np.geomspace(0.05, 200.0, 120)

@@ -54,12 +54,13 @@ def test_two_names_never_share_a_file():
 def test_a_file_is_whole_or_not_there(tmp_path):
     target = tmp_path / "deep" / "file.txt"
 
-    class Broken(RuntimeError):
-        pass
+    def half_written():
+        with store.whole_file(target) as temporary:
+            temporary.write_text("half")
+            raise RuntimeError("stopped")
 
-    with pytest.raises(Broken), store.whole_file(target) as temporary:
-        temporary.write_text("half")
-        raise Broken
+    with pytest.raises(RuntimeError, match="stopped"):
+        half_written()
     assert list(target.parent.iterdir()) == []
     store.write_text(target, "whole\n")
     assert target.read_bytes() == b"whole\n"

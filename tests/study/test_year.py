@@ -94,7 +94,8 @@ def test_narrow_gaps_lose_more_to_heat(greensboro):
 
 
 def test_haze_that_scatters_daily_is_found_from_the_beam(greensboro_weather, year_of):
-    """A cloudless file made by the column with haze scattering daily by a factor of two around the prior moves no absorber's
+    """A cloudless file made by the column with haze scattering daily by a factor of two around the prior moves no
+    absorber's
     annual factor by more than 0.3 % against knowing that haze."""
     base = year_of(greensboro_weather, AtmospherePlan(aod500=(0.15,) * 12))
     sky, n_day = base.sky, 365

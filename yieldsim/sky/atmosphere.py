@@ -11,7 +11,10 @@ Array = NDArray[np.float64]
 
 STANDARD_PRESSURE = 101325.0  # Pa, ISO 2533:1975
 DEFAULT_ANGSTROM_EXPONENT = 1.14  # Bird & Riordan (1984), rural aerosol
-AOD_RANGE = (0.01, 3.0)  # what an hour's haze may be solved to; measured hourly means lie within (common practice, no source)
+AOD_RANGE = (
+    0.01,
+    3.0,
+)  # what an hour's haze may be solved to; measured hourly means lie within (common practice, no source)
 _MAX_WATER_CM = 8.0  # the wettest soundings hold about 7.5 cm (common practice, no source)
 _MIN_WATER_CM = 0.05
 

@@ -1,4 +1,5 @@
-"""Closing each hour on the weather file: the column's haze and cloud solved until beam and diffuse are the measured ones."""
+"""Closing each hour on the weather file: the column's haze and cloud solved until beam and diffuse are the measured
+ones."""
 
 from __future__ import annotations
 
@@ -45,7 +46,8 @@ class ClosedSky:
     cloud_depth : (n,) array [1], of the obscured part of the hour; 0 = none
     open_share : (n,) array [1], share of the hour with open sun
     clear : (n,) bool array, hours whose haze explains beam and diffuse light
-    monthly_aod500 : (12,) array [1], haze expected of each month, from its clear days and the prior; NaN where it has none
+    monthly_aod500 : (12,) array [1], haze expected of each month, from its clear days and the prior; NaN where it
+    has none
     clear_days : (12,) int array, days of each month with enough clear hours
     """
 
@@ -67,8 +69,7 @@ def close(
     consecutive: Mask,
     *,
     haze_hourly: bool = True,
-    day: NDArray[np.intp] | None = None,
-    month: NDArray[np.intp] | None = None,
+    calendar: tuple[NDArray[np.intp], NDArray[np.intp]] | None = None,
     constants: Optics | None = None,
 ) -> ClosedSky:
     """Return band spectra that sum to the measured light.
@@ -80,7 +81,8 @@ def close(
     dni, dhi : (n,) array [W m-2], not negative, over the lit part of the hour
     consecutive : (n,) bool array, hour follows the one before it without a gap
     haze_hourly : solve the haze of clear hours, and of hours with more beam than the prior lets through
-    day, month : (n,) int arrays, number of the day and month (0-11) of each hour; where given, hours that tell nothing of
+    calendar : two (n,) int arrays, number of the day and month (0-11) of each hour; where given, hours that tell
+    nothing of
         their haze get that of their month's clear days instead of the prior
     constants : Optics, those with the reference folded in unless given
 
@@ -100,7 +102,8 @@ def close(
     if haze_hourly:
         solved, clear = _solve_haze(air, earth_sun, dni, dhi, consecutive, constants)
         prior = air.aod500
-        if day is not None and month is not None:
+        if calendar is not None:
+            day, month = calendar
             usable = clear & steady(solved, consecutive) & (air.cos_zenith > _LEAST_COS_ZENITH)
             monthly, clear_days = monthly_haze(solved, prior, usable, day, month)
             prior = monthly[month]
@@ -136,7 +139,8 @@ def beam_haze(air: Air, earth_sun: Array, dni: Array, constants: Optics) -> Arra
 
     Notes
     -----
-    Newton's steps on the logarithm of the beam, which is convex in the haze: from any start they overshoot at most once.
+    Newton's steps on the logarithm of the beam, which is convex in the haze: from any start they overshoot at most
+    once.
     """
     passed, slope = column.beam_transmittance(air, constants)
     passed *= constants.extraterrestrial * constants.factor * earth_sun[:, None]
@@ -203,7 +207,8 @@ def monthly_haze(
 
     Notes
     -----
-    A day's haze is the median of its clear hours, of which it needs two; a month's the median of its days. The prior counts
+    A day's haze is the median of its clear hours, of which it needs two; a month's the median of its days. The prior
+    counts
     as `PRIOR_DAYS` days, in logarithms, since haze scatters by factors.
     """
     expected, days = np.full(12, np.nan), np.zeros(12, dtype=np.intp)

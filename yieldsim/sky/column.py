@@ -159,7 +159,9 @@ def optics() -> Optics:
     scaled = bare.replace(gas_scale=np.where(dark, (low + high) / 2, 1.0))
     factor = np.ones_like(wanted)
     for _ in range(20):  # the sky's share of circumsolar light makes it slightly nonlinear; each pass gains a digit
-        factor = np.where(dark, 1.0, np.clip(factor * wanted / reference_plane(scaled.replace(factor=factor)), *FACTOR_BOUNDS))
+        factor = np.where(
+            dark, 1.0, np.clip(factor * wanted / reference_plane(scaled.replace(factor=factor)), *FACTOR_BOUNDS)
+        )
     return scaled.replace(factor=factor)
 
 

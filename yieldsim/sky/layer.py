@@ -61,10 +61,10 @@ def four_stream(depth: Array, albedo: Array, moments: Sequence[Array], mu: Array
     Notes
     -----
     Discrete ordinates with two streams a hemisphere, the phase function cut at the fourth moment (delta-M). For a
-    homogeneous layer what goes out is tied to what comes in by R + T = (1 + X)(1 - X)^-1 with X = (a+b) Theta[(a-b)(a+b)]
-    and R - T = -(1 + Y)(1 - Y)^-1 with Y = (a-b) Theta[(a+b)(a-b)], where a and b couple streams of the same and of
-    opposite hemispheres and Theta[k^2] = tanh(k tau/2)/k: bounded for any depth and without a special case where nothing
-    is absorbed. Against 32 streams, light below a layer over black ground is within 1.5 % above 30 deg of sun.
+    homogeneous layer what goes out is tied to what comes in by R + T = (1 + X)(1 - X)^-1, X = (a+b) Theta[(a-b)(a+b)],
+    and R - T = -(1 + Y)(1 - Y)^-1, Y = (a-b) Theta[(a+b)(a-b)], where a and b couple streams of the same and of
+    opposite hemispheres and Theta[k^2] = tanh(k tau/2)/k: bounded for any depth and without a special case where
+    nothing is absorbed. Against 32 streams, light below a layer over black ground is within 1.5 % above 30 deg of sun.
 
     References
     ----------

@@ -72,7 +72,12 @@ class Ratings:
     def of(cls, absorbers: Sequence[Absorber]) -> Ratings:
         """Rate absorbers with the code that computes the hours."""
         standard = cls.standard(absorbers)
-        return cls(np.asarray(bank_of(tuple(absorbers)).absorber_of), standard.photocurrent, standard.power, standard.terminal_power)
+        return cls(
+            np.asarray(bank_of(tuple(absorbers)).absorber_of),
+            standard.photocurrent,
+            standard.power,
+            standard.terminal_power,
+        )
 
     @staticmethod
     def standard(absorbers: Sequence[Absorber]) -> Standard:
@@ -98,9 +103,7 @@ class Factors:
         )
 
 
-def sums(
-    year: PlaneYear, month: NDArray[np.intp], hours: Array, interval_s: int, losses: LossesPlan
-) -> Sums:
+def sums(year: PlaneYear, month: NDArray[np.intp], hours: Array, interval_s: int, losses: LossesPlan) -> Sums:
     """Add up a year.
 
     Parameters
@@ -128,7 +131,7 @@ def sums(
 
 def kept_share(losses: LossesPlan) -> Array:
     """Return the share of energy that all losses leave in each month, (12,) [1]."""
-    kept = np.ones(12)
+    kept: Array = np.ones(12)
     for monthly in losses.monthly.values():
         kept = kept * (1 - np.asarray(monthly))
     return kept
@@ -166,4 +169,4 @@ def factors(total: Sums, ratings: Ratings) -> Factors:
 
 
 def _ratio(above: Array, below: Array) -> Array:
-    return np.divide(above, below, out=np.full(np.shape(above), np.nan), where=below > 0)
+    return np.asarray(np.divide(above, below, out=np.full(np.shape(above), np.nan), where=below > 0))

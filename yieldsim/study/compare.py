@@ -86,19 +86,17 @@ def annual_rows(
     return rows
 
 
-def monthly_rows(
-    site: str, mounting: str, absorbers: Sequence[Absorber], ratings: Ratings, total: Sums
-) -> list[Row]:
+def monthly_rows(site: str, mounting: str, absorbers: Sequence[Absorber], ratings: Ratings, total: Sums) -> list[Row]:
     """Return one row per absorber and month; ratios of a month without light are NaN."""
     area = np.array([absorber.area_fraction for absorber in absorbers])
     found = measures(total, ratings, area)
-    return [
-        {"site": site, "mounting": mounting, "absorber": absorber.name, "month": month + 1}
-        | {name: float(found[name][i, month]) for name in MEASURES}
-        for i, absorber in enumerate(absorbers)
-        for month in range(12)
-        if total.hours[month] > 0
-    ]
+    rows: list[Row] = []
+    for i, absorber in enumerate(absorbers):
+        for month in np.flatnonzero(total.hours > 0):
+            row: Row = {"site": site, "mounting": mounting, "absorber": absorber.name, "month": int(month) + 1}
+            row |= {name: float(found[name][i, month]) for name in MEASURES}
+            rows.append(row)
+    return rows
 
 
 def rank(values: Array) -> NDArray[np.intp]:

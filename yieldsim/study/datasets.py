@@ -11,7 +11,7 @@ from numpy.typing import NDArray
 
 from yieldsim import spectrum
 from yieldsim.device.stack import Absorber
-from yieldsim.study.hourly import PlaneYear, SiteSky, local_month_and_day
+from yieldsim.study.hourly import PlaneYear, SiteSky
 from yieldsim.units import celsius
 
 Array = NDArray[np.float64]
@@ -62,15 +62,25 @@ def hourly_dataset(site: str, sky: SiteSky, years: Sequence[PlaneYear], absorber
     names = [absorber.name for absorber in absorbers]
     junctions = [f"{a.name} / {i + 1}" for a in absorbers for i in range(len(a.junctions))]
     variables: dict[str, Any] = {
-        name: ("time", weather[name].astype(np.float32), {"units": unit, "long_name": text, "cell_methods": "time: mean"})
+        name: (
+            "time",
+            weather[name].astype(np.float32),
+            {"units": unit, "long_name": text, "cell_methods": "time: mean"},
+        )
         for name, (unit, text) in _UNITS.items()
     }
 
     def lit(name: str, values: Array, unit: str, text: str, fill: float = np.nan) -> None:
         variables[name] = ("time", _spread(sky, values, fill), {"units": unit, "long_name": text})
 
-    variables["flags"] = ("time", weather.flags.astype(np.int32), {"long_name": "what was done to the interval, bit field"})
-    lit("zenith", np.degrees(np.arccos(sky.sun.cos_zenith)), "degree", "apparent solar zenith, lit part of the interval")
+    variables["flags"] = (
+        "time",
+        weather.flags.astype(np.int32),
+        {"long_name": "what was done to the interval, bit field"},
+    )
+    lit(
+        "zenith", np.degrees(np.arccos(sky.sun.cos_zenith)), "degree", "apparent solar zenith, lit part of the interval"
+    )
     lit("lit_share", sky.sun.lit, "1", "share of the interval with the sun up", 0.0)
     lit("aod500", sky.sky.aod500, "1", "aerosol optical depth at 500 nm used")
     lit("precipitable_water", sky.air.water_cm, "cm", "precipitable water used")
@@ -106,7 +116,6 @@ def chosen_days(sky: SiteSky) -> list[tuple[int, str, NDArray[np.intp]]]:
     Days are ordered by their global light over that outside the air; the median day is the middle one of that order.
     """
     weather = sky.weather
-    _, day_of_year = local_month_and_day(weather)
     local = weather.time[sky.lit] + weather.interval_s // 2 + round(weather.utc_offset_h * 3600)
     date = local // 86400
     top = sky.sun.earth_sun * sky.sun.cos_zenith * sky.sun.lit
@@ -136,8 +145,16 @@ def spectra_dataset(site: str, sky: SiteSky, years: Sequence[PlaneYear]) -> xr.D
     per_band = {"units": "W m-2"}
     variables: dict[str, Any] = {
         "beam": (("time", "band"), sky.sky.beam[at], per_band | {"long_name": "energy in each band, facing the sun"}),
-        "diffuse": (("time", "band"), sky.sky.diffuse[at], per_band | {"long_name": "energy in each band, from the sky"}),
-        "plane_of_array": (("mounting", "time", "band"), front, per_band | {"long_name": "energy in each band, on the plane"}),
+        "diffuse": (
+            ("time", "band"),
+            sky.sky.diffuse[at],
+            per_band | {"long_name": "energy in each band, from the sky"},
+        ),
+        "plane_of_array": (
+            ("mounting", "time", "band"),
+            front,
+            per_band | {"long_name": "energy in each band, on the plane"},
+        ),
         "band_edges": (("band", "edge"), np.stack([edges[:-1], edges[1:]], axis=1), {"units": "nm"}),
         "zenith": ("time", np.degrees(np.arccos(sky.sun.cos_zenith[at])), {"units": "degree"}),
         "aod500": ("time", sky.sky.aod500[at], {"units": "1"}),
@@ -146,7 +163,11 @@ def spectra_dataset(site: str, sky: SiteSky, years: Sequence[PlaneYear]) -> xr.D
         "open_share": ("time", sky.sky.open_share[at], {"units": "1"}),
         "month": ("time", months.astype(np.int32), {"long_name": "calendar month of the day"}),
         "day": ("time", numbers.astype(np.int32), {"long_name": "number of the chosen day, 0 first"}),
-        "day_kind": ("time", kinds.astype(str), {"long_name": "clear: the month's clearest day; median: its middle one"}),
+        "day_kind": (
+            "time",
+            kinds.astype(str),
+            {"long_name": "clear: the month's clearest day; median: its middle one"},
+        ),
     }
     for name, (unit, text) in _UNITS.items():
         variables[name] = ("time", sky.weather[name][sky.lit[at]], {"units": unit, "long_name": text})

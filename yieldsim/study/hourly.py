@@ -129,7 +129,7 @@ def site_sky(site: SitePlan, weather: Weather) -> SiteSky:
         dhi / course.lit,
         consecutive,
         haze_hourly=site.atmosphere.haze == "hourly",
-        **_calendar(weather, lit, month, sources),
+        calendar=_calendar(weather, lit, month, sources),
     )
     share = course.lit[:, None]
     closed = replace(closed, beam=closed.beam * share, diffuse=closed.diffuse * share)
@@ -142,12 +142,12 @@ def site_sky(site: SitePlan, weather: Weather) -> SiteSky:
 
 def _calendar(
     weather: Weather, lit: NDArray[np.intp], month: NDArray[np.intp], sources: Sequence[tuple[str, str]]
-) -> dict[str, NDArray[np.intp]]:
+) -> tuple[NDArray[np.intp], NDArray[np.intp]] | None:
     """Return day and month for the monthly haze, where the air's haze is a climatology that the beam may correct."""
     if not dict(sources)["aod500"].startswith(CLIMATOLOGY):
-        return {}
+        return None
     day = (weather.time[lit] + round(weather.utc_offset_h * 3600)) // 86400
-    return {"day": day.astype(np.intp), "month": month[lit]}
+    return day.astype(np.intp), month[lit]
 
 
 def _air(
@@ -164,11 +164,13 @@ def _air(
         plan.angstrom_exponent, month, np.full(12, atmosphere.DEFAULT_ANGSTROM_EXPONENT)[month], "Bird & Riordan 1984"
     )
     water, water_source = _water(plan, weather, lit, month)
-    ozone_default = atmosphere.ozone_van_heuklon(weather.latitude_deg, weather.longitude_deg, day)
+    ozone_default = atmosphere.ozone_van_heuklon(weather.latitude_deg, weather.longitude_deg, day.astype(np.float64))
     ozone, ozone_source = _given_or(plan.ozone_atm_cm, month, ozone_default, "van Heuklon 1979")
     haze, haze_source = _haze(plan, weather, lit, month, water, exponent)
     from_height = np.full(len(lit), atmosphere.pressure_at(weather.elevation_m))
-    pressure, pressure_source = _column_or(weather, "pressure", lit, from_height, "standard atmosphere at the elevation")
+    pressure, pressure_source = _column_or(
+        weather, "pressure", lit, from_height, "standard atmosphere at the elevation"
+    )
     if site.ground.albedo is not None:
         albedo, albedo_source = np.full(len(lit), site.ground.albedo), "study"
     else:
@@ -205,9 +207,7 @@ def _column_or(weather: Weather, name: str, lit: NDArray[np.intp], default: Arra
     return np.where(filled, values, default), f"file ({name}) in {filled.mean():.1%} of lit hours, else {source}"
 
 
-def _water(
-    plan: AtmospherePlan, weather: Weather, lit: NDArray[np.intp], month: NDArray[np.intp]
-) -> tuple[Array, str]:
+def _water(plan: AtmospherePlan, weather: Weather, lit: NDArray[np.intp], month: NDArray[np.intp]) -> tuple[Array, str]:
     if plan.water_cm is not None:
         return np.asarray(plan.water_cm)[month], "study"
     default, source = np.full(len(lit), DEFAULT_WATER_CM), "that of ASTM G173-03, assumed"
@@ -275,7 +275,7 @@ def plane_parts(site: SiteSky, mounting: MountingPlan) -> plane.PlaneParts:
 
 
 def entered_light(site: SiteSky, mounting: MountingPlan, parts: plane.PlaneParts, modifier: float | None) -> Array:
-    """Return the band spectra that pass the front, (n, n_band) [W m-2]; modifier = Martin-Ruiz a_r, None = all passes."""
+    """Return the band spectra that pass the front, (n, n_band) [W m-2]; modifier None = all passes."""
     if modifier is None:
         return parts.beam + parts.sky + parts.ground
     beam_share = plane.entered_beam(site.sun, mounting.tilt_deg, mounting.azimuth_deg, modifier)

@@ -19,7 +19,7 @@ from yieldsim.weather import Weather
 
 
 def key(plan: StudyPlan, site: SitePlan) -> str:
-    """Return the hash of all that a site's share is made from: its inputs, absorbers, sweeps, losses and this version."""
+    """Return the hash of all that a site's share is made from: inputs, absorbers, sweeps, losses, this version."""
     version: str = yieldsim.__version__
     kept = frozenset(plan.keep & {"hourly", "spectra"})
     return store.fingerprint(version, site, plan.absorbers, plan.gap_sweep, plan.losses, kept)
@@ -77,9 +77,7 @@ def _mean_rows(by_year: Sequence[list[Row]]) -> list[Row]:
     ]
 
 
-def _write_datasets(
-    plan: StudyPlan, site: SitePlan, sky: SiteSky, years: list[Any], folder: Path
-) -> list[Path]:
+def _write_datasets(plan: StudyPlan, site: SitePlan, sky: SiteSky, years: list[Any], folder: Path) -> list[Path]:
     stem = store.file_stem(site.name)
     files = []
     if "hourly" in plan.keep:
@@ -96,7 +94,7 @@ def _write_datasets(
 def monthly_hours(sky: SiteSky) -> annual.Array:
     """Return the hours the weather covers in each month, (12,) [h]."""
     month, _ = local_month_and_day(sky.weather)
-    return np.bincount(month, minlength=12) * (sky.weather.interval_s / 3600.0)
+    return np.asarray(np.bincount(month, minlength=12) * (sky.weather.interval_s / 3600.0), dtype=np.float64)
 
 
 def quality_rows(site: str, sky: SiteSky) -> list[Row]:
@@ -116,7 +114,15 @@ def quality_rows(site: str, sky: SiteSky) -> list[Row]:
     n = len(sky.lit)
     for name, source in sky.sources:
         rows.append(
-            {"site": site, "kind": f"source:{name}", "rows": n, "first": "", "last": "", "found": source, "done": "used"}
+            {
+                "site": site,
+                "kind": f"source:{name}",
+                "rows": n,
+                "first": "",
+                "last": "",
+                "found": source,
+                "done": "used",
+            }
         )
     clear = int(sky.sky.clear.sum())
     text = f"{clear} of {n} lit intervals are clear: their own haze explains beam and diffuse light"
