@@ -6,36 +6,18 @@ Exit codes: 0 done; 1 the user's input or command line is wrong; 2 it could not 
 
 from __future__ import annotations
 
-import argparse
 import contextlib
-import importlib
 import os
 import sys
 from collections.abc import Sequence
-from typing import NoReturn
 
 from yieldsim import __version__
 from yieldsim.commands import COMMANDS
+from yieldsim.commands._parser import module_of, parsers
 from yieldsim.errors import InputError, Problem, YieldsimError
 
 DONE, WRONG_INPUT, NOT_HERE, BUG, INTERRUPTED = 0, 1, 2, 3, 130
 _SHOWN_PROBLEMS = 200  # a file with more wants another look as a whole
-
-_ABOUT = "Which light absorber wins at which site, by how much, how surely: energy yield from hourly band spectra."
-_EXAMPLE = """example:
-  yieldsim new mine.yaml      write a study to start from
-  yieldsim run mine.yaml      compute it; results appear in outputs/
-
-`yieldsim COMMAND --help` tells more about one command.
-"""
-
-
-class _Parser(argparse.ArgumentParser):
-    """An argument parser that raises InputError, so that a wrong command line ends like any wrong input."""
-
-    def error(self, message: str) -> NoReturn:
-        """Raise what is wrong, with the usage."""
-        raise InputError(Problem("", 0, "", f"{message}\n{self.format_usage().rstrip()}", ""))
 
 
 def main(arguments: Sequence[str] | None = None) -> int:
@@ -73,39 +55,17 @@ def main(arguments: Sequence[str] | None = None) -> int:
 
 
 def _run(words: list[str]) -> int:
-    parser, commands = _parsers()
     chosen = next((word for word in words if not word.startswith("-")), None)
-    if chosen is not None and chosen not in commands:
-        raise InputError(Problem("", 0, "command line", f"`{chosen}`", f"{', '.join(commands)}{_nearest(chosen)}"))
-    if chosen is not None:
-        module = importlib.import_module(f"yieldsim.commands.{chosen}")
-        commands[chosen].epilog = module.EXAMPLE
-        module.arguments(commands[chosen])
+    if chosen is not None and chosen not in COMMANDS:
+        raise InputError(Problem("", 0, "command line", f"`{chosen}`", f"{', '.join(COMMANDS)}{_nearest(chosen)}"))
+    parser, _ = parsers([] if chosen is None else [chosen])
     options = parser.parse_args(words)
     if options.command is None:
         parser.print_help(sys.stderr)
         return WRONG_INPUT
-    code: int = module.run(options)
+    code: int = module_of(options.command).run(options)
     sys.stdout.flush()
     return code
-
-
-def _parsers() -> tuple[_Parser, dict[str, argparse.ArgumentParser]]:
-    layout = argparse.RawDescriptionHelpFormatter
-    parser = _Parser(prog="yieldsim", description=_ABOUT, epilog=_EXAMPLE, formatter_class=layout, allow_abbrev=False)
-    parser.add_argument("--version", action="version", version=f"yieldsim {__version__}")
-    group = parser.add_subparsers(dest="command", metavar="COMMAND", title="commands", parser_class=_Parser)
-    commands: dict[str, argparse.ArgumentParser] = {
-        name: group.add_parser(
-            name,
-            help=summary,
-            description=f"{summary[0].upper()}{summary[1:]}.",
-            formatter_class=layout,
-            allow_abbrev=False,
-        )
-        for name, summary in COMMANDS.items()
-    }
-    return parser, commands
 
 
 def _nearest(word: str) -> str:

@@ -16,5 +16,6 @@ COMMANDS: Mapping[str, str] = MappingProxyType(
         "check": "validate a study and its weather; compute no yield",
         "new": "write a commented study file to start from",
         "schema": "print the JSON Schema of the study file, for editors",
+        "completion": "print what a shell needs to complete commands, options and study files",
     }
 )
