@@ -2,17 +2,17 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterable
+from collections.abc import Iterable, Iterator
 from dataclasses import dataclass
 
 import numpy as np
 from numpy.polynomial import chebyshev
 from numpy.typing import NDArray
 
-from yieldsim.constants import STANDARD_CELL_TEMPERATURE, STANDARD_IRRADIANCE
-from yieldsim.device import diode
+from yieldsim.constants import STANDARD_CELL_TEMPERATURE, STANDARD_IRRADIANCE, THERMAL_EV_PER_K
+from yieldsim.device import diode, series
 from yieldsim.device.fold import folded
-from yieldsim.device.junction import Junction, diode_at, saturation_current
+from yieldsim.device.junction import Junction, diode_at, reference_photocurrent, response_at, saturation_current
 from yieldsim.device.stack import Absorber, responses_at
 from yieldsim.spectrum import reference_bands
 
@@ -59,6 +59,8 @@ class Bank:
     absorber_of : (n_junction,) int array, the absorber each belongs to
     yields : (n_temperature, n_junction, n_band) array [A W-1], at `FOLD_TEMPERATURES`
     log_saturation : (n_junction, n_steps + 1) array [ln(A m-2)], over evenly spaced inverse temperature
+    rear_yields : (n_temperature, n_junction, n_band) array [A W-1], for rear light, which enters at the bottom
+    collected_alone : (n_junction,) array [A m-2], each junction's standard photocurrent outside its stack
     """
 
     absorbers: tuple[Absorber, ...]
@@ -66,6 +68,8 @@ class Bank:
     absorber_of: NDArray[np.intp]
     yields: Array
     log_saturation: Array
+    rear_yields: Array
+    collected_alone: Array
 
     @classmethod
     def of(cls, absorbers: Iterable[Absorber]) -> Bank:
@@ -73,8 +77,21 @@ class Bank:
         absorbers = tuple(absorbers)
         junctions = tuple(junction for absorber in absorbers for junction in absorber.junctions)
         absorber_of = np.repeat(np.arange(len(absorbers)), [len(absorber.junctions) for absorber in absorbers])
-        yields = np.concatenate([_fold(absorber) for absorber in absorbers], axis=1)
-        return cls(absorbers, junctions, absorber_of, yields, _saturation_table(junctions))
+        folds = [_fold(absorber) for absorber in absorbers]
+        return cls(
+            absorbers=absorbers,
+            junctions=junctions,
+            absorber_of=absorber_of,
+            yields=np.concatenate([front for front, _ in folds], axis=1),
+            rear_yields=np.concatenate([rear for _, rear in folds], axis=1),
+            log_saturation=_saturation_table(junctions),
+            collected_alone=np.array([reference_photocurrent(junction) for junction in junctions]),
+        )
+
+    @property
+    def first_of(self) -> NDArray[np.intp]:
+        """The top junction of each absorber, (n_absorber,)."""
+        return np.searchsorted(self.absorber_of, np.arange(len(self.absorbers)))
 
     def currents(self, light: Array, temperature: Array, rear: Array | None = None) -> Array:
         """Return the photocurrent of each junction.
@@ -100,7 +117,7 @@ class Bank:
         if rear is None:
             return front
         gain = np.array([absorber.bifaciality for absorber in self.absorbers])[self.absorber_of]
-        return np.asarray(front + gain[:, None] * self._collected(self.yields, np.asarray(rear), temperature))
+        return np.asarray(front + gain[:, None] * self._collected(self.rear_yields, np.asarray(rear), temperature))
 
     def power(self, currents: Array, temperature: Array) -> Array:
         """Return each junction's power at its own power point.
@@ -116,27 +133,38 @@ class Bank:
         """
         temperature = self._per_absorber(temperature)
         currents = np.asarray(currents)
-        out = np.empty_like(currents)
-        for j in range(len(self.junctions)):
-            for block in _blocks(out.shape[1]):
-                out[j, block] = diode.maximum_power(self._diode(j, currents[j, block], temperature, block))[0]
-        return out
+        return np.array([self._own_power(j, currents[j], temperature) for j in range(len(self.junctions))])
 
-    def terminal_power(self, currents: Array, temperature: Array) -> Array:
+    def terminal_power(self, currents: Array, temperature: Array, own: Array | None = None) -> Array:
         """Return the power of each absorber at its terminals.
 
         Parameters
         ----------
         currents : (n_junction, n_time) array [A m-2]
         temperature : (n_time,) or (n_absorber, n_time) array [K]
+        own : (n_junction, n_time) array [W m-2] or None, what `power` gives for the same, if known already
 
         Returns
         -------
         (n_absorber, n_time) array [W m-2]
+
+        Notes
+        -----
+        One junction: its own power. Two terminals: `series`. Four: each junction at its own power point, the light that
+        a junction emits there handed down to the next.
         """
-        single = self.power(currents, temperature)
-        starts = np.searchsorted(self.absorber_of, np.arange(len(self.absorbers)))
-        return np.asarray(np.add.reduceat(single, starts, axis=0))
+        temperature = self._per_absorber(temperature)
+        out = np.empty((len(self.absorbers), currents.shape[1]))
+        for size, in_series, members in self._kinds():
+            if size == 1:
+                tops = self.first_of[members]
+                out[members] = [self._own_power(j, currents[j], temperature) if own is None else own[j] for j in tops]
+                continue
+            for chunk, block in _chunks(members, currents.shape[1]):
+                links = series.joined([self._links(a, currents[:, block], temperature[:, block]) for a in chunk])
+                power = series.maximum_power(links)[0] if in_series else series.separate_power(links)
+                out[chunk, block] = power.reshape(len(chunk), -1)
+        return out
 
     def standard(self) -> Standard:
         """Return what the absorbers do at standard conditions, by the code that computes the hours."""
@@ -148,7 +176,7 @@ class Bank:
         currents = self.currents(np.repeat(light, 3, axis=0), temperature)
         cold, mid, hot = self.terminal_power(currents, temperature).T
         single = self.power(currents[:, 1:2], temperature[1:2])[:, 0]
-        short, opened = self._ends(currents[:, 1])
+        short, opened = self._ends(currents[:, 1:2])
         return Standard(
             photocurrent=currents[:, 1],
             power=single,
@@ -172,6 +200,10 @@ class Bank:
         table = self.log_saturation[j]
         return np.asarray(np.exp(table[at] + (place - at) * (table[at + 1] - table[at])))
 
+    def _own_power(self, j: int, currents: Array, temperature: Array) -> Array:
+        blocks = [self._diode(j, currents[block], temperature, block) for block in _blocks(len(currents))]
+        return np.concatenate([diode.maximum_power(each)[0] for each in blocks])
+
     def _diode(self, j: int, currents: Array, temperature: Array, block: slice) -> diode.Diode:
         heat = temperature[self.absorber_of[j], block]
         return diode_at(self.junctions[j], currents, heat, self._saturation(j, heat))
@@ -180,10 +212,36 @@ class Bank:
         """Return short-circuit current and open-circuit voltage (n_absorber,) [A m-2], [V] at 25 degC."""
         temperature = np.full((len(self.absorbers), 1), STANDARD_CELL_TEMPERATURE)
         ends = np.full((2, len(self.absorbers)), np.nan)
-        for j in range(len(self.junctions)):
-            one = self._diode(j, currents[j : j + 1], temperature, slice(0, 1))
-            ends[:, self.absorber_of[j]] = diode.short_circuit(one)[0], diode.open_circuit(one)[0]
+        for size, in_series, members in self._kinds():
+            if size == 1 or in_series:
+                links = series.joined([self._links(a, currents, temperature) for a in members])
+                ends[:, members] = series.short_circuit(links), series.open_circuit(links)
         return ends[0], ends[1]
+
+    def _kinds(self) -> list[tuple[int, bool, NDArray[np.intp]]]:
+        """Return (junctions, in series?, members) of absorbers that are computed alike."""
+        kinds: dict[tuple[int, bool], list[int]] = {}
+        for a, absorber in enumerate(self.absorbers):
+            kinds.setdefault((len(absorber.junctions), absorber.terminals == 2), []).append(a)
+        return [(size, in_series, np.array(members)) for (size, in_series), members in kinds.items()]
+
+    def _links(self, a: int, currents: Array, temperature: Array) -> list[series.Link]:
+        """Return an absorber's junctions, linked by the light they emit; currents and temperature are of some hours."""
+        absorber, links = self.absorbers[a], []
+        thermal = THERMAL_EV_PER_K * temperature[a]
+        for i in range(len(absorber.junctions)):
+            j = int(self.first_of[a]) + i
+            diode_of_hour = self._diode(j, currents[j], temperature, slice(None))
+            emits = absorber.coupling > 0 and i < len(absorber.junctions) - 1
+            emission = absorber.coupling * self._radiative(j, diode_of_hour.saturation_current) if emits else 0.0
+            links.append(series.Link(diode_of_hour, emission, thermal))
+        return links
+
+    def _radiative(self, j: int, saturation: Array) -> Array:
+        """Return the radiative saturation current that belongs to a junction's saturation current [A m-2]."""
+        junction, collected = self.junctions[j], self.collected_alone[j]
+        reduced = (saturation / collected) ** junction.ideality
+        return np.asarray(junction.external_radiative_efficiency * collected * reduced)
 
     def _per_absorber(self, temperature: Array) -> Array:
         temperature = np.atleast_1d(np.asarray(temperature, dtype=np.float64))
@@ -212,12 +270,16 @@ class Bank:
         return out
 
 
-def _fold(absorber: Absorber) -> Array:
-    """Return (n_temperature, n_junction, n_band) [A W-1]; the same fold at all temperatures if no edge drifts."""
-    if all(junction.gap_shift_ev_per_k == 0 for junction in absorber.junctions):
-        fixed = np.array([folded(response) for response in responses_at(absorber, STANDARD_CELL_TEMPERATURE)])
-        return np.repeat(fixed[None], len(FOLD_TEMPERATURES), axis=0)
-    return np.array([[folded(r) for r in responses_at(absorber, float(t))] for t in FOLD_TEMPERATURES])
+def _fold(absorber: Absorber) -> tuple[Array, Array]:
+    """Return front and rear fold, (n_temperature, n_junction, n_band) [A W-1]."""
+    drifts = any(junction.gap_shift_ev_per_k != 0 for junction in absorber.junctions)
+    temperatures = FOLD_TEMPERATURES if drifts else FOLD_TEMPERATURES[:1]
+    front = np.array([[folded(r) for r in responses_at(absorber, float(t))] for t in temperatures])
+    rear = np.zeros_like(front)
+    if absorber.bifaciality > 0:
+        rear[:, -1] = [folded(response_at(absorber.junctions[-1], float(t))) for t in temperatures]
+    shape = (len(FOLD_TEMPERATURES), *front.shape[1:])
+    return np.broadcast_to(front, shape), np.broadcast_to(rear, shape)
 
 
 def _saturation_table(junctions: tuple[Junction, ...]) -> Array:
@@ -231,6 +293,14 @@ def _saturation_table(junctions: tuple[Junction, ...]) -> Array:
     at_nodes = np.array([np.log(saturation_current(junction, 1 / (middle + half * nodes))) for junction in junctions])
     coefficients = chebyshev.chebfit(nodes, at_nodes.T, len(nodes) - 1)
     return np.asarray(chebyshev.chebval(np.linspace(-1, 1, _INVERSE_STEPS + 1), coefficients))
+
+
+def _chunks(members: NDArray[np.intp], n_time: int) -> Iterator[tuple[NDArray[np.intp], slice]]:
+    """Cut members x hours into pieces of about `_BLOCK` that are computed at once."""
+    several = max(1, _BLOCK // max(n_time, 1))
+    for start in range(0, len(members), several):
+        for block in _blocks(n_time):
+            yield members[start : start + several], block
 
 
 def _blocks(n: int) -> list[slice]:

@@ -16,7 +16,7 @@ Merten, J., Asensi, J. M., Voz, C., Shah, A. V., Platz, R., Andreu, J. (1998), I
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from typing import Any
 
 import numpy as np
@@ -27,6 +27,9 @@ Array = NDArray[np.float64]
 #: At most so many steps: enough for 1e-10 of the power from every start (tests/device/test_diode.py).
 NEWTON_STEPS = 12
 ROOT_STEPS = 60
+NO_VOLTAGE = -1e3
+#: A voltage is found once Newton's step is below this [V]; its square over kT/q is what is left.
+VOLTAGE_SETTLED = 1e-8
 #: Newton stops once all voltages moved by less than this share of the thermal voltage; squared, that is rounding.
 SETTLED = 1e-7
 
@@ -57,11 +60,11 @@ class Diode:
 
 def curve(diode: Diode, junction_voltage: Any) -> tuple[Any, Any]:
     """Return current density [A m-2] and terminal voltage [V] at a junction voltage [V], equations (1) and (2)."""
-    current = _derivatives(diode, junction_voltage)[0]
+    current = derivatives(diode, junction_voltage)[0]
     return current, junction_voltage - current * diode.series_resistance
 
 
-def _derivatives(diode: Diode, vj: Any) -> tuple[Any, Any, Any]:
+def derivatives(diode: Diode, vj: Any) -> tuple[Any, Any, Any]:
     """Return J [A m-2], -dJ/dVj [A m-2 V-1] and -d2J/dVj2 [A m-2 V-2] of equation (1); the last two are positive."""
     growth = np.expm1(vj / diode.thermal_voltage)
     current = diode.photocurrent - diode.saturation_current * growth - vj * diode.shunt_conductance
@@ -143,7 +146,7 @@ def _root(diode: Diode) -> Array:
     vj = np.where(start < 0.99 * high, start, high / 2)
     rs = diode.series_resistance
     for _ in range(NEWTON_STEPS):
-        current, slope, bend = _derivatives(diode, vj)
+        current, slope, bend = derivatives(diode, vj)
         brake = 1 + 2 * rs * slope
         alive = current > 0
         flow = np.where(alive, current, np.nan)
@@ -173,7 +176,7 @@ def open_circuit(diode: Diode) -> Any:
 
 def short_circuit(diode: Diode) -> Any:
     """Return the current density [A m-2] at zero terminal voltage; 0 without photocurrent, NaN where one is NaN."""
-    return _derivatives(diode, _falling_root(diode, _bound_or_dark(diode), to_current=False))[0][()]
+    return derivatives(diode, _falling_root(diode, _bound_or_dark(diode), to_current=False))[0][()]
 
 
 def _bound_or_dark(diode: Diode) -> Array:
@@ -181,12 +184,50 @@ def _bound_or_dark(diode: Diode) -> Array:
     return np.where(np.asarray(diode.photocurrent) == 0, 0.0, bound)
 
 
+def voltage_at(diode: Diode, current: Any, guess: Any = None) -> Any:
+    """Return the voltage [V] over the junction at which it carries a current, the inverse of equation (1).
+
+    Parameters
+    ----------
+    diode : Diode
+    current : (...) array [A m-2]
+    guess : (...) array [V], a voltage near by, or None
+
+    Returns
+    -------
+    (...) array [V]; `NO_VOLTAGE` for a current that a junction without a shunt cannot carry backwards
+
+    Notes
+    -----
+    The losses L(Vj) = JL - J(Vj) are to equal X = JL - J. L is convex and rises: for X <= 0 (driven backwards) Newton's
+    method from Vj = 0 falls onto the root; for X > 0 ln L(Vj) = ln X is solved, nearly straight where the diode rules,
+    from a voltage at which one loss alone would take all of X.
+    """
+    spare = np.asarray(diode.photocurrent - current)
+    impossible = (np.asarray(diode.shunt_conductance) == 0) & (spare <= -diode.saturation_current)
+    spare = np.where(impossible, 0.0, spare)
+    forward = spare > 0
+    room = np.where(forward, spare, 1.0)
+    high = np.where(forward, _upper_bound(replace(diode, photocurrent=room)), 0.0)
+    vj = high if guess is None else np.minimum(np.maximum(guess, -30 * diode.thermal_voltage), high)
+    for _ in range(ROOT_STEPS):
+        left, slope, _ = derivatives(diode, vj)
+        used = diode.photocurrent - left
+        by_logarithm = forward & (used > 0)
+        ratio = np.where(by_logarithm, used / room, 1.0)
+        step = np.where(by_logarithm, np.log(ratio) * used, used - spare) / slope
+        vj = np.minimum(vj - step, high)
+        if not np.any(np.abs(step) > VOLTAGE_SETTLED):
+            break
+    return np.where(impossible, NO_VOLTAGE, vj)[()]
+
+
 def _falling_root(diode: Diode, high: Array, *, to_current: bool) -> Array:
     """Return Vj [V] at which J = 0 (open circuit) or V = 0 (short circuit); both fall with Vj and are concave."""
     low, vj = np.zeros_like(high), high
     rs = diode.series_resistance
     for _ in range(ROOT_STEPS):
-        current, slope, _ = _derivatives(diode, vj)
+        current, slope, _ = derivatives(diode, vj)
         value = current if to_current else current * rs - vj
         fall = slope if to_current else 1 + slope * rs
         low, high = np.where(value < 0, low, vj), np.where(value < 0, vj, high)

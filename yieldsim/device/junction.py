@@ -12,7 +12,7 @@ from numpy.typing import NDArray
 from yieldsim.constants import STANDARD_CELL_TEMPERATURE, STANDARD_IRRADIANCE, THERMAL_EV_PER_K
 from yieldsim.device import balance, diode
 from yieldsim.device.fold import folded
-from yieldsim.device.response import Response, shifted
+from yieldsim.device.response import Response, scaled, shifted
 from yieldsim.spectrum import reference_bands
 
 Array = NDArray[np.float64]
@@ -29,6 +29,9 @@ LIMITS: dict[str, tuple[float, float]] = {
     "gap_shift_ev_per_k": (-2e-3, 2e-3),
     "recombination_v": (0.0, 0.5),
     "built_in_v": (0.3, math.inf),
+    "reflection": (0.0, 0.9),
+    "parasitic": (0.0, 0.9),
+    "transmits": (0.0, 0.95),
 }
 
 
@@ -49,6 +52,11 @@ class Junction:
     recombination_v : float [V], d^2/(mu tau) of an i-layer at 25 degC: loss of generated carriers that grows as the
         field in it falls (Merten et al. 1998); 0 = none
     built_in_v : float [V], built-in voltage of that i-layer
+    reflection : float [1], light the junction throws back, which its response has lost already; matters in a stack
+    parasitic : float [1], light lost on the way out at its rear (contacts, glue) of what it lets through
+    transmits : float [1], share of the light above its edge that a thinned junction lets through; lowers its response
+    absorptance : Response or None, share of the light it takes in over wavelength, at 25 degC, before thinning; None
+        = taken from the response: all of it up to the plateau, then as the response falls
 
     Raises
     ------
@@ -65,6 +73,10 @@ class Junction:
     gap_shift_ev_per_k: float = 0.0
     recombination_v: float = 0.0
     built_in_v: float = math.inf
+    reflection: float = 0.0
+    parasitic: float = 0.0
+    transmits: float = 0.0
+    absorptance: Response | None = None
 
     def __post_init__(self) -> None:
         """Refuse what cannot be."""
@@ -90,10 +102,41 @@ def standard_photocurrent(response: Response) -> float:
     return float(folded(response) @ bands * (STANDARD_IRRADIANCE / bands.sum()))
 
 
+def reference_photocurrent(junction: Junction) -> float:
+    """Return the standard photocurrent [A m-2] of a junction outside any stack, at which its quality is defined."""
+    return standard_photocurrent(response_at(junction, STANDARD_CELL_TEMPERATURE))
+
+
 def response_at(junction: Junction, temperature: float) -> Response:
-    """Return the response [1] at a cell temperature [K]: the edge drifts with the gap."""
-    drift = junction.gap_shift_ev_per_k * (temperature - STANDARD_CELL_TEMPERATURE)
-    return shifted(junction.response, drift, junction.gap_ev)
+    """Return the response [1] at a cell temperature [K]: the edge drifts with the gap, thinning lowers it."""
+    moved = shifted(junction.response, _drift(junction, temperature), junction.gap_ev)
+    return scaled(moved, 1 - junction.transmits) if junction.transmits else moved
+
+
+def absorptance_at(junction: Junction, temperature: float) -> tuple[Array, Array]:
+    """Return the share of light that a junction takes in, over wavelength, at a cell temperature [K].
+
+    Returns
+    -------
+    (n,) array [nm] and (n,) array [1]; constant below the first wavelength, none beyond the last
+
+    Notes
+    -----
+    If the junction does not say, its response tells: up to the plateau (the last point above 95 % of the peak) all
+    light is taken in, collected or not; beyond, the absorptance falls as the response does.
+    """
+    given = junction.absorptance
+    curve = shifted(given or junction.response, _drift(junction, temperature), junction.gap_ev)
+    level = curve.quantum_efficiency
+    if given is None:
+        last = int(np.flatnonzero(level >= 0.95 * level.max())[-1])
+        level = np.minimum(level / level[last], 1.0)
+        level[: last + 1] = 1.0
+    return curve.wavelength_nm, level * (1 - junction.transmits)
+
+
+def _drift(junction: Junction, temperature: float) -> float:
+    return junction.gap_shift_ev_per_k * (temperature - STANDARD_CELL_TEMPERATURE)
 
 
 def saturation_current(junction: Junction, temperature: Any) -> Any:
@@ -116,7 +159,7 @@ def saturation_current(junction: Junction, temperature: Any) -> Any:
     temperature = np.asarray(temperature, dtype=np.float64)
     levels, where = np.unique(temperature, return_inverse=True)
     radiative = np.array([_radiative_current(junction, float(level)) for level in levels])
-    collected = standard_photocurrent(junction.response)
+    collected = reference_photocurrent(junction)
     values = balance.saturation_current(radiative, collected, junction.external_radiative_efficiency, junction.ideality)
     return values[where].reshape(temperature.shape)[()]
 
@@ -172,5 +215,11 @@ def moved_to_gap(junction: Junction, gap_ev: float) -> Junction:
     ValueError
         If the gap is outside `LIMITS` or beyond the response's blue end.
     """
-    response = shifted(junction.response, gap_ev - junction.gap_ev, junction.gap_ev)
-    return replace(junction, gap_ev=gap_ev, response=response)
+    move = gap_ev - junction.gap_ev
+    absorbed = junction.absorptance
+    return replace(
+        junction,
+        gap_ev=gap_ev,
+        response=shifted(junction.response, move, junction.gap_ev),
+        absorptance=absorbed if absorbed is None else shifted(absorbed, move, junction.gap_ev),
+    )

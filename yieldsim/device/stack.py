@@ -6,6 +6,7 @@ from dataclasses import dataclass, replace
 from itertools import pairwise
 
 from yieldsim.device import junction as junctions_module
+from yieldsim.device import optics
 from yieldsim.device.junction import Junction
 from yieldsim.device.response import Response
 
@@ -14,6 +15,7 @@ LIMITS: dict[str, tuple[float, float]] = {
     "bifaciality": (0.0, 1.0),
     "incidence_modifier": (0.05, 0.5),
     "area_fraction": (0.1, 1.0),
+    "coupling": (0.0, 1.0),
 }
 HEAT_LOSS_LIMITS = ((5.0, 100.0), (0.0, 30.0))
 
@@ -32,6 +34,8 @@ class Absorber:
         glass, less for coated or structured glass; None = no loss beyond normal incidence
     area_fraction : float [1], light-collecting area over module area; powers and efficiencies of this package are per
         collecting area unless they say otherwise
+    coupling : float [1], luminescent coupling: share of the light each junction emits that the next one below
+        collects; see `series`
     heat_loss : (float [W m-2 K-1], float [W m-3 s K-1]), u0 and u1 of `thermal.faiman`
 
     Raises
@@ -51,6 +55,7 @@ class Absorber:
     incidence_modifier: float | None = 0.16
     area_fraction: float = 1.0
     heat_loss: tuple[float, float] = (25.0, 6.84)
+    coupling: float = 0.0
 
     def __post_init__(self) -> None:
         """Refuse what cannot be."""
@@ -84,9 +89,7 @@ class Absorber:
 
 def responses_at(absorber: Absorber, temperature: float) -> tuple[Response, ...]:
     """Return the response of each junction where it sits in the stack, at a cell temperature [K]."""
-    if len(absorber.junctions) > 1:
-        raise NotImplementedError("stacks of several junctions")
-    return tuple(junctions_module.response_at(junction, temperature) for junction in absorber.junctions)
+    return optics.in_stack(absorber.junctions, temperature)
 
 
 def moved_to_gap(absorber: Absorber, gap_ev: float) -> Absorber:
