@@ -12,6 +12,7 @@ from pydantic import GetCoreSchemaHandler, ValidationInfo
 from pydantic_core import CoreSchema, core_schema
 
 from yieldsim.config.fields import Text, nearest, refusal, show
+from yieldsim.errors import InputError, Problem
 
 PVLIB = "pvlib:"
 PVLIB_WEATHER = (".csv", ".tm2")
@@ -47,6 +48,61 @@ def sha256(path: Path) -> str:
         while chunk := stream.read(CHUNK_BYTES):
             digest.update(chunk)
     return digest.hexdigest()
+
+
+def read_text(path: Path, shown: str, limit: int, lenient: bool = False) -> str:
+    """Return the text of a file.
+
+    Parameters
+    ----------
+    path : Path
+    shown : str, what messages call it
+    limit : int [bytes], most that is read
+    lenient : bool, take what is not UTF-8 for Windows-1252, as tables from instruments often are
+
+    Raises
+    ------
+    InputError
+        For a file that is missing, not a plain file, too large, not readable or not text.
+    """
+
+    content = _read_bytes(path, shown, limit)
+    wide = content.startswith((b"\xff\xfe", b"\xfe\xff"))
+    if b"\0" in content and not (wide and lenient):
+        raise _refuse(shown, "bytes that are not text", "a text file", _line_of(content, content.index(b"\0")))
+    try:
+        return content.decode("utf-16" if wide and lenient else "utf-8-sig")
+    except UnicodeDecodeError as error:
+        if lenient:
+            return content.decode("cp1252", "replace")
+        found = "bytes that are not UTF-8 text"
+        raise _refuse(shown, found, "text in UTF-8", _line_of(content, error.start)) from None
+
+
+def _read_bytes(path: Path, shown: str, limit: int) -> bytes:
+    try:
+        if not path.exists():
+            raise _refuse(shown, "no such file", f"a file that exists; looked for {path.absolute()}")
+        if not path.is_file():
+            raise _refuse(shown, "not a file", "a text file")
+        with path.open("rb") as stream:
+            content = stream.read(limit + 1)
+    except PermissionError:
+        raise _refuse(shown, "no permission to read it", "a readable file") from None
+    except (OSError, ValueError) as error:  # ValueError: a name no file system can hold
+        reason = getattr(error, "strerror", None) or error
+        raise _refuse(shown, f"it cannot be read ({reason})", "a readable file") from None
+    if len(content) > limit:
+        raise _refuse(shown, f"more than {limit / 1e6:g} MB", f"at most {limit / 1e6:g} MB")
+    return content
+
+
+def _refuse(shown: str, found: str, allowed: str, line: int = 0) -> InputError:
+    return InputError(Problem(shown, line, "", found, allowed))
+
+
+def _line_of(content: bytes, place: int) -> int:
+    return content.count(b"\n", 0, place) + 1
 
 
 @dataclass(frozen=True)

@@ -13,6 +13,7 @@ from pathlib import Path
 from typing import Any
 
 from yieldsim.config.compose import MAX_DEPTH, MAX_NODES, Mark, Node, compose, excerpt, lines_of
+from yieldsim.config.inputs import read_text
 from yieldsim.errors import InputError, Problem
 
 MAX_BYTES = 1_000_000  # a study of a thousand sites written out is about 0.3 MB
@@ -80,33 +81,7 @@ def read(path: Path, shown: str | None = None) -> Document:
         document, or too deep or too many levels; all of the latter at once.
     """
     shown = shown if shown is not None else str(path)
-    return parse(read_text(path, shown), shown)
-
-
-def read_text(path: Path, shown: str, limit: int = MAX_BYTES) -> str:
-    """Return the text of a file of at most ``limit`` bytes; raises InputError otherwise."""
-
-    def refuse(found: str, allowed: str, line: int = 0) -> InputError:
-        return InputError(Problem(shown, line, "", found, allowed))
-
-    try:
-        if not path.exists():
-            raise refuse("no such file", f"a file that exists; looked for {path.absolute()}")
-        if not path.is_file():
-            raise refuse("not a file", "a text file")
-        with path.open("rb") as stream:
-            content = stream.read(limit + 1)
-    except PermissionError:
-        raise refuse("no permission to read it", "a readable file") from None
-    except (OSError, ValueError) as error:  # ValueError: a name no file system can hold
-        raise refuse(f"it cannot be read ({getattr(error, 'strerror', None) or error})", "a readable file") from None
-    if len(content) > limit:
-        raise refuse(f"more than {limit / 1e6:g} MB", f"at most {limit / 1e6:g} MB")
-    try:
-        return content.decode("utf-8-sig")
-    except UnicodeDecodeError as error:
-        line = content.count(b"\n", 0, error.start) + 1
-        raise refuse("bytes that are not UTF-8 text", "text in UTF-8", line) from None
+    return parse(read_text(path, shown, MAX_BYTES), shown)
 
 
 def parse(text: str, shown: str) -> Document:
