@@ -107,6 +107,11 @@ class StudyResult:
         return str(named) if named in names else names[0]
 
 
+def records(table: pd.DataFrame) -> list[dict[str, Any]]:
+    """Return the rows of a table, each as column -> cell."""
+    return [dict(zip(map(str, table.columns), row, strict=True)) for row in table.itertuples(index=False, name=None)]
+
+
 def responses_table(absorbers: Sequence[Absorber]) -> pd.DataFrame:
     """Return the share of each band's photons that each junction collects where it sits in its stack, at 25 degC.
 

@@ -1,0 +1,294 @@
+"""Finished studies made up for tests: invented sites and numbers of a plausible size, no engine behind them."""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+from itertools import product
+from typing import Any
+
+import numpy as np
+import pandas as pd
+import xarray as xr
+
+from yieldsim import spectrum
+from yieldsim.constants import PHOTON_EV_NM
+from yieldsim.study.result import STANDARD_SITE, StudyResult
+
+SITES = ("Amber Mesa", "Mangrove Reach", "Saltmarsh Point", "Birchholm", "Highmoor")
+GAPS = {
+    "silicon": 1.12, "cadmium telluride": 1.48, "copper indium gallium": 1.15, "gallium arsenide": 1.42,
+    "amorphous silicon": 1.72, "perovskite 1.55": 1.55, "perovskite 1.68": 1.68, "ideal 1.34": 1.34,
+}  # fmt: skip
+FATES = (
+    "reflected",
+    "below_gap",
+    "uncollected",
+    "thermalised",
+    "recombined",
+    "heat",
+    "mismatch",
+    "system",
+    "delivered",
+)
+
+
+def make(
+    sites: Sequence[str] = SITES,
+    absorbers: dict[str, float] | None = None,
+    mountings: Sequence[str] = ("fixed",),
+    *,
+    full: bool = False,
+    seed: int = 1,
+) -> StudyResult:
+    """Return a made-up result; ``full`` adds the parts that few studies have."""
+    gaps = GAPS if absorbers is None else absorbers
+    chance = np.random.default_rng(seed)
+    monthly = _monthly(sites, mountings, gaps, chance)
+    annual = _annual(monthly, gaps)
+    more: dict[str, Any] = _rest(annual, gaps) if full else {}
+    return StudyResult(
+        study="made-up",
+        resolved={"study": "made-up", "reference": next(iter(gaps)), "sites": [{"name": site} for site in sites]},
+        annual=annual,
+        monthly=monthly,
+        weather_quality=_quality(sites),
+        standard=_standard(gaps),
+        gap_sweep=_sweep(sites, mountings),
+        spectra={site: _spectra(mountings, i) for i, site in enumerate(sites)},
+        responses=_responses(gaps),
+        by_hour=_by_hour(annual, gaps),
+        run={
+            "study": "made-up",
+            "yieldsim": "0.0",
+            "inputs": {f"{site}.csv": "0" * 64 for site in sites},
+            "config": {},
+        },
+        **more,
+    )
+
+
+def _efficiency(gap: float) -> float:
+    return 0.25 - 0.12 * (gap - 1.34) ** 2
+
+
+def _monthly(sites: Sequence[str], mountings: Sequence[str], gaps: dict[str, float], chance: Any) -> pd.DataFrame:
+    rows = []
+    for (i, site), mounting, (name, gap) in product(enumerate(sites), mountings, gaps.items()):
+        for month in range(1, 13):
+            season = np.cos(2 * np.pi * (month - 6.5) / 12)
+            light = (130 - 8 * i) * (1 + 0.5 * season)
+            factors = {
+                "optical_factor": 0.965,
+                "spectral_factor": 1 + (gap - 1.2) * (0.06 * season + 0.02 * (i - 2)) + chance.normal(0, 0.002),
+                "low_light_factor": 0.985 - 0.02 * (1 - season),
+                "temperature_factor": 0.96 - 0.03 * season * (1.9 - gap) - 0.01 * (4 - i),
+                "mismatch_factor": 1.0,
+                "system_factor": 0.955,
+            }
+            ratio = float(np.prod(list(factors.values())))
+            rows.append(
+                {
+                    "site": site,
+                    "mounting": mounting,
+                    "absorber": name,
+                    "month": month,
+                    "hours": 730.0,
+                    "poa_kwh_m2": light,
+                }
+                | factors
+                | {"performance_ratio": ratio, "specific_yield_kwh_kwp": ratio * light}
+                | {"energy_kwh_m2": ratio * light * _efficiency(gap)}
+            )
+    return pd.DataFrame(rows)
+
+
+def _rank(values: pd.Series) -> pd.Series:
+    return values.rank(ascending=False, method="min").astype(int)
+
+
+def _annual(monthly: pd.DataFrame, gaps: dict[str, float]) -> pd.DataFrame:
+    key = ["site", "mounting", "absorber"]
+    summed = monthly.groupby(key, sort=False)[["hours", "poa_kwh_m2", "specific_yield_kwh_kwp", "energy_kwh_m2"]].sum()
+    means = monthly.groupby(key, sort=False)[[name for name in monthly.columns if name.endswith("_factor")]].mean()
+    table = summed.join(means).reset_index()
+    table["performance_ratio"] = table["specific_yield_kwh_kwp"] / table["poa_kwh_m2"]
+    table["terminals"] = 2
+    table["gap_ev"] = [f"{gaps[name]:g}" for name in table["absorber"]]
+    table["stc_efficiency"] = [_efficiency(gaps[name]) for name in table["absorber"]]
+    group = table.groupby(["site", "mounting"], sort=False)
+    table["rank_by_yield"] = group["specific_yield_kwh_kwp"].transform(_rank)
+    table["rank_by_energy"] = group["energy_kwh_m2"].transform(_rank)
+    table["rank_at_stc"] = group["stc_efficiency"].transform(_rank)
+    return table
+
+
+def _standard(gaps: dict[str, float]) -> pd.DataFrame:
+    efficiency = [_efficiency(gap) for gap in gaps.values()]
+    return pd.DataFrame(
+        {
+            "absorber": list(gaps),
+            "terminals": 2,
+            "gap_ev": [f"{gap:g}" for gap in gaps.values()],
+            "stc_efficiency": efficiency,
+            "jsc_a_m2": [1000 * e for e in efficiency],
+            "voc_v": [gap - 0.4 for gap in gaps.values()],
+            "ff": 0.8,
+            "power_temperature_coefficient_per_k": [-0.0045 + 0.0015 * (gap - 1) for gap in gaps.values()],
+            "rank_at_stc": _rank(pd.Series(efficiency)),
+        }
+    )
+
+
+def _quality(sites: Sequence[str]) -> pd.DataFrame:
+    rows = []
+    for site in sites:
+        rows.append((site, "night_light", 3, "2023-01-04T06:00:00Z", "2023-11-20T17:00:00Z", "light at night",
+                     "set to zero"))  # fmt: skip
+        rows.append((site, "source:aod500", 4300, "", "", "study: 12 monthly values", "used"))
+        rows.append((site, "source:water", 4300, "", "", "from temperature and humidity", "used"))
+    return pd.DataFrame(rows, columns=["site", "kind", "rows", "first", "last", "found", "done"])
+
+
+def _sweep(sites: Sequence[str], mountings: Sequence[str]) -> pd.DataFrame:
+    rows = []
+    places = [*product(sites, mountings), (STANDARD_SITE, "")]
+    for (i, (site, mounting)), (quality, top) in product(enumerate(places), (("ideal", 0.337), ("like c-si", 0.26))):
+        for gap in np.round(np.arange(0.9, 2.001, 0.02), 2):
+            light = 1000.0 if site == STANDARD_SITE else 2100.0 - 130 * i
+            efficiency = top - 0.25 * (gap - 1.34) ** 2 + 0.004 * np.cos(40 * gap)
+            shifted = top - 0.25 * (gap - 1.34 - 0.02 * (2 - i)) ** 2 + 0.004 * np.cos(40 * gap)
+            energy = light * (efficiency if site == STANDARD_SITE else 0.9 * shifted)
+            rows.append((site, mounting, quality, float(gap), light, float(energy), float(efficiency)))
+    columns = ["site", "mounting", "quality", "gap_ev", "poa_kwh_m2", "energy_kwh_m2", "standard_efficiency"]
+    return pd.DataFrame(rows, columns=columns)
+
+
+def _responses(gaps: dict[str, float]) -> pd.DataFrame:
+    wavelength = spectrum.band_wavelengths()
+    return pd.concat(
+        [
+            pd.DataFrame(
+                {
+                    "absorber": name,
+                    "junction": 1,
+                    "wavelength_nm": wavelength,
+                    "collected_share": 0.93 / (1 + np.exp((wavelength - PHOTON_EV_NM / gap) / 15)),
+                }
+            )
+            for name, gap in gaps.items()
+        ],
+        ignore_index=True,
+    )
+
+
+def _spectra(mountings: Sequence[str], site: int) -> xr.Dataset:
+    bands, centre, edges = spectrum.reference_bands(), spectrum.band_wavelengths(), spectrum.band_edges()
+    times, heights, kinds, depth = [], [], [], []
+    for month, (kind, cloud) in product(range(1, 13), (("clear", 0.0), ("median", 12.0))):
+        long = 8 if month in (1, 2, 11, 12) else 12
+        for step in range(long):
+            day = 10 if kind == "clear" else 20
+            times.append(np.datetime64(f"2023-{month:02d}-{day}T{12 - long // 2 + step:02d}:00:00"))
+            heights.append(np.sin(np.pi * (step + 0.5) / long) * (0.9 if long == 12 else 0.5))
+            kinds.append(kind)
+            depth.append(cloud)
+    sun = np.array(heights)
+    clear = np.exp(-np.array(depth) / 8)
+    redder = np.exp(-0.15 / np.maximum(sun, 0.05)[:, None] * (550 / centre) ** 2)
+    beam = bands * redder * clear[:, None] * 0.9
+    diffuse = bands * (450 / centre) ** 1.5 * sun[:, None] * (0.2 + 0.3 * (1 - clear[:, None]))
+    front = np.array([(beam * sun[:, None] + diffuse) * (1 - 0.1 * m) for m in range(len(mountings))])
+    dni, dhi = beam.sum(axis=1), diffuse.sum(axis=1)
+    month = np.array(times).astype("datetime64[M]").astype(int) % 12 + 1
+    return xr.Dataset(
+        {
+            "beam": (("time", "band"), beam),
+            "diffuse": (("time", "band"), diffuse),
+            "plane_of_array": (("mounting", "time", "band"), front),
+            "band_edges": (("band", "edge"), np.stack([edges[:-1], edges[1:]], axis=1)),
+            "zenith": ("time", np.degrees(np.arccos(sun))),
+            "aod500": ("time", np.full(len(sun), 0.1)),
+            "precipitable_water": ("time", np.full(len(sun), 1.5)),
+            "cloud_optical_depth": ("time", np.array(depth)),
+            "month": ("time", month),
+            "day_kind": ("time", np.array(kinds)),
+            "ghi": ("time", dni * sun + dhi),
+            "dni": ("time", dni),
+            "dhi": ("time", dhi),
+            "temp_air": ("time", np.full(len(sun), 15.0)),
+        },
+        {
+            "time": np.array(times, dtype="datetime64[ns]"),
+            "wavelength": ("band", centre),
+            "mounting": np.array(list(mountings), dtype=str),
+        },
+        {"utc_offset_h": float(site), "latitude_deg": 40.0, "longitude_deg": 15.0 * site, "elevation_m": 100.0},
+    )
+
+
+def _by_hour(annual: pd.DataFrame, gaps: dict[str, float]) -> pd.DataFrame:
+    cells = [(m, h) for m in range(1, 13) for h in range(6, 19)]
+    weight = np.array(
+        [np.sin(np.pi * (h - 5.5) / 13) * (1 - 0.5 * np.cos(2 * np.pi * (m - 0.5) / 12)) for m, h in cells]
+    )
+    parts = []
+    for row in annual.itertuples():
+        tilt = np.array([1 + (gaps[row.absorber] - 1.2) * 0.1 * np.sin(np.pi * (h - 5.5) / 13) for _, h in cells])
+        share = weight * tilt / (weight * tilt).sum()
+        parts.append(
+            pd.DataFrame(
+                {
+                    "site": row.site,
+                    "mounting": row.mounting,
+                    "absorber": row.absorber,
+                    "month": [m for m, _ in cells],
+                    "hour": [h for _, h in cells],
+                    "specific_yield_kwh_kwp": share * row.specific_yield_kwh_kwp,
+                }
+            )
+        )
+    return pd.concat(parts, ignore_index=True)
+
+
+def _rest(annual: pd.DataFrame, gaps: dict[str, float]) -> dict[str, Any]:
+    key = annual[["site", "mounting", "absorber"]]
+    energy = annual["energy_kwh_m2"]
+    lost = annual["poa_kwh_m2"] - energy
+    parts = np.array([0.04, 0.25, 0.06, 0.35, 0.2, 0.05, 0.0, 0.05])
+    ledger = key.assign(**{name: lost * part for name, part in zip(FATES, parts, strict=False)}, delivered=energy)
+    chance = [
+        key.assign(measure=name, p90=annual[name] * 0.94, p50=annual[name], p10=annual[name] * 1.06)
+        for name in ("specific_yield_kwh_kwp", "energy_kwh_m2")
+    ]
+    first = next(iter(gaps))
+    others = key[key["absorber"] != first]
+    duel = others.assign(
+        other=first,
+        probability=np.linspace(0.05, 0.98, len(others)),
+        margin_p90=-0.01,
+        margin_p50=0.01,
+        margin_p10=0.03,
+    )
+    worth = others.assign(
+        currency="EUR", break_even_per_m2=np.linspace(-8, 12, len(others)), cost_of_energy_per_kwh=0.041
+    )
+    sites = [*dict.fromkeys(zip(annual["site"], annual["mounting"], strict=True)), (STANDARD_SITE, "")]
+    pairs = [
+        (
+            site,
+            mounting,
+            float(top),
+            float(bottom),
+            900 - 800 * (top - 1.7) ** 2 - 900 * (bottom - 1.1 - (top - 1.7)) ** 2,
+        )
+        for site, mounting in sites
+        for top in np.round(np.arange(1.5, 2.001, 0.04), 2)
+        for bottom in np.round(np.arange(0.9, 1.301, 0.04), 2)
+    ]
+    return {
+        "ledger": ledger,
+        "chance": pd.concat(chance, ignore_index=True),
+        "head_to_head": duel,
+        "worth": worth,
+        "gap_pairs": pd.DataFrame(pairs, columns=["site", "mounting", "top_gap_ev", "bottom_gap_ev", "energy_kwh_m2"]),
+    }
