@@ -108,6 +108,7 @@ def run_study(
         "versions": {name: metadata.version(name) for name in _VERSIONS_OF},
         "inputs": {file.shown: file.sha256 for site in plan.sites for file in site.weather},
         "seconds": {name: round(value, 3) for name, value in seconds.items()},
+        "folder": plan.folder,
         "config": dict(plan.resolved),
     }
     result = StudyResult(

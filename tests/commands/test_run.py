@@ -1,5 +1,6 @@
 """The summary of a run, and what is handed to the engine."""
 
+import json
 from pathlib import Path
 from types import SimpleNamespace
 
@@ -7,7 +8,8 @@ import pytest
 
 from yieldsim import api
 from yieldsim.cli import main
-from yieldsim.commands.run import departure, summary
+from yieldsim.commands.run import departure, differences, summary
+from yieldsim.config import load
 from yieldsim.errors import PlaceError
 
 
@@ -117,3 +119,81 @@ def test_what_the_engine_cannot_do_here_is_2(engine, monkeypatch, capsys):
     monkeypatch.setattr(api, "run_study", full)
     assert main(["run", "x.yaml"]) == 2
     assert "No space left" in capsys.readouterr().err
+
+
+# ----------------------------------------------------------------------------------------------- repeating a run
+
+
+@pytest.fixture
+def recorded(tmp_path):
+    """Return the run.json of a run, and the plan it was made from."""
+    (tmp_path / "year.csv").write_bytes(b"weather")
+    study = tmp_path / "study.yaml"
+    study.write_text(
+        "study: again\nmounting: {tilt_deg: 30, azimuth_deg: 180}\nsites: [{name: a, weather: year.csv}]\n"
+        "absorbers: [{name: b, like: c-si}]\n",
+        encoding="utf-8",
+    )
+    plan = load(study)
+    record = tmp_path / "elsewhere" / "run.json"
+    record.parent.mkdir()
+    content = {
+        "folder": plan.folder,
+        "config": dict(plan.resolved),
+        "inputs": {file.shown: file.sha256 for site in plan.sites for file in site.weather},
+        "versions": {"numpy": "0.1", "no-such-package": "1.0"},
+    }
+    record.write_text(json.dumps(content), encoding="utf-8")
+    return record
+
+
+def test_a_run_is_repeated_from_its_record_and_what_differs_is_said(engine, recorded, capsys):
+    assert main(["run", "--from", str(recorded), "--quiet"]) == 0
+    ((plan, out, _),) = engine
+    assert (plan.name, plan.sites[0].name, out) == ("again", "a", Path("outputs/again"))
+    err = capsys.readouterr().err
+    assert "then 0.1" in err
+    assert "no-such-package not installed, then 1.0" in err
+    assert "content of" not in err
+    assert "as it resolves" not in err
+
+
+def test_other_weather_and_another_library_are_told(engine, recorded, capsys):
+    content = json.loads(recorded.read_text(encoding="utf-8"))
+    del content["config"]["absorbers"][0]["ideality"]  # as if the library had changed since
+    content["config"]["absorbers"][0]["gap_ev"] = 1.13
+    recorded.write_text(json.dumps(content), encoding="utf-8")
+    (Path(content["folder"]) / "year.csv").write_bytes(b"other weather")
+    assert main(["run", "--from", str(recorded), "--quiet"]) == 0
+    err = capsys.readouterr().err
+    assert "differs: content of year.csv" in err
+    assert "differs: the study as it resolves" in err
+
+
+def test_nothing_differs_when_nothing_does(recorded):
+    plan = load(recorded.parents[1] / "study.yaml")
+    before = json.loads(recorded.read_text(encoding="utf-8"))
+    del before["versions"]
+    assert [line for line in differences(plan, before) if not line.startswith(("yieldsim", "python", "platform"))] == []
+
+
+@pytest.mark.parametrize(
+    ("content", "said"),
+    [
+        ("no json", "not JSON"),
+        ("[]", "no study"),
+        ('{"config": {"study": "x"}}', "no key `sites`"),
+        ("[" * 100_000, "not JSON"),
+    ],
+)
+def test_what_is_no_record_is_refused(tmp_path, capsys, content, said):
+    file = tmp_path / "run.json"
+    file.write_text(content, encoding="utf-8")
+    assert main(["run", "--from", str(file)]) == 1
+    assert said in capsys.readouterr().err
+
+
+@pytest.mark.parametrize("words", [[], ["x.yaml", "--from", "run.json"]])
+def test_a_study_or_a_record(words, capsys):
+    assert main(["run", *words]) == 1
+    assert "either STUDY.yaml or --from run.json" in capsys.readouterr().err

@@ -3,11 +3,18 @@
 from __future__ import annotations
 
 import argparse
+import platform
+import sys
 from collections.abc import Mapping, Sequence
 from pathlib import Path
-from typing import Any, cast
+from typing import TYPE_CHECKING, Any, cast
 
+from yieldsim import __version__
 from yieldsim.commands._terminal import Progress, bold, cut, plain, table
+from yieldsim.errors import InputError, Problem
+
+if TYPE_CHECKING:
+    from yieldsim.study.plan import StudyPlan
 
 EXAMPLE = """example:
   yieldsim run mine.yaml --out results --workers 2
@@ -20,7 +27,14 @@ Row = Mapping[str, Any]
 
 def arguments(parser: argparse.ArgumentParser) -> None:
     """Declare the options of the command."""
-    parser.add_argument("study", metavar="STUDY.yaml", type=Path, help="the study file")
+    parser.add_argument("study", metavar="STUDY.yaml", type=Path, nargs="?", help="the study file")
+    parser.add_argument(
+        "--from",
+        dest="record",
+        metavar="run.json",
+        type=Path,
+        help="repeat a finished run instead, and say what differs",
+    )
     parser.add_argument("--out", metavar="DIR", type=Path, help="folder of the results (default: outputs/STUDY)")
     parser.add_argument("--workers", metavar="N", type=workers, default=1, help="processes that share the sites")
     parser.add_argument("--fresh", action="store_true", help="compute again what an earlier run finished")
@@ -39,7 +53,10 @@ def run(options: argparse.Namespace) -> int:
     from yieldsim import api
     from yieldsim.study.store import file_stem
 
-    plan = api.load_study(options.study)
+    if (options.study is None) == (options.record is None):
+        found = "neither a study nor --from" if options.study is None else "a study and --from"
+        raise InputError(Problem("", 0, "command line", found, "either STUDY.yaml or --from run.json"))
+    plan = api.load_study(options.study) if options.record is None else _repeated(options.record)
     out = options.out if options.out is not None else Path("outputs", file_stem(plan.name))
     progress = Progress(options.quiet)
     try:
@@ -50,6 +67,45 @@ def run(options: argparse.Namespace) -> int:
         rows = cast("list[Row]", result.annual.to_dict("records"))
         print(summary(rows, plan.reference, out))
     return 0
+
+
+def _repeated(record: Path) -> StudyPlan:
+    """Return the plan of a finished run; tell on stderr what is not as it was then."""
+    from yieldsim import config
+
+    plan, before = config.load_run(record)
+    for line in differences(plan, before):
+        print(f"differs: {line}", file=sys.stderr)
+    return plan
+
+
+def differences(plan: StudyPlan, before: Row) -> list[str]:
+    """Return what is not as it was when a run was recorded: versions, weather files, the study itself.
+
+    Parameters
+    ----------
+    plan : StudyPlan, as the record reads today
+    before : the record, as ``run.json`` holds it
+    """
+    from importlib import metadata
+
+    found = []
+    now = {"yieldsim": __version__, "python": platform.python_version(), "platform": platform.platform()}
+    was = {name: before.get(name) for name in now}
+    for name, version in dict(before.get("versions") or {}).items():
+        was[name] = version
+        try:
+            now[name] = metadata.version(name)
+        except metadata.PackageNotFoundError:
+            now[name] = "not installed"
+    found += [f"{name} {now[name]}, then {plain(str(was[name]))}" for name in now if now[name] != was[name]]
+    inputs = dict(before.get("inputs") or {})
+    for file in (file for site in plan.sites for file in site.weather):
+        if inputs.get(file.shown) != file.sha256:
+            found.append(f"content of {plain(file.shown)}")
+    if dict(plan.resolved) != before.get("config"):
+        found.append("the study as it resolves, for instance by another library of absorbers")
+    return found
 
 
 def summary(rows: Sequence[Row], reference: str, out: Path) -> str:

@@ -2,6 +2,6 @@
 
 from __future__ import annotations
 
-from yieldsim.config.loader import load
+from yieldsim.config.loader import load, load_run
 
-__all__ = ["load"]
+__all__ = ["load", "load_run"]

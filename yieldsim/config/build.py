@@ -71,6 +71,7 @@ class Builder:
             losses=LossesPlan({name: _twelve(value) for name, value in study.losses if value is not None}),
             keep=frozenset(study.keep),
             resolved={},
+            folder=str(self.folder),
         )
         return replace(plan, resolved=resolved(study, plan))
 

@@ -2,14 +2,19 @@
 
 from __future__ import annotations
 
+import json
 from pathlib import Path
+from typing import Any
 
 from yieldsim.config import crosscheck, tree
 from yieldsim.config.build import Builder
 from yieldsim.config.explain import validate
+from yieldsim.config.inputs import read_text
 from yieldsim.config.schema import NOT_YET, Study
-from yieldsim.errors import InputError
+from yieldsim.errors import InputError, Problem
 from yieldsim.study.plan import StudyPlan
+
+MAX_RUN_BYTES = 20_000_000
 
 
 def load(path: str | Path) -> StudyPlan:
@@ -25,6 +30,32 @@ def load(path: str | Path) -> StudyPlan:
         With every problem of the file: its line, key path, what was found, what is allowed.
     """
     return plan_of(tree.read(Path(path), str(path)), Path(path).absolute().parent)
+
+
+def load_run(path: str | Path) -> tuple[StudyPlan, dict[str, Any]]:
+    """Return the plan that a finished run was made from, and the record of that run.
+
+    Parameters
+    ----------
+    path : str or Path of a ``run.json``
+
+    Raises
+    ------
+    InputError
+        If it is no such file, or if what it names is not there any more.
+    """
+    shown = str(path)
+    try:
+        record = json.loads(read_text(Path(path), shown, MAX_RUN_BYTES))
+    except (ValueError, RecursionError) as error:
+        line = getattr(error, "lineno", 0)
+        raise InputError(Problem(shown, line, "", "text that is not JSON", "the run.json of a finished run")) from None
+    study = record.get("config") if isinstance(record, dict) else None
+    if not isinstance(study, dict):
+        raise InputError(Problem(shown, 0, "config", "no study", "the run.json of a finished run"))
+    folder = record.get("folder")
+    start = Path(folder) if isinstance(folder, str) and folder else Path(path).absolute().parent
+    return plan_of(tree.Document(shown, (), study, {}, {}), start), record
 
 
 def plan_of(document: tree.Document, folder: Path) -> StudyPlan:

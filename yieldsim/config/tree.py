@@ -28,7 +28,7 @@ class Document:
     Parameters
     ----------
     file : str, the file as the user named it
-    lines : the file's text, line by line
+    lines : the file's text, line by line; empty where places are not known
     data : mapping, list or scalar
     keys : key path -> Mark of the key (of the value, for an item of a list)
     values : key path -> Mark of the value
@@ -45,7 +45,7 @@ class Document:
         places = self.keys if of_key else self.values
         while path not in places and path:
             path, places = path[:-1], self.keys
-        return places.get(path, Mark(1, 1))
+        return places.get(path, Mark(1 if self.lines else 0, 1))
 
     def problem(self, path: KeyPath, found: str, allowed: str, of_key: bool = False) -> Problem:
         """Return a Problem at a key path, with its line."""

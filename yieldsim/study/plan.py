@@ -112,6 +112,7 @@ class StudyPlan:
     reference : str, name of the absorber the others are set against
     keep : parts of the result to write: ``annual monthly hourly spectra plots``
     resolved : the study as resolved (every default filled in), JSON-able, for ``run.json``
+    folder : str, absolute path its relative paths start from; for ``run.json``
     """
 
     name: str
@@ -122,3 +123,4 @@ class StudyPlan:
     losses: LossesPlan
     keep: frozenset[str]
     resolved: Mapping[str, Any]
+    folder: str = ""
