@@ -8,6 +8,7 @@ from yieldsim.constants import CELSIUS_ZERO, THERMAL_EV_PER_K
 from yieldsim.device.balance import radiative_current, saturation_current
 from yieldsim.device.diode import Diode
 from yieldsim.device.response import step
+from yieldsim.device.series import Link
 
 
 @st.composite
@@ -208,3 +209,26 @@ def broken_studies(draw, most=3):
         else:
             place[path[-1]] = value
     return study, [named for _, _, named in damages]
+
+
+@st.composite
+def stacks(draw):
+    """Return two or three diodes under the same sky, top first, with (links) or without coupling; as `series.Link`."""
+    temperature = draw(st.floats(-30, 90)) + CELSIUS_ZERO
+    thermal = THERMAL_EV_PER_K * temperature
+    light = 10 ** draw(st.floats(-1, 3.0))
+    gaps = sorted(draw(st.lists(st.floats(0.66, 2.1), min_size=2, max_size=3)), reverse=True)
+    coupling = draw(st.sampled_from([0.0, 0.5, 1.0]))
+    links = []
+    for gap in gaps:
+        response = step(gap)
+        radiative = radiative_current(response.wavelength_nm, response.quantum_efficiency, temperature)
+        diode = Diode(
+            photocurrent=0.2 * light * draw(st.floats(0.5, 1.5)),
+            saturation_current=saturation_current(radiative, 200.0, 10 ** draw(st.floats(-4, 0)), 1.0),
+            thermal_voltage=thermal,
+            series_resistance=draw(st.sampled_from([0.0, 1e-5, 2e-4])),
+            shunt_conductance=draw(st.sampled_from([0.0, 0.01, 1.0, 20.0])),
+        )
+        links.append(Link(diode, coupling * radiative, thermal))
+    return links

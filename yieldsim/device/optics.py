@@ -78,7 +78,11 @@ def product(first: Curve, second: Curve, outside: float | None) -> Curve:
     a, b = _ends(first, left, right), _ends(second, left, right)
     middle = (a[0] + a[1]) * (b[0] + b[1]) / 4
     wave = np.stack([left, (left + right) / 2, right], axis=1).ravel()
-    return wave, np.stack([a[0] * b[0], middle, a[1] * b[1]], axis=1).ravel()
+    level = np.stack([a[0] * b[0], middle, a[1] * b[1]], axis=1).ravel()
+    if outside is not None:
+        return wave, level
+    ends = first[1][0] * second[1][0], first[1][-1] * second[1][-1]  # what holds beyond, after a step at either end too
+    return np.concatenate([wave[:1], wave, wave[-1:]]), np.concatenate([ends[:1], level, ends[1:]])
 
 
 def _ends(curve: Curve, left: Array, right: Array) -> tuple[Array, Array]:

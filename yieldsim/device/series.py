@@ -31,6 +31,7 @@ Array = NDArray[np.float64]
 
 #: At most so many steps; six to eight are taken.
 NEWTON_STEPS = 40
+_SHORT_STEPS = 150  # to short circuit, where a junction without a shunt makes the curve fall sheer: halving
 #: Newton stops once the limiting junction's voltage moves by less [V].
 SETTLED = 1e-9
 
@@ -151,14 +152,15 @@ def short_circuit(links: Sequence[Link]) -> Array:
     total = sum((link.diode.photocurrent for link in links), start=total)
     links = [_lit(_at_hours(link, np.arange(len(total))), total) for link in links]
     current, low, high = _start(links), np.zeros_like(total), 2 * total
-    for _ in range(NEWTON_STEPS):
+    for _ in range(_SHORT_STEPS):
         state = state_at(links, current)
         voltage = state.voltage.sum(axis=0) - current * _resistance(links)
         low, high = np.where(voltage > 0, current, low), np.where(voltage > 0, high, current)
         back = -voltage / (state.fall.sum(axis=0) + _resistance(links))
         trial, move = _newton_step(links, state, current, back)
-        current = np.where((trial >= low) & (trial <= high), trial, (low + high) / 2)
-        if np.all(np.abs(move) <= SETTLED):
+        sheer = voltage < single.NO_VOLTAGE / 2  # no slope to follow there
+        current = np.where((trial >= low) & (trial <= high) & ~sheer, trial, (low + high) / 2)
+        if np.all((np.abs(move) <= SETTLED) | (high - low <= 1e-13 * high)):
             break
     return current
 
