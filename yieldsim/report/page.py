@@ -22,7 +22,7 @@ MOST_COLUMNS = 12  # places side by side in the table at a glance; annual.csv ho
 _SOURCE = "source:"
 #: Ours by hand; the two libraries (both under the ISC licence, its text at their head) draw the charts: they make SVG,
 #: which takes the page's own colours in dark and light, prints sharply and can be read by assistive software.
-_SCRIPTS = ("d3.min.js", "plot.min.js", "page.js")
+_SCRIPTS = ("d3.min.js", "plot.min.js", "page.js", "charts.js", "gaps.js")
 
 
 def write_page(result: StudyResult, folder: Path) -> Path:

@@ -1,0 +1,176 @@
+"use strict";
+// Charts of gaps, chance and worth; the list of all charts; and the start of the page.
+
+const STANDARD = "standard spectrum";
+const placeName = (p) => (p < 0 ? STANDARD : study.places[p].name);
+
+/** Return the best point of a curve and the ends of the stretch within a share of it. */
+function plateau(gap, energy, within = 0.01) {
+  const best = d3.maxIndex(energy);
+  const limit = energy[best] * (1 - within);
+  const edge = (step) => {
+    let at = best;
+    while (energy[at + step] >= limit) at += step;
+    if (energy[at + step] === undefined) return gap[at];
+    return gap[at] + ((energy[at] - limit) / (energy[at] - energy[at + step])) * (gap[at + step] - gap[at]);
+  };
+  return { best, low: edge(-1), high: edge(1) };
+}
+
+function gap_sweep(width) {
+  const quality = qualities()[choice.quality];
+  const relative = choice.relative === "yes";
+  const curves = study.gap_sweep.filter((one) => one.quality === quality).map((one) => {
+    const top = d3.max(one.energy_kwh_m2);
+    const y = one.energy_kwh_m2.map((e) => (relative ? (100 * e) / top : e));
+    return { ...one, y, ...plateau(one.gap_ev, one.energy_kwh_m2), number: one.place < 0 ? 6 : one.place };
+  });
+  const unit = relative ? "%" : "kWh/m²";
+  const data = curves.flatMap((one) => one.y.map((y, i) => ({ one, y, x: one.gap_ev[i] })));
+  const text = (d) => `${placeName(d.one.place)}: ${figures(d.y, 1)} ${unit} at ${figures(d.x, 2)} eV; best ${figures(d.one.gap_ev[d.one.best], 2)} eV, within 1 % from ${figures(d.one.low, 2)} to ${figures(d.one.high, 2)} eV`;
+  const style = (one) => (one.place < 0 ? { stroke: "currentColor", strokeDasharray: "6 4" } : { stroke: look(one.number).colour, strokeDasharray: look(one.number).dash });
+  const labels = width > 560 && curves.length <= 16;
+  const room = labels ? Math.min(240, 26 + Math.max(40, ...curves.map((one) => textWidth(placeName(one.place))))) : 14;
+  const height = Math.max(360, 60 + 15 * (labels ? curves.length : 0));
+  const domain = relative ? [d3.min(data, (d) => d.y), 101] : [0, 1.04 * d3.max(data, (d) => d.y)];
+  const span = d3.extent(data, (d) => d.x);
+  const ends = curves.map((one) => ({ y: one.y.at(-1), number: one.number, text: placeName(one.place), standard: one.place < 0 }));
+  const thick = (one) => [[one.low, at(one, one.low)], ...one.gap_ev.map((g, i) => [g, one.y[i]]).filter(([g]) => g > one.low && g < one.high), [one.high, at(one, one.high)]];
+  const at = (one, gap) => d3.scaleLinear(one.gap_ev, one.y)(gap);
+  const svg = plot(width, {
+    marginLeft: 52, marginRight: room, marginBottom: 38, marginTop: 26, height,
+    x: { domain: span, label: "gap [eV]", labelAnchor: "center", labelArrow: "none" },
+    y: { domain, grid: true, label: relative ? "share of the best [%]" : "energy [kWh/m² a year]", labelArrow: "none" },
+    marks: [
+      ...curves.map((one) => Plot.line(one.gap_ev.map((g, i) => [g, one.y[i]]), { strokeWidth: 1.6, ...style(one) })),
+      ...curves.map((one) => Plot.line(thick(one), { stroke: style(one).stroke, strokeWidth: 6, strokeOpacity: 0.35 })),
+      ...curves.map((one) => (one.place < 0 ? Plot.dot([[one.gap_ev[one.best], one.y[one.best]]], { fill: "currentColor", symbol: "diamond", r: 5 }) : signs([[one.gap_ev[one.best], one.y[one.best]]], one.number, { r: 5 }))),
+      ...(labels ? endLabels(ends, span[1], room, { pixels: height - 64, domain, perPixel: (span[1] - span[0]) / (width - 52 - room) }) : []),
+      Plot.tip(data, Plot.pointer({ x: "x", y: "y", title: text, maxRadius: 40 })),
+    ],
+  });
+  return {
+    svg,
+    legend: labels ? null : legendOf(study.places.slice(0, 16).map((place) => place.name), true),
+    alt: `Energy a year over the gap for absorbers of quality ${quality}, per place and under the standard spectrum.`,
+    points: data.map((d) => ({ x: d.x, y: d.y, text: text(d) })),
+    table: () => ({
+      columns: ["gap [eV]", ...curves.map((one) => `${placeName(one.place)} [${unit}]`)],
+      rows: curves[0].gap_ev.map((gap, i) => [figures(gap, 2), ...curves.map((one) => figures(one.y[i], 1))]),
+    }),
+  };
+}
+
+function gap_pairs(width) {
+  const one = study.gap_pairs.find((pairs) => pairs.place === choice.place) ?? study.gap_pairs[0];
+  const data = one.energy_kwh_m2.map((e, i) => ({ e, x: one.top_gap_ev[i], y: one.bottom_gap_ev[i] }));
+  const best = data[d3.maxIndex(data, (d) => d.e)];
+  const floor = d3.quantile(data, 0.1, (d) => d.e);
+  const shade = (d) => 0.04 + 0.8 * Math.max(0, (d.e - floor) / (best.e - floor || 1)) ** 2;
+  const text = (d) => `${figures(d.x, 2)} over ${figures(d.y, 2)} eV: ${figures(d.e, 1)} kWh/m², ${signed(100 * (d.e / best.e - 1), 2)} % of the best`;
+  const gaps = (key) => [...new Set(data.map((d) => d[key]))].sort(d3.ascending);
+  const sparse = (list, most) => list.filter((_, i) => i % Math.ceil(list.length / most) === 0);
+  const [tops, bottoms] = [gaps("x"), gaps("y")];
+  const svg = plot(width, {
+    marginLeft: 52, marginRight: 12, marginBottom: 38, marginTop: 26, height: 380,
+    x: { type: "band", domain: tops, ticks: sparse(tops, 8), tickFormat: (v) => figures(v, 2), label: "gap on top [eV]", labelAnchor: "center", labelArrow: "none", tickSize: 0 },
+    y: { type: "band", domain: bottoms.slice().reverse(), ticks: sparse(bottoms, 10), tickFormat: (v) => figures(v, 2), label: "gap below [eV]", labelArrow: "none", tickSize: 0 },
+    marks: [
+      Plot.cell(data, { x: "x", y: "y", fill: "var(--s0)", fillOpacity: shade, inset: 0 }),
+      Plot.dot([best], { x: "x", y: "y", r: 8, stroke: "currentColor", strokeWidth: 2.5 }),
+      Plot.tip(data, Plot.pointer({ x: "x", y: "y", title: text })),
+    ],
+  });
+  return {
+    svg,
+    note: `Best at ${placeName(one.place)}: ${text(best).replace(/, [+-]?0.*$/, "")}.`,
+    alt: `Energy a year over the gaps of two junctions at ${placeName(one.place)}.`,
+    points: data.map((d) => ({ x: d.x, y: d.y, text: text(d) })),
+    table: () => ({ columns: ["gap on top [eV]", "gap below [eV]", "energy [kWh/m²]"], rows: data.map((d) => [figures(d.x, 2), figures(d.y, 2), figures(d.e, 1)]) }),
+  };
+}
+
+/** Draw rows of names with marks on one axis of numbers. */
+function rowsChart(width, rows, texts, label, marks, more = {}) {
+  const axis = nameAxis(texts.length ? texts : [""], width);
+  return plot(width, {
+    marginLeft: axis.room, marginRight: 20, marginBottom: 42, height: 64 + 30 * rows.length,
+    x: { label, labelAnchor: "center", labelArrow: "none", grid: true, ...more },
+    y: { type: "band", domain: d3.range(rows.length), label: null, tickSize: 0, tickFormat: axis.ticks },
+    marks,
+  });
+}
+
+function chanceRange(width) {
+  const measure = chanceMeasures()[choice.chance];
+  const { name, unit } = study.measures[measure] ?? { name: measure, unit: "1" };
+  const rows = study.chance.filter((row) => row.place === choice.place && row.measure === measure).sort((a, b) => b.p50 - a.p50).map((row, i) => ({ ...row, i }));
+  const text = (d) => `${names()[d.absorber]}: P90 ${figures(d.p90, 1)}, P50 ${figures(d.p50, 1)}, P10 ${figures(d.p10, 1)} ${unit}`;
+  const svg = rowsChart(width, rows, rows.map((row) => names()[row.absorber]), `${name} [${unit}], P90 to P10`, [
+    ...rows.map((row) => Plot.link([row], { x1: "p90", x2: "p10", y1: "i", y2: "i", stroke: look(row.absorber).colour, strokeWidth: 5, strokeOpacity: 0.5 })),
+    ...rows.map((row) => signs([row], row.absorber, { x: "p50", y: "i", r: 5 })),
+    Plot.tip(rows, Plot.pointer({ x: "p50", y: "i", title: text, maxRadius: 60 })),
+  ]);
+  return {
+    svg,
+    alt: `${name} of each absorber at ${here().name}: the range from P90, exceeded with 90 % probability, to P10.`,
+    points: rows.map((row) => ({ x: row.p50, y: row.i, text: text(row) })),
+    table: () => ({ columns: ["absorber", ...["P90", "P50", "P10"].map((p) => `${p} [${unit}]`)], rows: rows.map((row) => [names()[row.absorber], ...[row.p90, row.p50, row.p10].map((v) => figures(v, 1))]) }),
+  };
+}
+
+function duel(width) {
+  const rows = study.head_to_head.filter((row) => row.place === choice.place).sort((a, b) => b.probability - a.probability).map((row, i) => ({ ...row, i }));
+  const title = (d) => `${names()[d.absorber]} over ${names()[d.other]}`;
+  const share = (v) => `${signed(100 * v, 2)} %`;
+  const text = (d) => `${title(d)}: ${figures(100 * d.probability, 1)} %; margin P50 ${share(d.margin_p50)} (P90 ${share(d.margin_p90)}, P10 ${share(d.margin_p10)})`;
+  const svg = rowsChart(width, rows, rows.map(title), "probability of the higher yield [%]", [
+    Plot.ruleX([50], { stroke: "currentColor", strokeOpacity: 0.6 }),
+    Plot.barX(rows, { x1: 50, x2: (d) => 100 * d.probability, y: "i", inset: 6, fill: (d) => (d.probability >= 0.5 ? "var(--s0)" : "var(--s1)"), fillOpacity: 0.75 }),
+    Plot.tip(rows, Plot.pointer({ x: (d) => 100 * d.probability, y: "i", title: text, maxRadius: 80 })),
+  ], { domain: [0, 100] });
+  return {
+    svg,
+    alt: `Probability that one absorber yields more than another at ${here().name}.`,
+    points: rows.map((row) => ({ x: 100 * row.probability, y: row.i, text: text(row) })),
+    table: () => ({ columns: ["pair", "probability [%]", "margin P90 [%]", "margin P50 [%]", "margin P10 [%]"], rows: rows.map((row) => [title(row), figures(100 * row.probability, 1), ...[row.margin_p90, row.margin_p50, row.margin_p10].map((v) => signed(100 * v, 2))]) }),
+  };
+}
+
+function worth(width) {
+  const rows = study.worth.filter((row) => row.place === choice.place).sort((a, b) => b.break_even_per_m2 - a.break_even_per_m2).map((row, i) => ({ ...row, i }));
+  const currency = rows[0]?.currency ?? "";
+  const text = (d) => `${names()[d.absorber]}: ${signed(d.break_even_per_m2, 2)} ${currency}/m²; cost of energy ${figures(d.cost_of_energy_per_kwh, 4)} ${currency}/kWh`;
+  const svg = rowsChart(width, rows, rows.map((row) => names()[row.absorber]), `break-even price difference [${currency}/m²]`, [
+    Plot.ruleX([0], { stroke: "currentColor", strokeOpacity: 0.6 }),
+    Plot.barX(rows, { x: "break_even_per_m2", y: "i", inset: 6, fill: (d) => (d.break_even_per_m2 >= 0 ? "var(--s0)" : "var(--s1)"), fillOpacity: 0.75 }),
+    Plot.tip(rows, Plot.pointer({ x: "break_even_per_m2", y: "i", title: text, maxRadius: 80 })),
+  ]);
+  return {
+    svg,
+    alt: `Break-even price difference of each absorber against ${names()[study.reference]} at ${here().name}.`,
+    points: rows.map((row) => ({ x: row.break_even_per_m2, y: row.i, text: text(row) })),
+    table: () => ({ columns: ["absorber", `break-even [${currency}/m²]`, `cost of energy [${currency}/kWh]`], rows: rows.map((row) => [names()[row.absorber], signed(row.break_even_per_m2, 2), figures(row.cost_of_energy_per_kwh, 4)]) }),
+  };
+}
+
+const CHARTS = { overview, monthly, factors, ledger, hours, spectrum, gap_sweep, gap_pairs, "chance-range": chanceRange, duel, "worth-chart": worth };
+
+// ---------------------------------------------------------------------------------------------------------- start
+
+document.querySelectorAll("main table").forEach(cards);
+choice.hour = middleHour();
+placeForm();
+controls();
+draw();
+
+let drawnFor = document.body.clientWidth;
+let waiting = 0;
+window.addEventListener("resize", () => {
+  if (document.body.clientWidth === drawnFor) return;
+  clearTimeout(waiting);
+  waiting = setTimeout(() => {
+    drawnFor = document.body.clientWidth;
+    draw();
+  }, 120);
+});
