@@ -5,7 +5,7 @@ import pytest
 
 from yieldsim import readers, screen
 from yieldsim.config import library
-from yieldsim.study import annual, hourly
+from yieldsim.study import annual, hourly, light
 from yieldsim.study.plan import AtmospherePlan, LossesPlan, MountingPlan, SitePlan
 
 TILTED = MountingPlan("fixed", "fixed", 30.0, 180.0)
@@ -21,7 +21,7 @@ class Year:
         self.weather = weather
         self.absorbers = tuple(library.entry(name).absorber for name in names)
         self.sky = hourly.site_sky(self.plan, weather)
-        self.parts = hourly.plane_parts(self.sky, mounting)
+        self.parts = light.plane_parts(self.sky, mounting)
         self.plane = hourly.plane_year(self.sky, mounting, self.parts, self.absorbers)
         hours = np.bincount(hourly.local_month_and_day(weather)[0], minlength=12) * weather.interval_s / 3600
         self.sums = annual.sums(self.plane, self.sky.month, hours, weather.interval_s, LOSSES)

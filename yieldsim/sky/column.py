@@ -184,22 +184,19 @@ def reference_air() -> Air:
 
 def reference_plane(constants: Optics) -> Array:
     """Return band energies on the standard's plane (37 deg towards the sun) under its air, (n_band,) [W m-2]."""
-    from yieldsim.sky.plane import isotropic_parts, sky_on_plane
+    from yieldsim.sky.plane import isotropic_parts, sky_light
 
     air = reference_air()
     passed = transmit(air, np.zeros(1), constants)
-    cos_zenith = float(air.cos_zenith[0])
-    normal = constants.extraterrestrial * passed.beam[0] * constants.factor
-    horizontal = constants.extraterrestrial * passed.total[0] * constants.factor * cos_zenith
-    cos_aoi = float(np.cos(np.arccos(cos_zenith) - np.radians(REFERENCE_TILT_DEG)))
+    cos_zenith = air.cos_zenith
+    normal = constants.extraterrestrial * passed.beam * constants.factor
+    horizontal = constants.extraterrestrial * passed.total * constants.factor * cos_zenith
+    around = passed.beam * constants.factor * forward_share(air, constants)
+    light = sky_light(normal, horizontal - normal * cos_zenith, around, cos_zenith)
+    cos_aoi = float(np.cos(np.arccos(cos_zenith[0]) - np.radians(REFERENCE_TILT_DEG)))
     sky_view, ground_view = isotropic_parts(REFERENCE_TILT_DEG)
-    circumsolar, isotropic = sky_on_plane(
-        (horizontal - normal * cos_zenith)[None],
-        passed.beam * constants.factor * forward_share(air, constants),
-        np.array([cos_aoi / cos_zenith]),
-    )
-    sky = circumsolar[0] + isotropic[0] * sky_view
-    return np.asarray(normal * cos_aoi + sky + horizontal * air.albedo[0] * ground_view)
+    on_plane = light.direct * cos_aoi + light.uniform * sky_view + horizontal * air.albedo * ground_view
+    return np.asarray(on_plane[0])
 
 
 def transmit(air: Air, cloud_depth: Array, constants: Optics | None = None) -> Transmittance:

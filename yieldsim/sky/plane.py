@@ -7,32 +7,53 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
+from yieldsim.sky.sight import Sight, lit_mean
 from yieldsim.sky.sun import SunCourse
 
 Array = NDArray[np.float64]
 
-_LEAST_COS_ZENITH = 0.01745  # cos(89 deg): below it the geometric factor means nothing (Hay & Davies, common practice)
+LEAST_COS_ZENITH = 0.01745  # cos(89 deg): below it light from around the sun merges with the sky (common practice)
+
+
+@dataclass(frozen=True, slots=True)
+class SkyLight:
+    """Light of a sky by where it comes from.
+
+    Parameters
+    ----------
+    direct : (n, n_band) array [W m-2], from the sun and close around it, on a plane facing the sun
+    uniform : (n, n_band) array [W m-2], from all of the sky alike, on the horizontal
+    rim : (n, n_band) array [W m-2] or None, from the rim of the sky, on a wall; may be below 0
+    """
+
+    direct: Array
+    uniform: Array
+    rim: Array | None = None
 
 
 @dataclass(frozen=True, slots=True)
 class PlaneParts:
-    """Light on a plane by where it comes from.
+    """Light on a face of a plane by where it comes from.
 
     Parameters
     ----------
     beam : (n, n_band) array [W m-2], sun and the bright sky around it
     sky : (n, n_band) array [W m-2]
     ground : (n, n_band) array [W m-2]
-    cos_aoi : (n,) array [1], mean over the lit part of the interval of the cosine of incidence, 0 behind the plane
+    sight : Sight, what the face sees
     """
 
     beam: Array
     sky: Array
     ground: Array
-    cos_aoi: Array
+    sight: Sight
+
+    def bands(self) -> Array:
+        """Return the light in each band, (n, n_band) [W m-2]."""
+        return np.asarray(self.beam + self.sky + self.ground)
 
     def total(self) -> Array:
-        """Return the plane-of-array irradiance, (n,) [W m-2]."""
+        """Return the irradiance of the face, (n,) [W m-2]."""
         return np.asarray(self.beam.sum(axis=1) + self.sky.sum(axis=1) + self.ground.sum(axis=1))
 
 
@@ -42,79 +63,83 @@ def isotropic_parts(tilt_deg: float) -> tuple[float, float]:
     return (1 + cosine) / 2, (1 - cosine) / 2
 
 
-def sky_on_plane(diffuse: Array, anisotropy: Array, geometric_factor: Array) -> tuple[Array, Array]:
-    """Split diffuse light into what comes from around the sun and what comes from the whole sky.
+def sky_light(
+    beam: Array,
+    diffuse: Array,
+    around: Array,
+    cos_zenith: Array,
+    rim: Array | None = None,
+    least_cos_zenith: float = LEAST_COS_ZENITH,
+) -> SkyLight:
+    """Split the light of a sky into what comes from the sun's direction and what comes from all of it.
 
     Parameters
     ----------
+    beam : (n, n_band) array [W m-2], on a plane facing the sun
     diffuse : (n, n_band) array [W m-2], on the horizontal
-    anisotropy : (n, n_band) array [1], share of the band's diffuse light that comes from around the sun: the normal
-        beam over the extraterrestrial, times haze's share of the scattering
-    geometric_factor : (n,) array [1], cosine of incidence over cosine of zenith
+    around : (n, n_band) array [1], share of the diffuse light that comes from around the sun
+    cos_zenith : (n,) array [1]
+    rim : (n, n_band) array [1] or None, share from the rim of the sky, on a wall
+    least_cos_zenith : float [1], below it light from around the sun merges with the sky
 
     Returns
     -------
-    circumsolar : (n, n_band) array [W m-2], on the plane
-    isotropic : (n, n_band) array [W m-2], on the horizontal; times the plane's view of the sky gives the plane's
+    SkyLight; on the horizontal its direct part times cos z and its uniform part are beam cos z + diffuse
 
     References
     ----------
     J. E. Hay, J. A. Davies, Calculations of the solar radiation incident on an inclined surface, Proc. First Canadian
     Solar Radiation Data Workshop (1980) 59; here for each band.
     """
-    around_sun = diffuse * np.clip(anisotropy, 0.0, 1.0)
-    return around_sun * geometric_factor[:, None], diffuse - around_sun
+    slant = np.maximum(cos_zenith, least_cos_zenith)[:, None]
+    near = diffuse * np.clip(around, 0.0, 1.0) / slant
+    uniform = diffuse - near * cos_zenith[:, None]
+    return SkyLight(beam + near, uniform, None if rim is None else diffuse * rim)
 
 
-def cos_incidence(sun: SunCourse, tilt_deg: float, azimuth_deg: float) -> Array:
-    """Return the cosine of incidence at every sub-step, (n, step) [1]; 0 behind the plane and with the sun down.
+def at_level(around: Array, diffuse: Array, level: Array) -> Array:
+    """Return shares of each band brought to a broadband level, their colour kept as far as that goes.
 
     Parameters
     ----------
-    sun : SunCourse
-    tilt_deg, azimuth_deg : float [deg], tilt from horizontal, azimuth clockwise from north
+    around : (n, n_band) array [1], 0 to 1
+    diffuse : (n, n_band) array [W m-2], the light the shares are of
+    level : (n,) array [1], share wanted of all bands together, 0 to 1
+
+    Returns
+    -------
+    (n, n_band) array [1], 0 to 1; times the light it sums to the level wanted
     """
-    tilt, azimuth = np.radians(tilt_deg), np.radians(azimuth_deg)
-    normal = np.array([np.sin(tilt) * np.sin(azimuth), np.sin(tilt) * np.cos(azimuth), np.cos(tilt)])
-    return np.where(sun.up, np.maximum(sun.direction @ normal, 0.0), 0.0)
+    total = diffuse.sum(axis=1)
+    mean = np.divide((around * diffuse).sum(axis=1), total, out=np.zeros_like(total), where=total > 0)
+    down = np.divide(level, mean, out=np.zeros_like(total), where=mean > level)
+    up = np.divide(1 - level, 1 - mean, out=np.ones_like(total), where=mean < 1)
+    lowered, raised = around * down[:, None], 1 - (1 - around) * up[:, None]
+    return np.asarray(np.clip(np.where((mean > level)[:, None], lowered, raised), 0.0, 1.0))
 
 
-def lit_mean(values: Array, up: NDArray[np.bool_]) -> Array:
-    """Return the mean over lit sub-steps of values (n, step) that are 0 elsewhere; 0 where none is lit."""
-    count = up.sum(axis=1)
-    return np.divide(values.sum(axis=1), count, out=np.zeros(len(values)), where=count > 0)
-
-
-def on_plane(
-    beam: Array, diffuse: Array, anisotropy: Array, sun: SunCourse, albedo: Array, tilt_deg: float, azimuth_deg: float
-) -> PlaneParts:
-    """Put horizontal band spectra on a fixed plane.
+def on_plane(light: SkyLight, sight: Sight, albedo: Array) -> PlaneParts:
+    """Put the light of a sky on a face.
 
     Parameters
     ----------
-    beam : (n, n_band) array [W m-2], on a plane facing the sun
-    diffuse : (n, n_band) array [W m-2], on the horizontal
-    anisotropy : (n, n_band) array [1], see `sky_on_plane`
-    sun : SunCourse of the n hours
-    albedo : (n,) or (n, n_band) array [1]
-    tilt_deg, azimuth_deg : float [deg]
+    light : SkyLight of n intervals
+    sight : Sight of the face
+    albedo : (n,) or (n, n_band) array [1], of the ground
 
     Returns
     -------
     PlaneParts
     """
-    cos_aoi = lit_mean(cos_incidence(sun, tilt_deg, azimuth_deg), sun.up)
-    factor = cos_aoi / np.maximum(sun.cos_zenith, _LEAST_COS_ZENITH)
-    circumsolar, isotropic = sky_on_plane(diffuse, anisotropy, factor)
-    sky_view, ground_view = isotropic_parts(tilt_deg)
     reflected = albedo[:, None] if albedo.ndim == 1 else albedo
-    horizontal = beam * sun.cos_zenith[:, None] + diffuse
-    return PlaneParts(
-        beam=beam * cos_aoi[:, None] + circumsolar,
-        sky=isotropic * sky_view,
-        ground=horizontal * reflected * ground_view,
-        cos_aoi=cos_aoi,
-    )
+    sky = light.uniform * sight.sky[:, None]
+    if light.rim is not None:
+        sky = np.maximum(sky + light.rim * sight.rim[:, None], 0.0)
+    ground = light.direct * sight.ground_beam[:, None] + light.uniform * sight.ground_sky[:, None]
+    return PlaneParts(light.direct * sight.beam[:, None], sky, ground * reflected, sight)
+
+
+# ------------------------------------------------------------------------------------------- through the glass
 
 
 def incidence_modifier_beam(cos_aoi: Array, a_r: float) -> Array:
@@ -137,8 +162,13 @@ def incidence_modifier_beam(cos_aoi: Array, a_r: float) -> Array:
     return np.asarray(np.expm1(-np.asarray(cos_aoi) / a_r) / np.expm1(-1.0 / a_r))
 
 
-def incidence_modifier_diffuse(tilt_deg: float, a_r: float) -> tuple[float, float]:
-    """Return the shares of uniform sky and ground light that enter a tilted glass front [1].
+def incidence_modifier_diffuse(tilt_deg: Array | float, a_r: float) -> tuple[Array, Array]:
+    """Return the shares of uniform sky and ground light that enter a tilted glass front, each shaped as the tilt [1].
+
+    Parameters
+    ----------
+    tilt_deg : (...) array [deg], 0 to 180
+    a_r : float [1]
 
     References
     ----------
@@ -147,17 +177,38 @@ def incidence_modifier_diffuse(tilt_deg: float, a_r: float) -> tuple[float, floa
     from pvlib.iam import martin_ruiz_diffuse
 
     entered = martin_ruiz_diffuse(tilt_deg, a_r=a_r)
-    return float(entered["sky"]), float(entered["ground"])
+    return np.asarray(entered["sky"]), np.asarray(entered["ground"])
 
 
-def entered_beam(sun: SunCourse, tilt_deg: float, azimuth_deg: float, a_r: float) -> Array:
-    """Return the share of an interval's beam on the plane that enters, averaged with the cosine of incidence.
+def entered(parts: PlaneParts, sun: SunCourse, a_r: float | None) -> Array:
+    """Return the light that passes the glass of a face.
+
+    Parameters
+    ----------
+    parts : PlaneParts
+    sun : SunCourse of the same intervals
+    a_r : float [1], angular loss coefficient of Martin & Ruiz (2001), or None = all passes
 
     Returns
     -------
-    (n,) array [1]; 0 where the sun is behind the plane
+    (n, n_band) array [W m-2]
+
+    Notes
+    -----
+    Beam and circumsolar light lose at the sun's angle, sky and ground as uniform hemispheres do; each is averaged over
+    the sub-steps with the light it brings.
     """
-    cosine = cos_incidence(sun, tilt_deg, azimuth_deg)
-    entered = (cosine * incidence_modifier_beam(cosine, a_r)).sum(axis=1)
-    whole = cosine.sum(axis=1)
-    return np.divide(entered, whole, out=np.zeros_like(whole), where=whole > 0)
+    if a_r is None:
+        return parts.bands()
+    sight = parts.sight
+    passed = lit_mean(sight.reached * incidence_modifier_beam(sight.cos_aoi, a_r), sun.up)
+    tilt_deg = np.degrees(np.arccos(np.clip(sight.cos_tilt, -1.0, 1.0)))
+    from_sky, from_ground = incidence_modifier_diffuse(tilt_deg, a_r)
+    beam = _share(passed, sight.beam)
+    sky = _share(lit_mean(sight.sky_step * from_sky, sun.up), lit_mean(sight.sky_step, sun.up))
+    ground = _share(lit_mean(sight.ground_step * from_ground, sun.up), lit_mean(sight.ground_step, sun.up))
+    return np.asarray(parts.beam * beam[:, None] + parts.sky * sky[:, None] + parts.ground * ground[:, None])
+
+
+def _share(part: Array, whole: Array) -> Array:
+    return np.divide(part, whole, out=np.zeros_like(whole), where=whole > 0)

@@ -9,12 +9,16 @@ from functools import lru_cache
 import numpy as np
 from numpy.typing import NDArray
 
+from yieldsim import spectrum
 from yieldsim.constants import STANDARD_CELL_TEMPERATURE
 from yieldsim.device.bank import Bank
 from yieldsim.device.stack import Absorber
 from yieldsim.device.thermal import faiman
-from yieldsim.sky import atmosphere, closing, column, plane, sun
-from yieldsim.study.plan import AtmospherePlan, Monthly, MountingPlan, SitePlan
+from yieldsim.sky import atmosphere, closing, column, ground, plane, sun
+from yieldsim.sky.horizon import Horizon
+from yieldsim.sky.mounting import ROOF_HEAT_LOSS
+from yieldsim.study.light import rear_parts
+from yieldsim.study.plan import AtmospherePlan, GroundPlan, Monthly, MountingPlan, SitePlan
 from yieldsim.units import kelvin
 from yieldsim.weather import Weather
 
@@ -23,6 +27,7 @@ Array = NDArray[np.float64]
 DEFAULT_ALBEDO = 0.2  # a mixed ground of grass and soil (common practice, no source)
 HOURLY = "; each clear hour's own from its beam"
 CLIMATOLOGY = "Linke turbidity climatology (Remund et al. 2003)"
+_GROUND_COLUMNS = ("albedo", "snow_depth")
 DEFAULT_WATER_CM = 1.4164  # the water of ASTM G173-03, where a file says nothing of humidity
 
 
@@ -39,6 +44,7 @@ class SiteSky:
     air : Air of the lit intervals, haze as given or expected
     sky : ClosedSky of the lit intervals, averages over the whole interval
     sources : (input, where it came from) for each atmospheric input
+    horizon : Horizon or None, the skyline around the site
     """
 
     weather: Weather
@@ -48,6 +54,7 @@ class SiteSky:
     air: column.Air
     sky: closing.ClosedSky
     sources: tuple[tuple[str, str], ...]
+    horizon: Horizon | None = None
 
 
 @dataclass(frozen=True, slots=True)
@@ -137,7 +144,7 @@ def site_sky(site: SitePlan, weather: Weather) -> SiteSky:
         days = ", ".join(str(count) for count in closed.clear_days)
         note = f"monthly medians of clear days from their beam (days a month: {days}), prior "
         sources = (("aod500", note + sources[0][1]), *sources[1:])
-    return SiteSky(weather, lit, month[lit], course, air, closed, sources)
+    return SiteSky(weather, lit, month[lit], course, air, closed, sources, site.horizon)
 
 
 def _calendar(
@@ -171,12 +178,7 @@ def _air(
     pressure, pressure_source = _column_or(
         weather, "pressure", lit, from_height, "standard atmosphere at the elevation"
     )
-    if site.ground.albedo is not None:
-        albedo, albedo_source = np.full(len(lit), site.ground.albedo), "study"
-    else:
-        albedo, albedo_source = _column_or(
-            weather, "albedo", lit, np.full(len(lit), DEFAULT_ALBEDO), f"{DEFAULT_ALBEDO:g}, common practice"
-        )
+    albedo, albedo_source = _albedo(site.ground, weather, lit)
     air = column.Air(cos_zenith, pressure, water, ozone, haze, exponent, albedo)
     sources = (
         ("aod500", haze_source + (HOURLY if plan.haze == "hourly" else "")),
@@ -187,6 +189,30 @@ def _air(
         ("albedo", albedo_source),
     )
     return air, sources
+
+
+def _albedo(plan: GroundPlan, weather: Weather, lit: NDArray[np.intp]) -> tuple[Array, str]:
+    """Return the ground's albedo (n,) or (n, n_band) [1] of the lit intervals, and where it came from."""
+    if plan.spectrum is not None:
+        bare = ground.folded(*(np.asarray(column) for column in plan.spectrum))
+    elif plan.surface is not None:
+        bare = ground.surface(plan.surface)
+    elif plan.albedo is not None:
+        return np.full(len(lit), plan.albedo), f"study ({plan.albedo:g})"
+    else:
+        bare = np.full_like(spectrum.band_wavelengths(), DEFAULT_ALBEDO)
+    measured, depth = (weather[name][lit] if name in weather else np.full(len(lit), np.nan) for name in _GROUND_COLUMNS)
+    albedo, snow = ground.albedo_of(bare, plan.albedo, measured, depth)
+    source = plan.surface or f"{DEFAULT_ALBEDO:g}, common practice"
+    if plan.albedo is not None:
+        source += f" at {plan.albedo:g} (study)"
+    filled = np.isfinite(measured)
+    if filled.any():
+        level = "all" if filled.all() else f"{filled.mean():.1%} of"
+        source += f"; level of {level} lit hours from the file (albedo)"
+    if snow.any():
+        source += f"; snow in {snow.mean():.1%} of lit hours"
+    return albedo, source
 
 
 def _given_or(given: Monthly | None, month: NDArray[np.intp], default: Array, source: str) -> tuple[Array, str]:
@@ -259,43 +285,28 @@ def _haze(
     return np.clip(haze, *atmosphere.AOD_RANGE), source
 
 
-def plane_parts(site: SiteSky, mounting: MountingPlan) -> plane.PlaneParts:
-    """Return the band spectra on the front of a mounting, hour means."""
-    extraterrestrial = column.optics().extraterrestrial * (site.sun.earth_sun * site.sun.lit)[:, None]
-    anisotropy = site.sky.beam / extraterrestrial * column.forward_share(site.air.with_aod500(site.sky.aod500))
-    return plane.on_plane(
-        site.sky.beam,
-        site.sky.diffuse,
-        anisotropy,
-        site.sun,
-        site.air.albedo,
-        mounting.tilt_deg,
-        mounting.azimuth_deg,
-    )
-
-
-def entered_light(site: SiteSky, mounting: MountingPlan, parts: plane.PlaneParts, modifier: float | None) -> Array:
-    """Return the band spectra that pass the front, (n, n_band) [W m-2]; modifier None = all passes."""
-    if modifier is None:
-        return parts.beam + parts.sky + parts.ground
-    beam_share = plane.entered_beam(site.sun, mounting.tilt_deg, mounting.azimuth_deg, modifier)
-    sky_share, ground_share = plane.incidence_modifier_diffuse(mounting.tilt_deg, modifier)
-    return parts.beam * beam_share[:, None] + parts.sky * sky_share + parts.ground * ground_share
-
-
 @lru_cache(maxsize=8)
 def bank_of(absorbers: tuple[Absorber, ...]) -> Bank:
     """Return the bank of absorbers, made once for all sites and mountings of a run."""
     return Bank.of(absorbers)
 
 
-def cell_temperatures(site: SiteSky, plane_of_array: Array, absorbers: Sequence[Absorber]) -> Array:
-    """Return cell temperatures (n_absorber, n) [K]."""
+def cell_temperatures(
+    site: SiteSky, mounting: MountingPlan, front: Array, rear: Array | None, absorbers: Sequence[Absorber]
+) -> Array:
+    """Return cell temperatures (n_absorber, n) [K] under front and rear light (n,) [W m-2].
+
+    Rear light warms as far as it is used. A roof keeps the rear from the wind.
+    """
     temp_air = kelvin(site.weather["temp_air"][site.lit])
     wind = site.weather["wind_speed"][site.lit]
-    heat_losses = sorted({absorber.heat_loss for absorber in absorbers})
-    warmth = {loss: faiman(plane_of_array, temp_air, wind, *loss) for loss in heat_losses}
-    return np.array([warmth[absorber.heat_loss] for absorber in absorbers])
+    share = ROOF_HEAT_LOSS if mounting.kind == "roof" else 1.0
+    ways = sorted({(absorber.heat_loss, absorber.bifaciality) for absorber in absorbers})
+    warmth = {}
+    for (u0, u1), bifaciality in ways:
+        light = front if rear is None else front + bifaciality * rear
+        warmth[(u0, u1), bifaciality] = faiman(light, temp_air, wind, share * u0, share * u1)
+    return np.array([warmth[absorber.heat_loss, absorber.bifaciality] for absorber in absorbers])
 
 
 def by_front(absorbers: Sequence[Absorber]) -> list[tuple[float | None, list[int]]]:
@@ -306,36 +317,80 @@ def by_front(absorbers: Sequence[Absorber]) -> list[tuple[float | None, list[int
     return list(groups.items())
 
 
+@dataclass(frozen=True, slots=True)
+class _Faces:
+    """Light on both faces of a mounting, and what passes each kind of glass."""
+
+    site: SiteSky
+    front: plane.PlaneParts
+    rear: plane.PlaneParts | None
+    dust: Array | None
+
+    def entered(self, modifier: float | None) -> tuple[Array, Array | None]:
+        """Return band spectra (n, n_band) [W m-2] behind the glass of front and rear."""
+        front = plane.entered(self.front, self.site.sun, modifier)
+        rear = None if self.rear is None else plane.entered(self.rear, self.site.sun, modifier)
+        return front if self.dust is None else front * self.dust, rear
+
+    def temperatures(self, mounting: MountingPlan, absorbers: Sequence[Absorber]) -> Array:
+        """Return cell temperatures (n_absorber, n) [K]."""
+        rear = None if self.rear is None else self.rear.total()
+        return cell_temperatures(self.site, mounting, self.front.total(), rear, absorbers)
+
+
 def terminal_powers(
-    site: SiteSky, mounting: MountingPlan, parts: plane.PlaneParts, absorbers: Sequence[Absorber]
+    site: SiteSky,
+    mounting: MountingPlan,
+    parts: plane.PlaneParts,
+    absorbers: Sequence[Absorber],
+    dust: Array | None = None,
 ) -> Array:
-    """Return the power of each absorber at its terminals in every lit interval, (n_absorber, n) [W m-2]."""
-    temperature = cell_temperatures(site, parts.total(), absorbers)
+    """Return the power of each absorber at its terminals in every lit interval, (n_absorber, n) [W m-2].
+
+    Parameters as for `plane_year`.
+    """
+    faces = _Faces(site, parts, rear_parts(site, mounting, absorbers), dust)
+    temperature = faces.temperatures(mounting, absorbers)
     power = np.empty((len(absorbers), len(site.lit)))
-    for front, members in by_front(absorbers):
+    for glass, members in by_front(absorbers):
         bank = bank_of(tuple(absorbers[i] for i in members))
-        light = entered_light(site, mounting, parts, front)
-        power[members] = bank.terminal_power(bank.currents(light, temperature[members]), temperature[members])
+        front, rear = faces.entered(glass)
+        power[members] = bank.terminal_power(bank.currents(front, temperature[members], rear), temperature[members])
     return power
 
 
 def plane_year(
-    site: SiteSky, mounting: MountingPlan, parts: plane.PlaneParts, absorbers: Sequence[Absorber]
+    site: SiteSky,
+    mounting: MountingPlan,
+    parts: plane.PlaneParts,
+    absorbers: Sequence[Absorber],
+    dust: Array | None = None,
 ) -> PlaneYear:
-    """Return what absorbers make of a mounting's light, interval by interval."""
+    """Return what absorbers make of a mounting's light, interval by interval.
+
+    Parameters
+    ----------
+    site : SiteSky
+    mounting : MountingPlan
+    parts : PlaneParts of its front, from `light.plane_parts`
+    absorbers : sequence of Absorber
+    dust : (n, n_band) array [1] or None, how dust on the front colours the light, from `light.dust_colour`
+    """
+    faces = _Faces(site, parts, rear_parts(site, mounting, absorbers), dust)
     plane_of_array = parts.total()
     n, n_absorber = len(plane_of_array), len(absorbers)
-    temperature = cell_temperatures(site, plane_of_array, absorbers)
+    temperature = faces.temperatures(mounting, absorbers)
     offsets = np.concatenate([[0], np.cumsum([len(absorber.junctions) for absorber in absorbers])])
     entered, power = np.empty((n_absorber, n)), np.empty((n_absorber, n))
     current, cool, warm = (np.empty((offsets[-1], n)) for _ in range(3))
     standard = np.full(n, STANDARD_CELL_TEMPERATURE)
-    for front, members in by_front(absorbers):
+    for glass, members in by_front(absorbers):
         junctions = np.concatenate([np.arange(offsets[i], offsets[i + 1]) for i in members])
         bank = bank_of(tuple(absorbers[i] for i in members))
-        light = entered_light(site, mounting, parts, front)
-        entered[members] = light.sum(axis=1)
-        current[junctions] = bank.currents(light, temperature[members])
+        front, rear = faces.entered(glass)
+        gain = np.array([absorbers[i].bifaciality for i in members])[:, None]
+        entered[members] = front.sum(axis=1) if rear is None else front.sum(axis=1) + gain * rear.sum(axis=1)
+        current[junctions] = bank.currents(front, temperature[members], rear)
         cool[junctions] = bank.power(current[junctions], standard)
         warm[junctions] = bank.power(current[junctions], temperature[members])
         alone = len(junctions) == len(members)

@@ -10,10 +10,10 @@ from typing import Any
 import numpy as np
 
 import yieldsim
-from yieldsim.study import annual, compare, datasets, store, sweep
+from yieldsim.study import annual, compare, datasets, light, store, sweep
 from yieldsim.study.annual import Ratings
 from yieldsim.study.compare import Row
-from yieldsim.study.hourly import SiteSky, local_month_and_day, plane_parts, plane_year, site_sky
+from yieldsim.study.hourly import SiteSky, local_month_and_day, plane_year, site_sky
 from yieldsim.study.plan import SitePlan, StudyPlan
 from yieldsim.weather import Weather
 
@@ -47,11 +47,12 @@ def compute(plan: StudyPlan, site: SitePlan, years: Sequence[Weather], folder: P
     for mounting in site.mountings:
         totals, swept = [], []
         for sky in skies:
-            parts = plane_parts(sky, mounting)
-            year = plane_year(sky, mounting, parts, plan.absorbers)
+            parts = light.plane_parts(sky, mounting)
+            losses, dust = light.with_snow(plan.losses, sky, mounting, parts), light.dust_colour(sky, plan.losses)
+            year = plane_year(sky, mounting, parts, plan.absorbers, dust)
             if plan.gap_sweep is not None:
-                swept.append(sweep.sweep_rows(site.name, sky, mounting, parts, plan.gap_sweep, plan.losses))
-            total = annual.sums(year, sky.month, monthly_hours(sky), sky.weather.interval_s, plan.losses)
+                swept.append(sweep.sweep_rows(site.name, sky, mounting, parts, plan.gap_sweep, losses, dust))
+            total = annual.sums(year, sky.month, monthly_hours(sky), sky.weather.interval_s, losses)
             totals.append(total)
             if sky is skies[0]:
                 first_year.append(year)

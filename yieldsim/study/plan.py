@@ -7,6 +7,7 @@ from dataclasses import dataclass, field
 from typing import Any, Literal
 
 from yieldsim.device.stack import Absorber
+from yieldsim.sky.horizon import Horizon
 
 Monthly = tuple[float, ...]  # 12 values, January first
 
@@ -50,24 +51,59 @@ class AtmospherePlan:
 
 @dataclass(frozen=True, slots=True)
 class GroundPlan:
-    """What lies under the modules: ``albedo`` [1] for all wavelengths; None = the file's own, else 0.2."""
+    """What lies under the modules.
+
+    Parameters
+    ----------
+    albedo : float [1] or None, broadband; None = the file's own, else that of the surface, else 0.2
+    surface : str or None, a surface of the library, or the file its spectrum came from; None = grey
+    spectrum : (wavelengths [nm], albedos [1]) or None, a measured surface
+
+    Notes
+    -----
+    A grey ground with an albedo stays as it is all year; any other lies under snow where the weather file says so.
+    """
 
     albedo: float | None = None
+    surface: str | None = None
+    spectrum: tuple[tuple[float, ...], tuple[float, ...]] | None = None
 
 
 @dataclass(frozen=True, slots=True)
 class MountingPlan:
-    """How modules stand: tilt [deg] from horizontal, azimuth [deg] clockwise from north."""
+    """How modules stand.
+
+    Parameters
+    ----------
+    name : str
+    kind : ``fixed``, ``tracker`` (about one axis), ``vertical`` (fixed, tilt 90) or ``roof`` (fixed, warmer, no rear)
+    tilt_deg, azimuth_deg : float [deg], tilt from horizontal, azimuth clockwise from north; not for trackers
+    axis_tilt_deg, axis_azimuth_deg : float [deg], of a tracker: where its axis points and how far it falls that way
+    max_angle_deg : float [deg], a tracker's largest turn to either side
+    backtrack : bool, a tracker turns back before its rows shade each other
+    row_pitch_m : float or None [m], from row to row; None = one row alone
+    row_width_m : float [m], of a row along the plane, square to its length
+    height_m : float [m], of a row's middle line, a tracker's axis, above the ground
+    sky_model : ``hay-davies`` or ``perez``, how much of the sky's light comes from around the sun
+    """
 
     name: str
-    kind: Literal["fixed"]
-    tilt_deg: float
-    azimuth_deg: float
+    kind: Literal["fixed", "tracker", "vertical", "roof"] = "fixed"
+    tilt_deg: float = 0.0
+    azimuth_deg: float = 180.0
+    axis_tilt_deg: float = 0.0
+    axis_azimuth_deg: float = 180.0
+    max_angle_deg: float = 60.0
+    backtrack: bool = True
+    row_pitch_m: float | None = None
+    row_width_m: float = 2.0
+    height_m: float = 1.5
+    sky_model: Literal["hay-davies", "perez"] = "hay-davies"
 
 
 @dataclass(frozen=True, slots=True)
 class SitePlan:
-    """One site: weather, air, ground, mountings; position overrides are None where the file's own stands."""
+    """One site: weather, air, ground, mountings, skyline; position overrides are None where the file's own stands."""
 
     name: str
     weather: tuple[WeatherFile, ...]
@@ -78,6 +114,7 @@ class SitePlan:
     longitude_deg: float | None = None
     elevation_m: float | None = None
     allow_gaps: bool = False
+    horizon: Horizon | None = None
 
 
 @dataclass(frozen=True, slots=True)
@@ -96,9 +133,16 @@ class GapSweepPlan:
 
 @dataclass(frozen=True, slots=True)
 class LossesPlan:
-    """Shares of energy lost behind the absorber, by name, 12 monthly values each."""
+    """Shares of energy lost besides what absorbers do.
+
+    Parameters
+    ----------
+    monthly : name -> 12 monthly values
+    soiling_exponent : float [1], dust takes (wavelength)^-exponent; 0 = grey
+    """
 
     monthly: Mapping[str, Monthly] = field(default_factory=dict)
+    soiling_exponent: float = 0.0
 
 
 @dataclass(frozen=True, slots=True)

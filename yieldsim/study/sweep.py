@@ -20,7 +20,13 @@ STANDARD_LIGHT_KWH_M2 = 1000.0  # insolation of the rows for the standard spectr
 
 
 def sweep_rows(
-    site: str, sky: SiteSky, mounting: MountingPlan, parts: PlaneParts, plan: GapSweepPlan, losses: LossesPlan
+    site: str,
+    sky: SiteSky,
+    mounting: MountingPlan,
+    parts: PlaneParts,
+    plan: GapSweepPlan,
+    losses: LossesPlan,
+    dust: annual.Array | None = None,
 ) -> list[Row]:
     """Return one row per quality and gap: the year's energy [kWh m-2] and the efficiency at standard conditions [1]."""
     rows: list[Row] = []
@@ -28,7 +34,7 @@ def sweep_rows(
     step_h = sky.weather.interval_s / 3600.0
     light = float(parts.total().sum() * step_h)
     for quality, absorbers in plan.absorbers.items():
-        power = terminal_powers(sky, mounting, parts, absorbers)
+        power = terminal_powers(sky, mounting, parts, absorbers, dust)
         efficiency = _efficiency(absorbers)
         area = np.array([absorber.area_fraction for absorber in absorbers])
         energy = (power @ (kept * step_h)) * area / 1000.0

@@ -1,0 +1,103 @@
+"""The light of a site on each of its mountings: front and rear, through the glass, under snow and dust."""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+from dataclasses import replace
+from typing import TYPE_CHECKING
+
+import numpy as np
+from numpy.typing import NDArray
+
+from yieldsim.device.stack import Absorber
+from yieldsim.sky import column, dust, mounting, perez_1990, plane, sight, snow
+from yieldsim.sky.mounting import Stance
+from yieldsim.sky.rows import Rows
+from yieldsim.study.plan import LossesPlan, MountingPlan
+
+if TYPE_CHECKING:  # hourly imports this module
+    from yieldsim.study.hourly import SiteSky
+
+Array = NDArray[np.float64]
+
+COS_85 = float(np.cos(np.radians(85.0)))  # where Perez et al. (1990) stop to follow the sun down
+
+
+def stance_of(site: SiteSky, plan: MountingPlan) -> Stance:
+    """Return how a mounting stands at every sub-step of a site's lit intervals."""
+    if plan.kind != "tracker":
+        return mounting.fixed(plan.tilt_deg, plan.azimuth_deg)
+    rows = rows_of(plan)
+    coverage = rows.coverage if plan.backtrack and rows is not None else 0.0
+    return mounting.tracking(site.sun, plan.axis_azimuth_deg, plan.axis_tilt_deg, plan.max_angle_deg, coverage)
+
+
+def rows_of(plan: MountingPlan) -> Rows | None:
+    """Return the rows a mounting stands in; None where it stands alone."""
+    return None if plan.row_pitch_m is None else Rows(plan.row_width_m, plan.height_m, plan.row_pitch_m)
+
+
+def sky_light(site: SiteSky, plan: MountingPlan) -> plane.SkyLight:
+    """Return a site's light by where it comes from, hour means."""
+    optics, light = column.optics(), site.sky
+    top = (site.sun.earth_sun * site.sun.lit)[:, None] * optics.extraterrestrial
+    around = light.beam / top * column.forward_share(site.air.with_aod500(light.aod500))
+    if plan.sky_model == "hay-davies":
+        return plane.sky_light(light.beam, light.diffuse, around, site.sun.cos_zenith)
+    near, rim = perez_1990.shares(
+        light.beam.sum(axis=1), light.diffuse.sum(axis=1), top.sum(axis=1), site.sun.cos_zenith
+    )
+    around = plane.at_level(np.clip(around, 0.0, 1.0), light.diffuse, near)
+    return plane.sky_light(light.beam, light.diffuse, around, site.sun.cos_zenith, rim[:, None], COS_85)
+
+
+def plane_parts(site: SiteSky, plan: MountingPlan) -> plane.PlaneParts:
+    """Return the band spectra on the front of a mounting, hour means."""
+    seen = sight.of_face(sight.FRONT, stance_of(site, plan), site.sun, rows_of(plan), site.horizon)
+    return plane.on_plane(sky_light(site, plan), seen, site.air.albedo)
+
+
+def rear_parts(site: SiteSky, plan: MountingPlan, absorbers: Sequence[Absorber]) -> plane.PlaneParts | None:
+    """Return the band spectra on the rear of a mounting, hour means; None where nothing takes them.
+
+    A row that stands alone sees its own shadow on the ground behind it.
+    """
+    if plan.kind == "roof" or not any(absorber.bifaciality > 0 for absorber in absorbers):
+        return None
+    rows = rows_of(plan) or Rows(plan.row_width_m, plan.height_m)
+    seen = sight.of_face(sight.REAR, stance_of(site, plan), site.sun, rows, site.horizon)
+    return plane.on_plane(sky_light(site, plan), seen, site.air.albedo)
+
+
+def dust_colour(site: SiteSky, losses: LossesPlan) -> Array | None:
+    """Return how dust colours the light of each lit interval, (n, n_band) [1]; None for grey dust or none."""
+    if losses.soiling_exponent == 0 or "soiling" not in losses.monthly:
+        return None
+    return dust.colour(np.asarray(losses.monthly["soiling"]), losses.soiling_exponent)[site.month]
+
+
+def with_snow(losses: LossesPlan, site: SiteSky, plan: MountingPlan, parts: plane.PlaneParts) -> LossesPlan:
+    """Return losses with snow on the modules worked out, where the study gives none and the file has its depth."""
+    if "snow" in losses.monthly or "snow_depth" not in site.weather:
+        return losses
+    return replace(losses, monthly={**losses.monthly, "snow": snow_losses(site, plan, parts)})
+
+
+def snow_losses(site: SiteSky, plan: MountingPlan, parts: plane.PlaneParts) -> tuple[float, ...]:
+    """Return the share of each month's light that falls on snow instead of the modules, 12 values [1]."""
+    weather = site.weather
+    light = np.zeros(len(weather))
+    light[site.lit] = parts.total()
+    tilt_deg = np.zeros(len(weather)) if plan.kind == "tracker" else np.full(len(weather), plan.tilt_deg)
+    tilt_deg[site.lit] = np.degrees(np.arccos(np.clip(_mean_cos_tilt(site, parts), -1.0, 1.0)))
+    covered = snow.coverage(weather["snow_depth"], light, weather["temp_air"], tilt_deg, weather.interval_s / 3600.0)[
+        site.lit
+    ]
+    light = light[site.lit]
+    whole = np.bincount(site.month, light, minlength=12)
+    lost = np.bincount(site.month, light * covered, minlength=12)
+    return tuple(float(x) for x in np.divide(lost, whole, out=np.zeros(12), where=whole > 0))
+
+
+def _mean_cos_tilt(site: SiteSky, parts: plane.PlaneParts) -> Array:
+    return sight.lit_mean(parts.sight.cos_tilt, site.sun.up)
