@@ -11,6 +11,7 @@ from yieldsim.cli import main
 from yieldsim.commands.run import departure, differences, summary
 from yieldsim.config import load
 from yieldsim.errors import PlaceError
+from yieldsim.report import answer
 
 
 def row(absorber, yields, energy, ranks, site="Saltmarsh Point", mounting="fixed"):
@@ -98,6 +99,7 @@ def engine(monkeypatch):
 
     monkeypatch.setattr(api, "load_study", lambda path: SimpleNamespace(name=Path(path).stem, reference="silicon"))
     monkeypatch.setattr(api, "run_study", run_study)
+    monkeypatch.setattr(answer, "answer", lambda result: SimpleNamespace(winner="A wins.", ranking="Nothing moves."))
     return calls
 
 
@@ -110,6 +112,7 @@ def test_run_hands_its_options_to_the_engine(engine, capsys):
     said = capsys.readouterr()
     assert said.err == ""  # no progress where nobody watches
     assert said.out.count("Saltmarsh Point") == 1  # the quiet run says nothing
+    assert said.out.startswith("A wins.\nNothing moves.\n")
 
 
 def test_what_the_engine_cannot_do_here_is_2(engine, monkeypatch, capsys):

@@ -15,6 +15,7 @@ COMMANDS: Mapping[str, str] = MappingProxyType(
         "run": "compute a study and write its tables, pictures and report",
         "check": "validate a study and its weather; compute no yield",
         "new": "write a commented study file to start from",
+        "page": "make the plots and the report of a finished study anew from its files",
         "schema": "print the JSON Schema of the study file, for editors",
         "completion": "print what a shell needs to complete commands, options and study files",
     }

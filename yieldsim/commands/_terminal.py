@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import os
 import sys
+import textwrap
 import time
 import unicodedata
 from collections.abc import Callable, Sequence
@@ -59,6 +60,11 @@ def table(head: Sequence[str], rows: Sequence[Sequence[str]], indent: str = "  "
         ]
         text.append((indent + "  ".join(cells)).rstrip())
     return "\n".join(text)
+
+
+def wrapped(text: str, indent: str = "") -> str:
+    """Return a sentence broken into lines of at most 100 columns."""
+    return textwrap.fill(plain(text), 100, initial_indent=indent, subsequent_indent=indent, break_long_words=False)
 
 
 def duration(seconds: float) -> str:

@@ -2,7 +2,19 @@
 
 from __future__ import annotations
 
+import argparse
+from pathlib import Path
 from typing import Any
+
+EXAMPLE = """example:
+  yieldsim page outputs/mine
+        draws the plots and writes report.html again, for instance after an update of yieldsim
+"""
+
+
+def arguments(parser: argparse.ArgumentParser) -> None:
+    """Declare the options of the command."""
+    parser.add_argument("folder", metavar="DIR", type=Path, help="folder of a finished study")
 
 
 def run(arguments: Any) -> int:

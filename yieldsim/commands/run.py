@@ -10,7 +10,7 @@ from pathlib import Path
 from typing import TYPE_CHECKING, Any, cast
 
 from yieldsim import __version__
-from yieldsim.commands._terminal import Progress, bold, cut, plain, table
+from yieldsim.commands._terminal import Progress, bold, cut, plain, table, wrapped
 from yieldsim.errors import InputError, Problem
 
 if TYPE_CHECKING:
@@ -64,8 +64,11 @@ def run(options: argparse.Namespace) -> int:
     finally:
         progress.close()
     if not options.quiet:
+        from yieldsim.report.answer import answer
+
         rows = cast("list[Row]", result.annual.to_dict("records"))
-        print(summary(rows, plan.reference, out))
+        said = answer(result)
+        print(f"{wrapped(said.winner)}\n{wrapped(said.ranking)}\n\n{summary(rows, plan.reference, out)}")
     return 0
 
 
@@ -148,13 +151,13 @@ def _plane(title: str, rows: Sequence[Row], reference: str) -> str:
     ]
     light = f"{float(rows[0]['poa_kwh_m2']):.0f} kWh/m2 on the plane in {float(rows[0]['hours']):.0f} h"
     head = ["by yield", "kWh/kWp", f"vs {cut(reference, 16)}", "kWh/m2", "rank (datasheet)"]
-    return "\n".join([f"{bold(title)}: {light}", table(head, lines), f"  {departure(rows)}"])
+    return "\n".join([f"{bold(title)}: {light}", table(head, lines), wrapped(departure(rows), "  ")])
 
 
 def _against(row: Row, base: Row | None) -> str:
     if base is None or row is base:
         return ""
-    return f"{100 * (row['specific_yield_kwh_kwp'] / base['specific_yield_kwh_kwp'] - 1):+.1f} %"
+    return f"{100 * (row['specific_yield_kwh_kwp'] / base['specific_yield_kwh_kwp'] - 1):+z.1f} %"
 
 
 def _place(row: Row) -> str:
