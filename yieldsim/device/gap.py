@@ -70,9 +70,14 @@ def steepest_edge_ev(wavelength: Array, quantum_efficiency: Array) -> float:
     ----------
     Rau, U., Blank, B., Mueller, T. C. M., Kirchartz, T. (2017), Phys. Rev. Applied 7, 044016.
     """
-    peak = float(np.max(quantum_efficiency))
-    if quantum_efficiency[-1] >= peak / 10:
+    if quantum_efficiency[-1] >= np.max(quantum_efficiency) / 10:
         return float(photon_energy_ev(wavelength[-1]))
+    return steepest_fall_ev(wavelength, quantum_efficiency)
+
+
+def steepest_fall_ev(wavelength: Array, quantum_efficiency: Array) -> float:
+    """Return what `steepest_edge_ev` does [eV], for a curve whose end is no edge."""
+    peak = float(np.max(quantum_efficiency))
     first = int(np.flatnonzero(quantum_efficiency >= 0.9 * peak)[-1])
     energy, level = photon_energy_ev(wavelength[first:]), quantum_efficiency[first:]
     width, fall = -np.diff(energy), -np.diff(level)

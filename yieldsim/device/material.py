@@ -130,7 +130,7 @@ def response_of(material: Material, thickness: float, trapping: Trapping, reflec
 def junction_of(
     material: Material, thickness: float, trapping: Trapping, reflection: float = 0.0, **quality: Any
 ) -> Junction:
-    """Return a junction made of a layer; quality are fields of `Junction`; gap_ev, if not given, is the steepest edge."""
+    """Return a junction made of a layer; quality: fields of `Junction`; gap_ev is the steepest edge if not given."""
     response = response_of(material, thickness, trapping, reflection)
     absorbed = Response(*_absorbed(material, thickness, trapping))
     gap = quality.pop("gap_ev", None) or gap_of(response)
