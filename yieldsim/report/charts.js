@@ -48,8 +48,11 @@ function legendOf(texts, withLine = false, first = 0) {
 
 function overview(width) {
   const base = study.reference;
-  const energy = study.annual.energy_kwh_m2;
-  const promise = study.absorbers.map((a) => 100 * (a.stc_efficiency / study.absorbers[base].stc_efficiency - 1));
+  const energy = study.annual[choice.basis];
+  const per = choice.basis === "energy_kwh_m2" ? "energy per area" : "yield per rated power";
+  // By datasheet every rated kilowatt yields the same.
+  const rated = (a) => (choice.basis === "energy_kwh_m2" ? study.absorbers[a].stc_efficiency : 1);
+  const promise = study.absorbers.map((_, a) => 100 * (rated(a) / rated(base) - 1));
   const order = names().map((_, i) => i).sort((a, b) => promise[b] - promise[a]);
   const axis = nameAxis(names(), width);
   const data = study.places.flatMap((place, p) =>
@@ -59,7 +62,7 @@ function overview(width) {
   const few = study.places.length <= 12;
   const svg = plot(width, {
     marginLeft: axis.room, marginRight: 16, marginBottom: 42, height: 70 + 30 * order.length,
-    x: { label: `energy per area against ${fit(names()[base], 160)} [%]`, grid: true, nice: true, labelAnchor: "center", labelArrow: "none" },
+    x: { label: `${per} against ${fit(names()[base], 160)} [%]`, grid: true, nice: true, labelAnchor: "center", labelArrow: "none" },
     y: { type: "band", domain: order, label: null, tickFormat: axis.ticks, tickSize: 0 },
     marks: [
       Plot.ruleX([0], { stroke: "currentColor", strokeOpacity: 0.5 }),
@@ -71,7 +74,7 @@ function overview(width) {
   return {
     svg,
     legend: few ? legendOf(study.places.map((place) => place.name)) : null,
-    alt: `Energy per area of each absorber against ${names()[base]}, per place, with what the datasheets promise.`,
+    alt: `Each absorber's ${per} against ${names()[base]}, per place, with what the datasheets promise.`,
     points: data.map((d) => ({ x: d.x, y: d.a, text: text(d) })),
     table: () => ({
       columns: ["absorber", "datasheet [%]", ...study.places.map((place) => `${place.name} [%]`)],
@@ -132,7 +135,7 @@ function tickDigits([low, high]) {
 function shaded(data, biggest, text, x, y) {
   const shade = (d) => 0.06 + 0.44 * Math.min(1, Math.abs(d.v) / (biggest || 1));
   return [
-    Plot.cell(data.filter((d) => d.v !== null), { x, y, fill: (d) => (d.v >= 0 ? "var(--s0)" : "var(--s1)"), fillOpacity: shade, inset: 0.5 }),
+    Plot.cell(data.filter((d) => d.v !== null), { x, y, fill: (d) => (d.v >= 0 ? "var(--s0)" : "var(--s1)"), fillOpacity: shade, inset: 1 }),
     ...(text ? [Plot.text(data, { x, y, text, fill: "currentColor" })] : []),
   ];
 }
@@ -146,8 +149,8 @@ function factors(width) {
   const text = (d) => `${names()[d.a]}: ${study.measures[d.f].name} ${figures(1 + d.v / 100, 4)}, ${signed(d.v, 2)} %`;
   const svg = plot(width, {
     marginLeft: axis.room, marginRight: 8, marginTop: narrow ? 74 : 30, marginBottom: 8, height: (narrow ? 90 : 46) + 28 * rows.length,
-    x: { type: "band", domain: FACTORS, axis: "top", label: null, tickSize: 0, tickRotate: narrow ? -60 : 0, tickFormat: (f) => f.replace("_factor", "").replace("_", " ") },
-    y: { type: "band", domain: rows, label: null, tickSize: 0, tickFormat: (a) => axis.ticks(rows.indexOf(a)) },
+    x: { type: "band", domain: FACTORS, padding: 0, axis: "top", label: null, tickSize: 0, tickRotate: narrow ? -60 : 0, tickFormat: (f) => f.replace("_factor", "").replace("_", " ") },
+    y: { type: "band", domain: rows, padding: 0, label: null, tickSize: 0, tickFormat: (a) => axis.ticks(rows.indexOf(a)) },
     marks: [...shaded(data, biggest, (d) => signed(d.v, narrow ? 1 : 2), "f", "a"), Plot.tip(data, Plot.pointer({ x: "f", y: "a", title: text }))],
   });
   return {
@@ -210,8 +213,8 @@ function hours(width) {
   const span = d3.extent(lit, (d) => d.h);
   const svg = plot(width, {
     marginLeft: 40, marginRight: 8, marginBottom: 38, height: 320,
-    x: { type: "band", domain: d3.range(span[0], span[1] + 1), label: "hour of the day", labelAnchor: "center", labelArrow: "none", tickSize: 0 },
-    y: { type: "band", domain: d3.range(12), tickFormat: (m) => MONTHS[m], label: null, tickSize: 0 },
+    x: { type: "band", padding: 0, domain: d3.range(span[0], span[1] + 1), label: "hour of the day", labelAnchor: "center", labelArrow: "none", tickSize: 0 },
+    y: { type: "band", padding: 0, domain: d3.range(12), tickFormat: (m) => MONTHS[m], label: null, tickSize: 0 },
     marks: [...shaded(lit, biggest, null, "h", "m"), Plot.tip(lit, Plot.pointer({ x: "h", y: "m", title: text }))],
   });
   const total = d3.sum(lit, (d) => d.v);

@@ -73,8 +73,8 @@ function gap_pairs(width) {
   const [tops, bottoms] = [gaps("x"), gaps("y")];
   const svg = plot(width, {
     marginLeft: 52, marginRight: 12, marginBottom: 38, marginTop: 26, height: 380,
-    x: { type: "band", domain: tops, ticks: sparse(tops, 8), tickFormat: (v) => figures(v, 2), label: "gap on top [eV]", labelAnchor: "center", labelArrow: "none", tickSize: 0 },
-    y: { type: "band", domain: bottoms.slice().reverse(), ticks: sparse(bottoms, 10), tickFormat: (v) => figures(v, 2), label: "gap below [eV]", labelArrow: "none", tickSize: 0 },
+    x: { type: "band", padding: 0, domain: tops, ticks: sparse(tops, 8), tickFormat: (v) => figures(v, 2), label: "gap on top [eV]", labelAnchor: "center", labelArrow: "none", tickSize: 0 },
+    y: { type: "band", padding: 0, domain: bottoms.slice().reverse(), ticks: sparse(bottoms, 10), tickFormat: (v) => figures(v, 2), label: "gap below [eV]", labelArrow: "none", tickSize: 0 },
     marks: [
       Plot.cell(data, { x: "x", y: "y", fill: "var(--s0)", fillOpacity: shade, inset: 0 }),
       Plot.dot([best], { x: "x", y: "y", r: 8, stroke: "currentColor", strokeWidth: 2.5 }),
@@ -83,7 +83,7 @@ function gap_pairs(width) {
   });
   return {
     svg,
-    note: `Best at ${placeName(one.place)}: ${text(best).replace(/, [+-]?0.*$/, "")}.`,
+    note: `Best at ${placeName(one.place)}: ${figures(best.x, 2)} over ${figures(best.y, 2)} eV with ${figures(best.e, 1)} kWh/m².`,
     alt: `Energy a year over the gaps of two junctions at ${placeName(one.place)}.`,
     points: data.map((d) => ({ x: d.x, y: d.y, text: text(d) })),
     table: () => ({ columns: ["gap on top [eV]", "gap below [eV]", "energy [kWh/m²]"], rows: data.map((d) => [figures(d.x, 2), figures(d.y, 2), figures(d.e, 1)]) }),
@@ -163,6 +163,16 @@ choice.hour = middleHour();
 placeForm();
 controls();
 draw();
+
+window.addEventListener("beforeprint", () => {
+  printing = true;
+  for (const one of document.querySelectorAll("details.site")) one.open = true;
+  draw();
+});
+window.addEventListener("afterprint", () => {
+  printing = false;
+  draw();
+});
 
 let drawnFor = document.body.clientWidth;
 let waiting = 0;

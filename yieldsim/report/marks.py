@@ -28,12 +28,12 @@ class Mark:
 def mark(number: int) -> Mark:
     """Return the mark of the series of a number, 0 first: no two of the first 28 share colour and dash.
 
-    The marker changes with every series, the dash with every third, so that prints in grey keep them apart.
+    The marker changes with every series, the dash too, so that prints in grey keep them apart.
     """
-    turn = number // len(COLOURS)
+    turn, colour = divmod(number, len(COLOURS))
     return Mark(
-        COLOURS[number % len(COLOURS)],
-        DASHES[(turn + number % 3) % len(DASHES)],
+        COLOURS[colour],
+        DASHES[(turn + colour % 3) % len(DASHES)],
         MARKERS[number % len(MARKERS)],
     )
 

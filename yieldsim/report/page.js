@@ -12,6 +12,7 @@ const choice = {
   taker: study.reference,
   quality: 0,
   relative: "no",
+  basis: "energy_kwh_m2",
   chance: 0,
 };
 
@@ -30,7 +31,8 @@ function element(tag, attributes = {}, ...children) {
 /** Return a number with fixed digits and thousands set apart; a dash for what is missing. */
 function figures(value, digits) {
   if (value === null || value === undefined || Number.isNaN(value)) return "–";
-  return value.toLocaleString("en", { minimumFractionDigits: digits, maximumFractionDigits: digits });
+  const text = Math.abs(value).toLocaleString("en", { minimumFractionDigits: digits, maximumFractionDigits: digits });
+  return value < 0 && /[1-9]/.test(text) ? "−" + text : text; // the sign for minus, none before a zero
 }
 
 function signed(value, digits) {
@@ -89,7 +91,7 @@ function look(number) {
   const symbol = SYMBOLS[number % SYMBOLS.length];
   return {
     colour: `var(--s${number % 7})`,
-    dash: DASHES[(Math.floor(number / 7) + (number % 3)) % DASHES.length],
+    dash: DASHES[(Math.floor(number / 7) + ((number % 7) % 3)) % DASHES.length],
     symbol,
     hollow: HOLLOW.has(symbol),
   };
@@ -165,6 +167,7 @@ const chanceMeasures = () => [...new Set((study.chance ?? []).map((row) => row.m
 /** Fill the controls that belong to single charts. */
 function controls() {
   const parts = {
+    overview: () => [select("Compared by", "basis", ["energy_kwh_m2", "specific_yield_kwh_kwp"].map((key) => [key, study.measures[key].name]), ["overview"])],
     monthly: () => [select("Measure", "measure", Object.entries(study.measures).map(([key, m]) => [key, m.name]), ["monthly"])],
     hours: () => [select("Absorber", "versus", others(), ["hours"])],
     spectrum: spectrumControls,
@@ -219,6 +222,9 @@ function spectrumControls() {
 
 // -------------------------------------------------------------------------------------- drawing, tables, keyboard
 
+const PRINT_WIDTH = 680; // pixels; what A4 less its margins holds at the size of the screen's letters
+let printing = false;
+
 /** Draw some charts, or all of them. */
 function draw(ids = Object.keys(CHARTS)) {
   for (const id of ids) {
@@ -229,7 +235,7 @@ function draw(ids = Object.keys(CHARTS)) {
 
 function drawOne(figure, chart) {
   const place = figure.querySelector(".plot");
-  const width = Math.max(240, Math.floor(place.clientWidth || 640));
+  const width = printing ? PRINT_WIDTH : Math.max(240, Math.floor(place.clientWidth || 640));
   const { svg, legend, table, alt, points, note } = chart(width);
   svg.setAttribute("role", "img");
   svg.setAttribute("aria-label", alt);
@@ -242,6 +248,23 @@ function drawOne(figure, chart) {
   const fill = () => details.open && figure.querySelector(".numbers").replaceChildren(tableOf(table(), alt));
   details.ontoggle = fill;
   fill();
+  figure.querySelector(".save").onclick = () => save(`${figure.id}.csv`, csvOf(table()));
+}
+
+/** Return {columns, rows} as CSV; text that a spreadsheet could take for a formula is guarded by an apostrophe. */
+function csvOf({ columns, rows }) {
+  const cell = (value) => {
+    const plain = /^−?[+]?[\d,]*\.?\d+$/.test(value) ? value.replace("−", "-").replaceAll(",", "").replace("+", "") : value;
+    const safe = plain === value && /^[=+\-@＝＋－＠\t\r\n']/.test(plain) ? "'" + plain : plain;
+    return /[",\n\r]/.test(safe) ? `"${safe.replaceAll('"', '""')}"` : safe;
+  };
+  return [columns, ...rows].map((row) => row.map((value) => cell(String(value))).join(",")).join("\n") + "\n";
+}
+
+function save(name, text) {
+  const link = element("a", { href: URL.createObjectURL(new Blob([text], { type: "text/csv" })), download: name });
+  link.click();
+  setTimeout(() => URL.revokeObjectURL(link.href), 1000);
 }
 
 /** Let arrow keys go from point to point: a ring marks it, its numbers are said below the chart. */

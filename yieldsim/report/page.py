@@ -87,7 +87,7 @@ def _cell(row: Mapping[str, Any] | None, reference: Mapping[str, Any]) -> dict[s
     energy, base = float(row["energy_kwh_m2"]), float(reference["energy_kwh_m2"])
     return {
         "energy": energy,
-        "difference": f"{100 * (energy / base - 1):+.1f} %" if row is not reference and base > 0 else "",
+        "difference": f"{100 * (energy / base - 1):+.1f} %".replace("-", "−") if row is not reference and base > 0 else "",
         "rank": row["rank_by_energy"],
         "moved": row["rank_at_stc"] - row["rank_by_energy"],
     }
@@ -110,7 +110,7 @@ def _figures(value: Any, digits: int = 1) -> str:
     """Return a number with a fixed count of digits after the point, a dash where there is none."""
     if value is None or value != value:
         return "–"
-    return f"{float(value) + 0.0:,.{digits}f}"
+    return f"{float(value) + 0.0:,.{digits}f}".replace("-", "−")
 
 
 def _by_site(quality: pd.DataFrame, *, sources: bool) -> dict[str, list[dict[str, Any]]]:
