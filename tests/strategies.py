@@ -3,7 +3,7 @@
 from hypothesis import strategies as st
 
 from yieldsim.config.crosscheck import RESERVED
-from yieldsim.config.schema import folded
+from yieldsim.config.fields import folded
 from yieldsim.constants import CELSIUS_ZERO, THERMAL_EV_PER_K
 from yieldsim.device.balance import radiative_current, saturation_current
 from yieldsim.device.diode import Diode
@@ -98,7 +98,15 @@ def _absorbers(name):
     efficiency = st.floats(1e-8, 1)
     gap = st.floats(0.6, 2.5)
     given = {"name": st.just(name)}
+    layer = {"external_radiative_efficiency": efficiency}
+    stack = st.tuples(
+        st.fixed_dictionaries({**layer, "gap_ev": st.floats(1.5, 2.0)}, optional={"transmits": st.floats(0, 0.9)}),
+        st.fixed_dictionaries({"like": st.sampled_from(["c-si", "cigs"])}, optional=_QUALITY),
+    ).map(list)
+    coupled = {"terminals": st.sampled_from([2, 4]), "coupling": st.floats(0, 1)}
+    module = {key: value for key, value in _MODULE.items() if key != "gap_shift_ev_per_k"}
     return st.one_of(
+        st.fixed_dictionaries({**given, "stack": stack}, optional={**coupled, **module}),
         st.fixed_dictionaries({**given, "like": like}, optional={**_QUALITY, **_MODULE}),
         st.fixed_dictionaries({**given, "gap_ev": gap, "quality": st.just("ideal")}, optional=_MODULE),
         st.fixed_dictionaries(

@@ -10,7 +10,8 @@ import pytest
 from hypothesis import HealthCheck, given, settings
 
 from tests import strategies
-from yieldsim.config import crosscheck, library, load, schema, tree
+from yieldsim.config import crosscheck, library, load, schema, site_schema, tree
+from yieldsim.config.fields import folded
 from yieldsim.config.inputs import pvlib_data
 from yieldsim.config.loader import plan_of
 from yieldsim.errors import InputError
@@ -134,6 +135,18 @@ def test_a_gap_of_ideal_quality(loaded, minimal):
     assert np.all(only.response.quantum_efficiency == 1)
 
 
+def test_a_stack(loaded, minimal):
+    absorber = loaded(
+        minimal.replace("like: c-si", f"{STACK}, terminals: 4, coupling: 0.3, bifaciality: 0.6")
+    ).absorbers[0]
+    top, bottom = absorber.junctions
+    assert absorber.gaps_ev == (1.68, 1.1)
+    assert (absorber.terminals, absorber.coupling, absorber.bifaciality) == (4, 0.3, 0.6)
+    assert top.transmits == 0.05
+    assert bottom.external_radiative_efficiency == 0.01
+    assert loaded(minimal.replace("like: c-si", STACK)).absorbers[0].terminals == 2
+
+
 def test_the_qualities_of_a_sweep_have_names(loaded, minimal):
     text = minimal + (
         "gap_sweep:\n  from_ev: 1\n  to_ev: 1.2\n  step_ev: 0.1\n  quality:\n"
@@ -162,6 +175,9 @@ def test_any_valid_study_loads_and_its_resolved_form_gives_the_same_plan(study, 
 # ------------------------------------------------------------------------------------------------- bad studies
 
 
+STACK = "stack: [{like: perovskite-1.68, transmits: 0.05}, {gap_ev: 1.1, external_radiative_efficiency: 0.01}]"
+
+
 @pytest.mark.parametrize(
     ("change", "where", "found", "allowed"),
     [
@@ -181,7 +197,14 @@ def test_any_valid_study_loads_and_its_resolved_form_gives_the_same_plan(study, 
         (("like: c-si", "gap_ev: 1.1"), "absorbers[0]", "without its quality", "quality: ideal"),
         (("like: c-si", "like: c-si, quality: ideal"), "absorbers[0]", "beside `like`", "one of them"),
         ((", like: c-si", ""), "absorbers[0]", "neither", "library"),
-        (("like: c-si", "like: c-si, stack: []"), "absorbers[0].stack", "does not take yet", ""),
+        (("like: c-si", "like: c-si, stack: []"), "absorbers[0].stack", "a list of 0", "2 to 6 junctions"),
+        (("like: c-si", "material: {}, like: c-si"), "absorbers[0].material", "does not take yet", ""),
+        (("like: c-si", "like: c-si, terminals: 4"), "absorbers[0]", "which has one junction", ""),
+        (("like: c-si", "gap_ev: 1, quality: ideal, coupling: 0.1"), "absorbers[0]", "of one junction", "stack"),
+        (("like: c-si", f"like: c-si, {STACK}"), "absorbers[0]", "`stack` beside like", "in the junctions"),
+        (("like: c-si", f"{STACK}, terminals: 3"), "absorbers[0].terminals", "3", "2 | 4"),
+        (("like: c-si", "stack: [{like: c-si}, {gap_ev: 1.1}]"), "absorbers[0].stack[1]", "without its quality", ""),
+        (("like: c-si", "stack: [{like: c-si}, {like: gaas}]"), "absorbers[0]", "must fall from top to bottom", ""),
         (("name: Greensboro", "name: Standard  spectrum"), "", "", ""),
         (("name: Greensboro", "name: STANDARD spectrum"), "sites[0].name", "'STANDARD spectrum'", "another name"),
         (("name: Greensboro", 'name: "a\\u0007b"'), "sites[0].name", "'a\\x07b'", "without control characters"),
@@ -282,8 +305,8 @@ def test_whatever_is_wrong_is_named_and_nothing_else_happens(tmp_path, broken):
 
 
 def test_formats_are_those_of_the_readers():
-    assert set(schema.FORMATS) == set(READERS)
+    assert set(site_schema.FORMATS) == set(READERS)
 
 
 def test_the_reserved_site_name_is_the_sweeps_own():
-    assert schema.folded(sweep.STANDARD_SITE) in crosscheck.RESERVED
+    assert folded(sweep.STANDARD_SITE) in crosscheck.RESERVED

@@ -2,20 +2,15 @@
 
 from __future__ import annotations
 
-import math
 from collections.abc import Callable
 from dataclasses import replace
 from pathlib import Path
 from typing import Any, Literal, TypeVar, cast
 
-from yieldsim.config import grid, library, schema
+from yieldsim.config import absorber_schema, absorbers, grid, schema, site_schema
 from yieldsim.config.fields import MONTHS
 from yieldsim.config.inputs import PVLIB, locate, sha256
 from yieldsim.config.tree import Document, KeyPath
-from yieldsim.device import stack as stack_module
-from yieldsim.device.junction import Junction
-from yieldsim.device.response import Response, step
-from yieldsim.device.stack import Absorber
 from yieldsim.errors import InputError, Problem
 from yieldsim.study.plan import (
     AtmospherePlan,
@@ -30,6 +25,7 @@ from yieldsim.study.plan import (
 )
 
 Made = TypeVar("Made")
+Mountings = dict[str, site_schema.FixedMounting]
 _AIR = ("aod500", "angstrom_exponent", "water_cm", "ozone_atm_cm")
 
 
@@ -52,8 +48,8 @@ class Builder:
         """Return the plan of a valid study; raises InputError with everything that could not be built."""
         shared = _mountings(study.mounting)
         sites = [self._site(site, shared, ("sites", i)) for i, site in enumerate(study.sites)]
-        absorbers = [
-            self._attempt(("absorbers", i), lambda each=each: absorber_of(each))  # type: ignore[misc]
+        built = [
+            self._attempt(("absorbers", i), lambda each=each: absorbers.absorber_of(each))  # type: ignore[misc]
             for i, each in enumerate(study.absorbers)
         ]
         sweep = None
@@ -61,12 +57,12 @@ class Builder:
             sweep = self._attempt(("gap_sweep",), lambda: _sweep(cast(schema.GapSweep, study.gap_sweep)))
         if self.problems:
             raise InputError(self.problems)
-        built = tuple(absorber for absorber in absorbers if absorber is not None)
+        made = tuple(absorber for absorber in built if absorber is not None)
         plan = StudyPlan(
             name=study.study,
             sites=tuple(sites),
-            absorbers=built,
-            reference=study.reference or built[0].name,
+            absorbers=made,
+            reference=study.reference or made[0].name,
             gap_sweep=sweep,
             losses=LossesPlan({name: _twelve(value) for name, value in study.losses if value is not None}),
             keep=frozenset(study.keep),
@@ -82,7 +78,7 @@ class Builder:
             self.problems.append(self.document.problem(path, str(error), ""))
             return None
 
-    def _site(self, site: schema.Site, shared: dict[str, schema.FixedMounting], path: KeyPath) -> SitePlan:
+    def _site(self, site: site_schema.Site, shared: Mountings, path: KeyPath) -> SitePlan:
         files = site.weather if isinstance(site.weather, list) else [site.weather]
         weather = [
             self._weather(site, file, (*path, "weather", i) if isinstance(site.weather, list) else (*path, "weather"))
@@ -106,7 +102,7 @@ class Builder:
             allow_gaps=site.allow_gaps,
         )
 
-    def _weather(self, site: schema.Site, shown: str, path: KeyPath) -> WeatherFile:
+    def _weather(self, site: site_schema.Site, shown: str, path: KeyPath) -> WeatherFile:
         where = locate(shown, self.folder)
         try:
             digest = sha256(where)
@@ -121,14 +117,14 @@ def _twelve(value: Any) -> Monthly:
     return tuple(value) if isinstance(value, list) else (value,) * MONTHS
 
 
-def _mountings(value: Any) -> dict[str, schema.FixedMounting]:
+def _mountings(value: Any) -> Mountings:
     """Return mountings by name; a single one bears the name of its kind."""
     if value is None:
         return {}
     return dict(value) if isinstance(value, dict) else {value.kind: value}
 
 
-def _site_mountings(site: schema.Site, shared: dict[str, schema.FixedMounting]) -> dict[str, schema.FixedMounting]:
+def _site_mountings(site: site_schema.Site, shared: Mountings) -> Mountings:
     if site.mounting is None:
         return shared
     if isinstance(site.mounting, str):
@@ -138,40 +134,18 @@ def _site_mountings(site: schema.Site, shared: dict[str, schema.FixedMounting]) 
     return _mountings(site.mounting)
 
 
-# ------------------------------------------------------------------------------------------------ absorbers
-
-
-def absorber_of(spec: schema.Absorber) -> Absorber:
-    """Return the absorber of a study; raises ValueError for what its records refuse."""
-    quality = spec.given(*spec.QUALITY, "gap_shift_ev_per_k")
-    module: dict[str, Any] = spec.given("bifaciality", "area_fraction")
-    if spec.incidence_modifier is not None:
-        module["incidence_modifier"] = None if spec.incidence_modifier == "none" else spec.incidence_modifier
-    if spec.heat_loss is not None:
-        module["heat_loss"] = (spec.heat_loss.constant_w_m2_k, spec.heat_loss.wind_w_s_m3_k)
-    if spec.like is None:
-        gap = cast(float, spec.gap_ev)
-        return Absorber(name=spec.name, junctions=(Junction(gap, step(gap), **quality),), **module)
-    base = _moved(library.entry(spec.like).absorber, spec.gap_ev)
-    return replace(base, name=spec.name, junctions=(replace(base.junctions[0], **quality),), **module)
-
-
-def _moved(absorber: Absorber, gap_ev: float | None) -> Absorber:
-    if gap_ev is None or gap_ev == absorber.junctions[0].gap_ev:
-        return absorber
-    return stack_module.moved_to_gap(absorber, gap_ev)
-
-
 def _sweep(sweep: schema.GapSweep) -> GapSweepPlan:
     gaps = grid.decimal_grid(sweep.from_ev, sweep.to_ev, sweep.step_ev)
     qualities = named_qualities(sweep)
-    return GapSweepPlan(gaps, {name: tuple(_swept(each, gap) for gap in gaps) for name, each in qualities.items()})
+    return GapSweepPlan(
+        gaps, {name: tuple(absorbers.swept(each, gap) for gap in gaps) for name, each in qualities.items()}
+    )
 
 
-def named_qualities(sweep: schema.GapSweep) -> dict[str, schema.SweepQuality | None]:
+def named_qualities(sweep: schema.GapSweep) -> dict[str, absorber_schema.SweepQuality | None]:
     """Return the qualities of a sweep by name; None stands for the ideal."""
     given = sweep.quality if isinstance(sweep.quality, list) else [sweep.quality]
-    named: dict[str, schema.SweepQuality | None] = {}
+    named: dict[str, absorber_schema.SweepQuality | None] = {}
     for each in given:
         if isinstance(each, str):
             named[each] = None
@@ -182,20 +156,6 @@ def named_qualities(sweep: schema.GapSweep) -> dict[str, schema.SweepQuality | N
             name, number = f"{each.name or each.like or 'realistic'} {number}", number + 1
         named[name] = each
     return named
-
-
-def _swept(quality: schema.SweepQuality | None, gap_ev: float) -> Absorber:
-    name = f"{gap_ev:.12g} eV"
-    if quality is None:
-        return Absorber(name=name, junctions=(Junction(gap_ev, step(gap_ev)),))
-    numbers = quality.given(*quality.QUALITY, "gap_shift_ev_per_k")
-    if quality.like is not None:
-        base = _moved(library.entry(quality.like).absorber, gap_ev)
-        return replace(base, name=name, junctions=(replace(base.junctions[0], **numbers),))
-    response = step(gap_ev)
-    if quality.collected is not None:
-        response = Response(response.wavelength_nm, response.quantum_efficiency * quality.collected)
-    return Absorber(name=name, junctions=(Junction(gap_ev, response, **numbers),))
 
 
 # ------------------------------------------------------------------------------------------------- resolved
@@ -213,7 +173,7 @@ def resolved(study: schema.Study, plan: StudyPlan) -> dict[str, Any]:
     content = {
         "study": study.study,
         "sites": sites,
-        "absorbers": [_resolved_absorber(*pair) for pair in zip(study.absorbers, plan.absorbers, strict=True)],
+        "absorbers": [absorbers.resolved(*pair) for pair in zip(study.absorbers, plan.absorbers, strict=True)],
         "reference": plan.reference,
         "losses": study.losses.model_dump(exclude_none=True),
         "keep": [part for part in schema.PARTS if part in plan.keep],
@@ -227,30 +187,3 @@ def resolved(study: schema.Study, plan: StudyPlan) -> dict[str, Any]:
             ]
         }
     return content
-
-
-def _resolved_absorber(spec: schema.Absorber, absorber: Absorber) -> dict[str, Any]:
-    content: dict[str, Any] = {"name": spec.name}
-    if spec.like is not None:
-        content["like"] = spec.like
-    if spec.quality is not None:
-        return (
-            content
-            | {"gap_ev": spec.gap_ev, "quality": spec.quality}
-            | _finite(absorber.junctions[0], ("gap_shift_ev_per_k",))
-            | _module(absorber)
-        )
-    return content | _finite(absorber.junctions[0], library.JUNCTION_NUMBERS) | _module(absorber)
-
-
-def _module(absorber: Absorber) -> dict[str, Any]:
-    numbers = _finite(absorber, library.MODULE_NUMBERS)
-    modifier = absorber.incidence_modifier
-    heat = {"constant_w_m2_k": absorber.heat_loss[0], "wind_w_s_m3_k": absorber.heat_loss[1]}
-    return {**numbers, "incidence_modifier": "none" if modifier is None else modifier, "heat_loss": heat}
-
-
-def _finite(record: Junction | Absorber, fields: tuple[str, ...]) -> dict[str, float]:
-    """Return numeric fields of a record; one that is infinite or absent is left out: that is its default."""
-    values = {field: getattr(record, field) for field in fields}
-    return {field: value for field, value in values.items() if value is not None and math.isfinite(value)}

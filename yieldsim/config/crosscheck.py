@@ -8,8 +8,7 @@ from __future__ import annotations
 from collections.abc import Iterator
 from typing import Any
 
-from yieldsim.config.fields import nearest, show
-from yieldsim.config.schema import folded
+from yieldsim.config.fields import folded, nearest, show
 from yieldsim.config.tree import Document, KeyPath
 from yieldsim.errors import Problem
 
@@ -82,7 +81,9 @@ def _reserved(document: Document, names: Named) -> Iterator[Problem]:
 def _reference(document: Document, study: dict[str, Any]) -> Iterator[Problem]:
     name = study.get("reference")
     names = [absorber for _, absorber in _names(study, "absorbers")]
-    if isinstance(name, str) and names and name not in names:
+    absorbers = study.get("absorbers")
+    known = isinstance(absorbers, list) and len(names) == len(absorbers)  # one without a name may be the one meant
+    if isinstance(name, str) and known and name not in names:
         yield document.problem(("reference",), show(name), f"the name of an absorber{nearest(name, names)}")
 
 

@@ -11,7 +11,7 @@ import re
 import unicodedata
 from collections.abc import Callable, Iterable
 from dataclasses import dataclass
-from typing import Any
+from typing import Annotated, Any
 
 from pydantic import BaseModel, ConfigDict, Discriminator, GetCoreSchemaHandler, GetJsonSchemaHandler
 from pydantic_core import CoreSchema, PydanticCustomError, core_schema
@@ -106,15 +106,17 @@ class Number(Kind):
 
 @dataclass(frozen=True)
 class Choice(Kind):
-    """One of a few words."""
+    """One of a few words or whole numbers."""
 
-    words: tuple[str, ...]
+    words: tuple[str | int, ...]
 
-    def take(self, value: Any) -> str:
+    def take(self, value: Any) -> str | int:
         """Return the word; the nearest one is offered for a slip."""
-        if value in self.words and isinstance(value, str):
-            return value
-        raise refusal(show(value), " | ".join(self.words) + nearest(value, self.words))
+        for word in self.words:
+            if type(value) is type(word) and value == word:
+                return word
+        allowed = " | ".join(str(word) for word in self.words)
+        raise refusal(show(value), allowed + nearest(value, [word for word in self.words if isinstance(word, str)]))
 
     def json(self) -> dict[str, Any]:
         """Return the list of words."""
@@ -245,3 +247,11 @@ class Monthly(Number):
         """Return either form."""
         number = super().json()
         return {"anyOf": [number, {"type": "array", "items": number, "minItems": MONTHS, "maxItems": MONTHS}]}
+
+
+Name = Annotated[str, Text(200, "a name")]
+
+
+def folded(name: str) -> str:
+    """Return a name as names are told apart: without case and without forms that look alike."""
+    return unicodedata.normalize("NFKC", unicodedata.normalize("NFKC", name).casefold())

@@ -3,19 +3,19 @@
 from __future__ import annotations
 
 from collections.abc import Mapping
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from functools import cache
 from importlib import resources
 from types import MappingProxyType
 from typing import Annotated, Any
 
 import numpy as np
-from pydantic import Field
+from pydantic import Field, model_validator
 
 from yieldsim.config import tree
 from yieldsim.config.explain import demand
-from yieldsim.config.fields import Choice, Kind, Length, Number, Section, Text
-from yieldsim.device.junction import Junction
+from yieldsim.config.fields import Choice, Kind, Length, Number, Section, Text, refusal
+from yieldsim.device.junction import Junction, moved_to_gap
 from yieldsim.device.response import Response
 from yieldsim.device.stack import Absorber
 
@@ -23,7 +23,7 @@ SUFFIX = ".yaml"
 #: Numbers of a junction and of a module that a study or an entry may give; the names of their records' fields.
 JUNCTION_NUMBERS = (
     "gap_ev", "external_radiative_efficiency", "ideality", "series_resistance_ohm_cm2", "shunt_resistance_ohm_cm2",
-    "recombination_v", "built_in_v", "gap_shift_ev_per_k",
+    "recombination_v", "built_in_v", "gap_shift_ev_per_k", "reflection", "parasitic", "transmits",
 )  # fmt: skip
 MODULE_NUMBERS = ("bifaciality", "incidence_modifier", "area_fraction")
 
@@ -54,13 +54,11 @@ class SourcedCurve(Section):
     source: _Source
 
 
-class _File(Section):
-    """What an entry's file may hold; keys are the fields of `Junction` and `Absorber`."""
+class _Junction(Section):
+    """What describes a junction; keys are the fields of `Junction`."""
 
-    title: Annotated[str, Text(200, "a title")]
-    note: Annotated[str, Text(2000, "a note")] | None = None
-    gap_ev: Sourced
-    eqe: SourcedCurve
+    gap_ev: Sourced | None = None
+    eqe: SourcedCurve | None = None
     external_radiative_efficiency: Sourced | None = None
     ideality: Sourced | None = None
     series_resistance_ohm_cm2: Sourced | None = None
@@ -68,11 +66,47 @@ class _File(Section):
     gap_shift_ev_per_k: Sourced | None = None
     recombination_v: Sourced | None = None
     built_in_v: Sourced | None = None
+    reflection: Sourced | None = None
+    parasitic: Sourced | None = None
+    transmits: Sourced | None = None
+
+
+class _Layer(_Junction):
+    """A junction of a stack: another entry with some values of its own, or described in full."""
+
+    like: Annotated[str, Text(100, "the name of another entry")] | None = None
+
+    @model_validator(mode="after")
+    def _complete(self) -> _Layer:
+        if self.like is None and (self.gap_ev is None or self.eqe is None):
+            raise refusal("a junction without `gap_ev` and `eqe`", "these, or `like`")
+        if self.like is not None and self.eqe is not None:
+            raise refusal("`eqe` beside `like`", "one of them")
+        return self
+
+
+class _File(_Junction):
+    """What an entry's file may hold; keys are the fields of `Junction` and `Absorber`."""
+
+    title: Annotated[str, Text(200, "a title")]
+    note: Annotated[str, Text(2000, "a note")] | None = None
+    stack: Annotated[list[_Layer], Length(2, 6, "junctions, top first")] | None = None
+    terminals: Sourced | None = None
+    coupling: Sourced | None = None
     bifaciality: Sourced | None = None
     incidence_modifier: Sourced | None = None
     area_fraction: Sourced | None = None
     heat_loss: SourcedPair | None = None
     published: dict[str, Sourced] = Field(default_factory=dict)
+
+    @model_validator(mode="after")
+    def _complete(self) -> _File:
+        own = [name for name in ("eqe", *JUNCTION_NUMBERS) if getattr(self, name) is not None]
+        if self.stack is None and not {"gap_ev", "eqe"} <= set(own):
+            raise refusal("an entry without `gap_ev` and `eqe`", "these, or `stack`")
+        if self.stack is not None and own:
+            raise refusal(f"`stack` beside {', '.join(own)}", "these in the junctions of the stack")
+        return self
 
 
 @dataclass(frozen=True, slots=True)
@@ -121,20 +155,48 @@ def entry(name: str) -> Entry:
 
 
 def _entry(name: str, file: _File) -> Entry:
-    sourced = {field: value for field in type(file).model_fields if isinstance(value := getattr(file, field), Sourced)}
-    numbers = {field: each.value for field, each in sourced.items()}
-    points = file.eqe.value.items() if isinstance(file.eqe.value, dict) else file.eqe.value
-    response = Response(*np.array([list(point) for point in points], dtype=np.float64).T)
-    given: dict[str, Any] = {field: numbers[field] for field in JUNCTION_NUMBERS if field in numbers}
-    only = Junction(response=response, **given)
-    module: dict[str, Any] = {field: numbers[field] for field in MODULE_NUMBERS if field in numbers}
+    if file.stack is None:
+        junctions: tuple[Junction, ...] = (_junction(file),)
+        sources = _sources(file)
+    else:
+        junctions = tuple(_junction(layer) for layer in file.stack)
+        sources = {
+            f"stack[{i}].{field}": source
+            for i, layer in enumerate(file.stack)
+            for field, source in _sources(layer).items()
+        }
+    module: dict[str, Any] = _numbers(file, (*MODULE_NUMBERS, "coupling"))
+    if file.terminals is not None:
+        module["terminals"] = int(file.terminals.value)
     if file.heat_loss is not None:
         module["heat_loss"] = tuple(file.heat_loss.value)
-    sources = {field: each.source for field, each in sourced.items()} | {"eqe": file.eqe.source}
-    if file.heat_loss is not None:
-        sources["heat_loss"] = file.heat_loss.source
-    absorber = Absorber(name=name, junctions=(only,), **module)
+    sources |= {field: source for field, source in _sources(file).items() if field not in sources}
+    absorber = Absorber(name=name, junctions=junctions, **module)
     return Entry(name, file.title, absorber, MappingProxyType(dict(file.published)), MappingProxyType(sources))
+
+
+def _junction(file: _Junction) -> Junction:
+    numbers = _numbers(file, JUNCTION_NUMBERS)
+    like = getattr(file, "like", None)
+    if like is not None:
+        (base,) = entry(like).absorber.junctions
+        gap = numbers.pop("gap_ev", base.gap_ev)
+        return replace(base if gap == base.gap_ev else moved_to_gap(base, gap), **numbers)
+    assert file.eqe is not None  # the file was checked for it
+    points = file.eqe.value.items() if isinstance(file.eqe.value, dict) else file.eqe.value
+    response = Response(*np.array([list(point) for point in points], dtype=np.float64).T)
+    return Junction(response=response, **numbers)
+
+
+def _numbers(file: Section, fields: tuple[str, ...]) -> dict[str, Any]:
+    return {field: value.value for field in fields if (value := getattr(file, field)) is not None}
+
+
+def _sources(file: Section) -> dict[str, str]:
+    """Return the source of each value that stands in a file itself, not in its stack."""
+    values = {field: getattr(file, field) for field in type(file).model_fields}
+    kinds = (Sourced, SourcedPair, SourcedCurve)
+    return {field: value.source for field, value in values.items() if isinstance(value, kinds)}
 
 
 class EntryName(Kind):
@@ -142,7 +204,7 @@ class EntryName(Kind):
 
     def take(self, value: Any) -> str:
         """Return the name; the nearest one is offered for a slip."""
-        return Choice(names()).take(value)
+        return str(Choice(names()).take(value))
 
     def json(self) -> dict[str, Any]:
         """Return the list of names."""

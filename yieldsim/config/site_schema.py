@@ -1,0 +1,124 @@
+"""What a site may hold: its weather, air, ground, and how the modules stand there."""
+
+from __future__ import annotations
+
+from typing import Annotated, Any
+
+from pydantic import Field, Tag
+
+from yieldsim.config.fields import (
+    Choice,
+    Flag,
+    Kind,
+    Length,
+    Monthly,
+    Name,
+    Number,
+    Section,
+    by,
+    one_or_list,
+    refusal,
+    show,
+)
+from yieldsim.config.inputs import InputFile
+from yieldsim.weather import STAMP_FORM, parse_stamp
+
+FORMATS = ("tmy3", "plain")  # the readers' names; a test holds them to yieldsim.readers
+MAX_YEARS = 50
+
+
+class FixedMounting(Section):
+    """A plane that does not move."""
+
+    kind: Annotated[str, Choice(("fixed",))] = Field(default="fixed", description="how the modules stand")
+    tilt_deg: Annotated[float, Number(0, 90, "deg from horizontal")]
+    azimuth_deg: Annotated[float, Number(0, 360, "deg clockwise from north")]
+
+
+def _mounting_form(value: Any) -> str:
+    """Tell one mounting from several named ones and from names of mountings given elsewhere."""
+    if isinstance(value, str | list):
+        return "names"
+    several = isinstance(value, dict) and value and "kind" not in value
+    return "several" if several and all(isinstance(each, dict) for each in value.values()) else "one"
+
+
+Several = Annotated[dict[Name, FixedMounting], Tag("<several>")]
+Mounting = Annotated[Annotated[FixedMounting, Tag("<one>")] | Several, by(_mounting_form)]
+_Names = Annotated[
+    Annotated[Name, Tag("<one>")] | Annotated[list[Name], Length(1, 20, "names"), Tag("<list>")], by(one_or_list)
+]
+SiteMounting = Annotated[
+    Annotated[FixedMounting, Tag("<one>")] | Several | Annotated[_Names, Tag("<names>")], by(_mounting_form)
+]
+
+
+class Atmosphere(Section):
+    """What is known about the air: one number or twelve, January first; what is left out is derived."""
+
+    aod500: Annotated[float | list[float], Monthly(0, 5)] | None = Field(
+        default=None, description="aerosol optical depth at 500 nm"
+    )
+    angstrom_exponent: Annotated[float | list[float], Monthly(-0.5, 3)] | None = Field(
+        default=None, description="how aerosol fades with wavelength"
+    )
+    water_cm: Annotated[float | list[float], Monthly(0, 12, "cm")] | None = Field(
+        default=None, description="precipitable water"
+    )
+    ozone_atm_cm: Annotated[float | list[float], Monthly(0.05, 0.7, "atm cm")] | None = Field(
+        default=None, description="ozone column"
+    )
+    haze: Annotated[str, Choice(("hourly", "fixed"))] = Field(
+        default="hourly", description="hourly: solve the haze of clear hours from their beam; fixed: keep the given one"
+    )
+
+
+class Ground(Section):
+    """What lies under and around the modules."""
+
+    albedo: Annotated[float, Number(0, 1)] | None = Field(
+        default=None, description="reflectance at every wavelength; left out: the weather file's own, else 0.2"
+    )
+
+
+_Weather = Annotated[str, InputFile(shipped=True)]
+
+
+class Stamp(Kind):
+    """Where a file's time labels sit."""
+
+    def take(self, value: Any) -> str:
+        """Return the text if `weather.parse_stamp` reads it."""
+        try:
+            parse_stamp(value)
+        except (ValueError, TypeError, AttributeError):
+            raise refusal(show(value), STAMP_FORM) from None
+        return str(value)
+
+    def json(self) -> dict[str, Any]:
+        """Return the type."""
+        return {"type": "string"}
+
+
+class Site(Section):
+    """One place with its weather."""
+
+    name: Name
+    weather: Annotated[
+        Annotated[_Weather, Tag("<one>")]
+        | Annotated[list[_Weather], Length(1, MAX_YEARS, "weather files"), Tag("<list>")],
+        by(one_or_list),
+    ] = Field(description="weather file, relative to the study file; a list for several years; pvlib:NAME")
+    format: Annotated[str, Choice(FORMATS)] | None = Field(default=None, description="over what the content tells")
+    timestamps: Annotated[str, Stamp()] | None = Field(
+        default=None, description="where the file's time labels sit in their interval, over what the file says"
+    )
+    allow_gaps: Annotated[bool, Flag()] = Field(default=False, description="accept fewer than 8760 hours")
+    latitude_deg: Annotated[float, Number(-90, 90, "deg north")] | None = None
+    longitude_deg: Annotated[float, Number(-180, 180, "deg east")] | None = None
+    elevation_m: Annotated[float, Number(-450, 9000, "m")] | None = None
+    mounting: SiteMounting | None = Field(
+        default=None, description="over the study's: one, several named, or their names"
+    )
+    atmosphere: Atmosphere = Field(default_factory=Atmosphere)
+    ground: Ground = Field(default_factory=Ground)
