@@ -12,7 +12,14 @@ from numpy.typing import NDArray
 from yieldsim.constants import STANDARD_CELL_TEMPERATURE, STANDARD_IRRADIANCE, THERMAL_EV_PER_K
 from yieldsim.device import diode, series
 from yieldsim.device.fold import folded
-from yieldsim.device.junction import Junction, diode_at, reference_photocurrent, response_at, saturation_current
+from yieldsim.device.junction import (
+    Junction,
+    diode_at,
+    external_radiative_efficiency_at,
+    reference_photocurrent,
+    response_at,
+    saturation_current,
+)
 from yieldsim.device.stack import Absorber, responses_at
 from yieldsim.spectrum import reference_bands
 
@@ -233,15 +240,17 @@ class Bank:
             j = int(self.first_of[a]) + i
             diode_of_hour = self._diode(j, currents[j], temperature, slice(None))
             emits = absorber.coupling > 0 and i < len(absorber.junctions) - 1
-            emission = absorber.coupling * self._radiative(j, diode_of_hour.saturation_current) if emits else 0.0
+            emission: Array | float = 0.0
+            if emits:
+                emission = absorber.coupling * self._radiative(j, diode_of_hour.saturation_current, temperature[a])
             links.append(series.Link(diode_of_hour, emission, thermal))
         return links
 
-    def _radiative(self, j: int, saturation: Array) -> Array:
+    def _radiative(self, j: int, saturation: Array, temperature: Array) -> Array:
         """Return the radiative saturation current that belongs to a junction's saturation current [A m-2]."""
         junction, collected = self.junctions[j], self.collected_alone[j]
         reduced = (saturation / collected) ** junction.ideality
-        return np.asarray(junction.external_radiative_efficiency * collected * reduced)
+        return np.asarray(external_radiative_efficiency_at(junction, temperature) * collected * reduced)
 
     def _per_absorber(self, temperature: Array) -> Array:
         temperature = np.atleast_1d(np.asarray(temperature, dtype=np.float64))

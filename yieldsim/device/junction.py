@@ -27,6 +27,7 @@ LIMITS: dict[str, tuple[float, float]] = {
     "series_resistance_ohm_cm2": (0.0, 1000.0),
     "shunt_resistance_ohm_cm2": (1.0, math.inf),
     "gap_shift_ev_per_k": (-2e-3, 2e-3),
+    "nonradiative_drift_per_k": (-0.3, 0.3),
     "recombination_v": (0.0, 0.5),
     "built_in_v": (0.3, math.inf),
     "reflection": (0.0, 0.9),
@@ -49,6 +50,8 @@ class Junction:
     series_resistance_ohm_cm2 : float [ohm cm2]
     shunt_resistance_ohm_cm2 : float [ohm cm2], inf = none
     gap_shift_ev_per_k : float [eV K-1], drift of the gap with temperature, negative = narrows when hot
+    nonradiative_drift_per_k : float [K-1], growth of non-radiative over radiative recombination with temperature; 0 =
+        the external radiative efficiency holds at all temperatures
     recombination_v : float [V], d^2/(mu tau) of an i-layer at 25 degC: loss of generated carriers that grows as the
         field in it falls (Merten et al. 1998); 0 = none
     built_in_v : float [V], built-in voltage of that i-layer
@@ -77,6 +80,7 @@ class Junction:
     parasitic: float = 0.0
     transmits: float = 0.0
     absorptance: Response | None = None
+    nonradiative_drift_per_k: float = 0.0
 
     def __post_init__(self) -> None:
         """Refuse what cannot be."""
@@ -160,8 +164,21 @@ def saturation_current(junction: Junction, temperature: Any) -> Any:
     levels, where = np.unique(temperature, return_inverse=True)
     radiative = np.array([_radiative_current(junction, float(level)) for level in levels])
     collected = reference_photocurrent(junction)
-    values = balance.saturation_current(radiative, collected, junction.external_radiative_efficiency, junction.ideality)
+    efficiency = external_radiative_efficiency_at(junction, levels)
+    values = balance.saturation_current(radiative, collected, efficiency, junction.ideality)
     return values[where].reshape(temperature.shape)[()]
+
+
+def external_radiative_efficiency_at(junction: Junction, temperature: Any) -> Any:
+    """Return the external radiative efficiency (...) [1] at cell temperatures (...) [K].
+
+    Notes
+    -----
+    Non-radiative over radiative recombination, (1 - ERE)/ERE, grows as exp(drift (T - 298.15 K)); so it stays in 0-1.
+    """
+    loss = 1 / junction.external_radiative_efficiency - 1
+    growth = np.exp(junction.nonradiative_drift_per_k * (np.asarray(temperature)[()] - STANDARD_CELL_TEMPERATURE))
+    return 1 / (1 + loss * growth)
 
 
 def _radiative_current(junction: Junction, temperature: float) -> float:
