@@ -203,6 +203,7 @@ const fateColour = (i) => `var(--s${[2, 0, 1, 3, 4, 5, 6][i % 7]})`;
 const fateShade = (i) => (i < 7 ? 0.9 : 0.5);
 
 function hours(width) {
+  if (choice.versus < 0) return nothing(width, "There is no second absorber to compare with.");
   const place = study.by_hour[choice.place];
   if (!place) return nothing(width, "This place is beyond those whose hours the page holds; by_hour.csv has all.");
   const [one, base] = [place[choice.versus], place[study.reference]];
@@ -221,7 +222,7 @@ function hours(width) {
   const won = d3.sum(lit, (d) => Math.max(d.v, 0));
   return {
     svg,
-    note: `Blue: more than ${names()[study.reference]}, orange: less. Won ${figures(won, 1)}, lost ${figures(won - total, 1)}, in all ${signed(total, 1)} kWh/kWp a year.`,
+    note: `${names()[choice.versus]} at ${here().name}. Blue: more than ${names()[study.reference]}, orange: less. Won ${figures(won, 1)}, lost ${figures(won - total, 1)}, in all ${signed(total, 1)} kWh/kWp a year.`,
     alt: `Yield of ${names()[choice.versus]} less that of ${names()[study.reference]} by month and hour at ${here().name}.`,
     points: lit.map((d) => ({ x: d.h, y: d.m, text: text(d) })),
     table: () => ({
@@ -271,7 +272,8 @@ function spectrum(width) {
   ].filter(([, value]) => value);
   return {
     svg,
-    note: state.map(([name, value]) => `${name} ${value}`).join(" · "),
+    file: spectraHere().file,
+    note: `${day.date.slice(5)}, ${day.hours[choice.hour]} at ${here().name}: ` + state.map(([name, value]) => `${name} ${value}`).join(" · "),
     alt: `Spectrum on the plane at ${here().name}, ${day.date.slice(5)}, ${day.hours[choice.hour]}, and what ${taker.name} collects of it.`,
     points: shown.map((d) => ({ x: (d.x1 + d.x2) / 2, y: d.y, text: text(d) })),
     table: () => ({

@@ -169,7 +169,7 @@ function controls() {
   const parts = {
     overview: () => [select("Compared by", "basis", ["energy_kwh_m2", "specific_yield_kwh_kwp"].map((key) => [key, study.measures[key].name]), ["overview"])],
     monthly: () => [select("Measure", "measure", Object.entries(study.measures).map(([key, m]) => [key, m.name]), ["monthly"])],
-    hours: () => [select("Absorber", "versus", others(), ["hours"])],
+    hours: () => (others().length < 1 ? [] : [select("Absorber", "versus", others(), ["hours"])]),
     spectrum: spectrumControls,
     gap_sweep: () => [
       select("Quality of the absorbers", "quality", qualities().map((name, i) => [i, name]), ["gap_sweep"]),
@@ -190,7 +190,8 @@ function controls() {
   }
 }
 
-const daysHere = () => study.spectra?.find((one) => one.place === choice.place)?.days ?? [];
+const spectraHere = () => study.spectra?.find((one) => one.place === choice.place);
+const daysHere = () => spectraHere()?.days ?? [];
 const dayHere = () => daysHere()[Math.min(choice.day, daysHere().length - 1)];
 function middleHour() {
   const day = dayHere();
@@ -236,7 +237,11 @@ function draw(ids = Object.keys(CHARTS)) {
 function drawOne(figure, chart) {
   const place = figure.querySelector(".plot");
   const width = printing ? PRINT_WIDTH : Math.max(240, Math.floor(place.clientWidth || 640));
-  const { svg, legend, table, alt, points, note } = chart(width);
+  const { svg, legend, table, alt, points, note, file } = chart(width);
+  for (const part of svg.querySelectorAll("[aria-label]")) {
+    part.setAttribute("data-mark", part.getAttribute("aria-label")); // the drawing has one name; its parts have none
+    part.removeAttribute("aria-label");
+  }
   svg.setAttribute("role", "img");
   svg.setAttribute("aria-label", alt);
   const stage = element("div", { class: "stage", tabindex: 0, role: "group", "aria-label": `${alt} Arrow keys go from value to value.` }, svg);
@@ -248,6 +253,11 @@ function drawOne(figure, chart) {
   const fill = () => details.open && figure.querySelector(".numbers").replaceChildren(tableOf(table(), alt));
   details.ontoggle = fill;
   fill();
+  if (file) {
+    const link = figure.querySelector(".beside a");
+    link.textContent = file;
+    link.href = file.split("/").map(encodeURIComponent).join("/");
+  }
   figure.querySelector(".save").onclick = () => save(`${figure.id}.csv`, csvOf(table()));
 }
 

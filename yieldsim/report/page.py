@@ -87,7 +87,9 @@ def _cell(row: Mapping[str, Any] | None, reference: Mapping[str, Any]) -> dict[s
     energy, base = float(row["energy_kwh_m2"]), float(reference["energy_kwh_m2"])
     return {
         "energy": energy,
-        "difference": f"{100 * (energy / base - 1):+.1f} %".replace("-", "−") if row is not reference and base > 0 else "",
+        "difference": f"{100 * (energy / base - 1):+.1f} %".replace("-", "−")
+        if row is not reference and base > 0
+        else "",
         "rank": row["rank_by_energy"],
         "moved": row["rank_at_stc"] - row["rank_by_energy"],
     }

@@ -12,6 +12,7 @@ import pandas as pd
 import xarray as xr
 
 from yieldsim.report.answer import Place, places
+from yieldsim.study import store
 from yieldsim.study.result import STANDARD_SITE, StudyResult, edges_nm, records
 
 Tree = dict[str, Any]
@@ -205,7 +206,13 @@ def _spectra(spectra: Mapping[str, xr.Dataset], found: Sequence[Place]) -> list[
         room -= dataset.sizes["time"]
         if room < 0:
             break
-        out.append({"place": number, "days": _days(dataset, place.mounting)})
+        out.append(
+            {
+                "place": number,
+                "file": f"spectra/{store.file_stem(place.site)}.nc",
+                "days": _days(dataset, place.mounting),
+            }
+        )
     return out
 
 
