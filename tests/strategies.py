@@ -1,5 +1,6 @@
 """Hypothesis strategies, all in one place."""
 
+import numpy as np
 from hypothesis import strategies as st
 
 from yieldsim.config.crosscheck import RESERVED
@@ -9,6 +10,7 @@ from yieldsim.device.balance import radiative_current, saturation_current
 from yieldsim.device.diode import Diode
 from yieldsim.device.response import step
 from yieldsim.device.series import Link
+from yieldsim.sky.rows import Rows
 
 
 @st.composite
@@ -31,6 +33,19 @@ def diodes(draw):
         recombination_voltage=draw(st.floats(0.01, 0.1)) if recombines else 0.0,
         built_in_voltage=draw(st.floats(0.9, 1.4)) if recombines else float("inf"),
     )
+
+
+# --------------------------------------------------------------------------------------------------- rows
+
+
+@st.composite
+def row_scenes(draw):
+    """Return rows that stand free of each other and of the ground, their rotation [rad], and the sun's slope across."""
+    width = draw(st.floats(0.5, 5.0))
+    rotation = draw(st.floats(-1.5707, 1.5707))
+    height = width / 2 * abs(np.sin(rotation)) + draw(st.floats(0.05, 5.0))
+    pitch = draw(st.none() | st.floats(1.001, 8.0).map(lambda times: times * width))
+    return Rows(width, height, pitch), rotation, draw(st.floats(-30.0, 30.0))
 
 
 # ------------------------------------------------------------------------------------------------- studies

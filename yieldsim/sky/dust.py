@@ -9,6 +9,9 @@ from yieldsim import spectrum
 
 Array = NDArray[np.float64]
 
+_MIDDLE_NM = 700.0  # scales the depth that is solved for, nothing else
+_STEPS = 30
+
 
 def colour(lost: Array, exponent: float) -> Array:
     """Return by how much dust favours each band, beside the light it takes from all of them.
@@ -20,15 +23,20 @@ def colour(lost: Array, exponent: float) -> Array:
 
     Returns
     -------
-    (n, n_band) array [1]; mean 1 under the reference spectrum
+    (n, n_band) array [1]; mean 1 under the reference spectrum, so that the loss itself is counted elsewhere
 
     Notes
     -----
-    Share taken s_b = lost w_b with w_b ~ wavelength^-exponent, its mean under the reference spectrum 1; passed over the
-    mean passed: (1 - s_b)/(1 - lost), at least 0.
+    What dust lets through, exp(-t_b) with t_b ~ wavelength^-exponent, over the mean let through under the reference
+    spectrum; t is solved so that this mean is 1 - lost.
     """
     bands = spectrum.reference_bands()
-    weight = spectrum.band_wavelengths() ** -exponent
-    weight = weight * (bands.sum() / (weight @ bands))
-    share = np.asarray(lost, dtype=np.float64)[:, None]
-    return np.asarray(np.maximum(1 - share * weight, 0.0) / (1 - share))
+    weight = (spectrum.band_wavelengths() / _MIDDLE_NM) ** -exponent
+    kept = 1 - np.asarray(lost, dtype=np.float64)[:, None]
+    depth = -np.log(kept)
+    for _ in range(_STEPS):  # Newton on a convex, falling function: from below it never overshoots
+        passed = np.exp(-depth * weight)
+        mean = (passed @ bands / bands.sum())[:, None]
+        slope = ((passed * weight) @ bands / bands.sum())[:, None]
+        depth = depth + (mean - kept) / slope
+    return np.asarray(np.exp(-depth * weight) / kept)
