@@ -36,7 +36,7 @@ def test_the_library_holds_what_the_study_file_may_name():
 
 
 def test_colours():
-    """Directions: leaves throw back near infrared and little red, snow the visible and little at 1500 nm, wet soil less."""
+    """Directions: leaves throw back near infrared and little red, snow the visible and little at 1500 nm."""
     at = {nm: int(np.argmin(np.abs(spectrum.band_wavelengths() - nm))) for nm in (550, 670, 870, 1500)}
     grass, snow = ground.surface("grass"), ground.surface("fresh-snow")
     assert grass[at[870]] > 5 * grass[at[670]]

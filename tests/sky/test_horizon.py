@@ -27,10 +27,9 @@ def test_a_skyline_to_the_zenith_hides_all_sky(tilt):
 
 
 def test_a_wall_hides_what_stands_before_it():
-    """Closed form: half a ring of elevation h in front of a wall hides (h + sin h cos h)/... of its half sky: sin(h)/2."""
+    """Closed form: half a ring of elevation h in front of a wall hides (h + sin h cos h)/pi of its view."""
     south = Horizon((90.0, 90.001, 269.999, 270.0), (0.0, 30.0, 30.0, 0.0))
     facing = south.hidden_sky(np.array([[0.0, -1.0, 0.0]]))[0]
-    # F = 1/pi int cos(a) da int_0^h cos^2(e) de = (2/pi) (h + sin h cos h)/2
     h = np.radians(30.0)
     assert facing == pytest.approx((h + np.sin(h) * np.cos(h)) / np.pi, abs=1e-4)
     assert south.hidden_sky(np.array([[0.0, 1.0, 0.0]]))[0] == pytest.approx(0.0, abs=1e-4)
@@ -55,5 +54,5 @@ def test_skyline_runs_through_north():
      ((0.0,), (float("nan"),)), ((float("nan"),), (1.0,))],
 )  # fmt: skip
 def test_what_is_no_skyline_is_refused(azimuth, elevation):
-    with pytest.raises(ValueError, match="azimuth|elevation"):
+    with pytest.raises(ValueError, match=r"azimuth|elevation"):
         Horizon(azimuth, elevation)

@@ -27,8 +27,8 @@ def test_against_pvlib_tracker(course, axis, coverage, most):
     """Reference: pvlib.tracking.singleaxis (Anderson & Mikofski 2020): the same equations from angles, to 1e-6 deg."""
     zenith, azimuth = angles(course)
     theirs = tracking.singleaxis(
-        zenith.ravel(), azimuth.ravel(), axis_tilt=axis[1], axis_azimuth=axis[0], max_angle=most, backtrack=coverage > 0,
-        gcr=coverage or 1.0,
+        zenith.ravel(), azimuth.ravel(), axis_tilt=axis[1], axis_azimuth=axis[0], max_angle=most,
+        backtrack=coverage > 0, gcr=coverage or 1.0,
     )  # fmt: skip
     ours = mounting.tracking(course, *axis, most, coverage)
     up = course.up.ravel()
@@ -71,8 +71,8 @@ def test_a_tracker_meets_the_sun_more_squarely_than_any_fixed_plane(course):
 
 
 def test_a_roof_sheds_less_heat():
-    """Reference: King et al. (2004) through pvlib's table of coefficients: loss of a close roof mount over that of an open
-    rack, W m-2 K-1 from cell to air, glass on both sides; 0.63 to 0.66 from still air to 5 m/s."""
+    """Reference: King et al. (2004) through pvlib's table of coefficients: loss of a close roof mount over that of an
+    open rack, W m-2 K-1 from cell to air, glass on both sides; 0.63 to 0.66 from still air to 5 m/s."""
     table = temperature.TEMPERATURE_MODEL_PARAMETERS["sapm"]
     for wind in (0.0, 1.0, 5.0):
         rise = {

@@ -14,7 +14,7 @@ SKIES = [
 
 @pytest.mark.parametrize(("tilt", "azimuth"), [(30.0, 180.0), (60.0, 120.0), (90.0, 0.0)])
 def test_sky_on_a_plane_against_pvlib(tilt, azimuth):
-    """Reference: pvlib.irradiance.perez with the coefficients of 1990 for all sites, skies of all eight classes: the same
+    """Reference: pvlib.irradiance.perez with the coefficients of 1990 for all sites, skies of most classes: the same
     equations, so to rounding, where the sun stands higher than 5 deg and neither side stops at 0."""
     dni, dhi, zenith = np.array(SKIES).T
     extra = np.full_like(dni, 1361.0)

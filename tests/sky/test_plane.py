@@ -58,7 +58,7 @@ def test_against_pvlib_hay_davies():
 
 @pytest.mark.parametrize("low", [0.5, 0.1, 1e-4, 0.0])
 def test_light_is_neither_made_nor_lost_on_the_horizontal(low):
-    """Invariant: whatever the split, direct cos z + uniform = beam cos z + diffuse, also with the sun on the horizon."""
+    """Invariant: whatever the split, direct cos z + uniform = beam cos z + diffuse, also with the sun on the rim."""
     cosine = np.array([low])
     beam, diffuse = np.array([[0.3, 500.0]]), np.array([[40.0, 3.0]])
     light = plane.sky_light(beam, diffuse, np.array([[0.9, 0.2]]), cosine)

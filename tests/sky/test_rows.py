@@ -61,7 +61,7 @@ class TestGroundPattern:
     @pytest.mark.parametrize("tilt", [0.0, 20.0, 45.0, 90.0])
     @pytest.mark.parametrize("field", [FIELD, Rows(2.0, 1.2, 2.6), Rows(3.0, 4.0, 12.0)])
     def test_whole_ground_is_the_closed_form(self, tilt, field):
-        """Closed form: what the cells add up to is the crossed-strings view of ground; 1e-3 for rows beyond the last."""
+        """Closed form: the cells add up to the crossed-strings view of ground; 1e-3 for rows beyond the last."""
         pattern = rows.ground_pattern(field, (float(np.radians(tilt)),))
         cosine = np.cos(np.radians(tilt))
         for face, side in ((0, 1), (1, -1)):
@@ -121,8 +121,8 @@ def _crosses(start, ray, reach, field, tilt, k):
     ("tilt", "slope"), [(30.0, 0.8), (30.0, -0.6), (-50.0, 2.5), (90.0, 1.0), (5.0, 0.0), (20.0, 7.0)]
 )
 def test_shaded_ground_against_rays(side, tilt, slope):
-    """Independent: 3000 rays from the row to the ground, each asking whether its ground is in the sun. The scatter of as
-    many rays is 0.009 (one standard deviation at a share of one half), so 0.025."""
+    """Independent: 3000 rays from the row to the ground, each asking whether its ground is in the sun. The scatter of
+    as many rays is 0.009 (one standard deviation at a share of one half), so 0.025."""
     angle = np.radians(tilt)
     lost, whole = cast(FIELD, angle, slope, side)
     face = 0 if side == 1 else 1

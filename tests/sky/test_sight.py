@@ -56,7 +56,9 @@ def test_close_rows_over_white_ground_take_almost_all(course):
     """Limit: level rows that touch each other receive what falls on the ground, and their rears nothing."""
     touching = Rows(2.0, 1.0, 2.0)
     front, rear = (
-        plane.on_plane(light(course), sight.of_face(face, mounting.fixed(0.0, 180.0), course, touching), np.ones(len(course.lit)))
+        plane.on_plane(
+            light(course), sight.of_face(face, mounting.fixed(0.0, 180.0), course, touching), np.ones(len(course.lit))
+        )
         for face in (sight.FRONT, sight.REAR)
     )  # fmt: skip
     np.testing.assert_allclose(front.total(), 500.0 * course.cos_zenith + 150.0, rtol=1e-9)
@@ -66,8 +68,8 @@ def test_close_rows_over_white_ground_take_almost_all(course):
 @pytest.mark.parametrize("tilt", [10.0, 35.0, 90.0])
 @pytest.mark.parametrize("face", [sight.FRONT, sight.REAR])
 def test_high_rows_against_pvlib_infinite_sheds(face, tilt):
-    """Reference: pvlib.bifacial.infinite_sheds on a uniform sky, which spreads the ground's light evenly over the pitch:
-    the limit of rows far above it. 12 m above rows 2 m wide: each part within 0.1 % of the light on the horizontal for
+    """Reference: pvlib.bifacial.infinite_sheds on a uniform sky, which spreads the ground's light evenly over the
+    pitch: the limit of rows far above it. 12 m above rows 2 m wide: each part within 0.1 % of the light on the horizontal for
     sky and beam (the same equations), and 1 % for ground."""
     whole = sun.course(DAYS.astype(np.int64), 60, 52.0, 5.0)
     course = whole.only(whole.direction[:, 0, 2] > 0.1)

@@ -76,7 +76,7 @@ def sky_view(cos_rotation: Array, coverage: float) -> Array:
     """
     cosine = np.asarray(cos_rotation, dtype=np.float64)
     span = np.sqrt(np.maximum(1 - 2 * coverage * cosine + coverage**2, 0.0))
-    return np.asarray((1 + (2 * cosine - coverage) / (1 + span)) / 2)
+    return np.asarray(np.clip((1 + (2 * cosine - coverage) / (1 + span)) / 2, 0.0, 1.0))
 
 
 def shaded_cosine(cos_incidence: Array, cos_above: Array, coverage: float) -> Array:
