@@ -51,6 +51,14 @@ def test_rows_without_a_value_are_left_out_and_counted():
     assert table.skipped == 3
 
 
+def test_further_columns_are_taken_where_they_are():
+    text = "nm,alpha,n,by\n300,1,3.5,me\n310,2,3.4,you\n"
+    assert parse_table(text, "t").values.shape == (2, 2)
+    assert parse_table(text, "t", extra=1).values.shape == (2, 3)
+    assert parse_table(text, "t", extra=2).values.shape == (2, 3)  # `me` is no number
+    assert parse_table("1,2\n3,4", "t", extra=1).values.shape == (2, 2)
+
+
 def test_a_number_beyond_all_bounds_is_no_number():
     with pytest.raises(InputError, match="'1e999'"):
         parse_table("1,2\n3,1e999\n4,5", "t")

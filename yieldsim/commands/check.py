@@ -71,6 +71,7 @@ def intent(plan: StudyPlan) -> str:
         _line("absorber", f"{plain(absorber.name)}: {'/'.join(f'{gap:.4g}' for gap in absorber.gaps_ev)} eV")
         for absorber in plan.absorbers
     ]
+    lines += [_line("found", f"{plain(name)}: {plain(finding)}") for name, finding in plan.findings]
     if plan.gap_sweep is not None:
         gaps, qualities = plan.gap_sweep.gaps_ev, ", ".join(plain(name) for name in plan.gap_sweep.absorbers)
         lines.append(_line("gaps", f"{len(gaps)} from {gaps[0]:g} to {gaps[-1]:g} eV; quality: {qualities}"))

@@ -103,9 +103,8 @@ def differences(plan: StudyPlan, before: Row) -> list[str]:
             now[name] = "not installed"
     found += [f"{name} {now[name]}, then {plain(str(was[name]))}" for name in now if now[name] != was[name]]
     inputs = dict(before.get("inputs") or {})
-    for file in (file for site in plan.sites for file in site.weather):
-        if inputs.get(file.shown) != file.sha256:
-            found.append(f"content of {plain(file.shown)}")
+    now_read = {file.shown: file.sha256 for site in plan.sites for file in site.weather} | dict(plan.inputs)
+    found += [f"content of {plain(shown)}" for shown, digest in now_read.items() if inputs.get(shown) != digest]
     if dict(plan.resolved) != before.get("config"):
         found.append("the study as it resolves, for instance by another library of absorbers")
     return found

@@ -48,8 +48,9 @@ class Builder:
         """Return the plan of a valid study; raises InputError with everything that could not be built."""
         shared = _mountings(study.mounting)
         sites = [self._site(site, shared, ("sites", i)) for i, site in enumerate(study.sites)]
+        maker = absorbers.Maker(self.folder)
         built = [
-            self._attempt(("absorbers", i), lambda each=each: absorbers.absorber_of(each))  # type: ignore[misc]
+            self._attempt(("absorbers", i), lambda each=each: maker.absorber(each))  # type: ignore[misc]
             for i, each in enumerate(study.absorbers)
         ]
         sweep = None
@@ -68,15 +69,19 @@ class Builder:
             keep=frozenset(study.keep),
             resolved={},
             folder=str(self.folder),
+            inputs=maker.inputs,
+            findings=tuple(maker.findings),
         )
         return replace(plan, resolved=resolved(study, plan))
 
     def _attempt(self, path: KeyPath, make: Callable[[], Made]) -> Made | None:
         try:
             return make()
+        except InputError as error:  # a file it names
+            self.problems.extend(error.problems)
         except ValueError as error:
             self.problems.append(self.document.problem(path, str(error), ""))
-            return None
+        return None
 
     def _site(self, site: site_schema.Site, shared: Mountings, path: KeyPath) -> SitePlan:
         files = site.weather if isinstance(site.weather, list) else [site.weather]

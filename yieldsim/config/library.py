@@ -23,7 +23,8 @@ SUFFIX = ".yaml"
 #: Numbers of a junction and of a module that a study or an entry may give; the names of their records' fields.
 JUNCTION_NUMBERS = (
     "gap_ev", "external_radiative_efficiency", "ideality", "series_resistance_ohm_cm2", "shunt_resistance_ohm_cm2",
-    "recombination_v", "built_in_v", "gap_shift_ev_per_k", "reflection", "parasitic", "transmits",
+    "recombination_v", "built_in_v", "gap_shift_ev_per_k", "nonradiative_drift_per_k",
+    "reflection", "parasitic", "transmits",
 )  # fmt: skip
 MODULE_NUMBERS = ("bifaciality", "incidence_modifier", "area_fraction")
 
@@ -64,6 +65,7 @@ class _Junction(Section):
     series_resistance_ohm_cm2: Sourced | None = None
     shunt_resistance_ohm_cm2: Sourced | None = None
     gap_shift_ev_per_k: Sourced | None = None
+    nonradiative_drift_per_k: Sourced | None = None
     recombination_v: Sourced | None = None
     built_in_v: Sourced | None = None
     reflection: Sourced | None = None

@@ -20,8 +20,7 @@ MAX_ABSORBERS = 100
 
 #: Keys that a later version will take: named in the message, so that nobody looks for a slip of typing.
 NOT_YET = (
-    "gap_pairs", "chance", "portfolio", "worth", "eqe", "response", "datasheet", "material",
-    "climate", "horizon", "table", "grid",
+    "gap_pairs", "chance", "portfolio", "worth", "climate", "horizon", "table", "grid",
 )  # fmt: skip
 
 # The study's name is a folder: what every file system can hold, and nothing that leads elsewhere.

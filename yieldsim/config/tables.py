@@ -54,7 +54,7 @@ class NumberTable:
         return Problem(self.shown, int(self.rows[row]), where, found, allowed)
 
 
-def read_table(path: Path, shown: str, columns: int = 2, least: int = 2) -> NumberTable:
+def read_table(path: Path, shown: str, columns: int = 2, least: int = 2, extra: int = 0) -> NumberTable:
     """Return the first columns of a table of numbers.
 
     Parameters
@@ -63,16 +63,17 @@ def read_table(path: Path, shown: str, columns: int = 2, least: int = 2) -> Numb
     shown : str, what messages call the file
     columns : int, how many columns are wanted; further ones are passed over
     least : int, fewest rows
+    extra : int, how many more are taken where the first row of numbers has them
 
     Raises
     ------
     InputError
         For a file that cannot be read, that holds no table, too few or too many rows, or text among its numbers.
     """
-    return parse_table(read_text(path, shown, MAX_BYTES, lenient=True), shown, columns, least)
+    return parse_table(read_text(path, shown, MAX_BYTES, lenient=True), shown, columns, least, extra)
 
 
-def parse_table(text: str, shown: str, columns: int = 2, least: int = 2) -> NumberTable:
+def parse_table(text: str, shown: str, columns: int = 2, least: int = 2, extra: int = 0) -> NumberTable:
     """Return the first columns of a table of numbers in a text; see `read_table`."""
     lines = [
         (number, line.strip())
@@ -86,6 +87,8 @@ def parse_table(text: str, shown: str, columns: int = 2, least: int = 2) -> Numb
         first = lines[0][0] if lines else 0
         allowed = f"a table of {columns} columns of numbers, with at most {MAX_HEAD} lines of text before them"
         raise InputError(Problem(shown, first, "", "no row of numbers" if lines else "nothing", allowed))
+    first_cells = split(lines[start][1])[columns : columns + extra]
+    columns += next((i for i, cell in enumerate(first_cells) if not _is_number(cell)), len(first_cells))
     values, rows, problems = _numbers(lines[start:], split, shown, columns)
     whole = [all(math.isfinite(cell) for cell in row) for row in values]
     if not problems and sum(whole) < least:

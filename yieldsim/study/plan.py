@@ -157,6 +157,8 @@ class StudyPlan:
     keep : parts of the result to write: ``annual monthly hourly spectra plots``
     resolved : the study as resolved (every default filled in), JSON-able, for ``run.json``
     folder : str, absolute path its relative paths start from; for ``run.json``
+    inputs : file as the study names it -> SHA-256, of the files that absorbers are made from
+    findings : (absorber, plain words), what was found and done while they were made
     """
 
     name: str
@@ -168,3 +170,5 @@ class StudyPlan:
     keep: frozenset[str]
     resolved: Mapping[str, Any]
     folder: str = ""
+    inputs: Mapping[str, str] = field(default_factory=dict)
+    findings: tuple[tuple[str, str], ...] = ()
