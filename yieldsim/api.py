@@ -121,6 +121,7 @@ def run_study(
         gap_sweep=pd.DataFrame(swept) if swept else None,
         weather_quality=pd.DataFrame(run.rows(pieces, "weather_quality")),
         standard=standard,
+        ledger=pd.DataFrame(run.rows(pieces, "ledger")).fillna(0.0),
         responses=responses_table(plan.absorbers),
         by_hour=pd.concat(by_hour, ignore_index=True) if by_hour else None,
         spectra=store.open_spectra(folder, [site.name for site in plan.sites]),

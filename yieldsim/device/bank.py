@@ -242,11 +242,13 @@ class Bank:
             emits = absorber.coupling > 0 and i < len(absorber.junctions) - 1
             emission: Array | float = 0.0
             if emits:
-                emission = absorber.coupling * self._radiative(j, diode_of_hour.saturation_current, temperature[a])
+                emission = absorber.coupling * self.radiative_saturation(
+                    j, diode_of_hour.saturation_current, temperature[a]
+                )
             links.append(series.Link(diode_of_hour, emission, thermal))
         return links
 
-    def _radiative(self, j: int, saturation: Array, temperature: Array) -> Array:
+    def radiative_saturation(self, j: int, saturation: Array, temperature: Array) -> Array:
         """Return the radiative saturation current that belongs to a junction's saturation current [A m-2]."""
         junction, collected = self.junctions[j], self.collected_alone[j]
         reduced = (saturation / collected) ** junction.ideality

@@ -10,9 +10,10 @@ from numpy.typing import NDArray
 from yieldsim.constants import STANDARD_IRRADIANCE
 from yieldsim.device.stack import Absorber
 from yieldsim.study.annual import Factors, Ratings, Sums, factors
+from yieldsim.study.plan import Row
 
 Array = NDArray[np.float64]
-Row = dict[str, str | int | float]
+
 
 MEASURES = (
     "hours",

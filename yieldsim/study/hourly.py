@@ -11,12 +11,14 @@ from numpy.typing import NDArray
 
 from yieldsim import spectrum
 from yieldsim.constants import STANDARD_CELL_TEMPERATURE
+from yieldsim.device import account
 from yieldsim.device.bank import Bank
 from yieldsim.device.stack import Absorber
 from yieldsim.device.thermal import faiman
 from yieldsim.sky import atmosphere, closing, column, ground, plane, sun
 from yieldsim.sky.horizon import Horizon
 from yieldsim.sky.mounting import ROOF_HEAT_LOSS
+from yieldsim.study.ledger import LightPaid
 from yieldsim.study.light import rear_parts
 from yieldsim.study.plan import AtmospherePlan, GroundPlan, Monthly, MountingPlan, SitePlan
 from yieldsim.units import kelvin
@@ -72,6 +74,8 @@ class PlaneYear:
     power_cool : (n_junction, n) array [W m-2], each junction at its own power point, 25 degC
     power_warm : (n_junction, n) array [W m-2], the same at the cell temperature
     power : (n_absorber, n) array [W m-2], at the terminals
+    incident : (n_absorber,) array [W m-2], sum of front and bifaciality times rear light, before the glass
+    front_bands, rear_bands : (n_absorber, n_band) arrays [W m-2], sums behind the glass; rear times bifaciality
     """
 
     mounting: MountingPlan
@@ -83,6 +87,9 @@ class PlaneYear:
     power_cool: Array
     power_warm: Array
     power: Array
+    incident: Array
+    front_bands: Array
+    rear_bands: Array
 
 
 def placed(site: SitePlan, weather: Weather) -> Weather:
@@ -332,10 +339,42 @@ class _Faces:
         rear = None if self.rear is None else plane.entered(self.rear, self.site.sun, modifier)
         return front if self.dust is None else front * self.dust, rear
 
+    def rear_sum(self) -> float:
+        """Return the light on the rear before its glass, summed over the intervals [W m-2]."""
+        return 0.0 if self.rear is None else float(self.rear.total().sum())
+
     def temperatures(self, mounting: MountingPlan, absorbers: Sequence[Absorber]) -> Array:
         """Return cell temperatures (n_absorber, n) [K]."""
         rear = None if self.rear is None else self.rear.total()
         return cell_temperatures(self.site, mounting, self.front.total(), rear, absorbers)
+
+
+def light_paid(year: PlaneYear, absorbers: Sequence[Absorber], month: NDArray[np.intp]) -> LightPaid:
+    """Return what a year's collected photons gave up on the way to the terminals; see `ledger.ledger_rows`."""
+    offsets = np.concatenate([[0], np.cumsum([len(absorber.junctions) for absorber in absorbers])])
+    gap = np.array([junction.gap_ev for absorber in absorbers for junction in absorber.junctions])
+    spent = np.empty((3, offsets[-1]))
+    for _, members in by_front(absorbers):
+        junctions = np.concatenate([np.arange(offsets[i], offsets[i + 1]) for i in members])
+        current = year.current[junctions]
+        bank = bank_of(tuple(absorbers[i] for i in members))
+        found = account.voltages(bank, current, year.cell_temperature[members])
+        spent[:, junctions] = (
+            (current * found.radiative).sum(axis=1),
+            (current * found.actual).sum(axis=1),
+            found.bare_power.sum(axis=1),
+        )
+    return LightPaid(
+        incident=year.incident,
+        front=year.front_bands,
+        rear=year.rear_bands,
+        gap_power=year.current.sum(axis=1) * gap,
+        radiative_power=spent[0],
+        actual_power=spent[1],
+        bare_power=spent[2],
+        own_power=year.power_warm.sum(axis=1),
+        terminals=year.power @ (month[:, None] == np.arange(12)),
+    )
 
 
 def terminal_powers(
@@ -384,15 +423,20 @@ def plane_year(
     entered, power = np.empty((n_absorber, n)), np.empty((n_absorber, n))
     current, cool, warm = (np.empty((offsets[-1], n)) for _ in range(3))
     standard = np.full(n, STANDARD_CELL_TEMPERATURE)
+    front_bands, rear_bands = np.zeros((2, n_absorber, parts.beam.shape[1]))
     for glass, members in by_front(absorbers):
         junctions = np.concatenate([np.arange(offsets[i], offsets[i + 1]) for i in members])
         bank = bank_of(tuple(absorbers[i] for i in members))
         front, rear = faces.entered(glass)
         gain = np.array([absorbers[i].bifaciality for i in members])[:, None]
         entered[members] = front.sum(axis=1) if rear is None else front.sum(axis=1) + gain * rear.sum(axis=1)
+        front_bands[members] = front.sum(axis=0)
+        rear_bands[members] = 0.0 if rear is None else gain * rear.sum(axis=0)
         current[junctions] = bank.currents(front, temperature[members], rear)
         cool[junctions] = bank.power(current[junctions], standard)
         warm[junctions] = bank.power(current[junctions], temperature[members])
         alone = len(junctions) == len(members)
         power[members] = warm[junctions] if alone else bank.terminal_power(current[junctions], temperature[members])
-    return PlaneYear(mounting, parts, plane_of_array, entered, current, temperature, cool, warm, power)
+    incident = plane_of_array.sum() + np.array([a.bifaciality for a in absorbers]) * faces.rear_sum()
+    light = (incident, front_bands, rear_bands)
+    return PlaneYear(mounting, parts, plane_of_array, entered, current, temperature, cool, warm, power, *light)

@@ -12,10 +12,12 @@ import numpy as np
 import yieldsim
 from yieldsim.study import annual, compare, datasets, light, store, sweep
 from yieldsim.study.annual import Ratings
-from yieldsim.study.compare import Row
-from yieldsim.study.hourly import SiteSky, local_month_and_day, plane_year, site_sky
-from yieldsim.study.plan import SitePlan, StudyPlan
+from yieldsim.study.hourly import SiteSky, light_paid, local_month_and_day, plane_year, site_sky
+from yieldsim.study.ledger import ledger_rows
+from yieldsim.study.plan import Row, SitePlan, StudyPlan
 from yieldsim.weather import Weather
+
+_NAMES = ("site", "mounting", "absorber")
 
 
 def key(plan: StudyPlan, site: SitePlan) -> str:
@@ -41,11 +43,11 @@ def compute(plan: StudyPlan, site: SitePlan, years: Sequence[Weather], folder: P
     """
     skies = [site_sky(site, weather) for weather in years]
     ratings = Ratings.of(plan.absorbers)
-    piece: dict[str, Any] = {name: [] for name in ("annual", "yearly", "monthly", "gap_sweep")}
+    piece: dict[str, Any] = {name: [] for name in ("annual", "yearly", "monthly", "gap_sweep", "ledger")}
     piece["weather_quality"] = [row for sky in skies for row in quality_rows(site.name, sky)]
     first_year: list[Any] = []
     for mounting in site.mountings:
-        totals, swept = [], []
+        totals, swept, ledgers = [], [], []
         for sky in skies:
             parts = light.plane_parts(sky, mounting)
             losses, dust = light.with_snow(plan.losses, sky, mounting, parts), light.dust_colour(sky, plan.losses)
@@ -54,6 +56,8 @@ def compute(plan: StudyPlan, site: SitePlan, years: Sequence[Weather], folder: P
                 swept.append(sweep.sweep_rows(site.name, sky, mounting, parts, plan.gap_sweep, losses, dust))
             total = annual.sums(year, sky.month, monthly_hours(sky), sky.weather.interval_s, losses)
             totals.append(total)
+            paid = light_paid(year, plan.absorbers, sky.month)
+            ledgers.append(ledger_rows(site.name, mounting.name, plan.absorbers, paid, losses, sky.weather.interval_s))
             if sky is skies[0]:
                 first_year.append(year)
             if len(skies) > 1:
@@ -63,15 +67,15 @@ def compute(plan: StudyPlan, site: SitePlan, years: Sequence[Weather], folder: P
         total = annual.mean(totals)
         piece["annual"] += compare.annual_rows(site.name, mounting.name, plan.absorbers, ratings, total)
         piece["monthly"] += compare.monthly_rows(site.name, mounting.name, plan.absorbers, ratings, total)
-        piece["gap_sweep"] += _mean_rows(swept)
+        piece["gap_sweep"] += _mean_rows(swept, ("poa_kwh_m2", "energy_kwh_m2"))
+        piece["ledger"] += _mean_rows(ledgers, [name for name in ledgers[0][0] if name not in _NAMES])
     files = _write_datasets(plan, site, skies[0], first_year, folder)
     store.write_piece(folder, store.file_stem(site.name), key(plan, site), piece, files)
     return piece
 
 
-def _mean_rows(by_year: Sequence[list[Row]]) -> list[Row]:
-    """Return the sweep's rows, insolation and energies averaged over the years."""
-    measures = ("poa_kwh_m2", "energy_kwh_m2")
+def _mean_rows(by_year: Sequence[list[Row]], measures: Sequence[str]) -> list[Row]:
+    """Return the rows of the first year, the measures averaged over the years."""
     return [
         {**rows[0], **{measure: float(np.mean([row[measure] for row in rows])) for measure in measures}}
         for rows in zip(*by_year, strict=True)

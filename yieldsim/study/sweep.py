@@ -11,9 +11,8 @@ from yieldsim.device.stack import Absorber
 from yieldsim.sky.plane import PlaneParts
 from yieldsim.study import annual
 from yieldsim.study.annual import Ratings
-from yieldsim.study.compare import Row
 from yieldsim.study.hourly import SiteSky, terminal_powers
-from yieldsim.study.plan import GapSweepPlan, LossesPlan, MountingPlan
+from yieldsim.study.plan import GapSweepPlan, LossesPlan, MountingPlan, Row
 
 STANDARD_SITE = "standard spectrum"
 STANDARD_LIGHT_KWH_M2 = 1000.0  # insolation of the rows for the standard spectrum: their energy is per 1000 kWh/m2
