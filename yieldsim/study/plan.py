@@ -9,6 +9,7 @@ from typing import Any, Literal
 from yieldsim.device.stack import Absorber
 from yieldsim.sky.horizon import Horizon
 
+Row = dict[str, str | int | float]  # one line of a result's table
 Monthly = tuple[float, ...]  # 12 values, January first
 
 
