@@ -1,5 +1,7 @@
 """`yieldsim check`: what would be computed, from which data, and whether the weather is fit."""
 
+from pathlib import Path
+
 import pytest
 
 from yieldsim.cli import main
@@ -36,6 +38,11 @@ def checked(tmp_path, capsys, monkeypatch):
 def test_a_real_station(checked):
     code, out, err = checked(STATION)
     assert (code, err) == (0, "")
+    assert "outputs/look/weather_quality.csv" in out
+    table = Path("outputs/look/weather_quality.csv").read_text(encoding="utf-8")
+    assert table.startswith("site,kind,rows,first,last,found,done\n")
+    assert "Greensboro,night_light,1," in table
+    assert "Greensboro,source:aod500," in table
     for said in (
         "look: 1 site, 1 plane in all, 2 absorbers, set against silicon",
         "12 from 0.9 to 2 eV; quality: ideal, realistic",

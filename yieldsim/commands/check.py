@@ -32,10 +32,15 @@ def run(options: argparse.Namespace) -> int:
     """Check the study and every weather file; print a verdict per site."""
     from yieldsim import api
     from yieldsim.errors import InputError
+    from yieldsim.report.quality import write_quality
+    from yieldsim.study.piece import quality_rows
+    from yieldsim.study.store import file_stem
 
     plan = api.load_study(options.study)
+    out = options.out if options.out is not None else Path("outputs", file_stem(plan.name))
     print(intent(plan))
     problems: list[Problem] = []
+    rows: list[dict[str, Any]] = []
     progress = Progress()
     for i, site in enumerate(plan.sites):
         progress(site.name, i, len(plan.sites))
@@ -47,7 +52,10 @@ def run(options: argparse.Namespace) -> int:
             print(f"\n{bold(plain(site.name))}: not usable")
             continue
         progress.close()
+        rows += [row for sky in skies for row in quality_rows(site.name, sky)]
         print(f"\n{describe(site, skies)}")
+    if rows:
+        print(f"\nWhat was found: {write_quality(rows, out)}")
     if problems:
         raise InputError(problems)
     return 0
