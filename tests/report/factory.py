@@ -193,7 +193,7 @@ def _spectra(mountings: Sequence[str], site: int) -> xr.Dataset:
             kinds.append(kind)
             depth.append(cloud)
     sun = np.array(heights)
-    clear = np.exp(-np.array(depth) / 8)
+    clear = np.exp(-np.array(depth) / 2)
     redder = np.exp(-0.15 / np.maximum(sun, 0.05)[:, None] * (550 / centre) ** 2)
     beam = bands * redder * clear[:, None] * 0.9
     diffuse = bands * (450 / centre) ** 1.5 * sun[:, None] * (0.2 + 0.3 * (1 - clear[:, None]))

@@ -9,7 +9,7 @@ from yieldsim.report import answer as answers
 def _annual(rows):
     """Return an annual table from (site, absorber, energy, rank at standard conditions)."""
     table = pd.DataFrame(rows, columns=["site", "absorber", "energy_kwh_m2", "rank_at_stc"])
-    return table.assign(mounting="fixed")
+    return table.assign(mounting="fixed", specific_yield_kwh_kwp=[1000.0 + energy for energy in table["energy_kwh_m2"]])
 
 
 TWO_PLACES = [
@@ -46,6 +46,24 @@ def test_the_sentences_say_who_wins_where_by_how_much_and_where_the_datasheet_or
     assert "every lead named here is larger" in said.certainty
     assert "1 of 2 places (Wet)" in said.ranking
     assert "blue (datasheet rank 2) comes out 5.0 % ahead of red (datasheet rank 1) at Wet" in said.ranking
+
+
+def test_the_span_of_yields_per_rated_power_is_told_against_the_reference(study):
+    # made-up yields are 1000 and the energy: at Dry 1290/1300 and 1250/1300, at Wet 1210/1200 and 1150/1200
+    said = _answer(
+        study, TWO_PLACES, resolved={"reference": "red"}, standard=pd.DataFrame({"absorber": ["red", "blue"]})
+    )
+    assert "against red lies between −4.2 % (green at Wet) and +0.8 % (blue at Wet)" in said.ranking
+
+
+@pytest.mark.parametrize("entry", [{"quality": "ideal"}, {"stack": [{"quality": "ideal"}, {"quality": "ideal"}]}])
+def test_an_ideal_absorber_is_no_choice(study, entry):
+    resolved = {"absorbers": [{"name": "red", **entry}, {"name": "blue"}, {"name": "green", "stack": [{"like": "x"}]}]}
+    said = _answer(study, TWO_PLACES, resolved=resolved)
+    assert "blue yields the most at every one" in said.winner
+    assert said.winner.endswith("Left out as ideal, which no device is: red.")
+    alone = _answer(study, TWO_PLACES, resolved={"absorbers": [{"name": name, **entry} for name in ("red", "blue")]})
+    assert "red at Dry" in alone.winner
 
 
 def test_one_winner_everywhere_is_said_with_the_span_of_its_lead(study):

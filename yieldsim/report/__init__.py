@@ -53,11 +53,11 @@ def rebuild(folder: str | Path) -> list[Path]:
 
 def _pictures_and_page(result: StudyResult, folder: Path, plots: bool) -> list[Path]:
     # Late imports: who only writes tables need not wait for the plotting library.
-    from yieldsim.report import page
+    from yieldsim.report.page import write_page
 
     files = []
     if plots:
-        from yieldsim.report import plots as pictures
+        from yieldsim.report.plots import write_plots
 
-        files += pictures.write_plots(result, folder / "plots")
-    return [*files, page.write_page(result, folder)]
+        files += write_plots(result, folder / "plots")
+    return [*files, write_page(result, folder)]

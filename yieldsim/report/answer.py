@@ -8,7 +8,7 @@ from typing import Any
 
 import pandas as pd
 
-from yieldsim.study.result import StudyResult, records
+from yieldsim.study.result import StudyResult, ideal_names, records
 
 #: Two absorbers closer than this are not told apart without a chance calculation: the residue of clear and cloudy
 #: spectra against independent radiative transfer is 0.3-1.6 % (see the method's list of checks).
@@ -83,9 +83,44 @@ def places(annual: pd.DataFrame) -> list[Place]:
 
 
 def answer(result: StudyResult) -> Answer:
-    """Return the three sentences of a study."""
-    all_places = places(result.annual)
-    return Answer(_winner(all_places), _certainty(all_places, result.head_to_head), _ranking(all_places))
+    """Return the three sentences of a study.
+
+    Absorbers of ideal quality are left out where two others remain: a limit no device reaches is no choice.
+    """
+    named = set(result.annual["absorber"])
+    ideal = [name for name in ideal_names(result.resolved) if name in named]
+    if len(named) - len(ideal) < 2:
+        ideal = []
+    all_places = places(result.annual[~result.annual["absorber"].isin(ideal)])
+    left_out = f" Left out as ideal, which no device is: {listed(ideal)}." if ideal else ""
+    return Answer(
+        _winner(all_places) + left_out,
+        _certainty(all_places, result.head_to_head),
+        _ranking(all_places) + _moved(all_places, result.reference),
+    )
+
+
+def _moved(all_places: Sequence[Place], reference: str) -> str:
+    """Return by how much places move absorbers from what their rating promises against the reference."""
+    found = []
+    for place in all_places:
+        yields = {str(row["absorber"]): float(row["specific_yield_kwh_kwp"]) for row in place.rows}
+        base = yields.pop(reference, 0.0)
+        found += [(value / base - 1, name, place.name) for name, value in yields.items() if base > 0]
+    if not found:
+        return ""
+    low, high = min(found), max(found)
+    if low == high:
+        return f" Per rated power, {low[1]} yields {signed(low[0])} against {reference}."
+    return (
+        f" Per rated power, the yield against {reference} lies between {signed(low[0])} ({low[1]} at {low[2]}) "
+        f"and {signed(high[0])} ({high[1]} at {high[2]})."
+    )
+
+
+def signed(share: float) -> str:
+    """Return a share as a percentage with its sign and one digit."""
+    return f"{round(100 * share, 1) + 0.0:+.1f} %".replace("-", "−")
 
 
 def percent(share: float) -> str:

@@ -53,7 +53,8 @@ function overview(width) {
   // By datasheet every rated kilowatt yields the same.
   const rated = (a) => (choice.basis === "energy_kwh_m2" ? study.absorbers[a].stc_efficiency : 1);
   const promise = study.absorbers.map((_, a) => 100 * (rated(a) / rated(base) - 1));
-  const order = names().map((_, i) => i).sort((a, b) => promise[b] - promise[a]);
+  const mean = study.absorbers.map((_, a) => d3.mean(study.places, (_, p) => energy[p][a] / energy[p][base]));
+  const order = names().map((_, i) => i).sort((a, b) => promise[b] - promise[a] || mean[b] - mean[a]);
   const axis = nameAxis(names(), width);
   const data = study.places.flatMap((place, p) =>
     order.map((a) => ({ p, a, x: 100 * (energy[p][a] / energy[p][base] - 1), place: place.name })).filter((d) => Number.isFinite(d.x)),

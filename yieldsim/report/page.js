@@ -12,7 +12,7 @@ const choice = {
   taker: study.reference,
   quality: 0,
   relative: "no",
-  basis: "energy_kwh_m2",
+  basis: "specific_yield_kwh_kwp",
   chance: 0,
 };
 
@@ -167,7 +167,7 @@ const chanceMeasures = () => [...new Set((study.chance ?? []).map((row) => row.m
 /** Fill the controls that belong to single charts. */
 function controls() {
   const parts = {
-    overview: () => [select("Compared by", "basis", ["energy_kwh_m2", "specific_yield_kwh_kwp"].map((key) => [key, study.measures[key].name]), ["overview"])],
+    overview: () => [select("Compared by", "basis", ["specific_yield_kwh_kwp", "energy_kwh_m2"].map((key) => [key, study.measures[key].name]), ["overview"])],
     monthly: () => [select("Measure", "measure", Object.entries(study.measures).map(([key, m]) => [key, m.name]), ["monthly"])],
     hours: () => (others().length < 1 ? [] : [select("Absorber", "versus", others(), ["hours"])]),
     spectrum: spectrumControls,

@@ -192,10 +192,11 @@ def _gap_curve(axes: Axes, curve: pd.DataFrame, name: str, look: Mark) -> tuple[
 
 
 def spectra(result: StudyResult) -> Figure | None:
-    """Draw the first site's spectra at clear noon, low sun and under an overcast, with the absorbers' edges."""
+    """Draw a site's spectra at clear noon, low sun and under an overcast, with the absorbers' edges."""
     if not result.spectra:
         return None
-    site, dataset = next(iter(result.spectra.items()))
+    # The first site that has all three hours; else the one that has most.
+    site, dataset = max(result.spectra.items(), key=lambda item: len(typical_moments(item[1])))
     names = [shorten(name, 32) for name in result.standard["absorber"]]
     figure, (axes,) = panels(1, 1, (8.6, 3.6), (0.75, 0.6, 0.55, 0.2 + 0.8 * text_width(names)))
     edges = np.append(dataset["band_edges"].values[:, 0], dataset["band_edges"].values[-1, 1])
@@ -236,7 +237,9 @@ def typical_moments(dataset: xr.Dataset) -> list[tuple[str, int]]:
     height = 90 - dataset["zenith"].values
     light = dataset["plane_of_array"].values[0].sum(axis=-1)
     clear = (cloud < 0.5) & (light > 20)
-    dull = (cloud > 3) & (height > 15)
+    # Cloud depth is that of the obscured part of an hour: an overcast also sends no beam.
+    beam = dataset["dni"].values * np.cos(np.radians(dataset["zenith"].values))
+    dull = (cloud > 3) & (height > 15) & (beam < 0.02 * dataset["ghi"].values)
     found: list[tuple[str, int]] = []
     if clear.any():
         noon = int(np.argmax(np.where(clear, light, -1.0)))

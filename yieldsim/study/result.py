@@ -107,6 +107,17 @@ class StudyResult:
         return str(named) if named in names else names[0]
 
 
+def ideal_names(resolved: Mapping[str, Any]) -> tuple[str, ...]:
+    """Return the absorbers of a resolved study that stand for a limit no device reaches: ``quality: ideal``."""
+    entries = [entry for entry in resolved.get("absorbers") or () if isinstance(entry, Mapping)]
+    return tuple(str(entry.get("name")) for entry in entries if _is_ideal(entry))
+
+
+def _is_ideal(entry: Mapping[str, Any]) -> bool:
+    stack = [part for part in entry.get("stack") or () if isinstance(part, Mapping)]
+    return all(_is_ideal(part) for part in stack) if stack else entry.get("quality") == "ideal"
+
+
 def records(table: pd.DataFrame) -> list[dict[str, Any]]:
     """Return the rows of a table, each as column -> cell."""
     return [dict(zip(map(str, table.columns), row, strict=True)) for row in table.itertuples(index=False, name=None)]
