@@ -69,8 +69,8 @@ def test_close_rows_over_white_ground_take_almost_all(course):
 @pytest.mark.parametrize("face", [sight.FRONT, sight.REAR])
 def test_high_rows_against_pvlib_infinite_sheds(face, tilt):
     """Reference: pvlib.bifacial.infinite_sheds on a uniform sky, which spreads the ground's light evenly over the
-    pitch: the limit of rows far above it. 12 m above rows 2 m wide: each part within 0.1 % of the light on the horizontal for
-    sky and beam (the same equations), and 1 % for ground."""
+    pitch: the limit of rows far above it. 12 m above rows 2 m wide: sky and beam within 0.1 % of the light on the
+    horizontal (the same equations), ground within 1 % of what the ground throws back."""
     whole = sun.course(DAYS.astype(np.int64), 60, 52.0, 5.0)
     course = whole.only(whole.direction[:, 0, 2] > 0.1)
     high = Rows(2.0, 12.0, 5.0)

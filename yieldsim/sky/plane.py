@@ -92,9 +92,10 @@ def sky_light(
     Solar Radiation Data Workshop (1980) 59; here for each band.
     """
     slant = np.maximum(cos_zenith, least_cos_zenith)[:, None]
-    near = diffuse * np.clip(around, 0.0, 1.0) / slant
-    uniform = diffuse - near * cos_zenith[:, None]
-    return SkyLight(beam + near, uniform, None if rim is None else diffuse * rim)
+    near = np.clip(around, 0.0, 1.0)
+    # As the sun sinks below the least height the uniform part takes over, so that none is lost on the horizontal.
+    uniform = diffuse * (1 - near * np.minimum(cos_zenith[:, None] / slant, 1.0))
+    return SkyLight(beam + diffuse * near / slant, uniform, None if rim is None else diffuse * rim)
 
 
 def at_level(around: Array, diffuse: Array, level: Array) -> Array:

@@ -122,7 +122,9 @@ def of_face(
 
 def _nodes(stance: Stance) -> Array:
     """Return rotations (m,) [rad] at which to work out what depends on nothing else, rising."""
-    low, high = float(stance.rotation.min()), float(stance.rotation.max())
+    low, high = float(stance.rotation.min(initial=np.inf)), float(stance.rotation.max(initial=-np.inf))
+    if high < low:  # no interval is lit
+        return np.zeros(1)
     if high - low < 1e-9:
         return np.array([low])
     # Symmetric and not drawn from the data, so that all trackers of one kind share their tables.
