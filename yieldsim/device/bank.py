@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterable, Iterator
+from collections.abc import Iterable
 from dataclasses import dataclass
 
 import numpy as np
@@ -10,12 +10,14 @@ from numpy.polynomial import chebyshev
 from numpy.typing import NDArray
 
 from yieldsim.constants import STANDARD_CELL_TEMPERATURE, STANDARD_IRRADIANCE, THERMAL_EV_PER_K
-from yieldsim.device import diode, series
+from yieldsim.device import diode, kernel, series
 from yieldsim.device.fold import folded
 from yieldsim.device.junction import (
     Junction,
+    constants,
     diode_at,
     external_radiative_efficiency_at,
+    generated,
     reference_photocurrent,
     response_at,
     saturation_current,
@@ -162,15 +164,12 @@ class Bank:
         """
         temperature = self._per_absorber(temperature)
         out = np.empty((len(self.absorbers), currents.shape[1]))
-        for size, in_series, members in self._kinds():
-            if size == 1:
-                tops = self.first_of[members]
-                out[members] = [self._own_power(j, currents[j], temperature) if own is None else own[j] for j in tops]
-                continue
-            for chunk, block in _chunks(members, currents.shape[1]):
-                links = series.joined([self._links(a, currents[:, block], temperature[:, block]) for a in chunk])
-                power = series.maximum_power(links)[0] if in_series else series.separate_power(links)
-                out[chunk, block] = power.reshape(len(chunk), -1)
+        for a, absorber in enumerate(self.absorbers):
+            first = int(self.first_of[a])
+            if len(absorber.junctions) > 1:
+                out[a] = self._stack_power(a, currents, temperature[a])
+            else:
+                out[a] = self._own_power(first, currents[first], temperature) if own is None else own[first]
         return out
 
     def standard(self) -> Standard:
@@ -208,8 +207,31 @@ class Bank:
         return np.asarray(np.exp(table[at] + (place - at) * (table[at + 1] - table[at])))
 
     def _own_power(self, j: int, currents: Array, temperature: Array) -> Array:
-        blocks = [self._diode(j, currents[block], temperature, block) for block in _blocks(len(currents))]
-        return np.concatenate([diode.maximum_power(each)[0] for each in blocks])
+        heat, junction = temperature[self.absorber_of[j]], self.junctions[j]
+        return kernel.single_power(
+            np.ascontiguousarray(generated(junction, currents)),
+            self._saturation(j, heat),
+            junction.ideality * THERMAL_EV_PER_K * heat,
+            np.array(constants(junction)),
+        )
+
+    def _stack_power(self, a: int, currents: Array, temperature: Array) -> Array:
+        absorber, thermal = self.absorbers[a], THERMAL_EV_PER_K * temperature
+        members = range(int(self.first_of[a]), int(self.first_of[a]) + len(absorber.junctions))
+        saturation = np.array([self._saturation(j, temperature) for j in members])
+        emission = np.zeros_like(saturation)
+        if absorber.coupling > 0:  # the lowest junction emits into nothing that collects
+            for i, j in enumerate(members[:-1]):
+                emission[i] = absorber.coupling * self.radiative_saturation(j, saturation[i], temperature)
+        return kernel.stack_power(
+            np.array([generated(self.junctions[j], currents[j]) for j in members]),
+            saturation,
+            np.array([self.junctions[j].ideality * thermal for j in members]),
+            np.array([constants(self.junctions[j]) for j in members]),
+            emission,
+            thermal,
+            absorber.terminals == 2,
+        )
 
     def _diode(self, j: int, currents: Array, temperature: Array, block: slice) -> diode.Diode:
         heat = temperature[self.absorber_of[j], block]
@@ -304,14 +326,6 @@ def _saturation_table(junctions: tuple[Junction, ...]) -> Array:
     at_nodes = np.array([np.log(saturation_current(junction, 1 / (middle + half * nodes))) for junction in junctions])
     coefficients = chebyshev.chebfit(nodes, at_nodes.T, len(nodes) - 1)
     return np.asarray(chebyshev.chebval(np.linspace(-1, 1, _INVERSE_STEPS + 1), coefficients))
-
-
-def _chunks(members: NDArray[np.intp], n_time: int) -> Iterator[tuple[NDArray[np.intp], slice]]:
-    """Cut members x hours into pieces of about `_BLOCK` that are computed at once."""
-    several = max(1, _BLOCK // max(n_time, 1))
-    for start in range(0, len(members), several):
-        for block in _blocks(n_time):
-            yield members[start : start + several], block
 
 
 def _blocks(n: int) -> list[slice]:

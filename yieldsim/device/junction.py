@@ -202,26 +202,43 @@ def diode_at(junction: Junction, photocurrent: Any, temperature: Any, saturation
     -------
     Diode
 
-    Notes
-    -----
-    A response is measured at short circuit, where an i-layer has lost the share chi/Vbi already: what is generated is
-    larger by that much, so that at 25 degC the curve passes through the measured current.
     """
     temperature = np.asarray(temperature, dtype=np.float64)[()]
     if saturation is None:
         saturation = saturation_current(junction, temperature)
-    chi: Any = junction.recombination_v
-    if chi > 0:
-        photocurrent = photocurrent / (1 - chi / junction.built_in_v)
+    series_resistance, shunt_conductance, recombination, built_in = constants(junction)
     return diode.Diode(
-        photocurrent=photocurrent,
+        photocurrent=generated(junction, photocurrent),
         saturation_current=saturation,
         thermal_voltage=junction.ideality * THERMAL_EV_PER_K * temperature,
-        series_resistance=junction.series_resistance_ohm_cm2 * _M2_PER_CM2,
-        shunt_conductance=1 / (junction.shunt_resistance_ohm_cm2 * _M2_PER_CM2),
-        recombination_voltage=chi,
-        built_in_voltage=junction.built_in_v,
+        series_resistance=series_resistance,
+        shunt_conductance=shunt_conductance,
+        recombination_voltage=recombination,
+        built_in_voltage=built_in,
     )
+
+
+def constants(junction: Junction) -> tuple[float, float, float, float]:
+    """Return series resistance [ohm m2], shunt conductance [ohm-1 m-2], recombination and built-in voltage [V]."""
+    return (
+        junction.series_resistance_ohm_cm2 * _M2_PER_CM2,
+        1 / (junction.shunt_resistance_ohm_cm2 * _M2_PER_CM2),
+        junction.recombination_v,
+        junction.built_in_v,
+    )
+
+
+def generated(junction: Junction, photocurrent: Any) -> Any:
+    """Return the current generated (...) [A m-2] where a response collects photocurrent (...) [A m-2].
+
+    Notes
+    -----
+    A response is measured at short circuit, where an i-layer has lost the share chi/Vbi already: what is generated is
+    larger by that much, so that the curve passes through the measured current.
+    """
+    if junction.recombination_v == 0:
+        return photocurrent
+    return photocurrent / (1 - junction.recombination_v / junction.built_in_v)
 
 
 def moved_to_gap(junction: Junction, gap_ev: float) -> Junction:
