@@ -206,7 +206,7 @@ const fateShade = (i) => (i < 7 ? 0.9 : 0.5);
 function hours(width) {
   if (choice.versus < 0) return nothing(width, "There is no second absorber to compare with.");
   const place = study.by_hour[choice.place];
-  if (!place) return nothing(width, "This place is beyond those whose hours the page holds; by_hour.csv has all.");
+  if (!place) return nothing(width, "The page holds no hours of this place.");
   const [one, base] = [place[choice.versus], place[study.reference]];
   const data = d3.range(288).map((i) => ({ m: Math.floor(i / 24), h: i % 24, v: one[i] || base[i] ? one[i] - base[i] : null }));
   const lit = data.filter((d) => d.v !== null);

@@ -20,7 +20,8 @@ function plateau(gap, energy, within = 0.01) {
 function gap_sweep(width) {
   const quality = qualities()[choice.quality];
   const relative = choice.relative === "yes";
-  const curves = study.gap_sweep.filter((one) => one.quality === quality).map((one) => {
+  const few = study.places.length <= 16; // more curves are a thicket: then the chosen place's only
+  const curves = study.gap_sweep.filter((one) => one.quality === quality && (few || one.place < 0 || one.place === choice.place)).map((one) => {
     const top = d3.max(one.energy_kwh_m2);
     const y = one.energy_kwh_m2.map((e) => (relative ? (100 * e) / top : e));
     return { ...one, y, ...plateau(one.gap_ev, one.energy_kwh_m2), number: one.place < 0 ? 6 : one.place };

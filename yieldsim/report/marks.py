@@ -46,6 +46,12 @@ def shorten(name: str, length: int = 40) -> str:
     return plain if len(plain) <= length else plain[: length - 1].rstrip() + "…"
 
 
+def position(latitude_deg: float, longitude_deg: float, elevation_m: float) -> str:
+    """Return a place on earth as people write it: ``36.10° N, 79.95° W, 273 m``."""
+    parts = [f"{abs(value):.2f}° {ends[value < 0]}" for value, ends in ((latitude_deg, "NS"), (longitude_deg, "EW"))]
+    return ", ".join([*parts, f"{elevation_m:.0f} m".replace("-", "−")])
+
+
 def spread(wanted: Sequence[float], gap: float, low: float, high: float) -> NDArray[np.float64]:
     """Return places at least a gap apart and as close to the wanted ones as can be, in the same order.
 

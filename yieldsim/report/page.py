@@ -13,13 +13,20 @@ import pandas as pd
 from markupsafe import Markup
 
 from yieldsim.report import answer as answers
-from yieldsim.report.payload import payload
+from yieldsim.report.marks import position
+from yieldsim.report.payload import MOST_PLACES, payload
 from yieldsim.study import store
 from yieldsim.study.result import TABLES, StudyResult, records
 
 PAGE = "report.html"
 MOST_COLUMNS = 12  # places side by side in the table at a glance; annual.csv holds all
 _SOURCE = "source:"
+_INPUTS_OF_AIR = {
+    "aod500": "haze (aerosol optical depth at 500 nm)",
+    "angstrom_exponent": "colour of the haze (Ångström exponent)",
+    "precipitable_water": "water vapour (precipitable water)",
+    "albedo": "reflection of the ground (albedo)",
+}
 #: Ours by hand; the two libraries (both under the ISC licence, its text at their head) draw the charts: they make SVG,
 #: which takes the page's own colours in dark and light, prints sharply and can be read by assistive software.
 _SCRIPTS = ("d3.min.js", "plot.min.js", "page.js", "charts.js", "gaps.js")
@@ -65,6 +72,9 @@ def render(result: StudyResult) -> str:
         files=[file for name, file in TABLES.items() if has[name]],
         sources=_by_site(result.weather_quality, sources=True),
         findings=_by_site(result.weather_quality, sources=False),
+        about={site: _about(dataset.attrs) for site, dataset in result.spectra.items()},
+        inputs_of_air=_INPUTS_OF_AIR,
+        most_places=MOST_PLACES,
         doubt=answers.DOUBT,
         data=Markup(script_json(payload(result))),  # noqa: S704  escaped by script_json
         css=Markup(_asset("page.css")),  # noqa: S704  ours
@@ -93,6 +103,14 @@ def _cell(row: Mapping[str, Any] | None, reference: Mapping[str, Any]) -> dict[s
         "rank": row["rank_by_energy"],
         "moved": row["rank_at_stc"] - row["rank_by_energy"],
     }
+
+
+def _about(attributes: Mapping[Any, Any]) -> dict[str, str]:
+    """Return where a site lies and what its weather says of itself, from the attributes of its spectra."""
+    keys = ("latitude_deg", "longitude_deg", "elevation_m")
+    where = position(*(float(attributes[key]) for key in keys)) if all(key in attributes for key in keys) else ""
+    said = {key: str(attributes.get(key, "")).strip().rstrip(".") for key in ("source", "comment")}
+    return {"where": where} | said
 
 
 def script_json(content: Any) -> str:

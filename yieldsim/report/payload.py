@@ -33,12 +33,13 @@ MEASURES: Mapping[str, tuple[str, str, int]] = {
 #: Spectra a page may hold: 24 days of 14 hours on one mounting are 336. Beyond it the first sites keep theirs, so that
 #: a page stays well below 6 MB; the files hold all.
 MOST_SPECTRA = 6000
-MOST_PLACES_BY_HOUR = 40
+#: Places a page shows; the answer and the files hold all. 60 with 12 absorbers stay below 5 MB.
+MOST_PLACES = 60
 
 
 def payload(result: StudyResult) -> Tree:
     """Return what the page's charts draw; a part the result lacks is left out."""
-    found = places(result.annual)
+    found = places(result.annual)[:MOST_PLACES]
     absorbers = [str(name) for name in result.standard["absorber"]]
     tree: Tree = {
         "study": result.study,
@@ -51,7 +52,7 @@ def payload(result: StudyResult) -> Tree:
     }
     parts: list[tuple[str, pd.DataFrame | None, Callable[[pd.DataFrame], Any]]] = [
         ("monthly", result.monthly, lambda table: _monthly(table, found, absorbers)),
-        ("by_hour", result.by_hour, lambda table: _by_hour(table, found[:MOST_PLACES_BY_HOUR], absorbers)),
+        ("by_hour", result.by_hour, lambda table: _by_hour(table, found, absorbers)),
         ("ledger", result.ledger, lambda table: _ledger(table, found, absorbers)),
         ("gap_sweep", result.gap_sweep, lambda table: _sweep(table, found)),
         ("gap_pairs", result.gap_pairs, lambda table: _pairs(table, found)),
@@ -141,6 +142,8 @@ def _sweep(table: pd.DataFrame, found: Sequence[Place]) -> list[Tree]:
     at_place = {(p.site, p.mounting): i for i, p in enumerate(found)}
     curves = []
     for (quality, site, mounting), rows in table.groupby(["quality", "site", "mounting"], sort=False):
+        if site != STANDARD_SITE and (str(site), str(mounting)) not in at_place:
+            continue
         ordered = rows.sort_values("gap_ev")
         curves.append(
             {
@@ -163,6 +166,7 @@ def _pairs(table: pd.DataFrame, found: Sequence[Place]) -> list[Tree]:
             "energy_kwh_m2": _rounded(rows["energy_kwh_m2"]),
         }
         for (site, mounting), rows in table.groupby(["site", "mounting"], sort=False)
+        if site == STANDARD_SITE or (str(site), str(mounting)) in at_place
     ]
 
 
@@ -172,7 +176,10 @@ def _listed(table: pd.DataFrame, found: Sequence[Place], absorbers: Sequence[str
     at_absorber = {name: i for i, name in enumerate(absorbers)}
     rows = []
     for record in records(table):
-        row: Tree = {"place": at_place[record.pop("site"), record.pop("mounting")]}
+        place = at_place.get((record.pop("site"), record.pop("mounting")))
+        if place is None:
+            continue
+        row: Tree = {"place": place}
         for key, value in record.items():
             if key in ("absorber", "other"):
                 row[key] = at_absorber[value]

@@ -62,6 +62,13 @@ def places(table: pd.DataFrame) -> list[tuple[str, str]]:
     return [place for place in found if place[0] != STANDARD_SITE]
 
 
+def _first(table: pd.DataFrame) -> tuple[list[tuple[str, str]], str]:
+    """Return the places a picture shows, and what to say where they are not all."""
+    found = places(table)
+    left_out = f" (the first {MOST_PANELS} of {len(found)} places)" if len(found) > MOST_PANELS else ""
+    return found[:MOST_PANELS], left_out
+
+
 def place_names(chosen: list[tuple[str, str]]) -> list[str]:
     """Return what sites and mountings are called in a picture: the mounting only where there are several."""
     several = len({mounting for _, mounting in chosen}) > 1
@@ -77,7 +84,7 @@ def annual_yield(result: StudyResult) -> Figure | None:
     table = result.annual
     if table.empty:
         return None
-    chosen = places(table)[:MOST_PANELS]
+    chosen, more = _first(table)
     number = {name: i for i, name in enumerate(result.standard["absorber"])}
     frames = [_at(table, place).sort_values("specific_yield_kwh_kwp", kind="stable") for place in chosen]
     spans = [float(np.ptp(frame["specific_yield_kwh_kwp"].to_numpy())) for frame in frames]
@@ -98,7 +105,10 @@ def annual_yield(result: StudyResult) -> Figure | None:
         axes.xaxis.set_major_locator(MaxNLocator(5))
         axes.set_xlabel("specific yield [kWh/kWp a year]")
     reference = shorten(result.reference, 32)
-    head(figure, f"Yield per rated power, best on top; dashed: {reference}, the reference; all panels span the same")
+    head(
+        figure,
+        f"Yield per rated power, best on top; dashed: {reference}, the reference; all panels span the same{more}",
+    )
     return figure
 
 
@@ -117,7 +127,7 @@ def spectral_factor(result: StudyResult) -> Figure | None:
     table = result.monthly
     if table is None or table["spectral_factor"].notna().sum() == 0:
         return None
-    chosen = places(table)[:MOST_PANELS]
+    chosen, more = _first(table)
     names = list(result.standard["absorber"])
     size = (3.6, max(2.0, 0.2 + LABEL_IN * len(names)))
     right = LEAD_IN + 0.25 + text_width(shorten(name, 32) for name in names)
@@ -142,7 +152,7 @@ def spectral_factor(result: StudyResult) -> Figure | None:
         axes.set_ylabel("spectral factor [1]")
         axes.set_xlabel("month")
         label_ends(axes, ends, float(frame["month"].max()), size)
-    head(figure, "Gain or loss by the colour of the light; 1 = as under the standard spectrum")
+    head(figure, f"Gain or loss by the colour of the light; 1 = as under the standard spectrum{more}")
     return figure
 
 
@@ -152,7 +162,7 @@ def energy_over_gap(result: StudyResult) -> Figure | None:
     if table is None or table.empty:
         return None
     qualities = list(dict.fromkeys(table["quality"]))
-    chosen = places(table)[:MOST_PANELS]
+    chosen, more = _first(table)
     names = [*place_names(chosen), STANDARD_SITE]
     size = (5.2, max(2.9, LABEL_IN * (len(names) + 2)))
     right = LEAD_IN + 0.25 + text_width(f"{name}: 0.00 (0.00–0.00)" for name in names)
@@ -174,7 +184,7 @@ def energy_over_gap(result: StudyResult) -> Figure | None:
     head(
         figure,
         "Labels: best gap (stretch within 1 % of it) [eV], both marked. "
-        "Standard spectrum: 1000 kWh/m² of it on cells at 25 °C",
+        f"Standard spectrum: 1000 kWh/m² of it on cells at 25 °C{more}",
     )
     return figure
 
