@@ -10,6 +10,8 @@ from typing import Any, Literal, TypeVar, cast
 from yieldsim.config import absorber_schema, absorbers, grid, schema, site_schema
 from yieldsim.config.fields import MONTHS
 from yieldsim.config.inputs import PVLIB, locate, sha256
+from yieldsim.config.mounting_schema import AnyMounting
+from yieldsim.config.surroundings import Surroundings, mounting_plan
 from yieldsim.config.tree import Document, KeyPath
 from yieldsim.errors import InputError, Problem
 from yieldsim.study.plan import (
@@ -18,14 +20,13 @@ from yieldsim.study.plan import (
     GroundPlan,
     LossesPlan,
     Monthly,
-    MountingPlan,
     SitePlan,
     StudyPlan,
     WeatherFile,
 )
 
 Made = TypeVar("Made")
-Mountings = dict[str, site_schema.FixedMounting]
+Mountings = dict[str, AnyMounting]
 _AIR = ("aod500", "angstrom_exponent", "water_cm", "ozone_atm_cm")
 
 
@@ -43,6 +44,7 @@ class Builder:
         self.document = document
         self.folder = folder
         self.problems: list[Problem] = []
+        self.around = Surroundings(folder)
 
     def plan(self, study: schema.Study) -> StudyPlan:
         """Return the plan of a valid study; raises InputError with everything that could not be built."""
@@ -65,11 +67,11 @@ class Builder:
             absorbers=made,
             reference=study.reference or made[0].name,
             gap_sweep=sweep,
-            losses=LossesPlan({name: _twelve(value) for name, value in study.losses if value is not None}),
+            losses=_losses(study.losses),
             keep=frozenset(study.keep),
             resolved={},
             folder=str(self.folder),
-            inputs=maker.inputs,
+            inputs={**self.around.inputs, **maker.inputs},
             findings=tuple(maker.findings),
         )
         return replace(plan, resolved=resolved(study, plan))
@@ -95,12 +97,10 @@ class Builder:
         return SitePlan(
             name=site.name,
             weather=tuple(weather),
-            mountings=tuple(
-                MountingPlan(name, cast(Literal["fixed"], each.kind), each.tilt_deg, each.azimuth_deg)
-                for name, each in _site_mountings(site, shared).items()
-            ),
+            mountings=tuple(mounting_plan(name, each) for name, each in _site_mountings(site, shared).items()),
             atmosphere=AtmospherePlan(**air, haze=cast(Literal["hourly", "fixed"], site.atmosphere.haze)),
-            ground=GroundPlan(site.ground.albedo),
+            ground=self._attempt((*path, "ground"), lambda: self.around.ground(site.ground)) or GroundPlan(),
+            horizon=self._attempt((*path, "horizon"), lambda: self.around.horizon(site.horizon)),
             latitude_deg=site.latitude_deg,
             longitude_deg=site.longitude_deg,
             elevation_m=site.elevation_m,
@@ -120,6 +120,11 @@ class Builder:
 
 def _twelve(value: Any) -> Monthly:
     return tuple(value) if isinstance(value, list) else (value,) * MONTHS
+
+
+def _losses(losses: schema.Losses) -> LossesPlan:
+    given = losses.model_dump(exclude_none=True, exclude={"soiling_exponent"})
+    return LossesPlan({name: _twelve(value) for name, value in given.items()}, losses.soiling_exponent)
 
 
 def _mountings(value: Any) -> Mountings:
@@ -173,7 +178,9 @@ def resolved(study: schema.Study, plan: StudyPlan) -> dict[str, Any]:
     for site in study.sites:
         content = site.model_dump(exclude_none=True, exclude={"mounting"})
         content["weather"] = site.weather if isinstance(site.weather, list) else [site.weather]
-        content["mounting"] = {name: each.model_dump() for name, each in _site_mountings(site, shared).items()}
+        content["mounting"] = {
+            name: each.model_dump(exclude_none=True) for name, each in _site_mountings(site, shared).items()
+        }
         sites.append(content)
     content = {
         "study": study.study,

@@ -20,7 +20,7 @@ MAX_ABSORBERS = 100
 
 #: Keys that a later version will take: named in the message, so that nobody looks for a slip of typing.
 NOT_YET = (
-    "gap_pairs", "chance", "portfolio", "worth", "climate", "horizon", "table", "grid",
+    "gap_pairs", "chance", "portfolio", "worth", "climate", "table", "grid",
 )  # fmt: skip
 
 # The study's name is a folder: what every file system can hold, and nothing that leads elsewhere.
@@ -90,8 +90,11 @@ class Losses(Section):
     soiling: Annotated[float | list[float], Monthly(*LOST)] | None = Field(
         default=None, description="dust on the modules"
     )
+    soiling_exponent: Annotated[float, Number(-4, 4)] = Field(
+        default=0.0, description="colour of the dust: it takes (wavelength)^-exponent; 0 = grey, above 0 more blue"
+    )
     snow: Annotated[float | list[float], Monthly(*LOST)] | None = Field(
-        default=None, description="snow lying on the modules"
+        default=None, description="snow lying on the modules; left out: worked out where the weather has snow_depth"
     )
     wiring: Annotated[float | list[float], Monthly(*LOST)] | None = Field(
         default=None, description="heat in the cables"

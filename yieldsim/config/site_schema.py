@@ -21,18 +21,11 @@ from yieldsim.config.fields import (
     show,
 )
 from yieldsim.config.inputs import InputFile
+from yieldsim.config.mounting_schema import AnyGround, Ground, OneMounting
 from yieldsim.weather import STAMP_FORM, parse_stamp
 
 FORMATS = ("tmy3", "plain")  # the readers' names; a test holds them to yieldsim.readers
 MAX_YEARS = 50
-
-
-class FixedMounting(Section):
-    """A plane that does not move."""
-
-    kind: Annotated[str, Choice(("fixed",))] = Field(default="fixed", description="how the modules stand")
-    tilt_deg: Annotated[float, Number(0, 90, "deg from horizontal")]
-    azimuth_deg: Annotated[float, Number(0, 360, "deg clockwise from north")]
 
 
 def _mounting_form(value: Any) -> str:
@@ -43,13 +36,13 @@ def _mounting_form(value: Any) -> str:
     return "several" if several and all(isinstance(each, dict) for each in value.values()) else "one"
 
 
-Several = Annotated[dict[Name, FixedMounting], Tag("<several>")]
-Mounting = Annotated[Annotated[FixedMounting, Tag("<one>")] | Several, by(_mounting_form)]
+Several = Annotated[dict[Name, OneMounting], Tag("<several>")]
+Mounting = Annotated[Annotated[OneMounting, Tag("<one>")] | Several, by(_mounting_form)]
 _Names = Annotated[
     Annotated[Name, Tag("<one>")] | Annotated[list[Name], Length(1, 20, "names"), Tag("<list>")], by(one_or_list)
 ]
 SiteMounting = Annotated[
-    Annotated[FixedMounting, Tag("<one>")] | Several | Annotated[_Names, Tag("<names>")], by(_mounting_form)
+    Annotated[OneMounting, Tag("<one>")] | Several | Annotated[_Names, Tag("<names>")], by(_mounting_form)
 ]
 
 
@@ -70,14 +63,6 @@ class Atmosphere(Section):
     )
     haze: Annotated[str, Choice(("hourly", "fixed"))] = Field(
         default="hourly", description="hourly: solve the haze of clear hours from their beam; fixed: keep the given one"
-    )
-
-
-class Ground(Section):
-    """What lies under and around the modules."""
-
-    albedo: Annotated[float, Number(0, 1)] | None = Field(
-        default=None, description="reflectance at every wavelength; left out: the weather file's own, else 0.2"
     )
 
 
@@ -121,4 +106,10 @@ class Site(Section):
         default=None, description="over the study's: one, several named, or their names"
     )
     atmosphere: Atmosphere = Field(default_factory=Atmosphere)
-    ground: Ground = Field(default_factory=Ground)
+    ground: AnyGround = Field(
+        default_factory=Ground,
+        description="a surface of the library, a CSV of wavelength [nm] and albedo, or both keys",
+    )
+    horizon: Annotated[str, InputFile()] | None = Field(
+        default=None, description="CSV of azimuth [deg clockwise from north] and elevation [deg] of the skyline"
+    )
