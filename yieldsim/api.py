@@ -17,7 +17,7 @@ import pandas as pd
 import yieldsim
 from yieldsim import config, readers, report, screen
 from yieldsim.errors import PlaceError
-from yieldsim.study import compare, run, store, sweep
+from yieldsim.study import compare, pairs, run, store, sweep
 from yieldsim.study.annual import Ratings
 from yieldsim.study.plan import SitePlan, StudyPlan
 from yieldsim.study.result import StudyResult, by_hour_table, responses_table
@@ -99,6 +99,9 @@ def run_study(
     swept = run.rows(pieces, "gap_sweep")
     if plan.gap_sweep is not None:
         swept += sweep.standard_rows(plan.gap_sweep)
+    paired = run.rows(pieces, "gap_pairs")
+    if plan.gap_pairs is not None:
+        paired += pairs.standard_rows(plan.gap_pairs)
     details: dict[str, Any] = {
         "study": plan.name,
         "yieldsim": yieldsim.__version__,
@@ -121,6 +124,7 @@ def run_study(
         gap_sweep=pd.DataFrame(swept) if swept else None,
         weather_quality=pd.DataFrame(run.rows(pieces, "weather_quality")),
         standard=standard,
+        gap_pairs=pd.DataFrame(paired) if paired else None,
         ledger=pd.DataFrame(run.rows(pieces, "ledger")).fillna(0.0),
         responses=responses_table(plan.absorbers),
         by_hour=pd.concat(by_hour, ignore_index=True) if by_hour else None,

@@ -56,7 +56,7 @@ def test_losses_are_taken_in_order(rows):
 
 
 def test_shares_of_an_ideal_step():
-    """Closed form: a step collects every photon above its gap and none below; the standard spectrum splits accordingly."""
+    """Closed form: a step collects every photon above its gap and none below; the standard splits accordingly."""
     shares = account.front_shares(Absorber("x", (Junction(1.34, step(1.34)),)))
     np.testing.assert_allclose(shares.below + shares.missed + shares.collected, 1.0, rtol=1e-12)
     np.testing.assert_allclose(shares.missed, 0.0, atol=1e-12)

@@ -13,9 +13,11 @@ from yieldsim.config.inputs import PVLIB, locate, sha256
 from yieldsim.config.mounting_schema import AnyMounting
 from yieldsim.config.surroundings import Surroundings, mounting_plan
 from yieldsim.config.tree import Document, KeyPath
+from yieldsim.device.stack import Absorber
 from yieldsim.errors import InputError, Problem
 from yieldsim.study.plan import (
     AtmospherePlan,
+    GapPairsPlan,
     GapSweepPlan,
     GroundPlan,
     LossesPlan,
@@ -58,6 +60,9 @@ class Builder:
         sweep = None
         if study.gap_sweep is not None:
             sweep = self._attempt(("gap_sweep",), lambda: _sweep(cast(schema.GapSweep, study.gap_sweep)))
+        pairs = None
+        if study.gap_pairs is not None:
+            pairs = self._attempt(("gap_pairs",), lambda: _pairs(cast(schema.GapPairs, study.gap_pairs)))
         if self.problems:
             raise InputError(self.problems)
         made = tuple(absorber for absorber in built if absorber is not None)
@@ -67,6 +72,7 @@ class Builder:
             absorbers=made,
             reference=study.reference or made[0].name,
             gap_sweep=sweep,
+            gap_pairs=pairs,
             losses=_losses(study.losses),
             keep=frozenset(study.keep),
             resolved={},
@@ -152,7 +158,28 @@ def _sweep(sweep: schema.GapSweep) -> GapSweepPlan:
     )
 
 
-def named_qualities(sweep: schema.GapSweep) -> dict[str, absorber_schema.SweepQuality | None]:
+def _pairs(pairs: schema.GapPairs) -> GapPairsPlan:
+    tops, bottoms = grid.decimal_grid(*pairs.top_ev), grid.decimal_grid(*pairs.bottom_ev)
+    every = tuple((top, bottom) for top in tops for bottom in bottoms)
+    terminals = pairs.terminals if isinstance(pairs.terminals, list) else [pairs.terminals]
+    made: dict[tuple[str, int], tuple[Absorber, ...]] = {}
+    for name, each in named_qualities(pairs).items():
+        upper = {gap: absorbers.swept(each, gap) for gap in tops}
+        lower = {gap: absorbers.swept(each, gap) for gap in bottoms}
+        for count in dict.fromkeys(terminals):
+            made[name, count] = tuple(
+                replace(
+                    upper[top],
+                    name=f"{top:g}/{bottom:g}",
+                    junctions=upper[top].junctions + lower[bottom].junctions,
+                    terminals=count,
+                )
+                for top, bottom in every
+            )
+    return GapPairsPlan(every, made)
+
+
+def named_qualities(sweep: schema.GapSweep | schema.GapPairs) -> dict[str, absorber_schema.SweepQuality | None]:
     """Return the qualities of a sweep by name; None stands for the ideal."""
     given = sweep.quality if isinstance(sweep.quality, list) else [sweep.quality]
     named: dict[str, absorber_schema.SweepQuality | None] = {}
@@ -190,6 +217,13 @@ def resolved(study: schema.Study, plan: StudyPlan) -> dict[str, Any]:
         "losses": study.losses.model_dump(exclude_none=True),
         "keep": [part for part in schema.PARTS if part in plan.keep],
     }
+    if study.gap_pairs is not None:
+        content["gap_pairs"] = study.gap_pairs.model_dump(exclude={"quality"}) | {
+            "quality": [
+                "ideal" if each is None else each.model_dump(exclude_none=True) | {"name": name}
+                for name, each in named_qualities(study.gap_pairs).items()
+            ]
+        }
     if study.gap_sweep is not None:
         qualities = named_qualities(study.gap_sweep)
         content["gap_sweep"] = study.gap_sweep.model_dump(exclude={"quality"}) | {

@@ -5,6 +5,7 @@ from __future__ import annotations
 from decimal import Decimal
 
 MAX_POINTS = 500
+MAX_PAIRS = 5000
 
 
 def decimal_grid(first: float, last: float, step: float) -> tuple[float, ...]:

@@ -20,7 +20,7 @@ MAX_ABSORBERS = 100
 
 #: Keys that a later version will take: named in the message, so that nobody looks for a slip of typing.
 NOT_YET = (
-    "gap_pairs", "chance", "portfolio", "worth", "climate", "table", "grid",
+    "chance", "portfolio", "worth", "climate", "table", "grid",
 )  # fmt: skip
 
 # The study's name is a folder: what every file system can hold, and nothing that leads elsewhere.
@@ -84,6 +84,43 @@ class GapSweep(Section):
         return self
 
 
+_Range = Annotated[list[Annotated[float, Number(0.001, 5, "eV")]], Length(3, 3, "numbers: from, to, step [eV]")]
+_Terminals = Annotated[int, Choice((2, 4))]
+
+
+class GapPairs(Section):
+    """Two junctions over each other that differ from pair to pair in their gaps alone."""
+
+    top_ev: Annotated[_Range, Field(description="gaps on top: from, to, step")]
+    bottom_ev: Annotated[_Range, Field(description="gaps below: from, to, step")]
+    terminals: Annotated[
+        Annotated[_Terminals, Tag("<one>")] | Annotated[list[_Terminals], Length(1, 2, "numbers"), Tag("<list>")],
+        by(one_or_list),
+    ] = Field(default_factory=lambda: [2, 4], description="2, 4, or a list of both")
+    quality: Annotated[
+        Annotated[OneQuality, Tag("<one>")] | Annotated[list[OneQuality], Length(1, 10, "qualities"), Tag("<list>")],
+        by(one_or_list),
+    ] = Field(
+        default_factory=_default_qualities,
+        description="ideal | {like: NAME} | numbers, one or a list; left out: ideal and a realistic one",
+    )
+
+    @model_validator(mode="after")
+    def _countable(self) -> GapPairs:
+        for low, high, _ in (self.top_ev, self.bottom_ev):
+            if high < low:
+                raise refusal(f"a range from {low:g} to {high:g}", "a range that rises")
+        if self.top_ev[0] <= self.bottom_ev[1]:
+            raise refusal(
+                f"top gaps from {self.top_ev[0]:g} with bottom gaps to {self.bottom_ev[1]:g}",
+                "every top gap the wider one",
+            )
+        count = len(grid.decimal_grid(*self.top_ev)) * len(grid.decimal_grid(*self.bottom_ev))
+        if count > grid.MAX_PAIRS:
+            raise refusal(f"{count} pairs", f"at most {grid.MAX_PAIRS}")
+        return self
+
+
 class Losses(Section):
     """Shares of energy lost, besides what the absorbers do: one number or twelve, January first."""
 
@@ -124,6 +161,7 @@ class Study(Section):
     )
     losses: Losses = Field(default_factory=Losses)
     gap_sweep: GapSweep | None = None
+    gap_pairs: GapPairs | None = None
     keep: Annotated[list[Annotated[str, Choice(PARTS)]], Length(1, len(PARTS), "parts of the result")] = Field(
         default_factory=lambda: list(PARTS), description="parts of the result to write"
     )

@@ -292,7 +292,7 @@ def _haze(
     return np.clip(haze, *atmosphere.AOD_RANGE), source
 
 
-@lru_cache(maxsize=8)
+@lru_cache(maxsize=64)
 def bank_of(absorbers: tuple[Absorber, ...]) -> Bank:
     """Return the bank of absorbers, made once for all sites and mountings of a run."""
     return Bank.of(absorbers)
@@ -325,7 +325,7 @@ def by_front(absorbers: Sequence[Absorber]) -> list[tuple[float | None, list[int
 
 
 @dataclass(frozen=True, slots=True)
-class _Faces:
+class FacesOfYear:
     """Light on both faces of a mounting, and what passes each kind of glass."""
 
     site: SiteSky
@@ -388,7 +388,7 @@ def terminal_powers(
 
     Parameters as for `plane_year`.
     """
-    faces = _Faces(site, parts, rear_parts(site, mounting, absorbers), dust)
+    faces = FacesOfYear(site, parts, rear_parts(site, mounting, absorbers), dust)
     temperature = faces.temperatures(mounting, absorbers)
     power = np.empty((len(absorbers), len(site.lit)))
     for glass, members in by_front(absorbers):
@@ -415,7 +415,7 @@ def plane_year(
     absorbers : sequence of Absorber
     dust : (n, n_band) array [1] or None, how dust on the front colours the light, from `light.dust_colour`
     """
-    faces = _Faces(site, parts, rear_parts(site, mounting, absorbers), dust)
+    faces = FacesOfYear(site, parts, rear_parts(site, mounting, absorbers), dust)
     plane_of_array = parts.total()
     n, n_absorber = len(plane_of_array), len(absorbers)
     temperature = faces.temperatures(mounting, absorbers)

@@ -10,11 +10,12 @@ from typing import Any
 import numpy as np
 
 import yieldsim
-from yieldsim.study import annual, compare, datasets, light, store, sweep
+from yieldsim.device.stack import Absorber
+from yieldsim.study import annual, compare, datasets, light, pairs, store, sweep
 from yieldsim.study.annual import Ratings
-from yieldsim.study.hourly import SiteSky, light_paid, local_month_and_day, plane_year, site_sky
+from yieldsim.study.hourly import FacesOfYear, SiteSky, light_paid, local_month_and_day, plane_year, site_sky
 from yieldsim.study.ledger import ledger_rows
-from yieldsim.study.plan import Row, SitePlan, StudyPlan
+from yieldsim.study.plan import GapPairsPlan, Row, SitePlan, StudyPlan
 from yieldsim.weather import Weather
 
 _NAMES = ("site", "mounting", "absorber")
@@ -24,7 +25,8 @@ def key(plan: StudyPlan, site: SitePlan) -> str:
     """Return the hash of all that a site's share is made from: inputs, absorbers, sweeps, losses, this version."""
     version: str = yieldsim.__version__
     kept = frozenset(plan.keep & {"hourly", "spectra"})
-    return store.fingerprint(version, site, plan.absorbers, plan.gap_sweep, plan.losses, kept)
+    parts = (site, plan.absorbers, plan.gap_sweep, plan.gap_pairs, plan.losses)
+    return store.fingerprint(version, *parts, kept)
 
 
 def compute(plan: StudyPlan, site: SitePlan, years: Sequence[Weather], folder: Path) -> dict[str, Any]:
@@ -43,17 +45,20 @@ def compute(plan: StudyPlan, site: SitePlan, years: Sequence[Weather], folder: P
     """
     skies = [site_sky(site, weather) for weather in years]
     ratings = Ratings.of(plan.absorbers)
-    piece: dict[str, Any] = {name: [] for name in ("annual", "yearly", "monthly", "gap_sweep", "ledger")}
+    piece: dict[str, Any] = {name: [] for name in ("annual", "yearly", "monthly", "gap_sweep", "gap_pairs", "ledger")}
     piece["weather_quality"] = [row for sky in skies for row in quality_rows(site.name, sky)]
     first_year: list[Any] = []
     for mounting in site.mountings:
-        totals, swept, ledgers = [], [], []
+        totals, swept, paired, ledgers = [], [], [], []
         for sky in skies:
             parts = light.plane_parts(sky, mounting)
             losses, dust = light.with_snow(plan.losses, sky, mounting, parts), light.dust_colour(sky, plan.losses)
             year = plane_year(sky, mounting, parts, plan.absorbers, dust)
             if plan.gap_sweep is not None:
                 swept.append(sweep.sweep_rows(site.name, sky, mounting, parts, plan.gap_sweep, losses, dust))
+            if plan.gap_pairs is not None:
+                faces = FacesOfYear(sky, parts, light.rear_parts(sky, mounting, _first_pairs(plan.gap_pairs)), dust)
+                paired.append(pairs.pair_rows(site.name, sky, mounting, faces, plan.gap_pairs, losses))
             total = annual.sums(year, sky.month, monthly_hours(sky), sky.weather.interval_s, losses)
             totals.append(total)
             paid = light_paid(year, plan.absorbers, sky.month)
@@ -68,10 +73,16 @@ def compute(plan: StudyPlan, site: SitePlan, years: Sequence[Weather], folder: P
         piece["annual"] += compare.annual_rows(site.name, mounting.name, plan.absorbers, ratings, total)
         piece["monthly"] += compare.monthly_rows(site.name, mounting.name, plan.absorbers, ratings, total)
         piece["gap_sweep"] += _mean_rows(swept, ("poa_kwh_m2", "energy_kwh_m2"))
+        piece["gap_pairs"] += _mean_rows(paired, ("poa_kwh_m2", "energy_kwh_m2"))
         piece["ledger"] += _mean_rows(ledgers, [name for name in ledgers[0][0] if name not in _NAMES])
     files = _write_datasets(plan, site, skies[0], first_year, folder)
     store.write_piece(folder, store.file_stem(site.name), key(plan, site), piece, files)
     return piece
+
+
+def _first_pairs(plan: GapPairsPlan) -> list[Absorber]:
+    """Return one pair of each kind: they tell whether rear light counts."""
+    return [absorbers[0] for absorbers in plan.absorbers.values()]
 
 
 def _mean_rows(by_year: Sequence[list[Row]], measures: Sequence[str]) -> list[Row]:

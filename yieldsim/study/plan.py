@@ -133,6 +133,20 @@ class GapSweepPlan:
 
 
 @dataclass(frozen=True, slots=True)
+class GapPairsPlan:
+    """Pairs of gaps [eV] to compute, once per quality and number of terminals.
+
+    Parameters
+    ----------
+    pairs_ev : tuple of (top, bottom) [eV], the bottom gap below the top one
+    absorbers : (quality name, terminals) -> one Absorber of two junctions per pair, alike but for their gaps
+    """
+
+    pairs_ev: tuple[tuple[float, float], ...]
+    absorbers: Mapping[tuple[str, int], tuple[Absorber, ...]]
+
+
+@dataclass(frozen=True, slots=True)
 class LossesPlan:
     """Shares of energy lost besides what absorbers do.
 
@@ -170,6 +184,7 @@ class StudyPlan:
     losses: LossesPlan
     keep: frozenset[str]
     resolved: Mapping[str, Any]
+    gap_pairs: GapPairsPlan | None = None
     folder: str = ""
     inputs: Mapping[str, str] = field(default_factory=dict)
     findings: tuple[tuple[str, str], ...] = ()
