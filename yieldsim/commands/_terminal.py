@@ -62,9 +62,16 @@ def table(head: Sequence[str], rows: Sequence[Sequence[str]], indent: str = "  "
     return "\n".join(text)
 
 
-def wrapped(text: str, indent: str = "") -> str:
-    """Return a sentence broken into lines of at most 100 columns."""
-    return textwrap.fill(plain(text), 100, initial_indent=indent, subsequent_indent=indent, break_long_words=False)
+def wrapped(text: str, indent: str = "", first: str | None = None) -> str:
+    """Return a sentence broken into lines of at most 100 columns; ``first`` stands before the first line instead."""
+    return textwrap.fill(
+        plain(text),
+        100,
+        initial_indent=indent if first is None else first,
+        subsequent_indent=indent,
+        break_long_words=False,
+        break_on_hyphens=False,
+    )
 
 
 def duration(seconds: float) -> str:

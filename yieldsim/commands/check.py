@@ -7,7 +7,7 @@ from collections.abc import Sequence
 from pathlib import Path
 from typing import TYPE_CHECKING, Any
 
-from yieldsim.commands._terminal import Progress, bold, plain
+from yieldsim.commands._terminal import Progress, bold, plain, wrapped
 
 if TYPE_CHECKING:
     from yieldsim.errors import Problem
@@ -121,7 +121,7 @@ def _place(weather: Any) -> str:
 
 
 def _line(label: str, text: str) -> str:
-    return f"  {label:<{_LABEL}}{text}"
+    return wrapped(text, " " * (2 + _LABEL), f"  {label:<{_LABEL}}")
 
 
 def _count(number: int, what: str) -> str:
