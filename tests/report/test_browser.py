@@ -282,6 +282,18 @@ def test_a_study_with_one_place_and_one_absorber_works(opened, factory, tmp_path
     assert tab.locator("#choose-place").count() == 0
 
 
+def test_several_mountings_are_places_of_their_own(opened, factory, tmp_path):
+    made = factory.make(["One", "Two"], {"a": 1.1, "b": 1.5}, ("fixed", "tracker"))
+    report.write(made, tmp_path, {"monthly"})
+    tab = opened(path=tmp_path)
+    names = tab.locator("#choose-place option").all_text_contents()
+    assert names == ["One (fixed)", "One (tracker)", "Two (fixed)", "Two (tracker)"]
+    before = _drawn(tab, "spectrum")
+    tab.select_option("#choose-place", "1")
+    assert _drawn(tab, "spectrum") != before
+    assert tab.said == []
+
+
 def test_without_scripts_the_tables_still_answer(opened):
     tab = opened(java_script_enabled=False)
     assert tab.locator("#glance-table tbody tr").count() == 8

@@ -7,6 +7,7 @@ import numpy as np
 import pytest
 
 from yieldsim.report import answer, page
+from yieldsim.report import payload as payload_module
 from yieldsim.report.payload import payload
 
 HOSTILE = [
@@ -135,6 +136,17 @@ def test_the_charts_numbers_are_those_of_the_tables(full):
     np.testing.assert_allclose(
         hours, first.loc[[a["name"] for a in tree["absorbers"]], "specific_yield_kwh_kwp"], rtol=1e-4
     )
+
+
+def test_a_study_of_many_places_keeps_its_page_bounded(factory):
+    most = payload_module.MOST_PLACES
+    made = factory.make([f"site {i}" for i in range(most + 5)], {"a": 1.1, "b": 1.5}, full=True)
+    tree = payload(made)
+    assert len(tree["places"]) == len(tree["by_hour"]) == most
+    assert {curve["place"] for curve in tree["gap_sweep"]} == {-1, *range(most)}
+    assert max(row["place"] for row in tree["worth"]) == most - 1
+    assert sum(len(day["hours"]) for one in tree["spectra"] for day in one["days"]) <= payload_module.MOST_SPECTRA
+    assert f"the first {most} of {most + 5} places" in page.render(made)
 
 
 def test_packed_spectra_come_apart_to_the_light_on_the_plane(full):

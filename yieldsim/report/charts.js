@@ -255,7 +255,7 @@ function spectrum(width) {
   const brightest = d3.max(day.light, (packed) => d3.max(unpacked(packed), (e, b) => e / (edges[b + 1] - edges[b])));
   const text = (d) => `${figures(d.x1, 0)}–${figures(d.x2, 0)} nm: ${figures(d.y, 3)} W/(m² nm); ${taker.name} collects ${figures(100 * d3.sum(d.part), 0)} % of the photons`;
   const svg = plot(width, {
-    marginLeft: 52, marginRight: 12, marginBottom: 38, marginTop: 26, height: 340,
+    marginLeft: 52, marginRight: 22, marginBottom: 38, marginTop: 26, height: 340,
     x: { domain: [edges[0], RED_END_NM], label: "wavelength [nm]", labelAnchor: "center", labelArrow: "none", tickFormat: "d" },
     y: { domain: [0, brightest || 1], grid: true, label: "light on the plane [W/(m² nm)]", labelArrow: "none" },
     marks: [
