@@ -74,11 +74,38 @@ def _unique_names(least, most):
     )
 
 
-def mountings():
-    """Return one plane as a study holds it."""
+def planes():
+    """Return one fixed plane as a study holds it."""
     return st.fixed_dictionaries(
         {"tilt_deg": _number(0, 90), "azimuth_deg": _number(0, 360)}, optional={"kind": st.just("fixed")}
     )
+
+
+def mountings():
+    """Return one mounting of any kind as a study holds it."""
+    azimuth = _number(0, 360)
+    model = {"sky_model": st.sampled_from(["hay-davies", "perez"])}
+    # At the least height given here the widest row clears the ground at any tilt.
+    rows = model | {"row_pitch_m": _number(3, 50), "row_width_m": _number(0.5, 3), "height_m": _number(1.5, 20)}
+    turning = {
+        "axis_azimuth_deg": azimuth,
+        "axis_tilt_deg": _number(0, 45),
+        "max_angle_deg": _number(0, 90),
+        "backtrack": st.booleans(),
+    }
+    tilted = {"tilt_deg": _number(0, 90), "azimuth_deg": azimuth}
+    return st.one_of(
+        st.fixed_dictionaries(tilted, optional={"kind": st.just("fixed")} | rows),
+        st.fixed_dictionaries({"kind": st.just("tracker")}, optional=turning | rows),
+        st.fixed_dictionaries({"kind": st.just("vertical"), "azimuth_deg": azimuth}, optional=rows),
+        st.fixed_dictionaries({"kind": st.just("roof")} | tilted, optional=model),
+    )
+
+
+def _grounds():
+    albedo = st.fixed_dictionaries({}, optional={"albedo": st.floats(0, 1)})
+    surface = st.sampled_from(["grass", "dry-soil", "fresh-snow"])
+    return surface | albedo | st.fixed_dictionaries({"surface": surface}, optional={"albedo": st.floats(0, 1)})
 
 
 def _atmospheres():
@@ -152,7 +179,7 @@ def studies(draw):
                 optional={
                     "mounting": mountings(),
                     "atmosphere": _atmospheres(),
-                    "ground": st.fixed_dictionaries({}, optional={"albedo": st.floats(0, 1)}),
+                    "ground": _grounds(),
                     "latitude_deg": _number(-90, 90),
                     "longitude_deg": _number(-180, 180),
                     "elevation_m": _number(-450, 9000),
@@ -166,7 +193,7 @@ def studies(draw):
     absorbers = [draw(_absorbers(name)) for name in draw(_unique_names(1, 4))]
     study = {
         "study": draw(st.from_regex(r"[A-Za-z0-9](?:[a-z \-]{0,20}[a-z0-9])?", fullmatch=True)),
-        "mounting": draw(mountings()),
+        "mounting": draw(planes()),
         "sites": sites,
         "absorbers": absorbers,
     }
