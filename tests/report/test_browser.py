@@ -36,26 +36,38 @@ def folder(tmp_path_factory, full):
     return folder
 
 
+def _open(browser, path, width=1280, **options):
+    """Open a page; the tab keeps what it asked for and what it said."""
+    tab = browser.new_context(viewport={"width": width, "height": 900}, **options).new_page()
+    tab.asked, tab.said = [], []
+    tab.on("request", lambda request: tab.asked.append(request.url))
+    tab.on("console", lambda message: tab.said.append(message.text))
+    tab.on("pageerror", lambda error: tab.said.append(str(error)))
+    tab.on("dialog", lambda dialog: (tab.said.append(f"dialog: {dialog.message}"), dialog.dismiss()))
+    tab.goto((path / "report.html").as_uri())
+    return tab
+
+
 @pytest.fixture
 def opened(browser, folder):
-    """Open the page; give the tab back with what it asked for and what it said."""
+    """Open pages that a test may change."""
     tabs = []
 
     def open_page(width=1280, path=folder, **options):
-        context = browser.new_context(viewport={"width": width, "height": 900}, **options)
-        tab = context.new_page()
-        tab.asked, tab.said = [], []
-        tab.on("request", lambda request: tab.asked.append(request.url))
-        tab.on("console", lambda message: tab.said.append(message.text))
-        tab.on("pageerror", lambda error: tab.said.append(str(error)))
-        tab.on("dialog", lambda dialog: (tab.said.append(f"dialog: {dialog.message}"), dialog.dismiss()))
-        tab.goto((path / "report.html").as_uri())
-        tabs.append(context)
-        return tab
+        tabs.append(_open(browser, path, width, **options))
+        return tabs[-1]
 
     yield open_page
-    for context in tabs:
-        context.close()
+    for tab in tabs:
+        tab.context.close()
+
+
+@pytest.fixture(scope="module")
+def shown(browser, folder):
+    """One page for tests that leave its choices alone: opening takes longer than looking."""
+    tab = _open(browser, folder)
+    yield tab
+    tab.context.close()
 
 
 def _drawn(tab, id_):
@@ -74,8 +86,8 @@ def test_it_asks_for_nothing_but_itself_and_says_nothing(opened):
     assert tab.said == []
 
 
-def test_every_chart_is_drawn_and_named(opened, full):
-    tab = opened()
+def test_every_chart_is_drawn_and_named(shown, full):
+    tab = shown
     charts = tab.locator("figure.chart")
     assert charts.count() == 11
     for chart in charts.all():
@@ -86,12 +98,12 @@ def test_every_chart_is_drawn_and_named(opened, full):
         assert "NaN" not in svg.inner_html()
 
 
-def test_the_answer_s_numbers_are_those_of_the_table(opened, folder):
+def test_the_answer_s_numbers_are_those_of_the_table(shown, folder):
     import csv
 
     with (folder / "annual.csv").open(newline="") as file:
         rows = list(csv.DictReader(file))
-    tab = opened()
+    tab = shown
     said = tab.locator("#answer-winner").inner_text()
     named = re.findall(r"([\w. ]+?) at ([^;]*?)(?:;|$)", said.split(": ", 1)[1])
     checked = 0
@@ -146,8 +158,8 @@ def test_a_day_an_hour_and_an_absorber_show_their_spectrum(opened, full):
     assert _drawn(tab, "spectrum") != before
 
 
-def test_hovering_gives_a_number_with_its_unit(opened):
-    tab = opened()
+def test_hovering_gives_a_number_with_its_unit(shown):
+    tab = shown
     stage = tab.locator("#gap_sweep .stage svg")
     stage.scroll_into_view_if_needed()
     box = stage.bounding_box()
@@ -156,8 +168,8 @@ def test_hovering_gives_a_number_with_its_unit(opened):
     assert re.search(r"kWh/m² at \d\.\d\d eV", tip.text_content())
 
 
-def test_the_keyboard_reaches_every_value(opened):
-    tab = opened()
+def test_the_keyboard_reaches_every_value(shown):
+    tab = shown
     tab.locator("#factors .stage").focus()
     seen = set()
     for _ in range(3):
@@ -170,8 +182,8 @@ def test_the_keyboard_reaches_every_value(opened):
     assert tab.locator("#factors .stage circle").count() == 0
 
 
-def test_the_numbers_of_a_chart_can_be_saved(opened):
-    tab = opened()
+def test_the_numbers_of_a_chart_can_be_saved(shown):
+    tab = shown
     with tab.expect_download() as waiting:
         tab.locator("#factors .save").click()
     text = Path(waiting.value.path()).read_text(encoding="utf-8")
@@ -235,8 +247,8 @@ def _contrast(one, other):
     return (high + 0.05) / (low + 0.05)
 
 
-def test_series_look_alike_on_page_and_in_pictures(opened):
-    tab = opened()
+def test_series_look_alike_on_page_and_in_pictures(shown):
+    tab = shown
     dashes = [tab.evaluate(f"look({i}).dash") for i in range(28)]
     assert [dash is None for dash in dashes] == [mark(i).dash == () for i in range(28)]
 
