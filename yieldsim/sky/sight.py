@@ -32,7 +32,7 @@ class Sight:
     cos_tilt : (n, step) or (1, 1) array [1], of the face; negative for one that looks down
     beam : (n,) array [1], on light of the sun's direction
     sky : (n,) array [1], on a uniform sky's light on the horizontal
-    rim : (n,) array [1], on light from the rim of the sky
+    rim : (n,) array [1], on light from the rim of the sky; 0 between rows, which hide it
     ground_beam : (n,) array [1], on light of the sun's direction, by way of the ground
     ground_sky : (n,) array [1], on a uniform sky's light, by way of the ground
     """

@@ -101,6 +101,21 @@ class MountingPlan:
     height_m: float = 1.5
     sky_model: Literal["hay-davies", "perez"] = "hay-davies"
 
+    def words(self) -> str:
+        """Return what a person would say of it."""
+        if self.kind == "tracker":
+            axis = f"axis towards {self.axis_azimuth_deg:g} deg"
+            axis += f", falling {self.axis_tilt_deg:g} deg" if self.axis_tilt_deg else ""
+            back = ", turning back before rows shade each other" if self.backtrack and self.row_pitch_m else ""
+            stands = f"tracker, {axis}, up to {self.max_angle_deg:g} deg to either side{back}"
+        elif self.kind == "vertical":
+            stands = f"vertical, azimuth {self.azimuth_deg:g} deg"
+        else:
+            stands = f"{self.kind}, {self.tilt_deg:g} deg tilt, azimuth {self.azimuth_deg:g} deg"
+        if self.row_pitch_m is not None:
+            stands += f"; rows {self.row_width_m:g} m wide, {self.row_pitch_m:g} m apart, {self.height_m:g} m up"
+        return stands
+
 
 @dataclass(frozen=True, slots=True)
 class SitePlan:
