@@ -26,24 +26,26 @@ _LOWEST = -700.0  # exp of less is below the smallest number that keeps all digi
 _PI = math.pi
 _RESONANCE = RESONANCE
 
-# Offsets of rows in flat scratch memory, one value a band. The distance is a constant, so that the compiler can see that
-# rows do not overlap and take several bands at once.
+# Offsets of rows in flat scratch memory, one value a band. The distance is a constant, so that the compiler can see
+# that rows do not overlap and take several bands at once.
 STRIDE = 128
 _PATH_WATER, _PATH_MIXED, _HAZE, _BEAM, _DOWN1, _DOWN2, _R11, _R12 = (STRIDE * row for row in range(8))
 _R21, _R22, _DEPTH, _OZONE, _TAU, _OMEGA, _C1, _C2, _C3 = (STRIDE * row for row in range(8, 17))
 _N_SCRATCH = 17
 # Offsets of rows of band constants.
 BAND_ROWS = (
-    "rayleigh", "ozone", "water", "mixed_gas", "gas_scale", "haze_shape", "haze_albedo", "haze_asymmetry", "cloud_albedo",
+    "rayleigh", "ozone", "water", "mixed_gas", "gas_scale", "haze_shape", "haze_albedo", "haze_asymmetry",
+    "cloud_albedo",
 )  # fmt: skip
 _RAYLEIGH, _OZONE_K, _WATER_K, _MIXED_K, _GAS_SCALE, _SHAPE, _HAZE_ALBEDO, _HAZE_G, _CLOUD_ALBEDO = (
     STRIDE * row for row in range(9)
 )
 
-FAST = {"fastmath": {"contract", "reassoc", "arcp", "nsz"}, "error_model": "numpy", "cache": True}
+# No fast-math flags: with them, code just compiled and code read from the cache gave other last digits, and two runs
+# other bytes. The loops are vectorised all the same.
 
 
-@njit(**FAST)  # type: ignore[untyped-decorator]
+@njit(error_model="numpy", cache=True)
 def _exp(x: float) -> float:
     """Return exp(x) for x <= 0 to 2e-16 of its value; 2**k is made by setting the exponent's bits."""
     x = max(x, _LOWEST)
@@ -63,10 +65,10 @@ def _exp(x: float) -> float:
     p = p * r + 1.0
     p = p * r + 1.0
     bits = (np.int64(k) + np.int64(1023)) << np.int64(52)
-    return p * np.int64(bits).view(np.float64)
+    return p * np.int64(bits).view(np.float64)  # type: ignore[no-any-return]
 
 
-@njit(**FAST)  # type: ignore[untyped-decorator]
+@njit(error_model="numpy", cache=True)
 def _log(x: float) -> float:
     """Return ln(x) for normal x > 0, by the exponent's bits and the series of atanh."""
     bits = np.float64(x).view(np.int64)
@@ -91,7 +93,7 @@ def _log(x: float) -> float:
     return power * _LN2_HIGH + (2.0 * s * p + power * _LN2_LOW)
 
 
-@njit(**FAST)  # type: ignore[untyped-decorator]
+@njit(error_model="numpy", cache=True)
 def _tanh_over(k_squared: float, tau: float) -> float:
     """Return tanh(k tau/2)/k."""
     x = math.sqrt(k_squared) * tau * 0.5
@@ -102,7 +104,7 @@ def _tanh_over(k_squared: float, tau: float) -> float:
     return (direct if x > 0.02 else series) * tau * 0.5
 
 
-@njit(**FAST)  # type: ignore[untyped-decorator]
+@njit(error_model="numpy", cache=True)
 def _join(scratch: Array, n_band: int, mu: float, first: bool) -> None:
     """Solve the layer whose optics stand in scratch by four streams and add it below what stands there already."""
     l1, l2, l3 = -mu, (3 * mu * mu - 1) / 2, -(5 * mu * mu * mu - 3 * mu) / 2
@@ -132,8 +134,10 @@ def _join(scratch: Array, n_band: int, mu: float, first: bool) -> None:
         small = max(determinant / large, 0.0)
         at_large, at_small = _tanh_over(large, tau), _tanh_over(small, tau)
         slope = (at_large - at_small) / (large - small)
-        t11, t12, t21, t22 = at_small + slope * (g11 - small), slope * g12, slope * g21, at_small + slope * (g22 - small)
-        u11, u12, u21, u22 = at_small + slope * (h11 - small), slope * h12, slope * h21, at_small + slope * (h22 - small)
+        t11, t12 = at_small + slope * (g11 - small), slope * g12
+        t21, t22 = slope * g21, at_small + slope * (g22 - small)
+        u11, u12 = at_small + slope * (h11 - small), slope * h12
+        u21, u22 = slope * h21, at_small + slope * (h22 - small)
         x11, x12 = p11 * t11 + p12 * t21, p11 * t12 + p12 * t22
         x21, x22 = p21 * t11 + p22 * t21, p21 * t12 + p22 * t22
         y11, y12 = m11 * u11 + m12 * u21, m11 * u12 + m12 * u22
@@ -173,7 +177,8 @@ def _join(scratch: Array, n_band: int, mu: float, first: bool) -> None:
         else:
             up_a = high_a - (r11 * low_a + r12 * low_b) - (q11 * lit_a + q12 * lit_b)
             up_b = high_b - (r21 * low_a + r22 * low_b) - (q21 * lit_a + q22 * lit_b)
-            s11, s12, s21, s22, beam = scratch[_R11 + b], scratch[_R12 + b], scratch[_R21 + b], scratch[_R22 + b], scratch[_BEAM + b]
+            s11, s12, s21, s22 = scratch[_R11 + b], scratch[_R12 + b], scratch[_R21 + b], scratch[_R22 + b]
+            beam = scratch[_BEAM + b]
             z11, z12 = s11 * r11 + s12 * r21, s11 * r12 + s12 * r22
             z21, z22 = s21 * r11 + s22 * r21, s21 * r12 + s22 * r22
             d = 1.0 / ((1.0 - z11) * (1.0 - z22) - z12 * z21)
@@ -193,7 +198,7 @@ def _join(scratch: Array, n_band: int, mu: float, first: bool) -> None:
             scratch[_BEAM + b] = beam * passed
 
 
-@njit(**FAST)  # type: ignore[untyped-decorator]
+@njit(error_model="numpy", cache=True)
 def _mix(
     scratch: Array, n_band: int, shares: Array, water_path: float, air_path: float, slant: float, pressure_ratio: float,
     cloud: float, cloud_asymmetry: float, rayleigh_moment: float, open_sky: float, bands: Array,
@@ -226,10 +231,11 @@ def _mix(
         scratch[_TAU + b] = kept * depth
         scratch[_OMEGA + b] = (1.0 - f) * albedo / kept
         n = 1.0 / (1.0 - f)
-        scratch[_C1 + b], scratch[_C2 + b], scratch[_C3 + b] = 3.0 * (x1 - f) * n, 5.0 * (x2 - f) * n, 7.0 * (x3 - f) * n
+        scratch[_C1 + b] = 3.0 * (x1 - f) * n
+        scratch[_C2 + b], scratch[_C3 + b] = 5.0 * (x2 - f) * n, 7.0 * (x3 - f) * n
 
 
-@njit(**FAST)  # type: ignore[untyped-decorator]
+@njit(error_model="numpy", cache=True)
 def transmit(
     hours: Array, albedo: Array, slants: Array, shares: Array, bands: Array, n_band: int,
     cloud_asymmetry: float, rayleigh_moment: float, open_sky: float, beam: Array, total: Array,
