@@ -105,7 +105,7 @@ def test_dark_is_zero_and_nan_stays_nan():
 
 
 @given(diodes())
-@settings(max_examples=200, deadline=None)
+@settings(max_examples=80, deadline=None)
 def test_curves_fall_and_the_power_point_is_on_them(diode):
     power, at_current, at_voltage = maximum_power(diode)
     opened, short = open_circuit(diode), short_circuit(diode)

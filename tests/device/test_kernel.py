@@ -21,7 +21,7 @@ def constants(one):
 
 
 @given(diodes())
-@settings(max_examples=200, deadline=None)
+@settings(max_examples=60, deadline=None)
 def test_single_power_is_that_of_the_plain_form(one):
     light = one.photocurrent * np.array([1.0, 0.3, 1e-3])
     row = np.ones(3)
@@ -31,7 +31,7 @@ def test_single_power_is_that_of_the_plain_form(one):
 
 
 @given(stacks(), st.booleans())
-@settings(max_examples=200, deadline=None)
+@settings(max_examples=60, deadline=None)
 def test_stack_power_is_that_of_the_plain_form(links, in_series):
     share = np.array([1.0, 0.2, 0.01])
     hourly = [

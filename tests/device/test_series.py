@@ -60,14 +60,14 @@ def plain_power(links):
 
 
 @given(stacks())
-@settings(max_examples=25, deadline=None)
+@settings(max_examples=15, deadline=None)
 def test_power_point_against_a_plain_search(links):
     # the search's own 1e-9 of the power: the top is flat, and its steps are 1e-12 of the current
     assert series.maximum_power(hourly(links))[0][0] == pytest.approx(plain_power(links), rel=1e-8)
 
 
 @given(stacks())
-@settings(max_examples=100, deadline=None)
+@settings(max_examples=40, deadline=None)
 def test_curve_falls_from_open_to_short_circuit(links):
     several = hourly(links)
     power, current, voltage = (each[0] for each in series.maximum_power(several))
@@ -88,14 +88,32 @@ def test_curve_falls_from_open_to_short_circuit(links):
 
 
 @given(stacks())
-@settings(max_examples=100, deadline=None)
-def test_four_terminals_are_never_below_series_without_coupling(links):
-    dark = hourly([replace(link, emission=0.0) for link in links])
-    assert series.separate_power(dark)[0] >= series.maximum_power(dark)[0][0] * (1 - 1e-10)
+@settings(max_examples=60, deadline=None)
+def test_four_terminals_are_never_below_series(links):
+    for several in (hourly(links), hourly([replace(link, emission=0.0) for link in links])):
+        # coupled points settle to 1e-9 of the power in their rounds
+        assert series.separate_power(several)[0] >= series.maximum_power(several)[0][0] * (1 - 2e-9)
+
+
+def test_coupled_points_chosen_together_beat_each_for_itself():
+    top, bottom = pair(255.0, 180.0, 1.0)
+    alone, _, voltage = diode.maximum_power(top.diode)
+    lit = bottom.diode.photocurrent + top.emission * np.expm1(voltage / THERMAL)
+    each = alone + diode.maximum_power(replace(bottom.diode, photocurrent=lit))[0]
+    together = series.separate_power([top, bottom])
+    assert 0 < together[0] - each[0] < 0.02 * each[0]
+
+    def total(inside):
+        current, voltage = diode.curve(top.diode, inside)
+        lit = bottom.diode.photocurrent + top.emission * np.expm1(inside / THERMAL)
+        return current * voltage + diode.maximum_power(replace(bottom.diode, photocurrent=lit))[0]
+
+    searched = total(np.linspace(voltage[0] - 0.06, voltage[0] + 0.06, 4001)).max()
+    assert together[0] == pytest.approx(searched, rel=1e-7)  # steps of 0.03 mV, a thousandth of kT/q, squared
 
 
 @given(stacks())
-@settings(max_examples=100, deadline=None)
+@settings(max_examples=40, deadline=None)
 def test_coupling_never_lowers_power(links):
     dark = hourly([replace(link, emission=0.0) for link in links])
     coupled = hourly(links)

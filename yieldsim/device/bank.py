@@ -159,8 +159,8 @@ class Bank:
 
         Notes
         -----
-        One junction: its own power. Two terminals: `series`. Four: each junction at its own power point, the light that
-        a junction emits there handed down to the next.
+        One junction: its own power. Two terminals: all in series. Four: each junction at its own power point; where
+        they are coupled by the light they emit the points are chosen together, see `series.separate_power`.
         """
         temperature = self._per_absorber(temperature)
         out = np.empty((len(self.absorbers), currents.shape[1]))

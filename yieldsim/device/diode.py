@@ -140,20 +140,47 @@ def maximum_power(diode: Diode) -> tuple[Any, Any, Any]:
 
 
 def _root(diode: Diode) -> Array:
+    start = power_point_start(diode.photocurrent, diode.saturation_current, diode.thermal_voltage)
+    return rewarded_point(diode, start, 0.0, 0.0, 1.0)
+
+
+def rewarded_point(diode: Diode, start: Any, reward: Any, emission: Any, kt: Any) -> Array:
+    """Return the junction voltage at which power plus what the emitted light earns elsewhere is greatest.
+
+    Parameters
+    ----------
+    diode : Diode, in the light
+    start : (...) array [V], a voltage near by
+    reward : (...) array [V], power earned per current that emitted light makes elsewhere
+    emission : (...) array [A m-2], that current per exp(Vj/kt) - 1; 0 = the plain power point
+    kt : (...) array [V], kT/q
+
+    Returns
+    -------
+    (...) array [V]
+
+    Notes
+    -----
+    s Vj - reward dE/dVj = J (1 + 2 Rs s), solved as in `maximum_power`; as long as reward dE/dVj outweighs s Vj the
+    voltage is too low.
+    """
     high = _upper_bound(diode)
     low = np.zeros_like(high)
-    start = power_point_start(diode.photocurrent, diode.saturation_current, diode.thermal_voltage)
     vj = np.where(start < 0.99 * high, start, high / 2)
+    earns = bool(np.any(np.asarray(emission) > 0))
     rs = diode.series_resistance
     for _ in range(NEWTON_STEPS):
         current, slope, bend = derivatives(diode, vj)
         brake = 1 + 2 * rs * slope
-        alive = current > 0
-        flow = np.where(alive, current, np.nan)
-        value = np.log(slope * vj / (flow * brake))
-        below = value < 0
+        flow = np.where(current > 0, current, np.nan)
+        gain = reward * emission * np.exp(vj / kt) / kt if earns else 0.0
+        push = slope * vj - gain
+        pushed = np.where(push > 0, push, np.nan)
+        value = np.log(pushed / (flow * brake))
+        below = (value < 0) | ((current > 0) & ~(push > 0))
         low, high = np.where(below, vj, low), np.where(below, high, vj)
-        trial = vj - value / (bend / (slope * brake) + 1 / vj + slope / flow)
+        rise = (bend * vj + slope - gain / kt) / pushed - 2 * rs * bend / brake + slope / flow
+        trial = vj - value / rise
         trial = np.where((trial >= low) & (trial <= high), trial, (low + high) / 2)  # also where no current was left
         moved = np.abs(trial - vj)
         vj = trial

@@ -29,7 +29,7 @@ def _compiled(function: _Function) -> _Function:
 
 _NEWTON_STEPS, _ROOT_STEPS = diode.NEWTON_STEPS, diode.ROOT_STEPS
 _SETTLED, _VOLTAGE_SETTLED, _NO_VOLTAGE = diode.SETTLED, diode.VOLTAGE_SETTLED, diode.NO_VOLTAGE
-_SERIES_STEPS, _SERIES_SETTLED = series.NEWTON_STEPS, series.SETTLED
+_SERIES_STEPS, _SERIES_SETTLED, _SEPARATE_ROUNDS = series.NEWTON_STEPS, series.SETTLED, series.SEPARATE_ROUNDS
 
 # Columns of a junction's constants.
 CONSTANTS = 4
@@ -84,31 +84,42 @@ def _start(jl: float, j0: float, a: float) -> float:
 
 
 @_compiled
-def _single(jl: float, j0: float, a: float, constants: Array) -> tuple[float, float]:
-    """`diode.maximum_power` of one junction in the light: power and voltage over the junction."""
+def _point(
+    jl: float, j0: float, a: float, constants: Array, start: float, reward: float, emission: float, kt: float
+) -> float:
+    """`diode.rewarded_point` of one junction in the light."""
     high = _upper_bound(jl, j0, a, constants)
     low = 0.0
-    vj = _start(jl, j0, a)
-    if not vj < 0.99 * high:
-        vj = high / 2
+    vj = start if start < 0.99 * high else high / 2
     for _ in range(_NEWTON_STEPS):
         current, slope, bend = _derivatives(jl, j0, a, constants, vj)
-        before = vj
-        if current > 0:
-            brake = 1 + 2 * constants[_RS] * slope
-            value = math.log(slope * vj / (current * brake))
-            if value < 0:
-                low = vj
-            else:
-                high = vj
-            vj = vj - value / (bend / (slope * brake) + 1 / vj + slope / current)
-            if not low <= vj <= high:
-                vj = (low + high) / 2
+        gain = reward * emission * math.exp(vj / kt) / kt if emission > 0 else 0.0
+        push = slope * vj - gain
+        brake = 1 + 2 * constants[_RS] * slope
+        trial = math.nan
+        below = current > 0
+        if current > 0 and push > 0:
+            value = math.log(push / (current * brake))
+            below = value < 0
+            rise = (bend * vj + slope - gain / kt) / push - 2 * constants[_RS] * bend / brake + slope / current
+            trial = vj - value / rise
+        if below:
+            low = vj
         else:
             high = vj
-            vj = (low + high) / 2
-        if abs(vj - before) <= _SETTLED * a:
+        if not low <= trial <= high:
+            trial = (low + high) / 2
+        moved = abs(trial - vj)
+        vj = trial
+        if moved <= _SETTLED * a:
             break
+    return vj
+
+
+@_compiled
+def _single(jl: float, j0: float, a: float, constants: Array) -> tuple[float, float]:
+    """`diode.maximum_power` of one junction in the light: power and voltage over the junction."""
+    vj = _point(jl, j0, a, constants, _start(jl, j0, a), 0.0, 0.0, 1.0)
     current = _derivatives(jl, j0, a, constants, vj)[0]
     return current * (vj - current * constants[_RS]), vj
 
@@ -261,15 +272,27 @@ def _series(
 
 
 @_compiled
-def _separate(jl: Array, j0: Array, a: Array, constants: Array, emission: Array, thermal: float) -> float:
-    """`series.separate_power` of one hour."""
-    power, gained = 0.0, 0.0
-    for i in range(len(jl)):
-        light = jl[i] + gained
-        gained = 0.0
-        if light > 0:
-            own, vj = _single(light, j0[i], a[i], constants[i])
-            power += own
+def _separate(jl: Array, j0: Array, a: Array, constants: Array, emission: Array, thermal: float, state: Array) -> float:
+    """`series.separate_power` of one hour; rows of state: voltage, earning per current."""
+    n, coupled = len(jl), False
+    for i in range(n):
+        coupled = coupled or emission[i] > 0
+    power = 0.0
+    for turn in range(_SEPARATE_ROUNDS if coupled else 1):
+        power, gained = 0.0, 0.0
+        for i in range(n):
+            light = jl[i] + gained
+            gained = 0.0
+            if not light > 0:
+                state[0, i], state[1, i] = 0.0, 0.0
+                continue
+            plain = turn == 0 or emission[i] == 0 or i == n - 1
+            start = _start(light, j0[i], a[i]) if plain else state[0, i]
+            reward = 0.0 if plain else state[1, i + 1]
+            vj = _point(light, j0[i], a[i], constants[i], start, reward, emission[i], thermal)
+            current = _derivatives(light, j0[i], a[i], constants[i], vj)[0]
+            power += current * (vj - current * constants[i, _RS])
+            state[0, i], state[1, i] = vj, vj - 2 * current * constants[i, _RS]
             if emission[i] > 0:
                 gained = emission[i] * _expm1(vj / thermal)
     return power
@@ -312,7 +335,7 @@ def stack_power(
             if in_series:
                 power[h] = _series(jl, j0, a, constants, e, kt[h], total, state)
             else:
-                power[h] = _separate(jl, j0, a, constants, e, kt[h])
+                power[h] = _separate(jl, j0, a, constants, e, kt[h], state)
         elif total == 0:
             power[h] = 0.0
     return power
