@@ -5,6 +5,8 @@ from pathlib import Path
 import pytest
 
 from yieldsim.cli import main
+from yieldsim.commands.check import _stance
+from yieldsim.study.plan import MountingPlan
 
 STUDY = """\
 study: look
@@ -39,6 +41,8 @@ def test_a_real_station(checked):
     code, out, err = checked(STATION)
     assert (code, err) == (0, "")
     assert "outputs/look/weather_quality.csv" in out
+    assert Path("outputs/look/weather/Greensboro.png").read_bytes().startswith(b"\x89PNG")
+    assert "weather/Greensboro.png" in out
     table = Path("outputs/look/weather_quality.csv").read_text(encoding="utf-8")
     assert table.startswith("site,kind,rows,first,last,found,done\n")
     assert "Greensboro,night_light,1," in table
@@ -70,15 +74,38 @@ def test_a_real_station(checked):
     ],
     ids=["one row", "prose", "empty", "binary"],
 )
-def test_weather_that_cannot_be_used_is_named_and_the_other_sites_are_still_looked_at(checked, tmp_path, content, said):
+def test_weather_that_cannot_be_used_is_named(checked, tmp_path, content, said):
     (tmp_path / "bad.csv").write_bytes(content)
-    code, out, err = checked("  - {name: Broken, weather: bad.csv}", STATION)
+    code, out, err = checked("  - {name: Broken, weather: bad.csv}")
     assert code == 1
     assert "Broken: not usable" in out
-    assert "Greensboro: usable" in out
     assert "bad.csv" in err
     assert said in err
     assert "Traceback" not in err
+
+
+def test_the_other_sites_are_still_looked_at(checked, tmp_path):
+    (tmp_path / "bad.csv").write_bytes(b"prose")
+    code, out, _ = checked("  - {name: Broken, weather: bad.csv}", STATION)
+    assert code == 1
+    assert "Broken: not usable" in out
+    assert "Greensboro: usable" in out
+
+
+@pytest.mark.parametrize(
+    ("mounting", "said"),
+    [
+        (MountingPlan("a", "fixed", 30, 180), "fixed, 30 deg tilt, azimuth 180 deg"),
+        (MountingPlan("a", "tracker"), "tracker, axis 180 deg, turning 60 deg to either side"),
+        (
+            MountingPlan("a", "tracker", row_pitch_m=6),
+            "tracker, axis 180 deg, turning 60 deg to either side, back from the shade of its rows; "
+            "rows of 2 m every 6 m",
+        ),
+    ],
+)
+def test_how_modules_stand_in_words(mounting, said):
+    assert _stance(mounting) == said
 
 
 def test_a_file_of_twenty_rows(checked, tmp_path):

@@ -3,16 +3,16 @@
 from __future__ import annotations
 
 import argparse
-from collections.abc import Sequence
+from collections.abc import Iterator, Sequence
 from pathlib import Path
 from typing import TYPE_CHECKING, Any
 
 from yieldsim.commands._terminal import Progress, bold, plain, wrapped
 
 if TYPE_CHECKING:
-    from yieldsim.errors import Problem
+    from yieldsim.errors import InputError, Problem
     from yieldsim.study.hourly import SiteSky
-    from yieldsim.study.plan import SitePlan, StudyPlan
+    from yieldsim.study.plan import MountingPlan, SitePlan, StudyPlan
 
 EXAMPLE = """example:
   yieldsim check mine.yaml
@@ -29,7 +29,7 @@ def arguments(parser: argparse.ArgumentParser) -> None:
 
 
 def run(options: argparse.Namespace) -> int:
-    """Check the study and every weather file; print a verdict per site."""
+    """Check the study and every weather file; print a verdict per site, write the findings and a picture per site."""
     from yieldsim import api
     from yieldsim.errors import InputError
     from yieldsim.report.quality import write_quality
@@ -41,19 +41,14 @@ def run(options: argparse.Namespace) -> int:
     print(intent(plan))
     problems: list[Problem] = []
     rows: list[dict[str, Any]] = []
-    progress = Progress()
-    for i, site in enumerate(plan.sites):
-        progress(site.name, i, len(plan.sites))
-        try:
-            skies = _skies(site)
-        except InputError as error:
-            progress.close()
-            problems.extend(error.problems)
+    for site, found in _looked_at(plan):
+        if isinstance(found, InputError):
+            problems.extend(found.problems)
             print(f"\n{bold(plain(site.name))}: not usable")
             continue
-        progress.close()
-        rows += [row for sky in skies for row in quality_rows(site.name, sky)]
-        print(f"\n{describe(site, skies)}")
+        rows += [row for sky in found for row in quality_rows(site.name, sky)]
+        pictures = _pictures(site.name, found, out / "weather")
+        print(f"\n{describe(site, found)}\n{_line('picture', ', '.join(pictures))}")
     if rows:
         print(f"\nWhat was found: {write_quality(rows, out)}")
     if problems:
@@ -61,11 +56,30 @@ def run(options: argparse.Namespace) -> int:
     return 0
 
 
-def _skies(site: SitePlan) -> list[SiteSky]:
+def _looked_at(plan: StudyPlan) -> Iterator[tuple[SitePlan, list[SiteSky] | InputError]]:
+    """Yield each site with its weather as it would be computed from, or what is wrong with it."""
     from yieldsim import api
+    from yieldsim.errors import InputError
     from yieldsim.study.hourly import site_sky
 
-    return [site_sky(site, weather) for weather in api.load_weather(site)]
+    progress = Progress()
+    for i, site in enumerate(plan.sites):
+        progress(site.name, i, len(plan.sites))
+        found: list[SiteSky] | InputError
+        try:
+            found = [site_sky(site, weather) for weather in api.load_weather(site)]
+        except InputError as error:
+            found = error
+        progress.close()
+        yield site, found
+
+
+def _pictures(name: str, skies: Sequence[SiteSky], folder: Path) -> list[str]:
+    """Draw the weather of a site, one picture a year, and return the files to look at."""
+    from yieldsim.report.weather import write_weather_picture
+
+    called = [name] if len(skies) == 1 else [f"{name} {i}" for i in range(1, len(skies) + 1)]
+    return [str(write_weather_picture(each, sky.weather, folder)[-1]) for each, sky in zip(called, skies, strict=True)]
 
 
 def intent(plan: StudyPlan) -> str:
@@ -103,15 +117,27 @@ def describe(site: SitePlan, skies: Sequence[SiteSky]) -> str:
         )
     lines += [_line("note", plain(note)) for note in dict.fromkeys(note for sky in skies for note in sky.weather.notes)]
     lines += [_line("air", f"{name}: {plain(source)}") for name, source in skies[0].sources]
-    lines += [
-        _line("plane", f"{plain(each.name)}: {each.kind}, {each.tilt_deg:g} deg tilt, azimuth {each.azimuth_deg:g} deg")
-        for each in site.mountings
-    ]
+    lines += [_line("plane", f"{plain(each.name)}: {_stance(each)}") for each in site.mountings]
     lines += [
         _line("found", f"{finding.kind}, {finding.rows} rows: {plain(finding.found)}; {plain(finding.done)}")
         for finding in found
     ]
     return "\n".join(lines)
+
+
+def _stance(mounting: MountingPlan) -> str:
+    """Return how modules stand, in words."""
+    if mounting.kind == "tracker":
+        words = (
+            f"tracker, axis {mounting.axis_azimuth_deg:g} deg, turning {mounting.max_angle_deg:g} deg to either side"
+        )
+        if mounting.backtrack and mounting.row_pitch_m is not None:
+            words += ", back from the shade of its rows"
+    else:
+        words = f"{mounting.kind}, {mounting.tilt_deg:g} deg tilt, azimuth {mounting.azimuth_deg:g} deg"
+    if mounting.row_pitch_m is None:
+        return words
+    return f"{words}; rows of {mounting.row_width_m:g} m every {mounting.row_pitch_m:g} m"
 
 
 def _place(weather: Any) -> str:

@@ -26,7 +26,8 @@ def problems(document: Document) -> list[Problem]:
         *_repeated(document, _names(study, "sites"), "sites"),
         *_repeated(document, _names(study, "absorbers"), "absorbers"),
         *_reserved(document, _names(study, "sites")),
-        *_repeated(document, _sweep_names(study), "qualities"),
+        *_repeated(document, _quality_names(study, "gap_sweep"), "qualities"),
+        *_repeated(document, _quality_names(study, "gap_pairs"), "qualities"),
         *_reference(document, study),
         *_mountings(document, study),
         *_weather_twice(document, study),
@@ -48,14 +49,14 @@ def _names(study: dict[str, Any], section: str) -> Named:
     ]
 
 
-def _sweep_names(study: dict[str, Any]) -> Named:
-    sweep = study.get("gap_sweep")
+def _quality_names(study: dict[str, Any], section: str) -> Named:
+    sweep = study.get(section)
     qualities = sweep.get("quality") if isinstance(sweep, dict) else None
     if not isinstance(qualities, list):
         return []
     names = []
     for i, quality in enumerate(qualities):
-        path: KeyPath = ("gap_sweep", "quality", i)
+        path: KeyPath = (section, "quality", i)
         if isinstance(quality, str):
             names.append((path, quality))
         elif isinstance(quality, dict) and isinstance(quality.get("name"), str):
