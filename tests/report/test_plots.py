@@ -91,7 +91,7 @@ def test_the_same_result_gives_the_same_bytes(tmp_path, factory):
 def test_a_user_s_own_settings_change_nothing(factory):
     small = factory.make(["One"], {"silicon": 1.12, "wide": 1.68})
     drawn = []
-    for own in ({}, {"font.size": 20, "axes.grid": False}):
+    for own in ({}, {"font.size": 20, "xtick.direction": "in"}):
         with mpl.rc_context(own):
             with canvas.style():
                 drawn.append(canvas.to_bytes(plots.annual_yield(small), "svg", "annual_yield"))
@@ -100,7 +100,7 @@ def test_a_user_s_own_settings_change_nothing(factory):
 
 
 def test_hostile_names_are_drawn_as_text(tmp_path, factory):
-    names = ["<script>alert(1)</script>", "$\\frac{", "سلام", "🌞 sun", "x" * 200, "a\nb"]
+    names = ["<script>alert(1)</script>", "$\\frac{$", "سلام", "🌞 sun", "x" * 200, "a\nb"]
     made = factory.make(names[:3], {name: 1.1 + 0.1 * i for i, name in enumerate(names)})
     for file in plots.write_plots(made, tmp_path):
         assert b"<script" not in file.read_bytes()
