@@ -49,3 +49,10 @@ def test_a_blue_loss_or_a_dip_is_no_edge():
     wave = np.array([300, 310, 320, 400, 420, 430, 500, 850, 880, 920, 960.0])
     level = np.array([0.0, 0.9, 0.9, 0.9, 0.3, 0.9, 0.9, 0.9, 0.5, 0.1, 0.0])
     assert 870 < wavelength_nm(steepest_edge_ev(wave, level)) < 910
+
+
+def test_a_plateau_that_leans_does_not_drag_the_edge():
+    wave = np.arange(300.0, 1001.0, 5.0)
+    level = np.interp(wave, [300, 500, 880], [0.9, 0.9, 0.6]) / (1 + np.exp((1.378 - 1239.842 / wave) / 0.006))
+    # the lean holds a third of the fall; 5 nm are 8 meV
+    assert steepest_edge_ev(wave, level) == pytest.approx(1.378, abs=4e-3)

@@ -65,6 +65,12 @@ def test_noise_moves_neither_edge_nor_current_nor_the_dark_current(seed):
     assert told(measured, "cut to 0")
 
 
+def test_stray_light_far_below_the_edge_is_cut_too():
+    measured = cleaned(WAVE, LEVEL + 0.01, "eqe")
+    assert told(measured, "tail below 0.03 cut to 0")
+    assert at(measured.response, np.array([900.0, 950.0])).tolist() == [0.0, 0.0]
+
+
 def test_holes_and_missing_ends_are_told():
     hole = (WAVE < 450) | (WAVE > 560)
     measured = cleaned(WAVE[hole], LEVEL[hole], "eqe")
