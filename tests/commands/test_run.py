@@ -1,5 +1,6 @@
 """The summary of a run, and what is handed to the engine."""
 
+import argparse
 import json
 from pathlib import Path
 from types import SimpleNamespace
@@ -8,7 +9,7 @@ import pytest
 
 from yieldsim import api
 from yieldsim.cli import main
-from yieldsim.commands.run import departure, differences, summary
+from yieldsim.commands.run import departure, differences, summary, workers
 from yieldsim.config import load
 from yieldsim.errors import PlaceError
 from yieldsim.report import answer
@@ -54,6 +55,13 @@ def test_the_departure_from_the_datasheet_ranking_is_a_sentence():
         "Per area the order departs from that of the datasheet efficiencies: cadmium telluride 2nd instead of 3rd, "
         "perovskite 3rd instead of 2nd; per kWp they lie 3.1 % apart."
     )
+
+
+def test_the_order_within_a_tie_of_the_datasheet_is_no_departure():
+    rows = [row("one-sided", 900.0, 1.0, (3, 3, 1)), row("two", 950.0, 1.2, (2, 2, 1)), row("b", 990.0, 1.3, (1, 1, 3))]
+    assert "b 1st instead of 3rd" in departure(rows)
+    assert "one-sided 3rd instead of 1st" in departure(rows)
+    assert "two" not in departure(rows)  # second of two that share the first rank
 
 
 def test_no_departure():
@@ -194,6 +202,13 @@ def test_what_is_no_record_is_refused(tmp_path, capsys, content, said):
     file.write_text(content, encoding="utf-8")
     assert main(["run", "--from", str(file)]) == 1
     assert said in capsys.readouterr().err
+
+
+def test_processes_from_1_to_1024():
+    assert [workers(text) for text in ("1", "1024")] == [1, 1024]
+    for text in ("0", "1025", "-1", "2.0", "two", "２"):
+        with pytest.raises(argparse.ArgumentTypeError):
+            workers(text)
 
 
 @pytest.mark.parametrize("words", [[], ["x.yaml", "--from", "run.json"]])

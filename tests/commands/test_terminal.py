@@ -55,7 +55,16 @@ def test_progress_is_quiet_elsewhere():
 
 
 @pytest.mark.parametrize(
-    ("seconds", "said"), [(0.1, "1 s"), (40, "40 s"), (100, "2 min"), (3600, "60 min"), (7500, "2 h 5 min")]
+    ("seconds", "said"),
+    [
+        (0.1, "1 s"),
+        (40, "40 s"),
+        (100, "2 min"),
+        (3600, "60 min"),
+        (5340, "89 min"),
+        (5400, "1 h 30 min"),
+        (7500, "2 h 5 min"),
+    ],
 )
 def test_durations_as_people_say_them(seconds, said):
     assert duration(seconds) == said

@@ -105,6 +105,28 @@ def test_a_library_entry_brought_to_a_sheet(made):
     assert figures.power_coefficient == pytest.approx(-0.003, rel=1e-3)
 
 
+@pytest.mark.parametrize(
+    ("sheet", "beside", "refused"),
+    [
+        ({"voc_v": 0.70}, "series_resistance_ohm_cm2", False),
+        ({"ff": 0.80}, "external_radiative_efficiency", False),
+        ({"ff": 0.80}, "series_resistance_ohm_cm2", True),
+        ({"voc_v": 0.70, "efficiency": 0.21}, "series_resistance_ohm_cm2", True),
+        ({"ff": 0.80, "efficiency": 0.21}, "external_radiative_efficiency", True),
+        ({"jsc_coefficient_per_k": 5e-4}, "gap_shift_ev_per_k", True),
+        ({"voc_v": 0.70}, "nonradiative_drift_per_k", False),
+        ({"voc_coefficient_per_k": -0.003}, "nonradiative_drift_per_k", True),
+    ],
+)
+def test_what_a_sheet_solves_cannot_be_given_beside_it(made, sheet, beside, refused):
+    value = 5e-3 if beside == "external_radiative_efficiency" else 1e-4
+    absorber = {"name": "mine", "like": "c-si", "datasheet": sheet, beside: value}
+    if refused:
+        assert f"`{beside}` beside a datasheet" in problems_of(made, absorber)[0].found
+    else:
+        assert getattr(made(absorber).absorbers[0].junctions[0], beside) == value
+
+
 def test_layers_of_a_stack_may_be_measured(made, film):
     plan = made(
         {

@@ -84,6 +84,11 @@ def test_the_place_is_marked_under_the_line():
     assert caret.index("^") == shown.rindex("c: 2")
 
 
+def test_the_place_of_a_syntax_slip_is_marked_too():
+    _, caret = problems_of("ab: [1, 2\nabc: 3")[0].excerpt.splitlines()
+    assert caret == "       |    ^"  # the colon: where a comma or bracket was due
+
+
 def test_a_long_line_is_cut_around_the_place():
     line = "x" * 5000
     shown, caret = compose.excerpt([f"{line}HERE{line}"], Mark(1, 5001)).splitlines()

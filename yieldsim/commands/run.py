@@ -144,7 +144,7 @@ def _plane(title: str, rows: Sequence[Row], reference: str) -> str:
             f"{row['specific_yield_kwh_kwp']:.0f}",
             _against(row, base),
             f"{row['energy_kwh_m2']:.1f}",
-            _place(row),
+            _place(row, rows),
         ]
         for row in ranked
     ]
@@ -159,15 +159,21 @@ def _against(row: Row, base: Row | None) -> str:
     return f"{100 * (row['specific_yield_kwh_kwp'] / base['specific_yield_kwh_kwp'] - 1):+z.1f} %"
 
 
-def _place(row: Row) -> str:
+def _place(row: Row, rows: Sequence[Row]) -> str:
     """Return the rank by energy per area, with that of the datasheet where it differs."""
     energy, sheet = int(row["rank_by_energy"]), int(row["rank_at_stc"])
-    return f"{energy} ({sheet})" if energy != sheet else f"{energy}    "
+    return f"{energy} ({sheet})" if _moved(row, rows) else f"{energy}    "
+
+
+def _moved(row: Row, rows: Sequence[Row]) -> bool:
+    """Return whether a rank by energy departs from the datasheet's; within a tie of the latter any order is its own."""
+    tied = sum(int(other["rank_at_stc"]) == int(row["rank_at_stc"]) for other in rows)
+    return not int(row["rank_at_stc"]) <= int(row["rank_by_energy"]) < int(row["rank_at_stc"]) + tied
 
 
 def departure(rows: Sequence[Row]) -> str:
     """Return in a sentence how far the ranking by energy per area departs from that by datasheet efficiency."""
-    moved = [row for row in rows if row["rank_by_energy"] != row["rank_at_stc"]]
+    moved = [row for row in rows if _moved(row, rows)]
     yields = [float(row["specific_yield_kwh_kwp"]) for row in rows]
     spread = f"per kWp they lie {100 * (max(yields) / min(yields) - 1):.1f} % apart" if min(yields) > 0 else ""
     if not moved:

@@ -109,7 +109,7 @@ def _mountings(document: Document, study: dict[str, Any]) -> Iterator[Problem]:
 
 
 def _repeated_keys(document: Document, path: KeyPath, mapping: dict[str, Any]) -> Iterator[Problem]:
-    names = [((*path, key), key) for key in mapping if isinstance(key, str) and (*path, key) in document.keys]
+    names = [((*path, key), key) for key in mapping if isinstance(key, str)]
     yield from _repeated(document, names, "mountings")
 
 
