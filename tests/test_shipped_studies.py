@@ -38,7 +38,7 @@ def test_every_promised_file_is_there(five):
 
 
 def test_annual_table(five):
-    """Contract: factors multiply to the performance ratio to 1e-9; nothing is NaN; sizes are plausible for such places."""
+    """Contract: factors multiply to the performance ratio to 1e-9; nothing is NaN; sizes are plausible."""
     _, folder = five
     annual = pd.read_csv(folder / "annual.csv")
     assert len(annual) == 5 * 8
@@ -55,8 +55,8 @@ def test_annual_table(five):
 
 
 def test_gap_sweep_table(five):
-    """56 gaps of two qualities at five places and under the standard spectrum; the best gap of an ideal absorber under the
-    standard is 1.34 eV (detailed balance, from memory: 33.7 % at 1.34 eV)."""
+    """56 gaps of two qualities at five places and under the standard spectrum; under the latter the best ideal gap
+    is 1.34 eV (detailed balance, from memory: 33.7 % at 1.34 eV)."""
     _, folder = five
     sweep = pd.read_csv(folder / "gap_sweep.csv")
     assert len(sweep) == 56 * 2 * 6

@@ -5,19 +5,23 @@ from __future__ import annotations
 import platform
 import sys
 import time
-from collections.abc import Sequence
+from collections.abc import Iterator, Sequence
 from dataclasses import replace
 from datetime import UTC, datetime
+from difflib import get_close_matches
 from importlib import metadata
 from pathlib import Path
 from typing import Any
 
+import numpy as np
 import pandas as pd
+import xarray as xr
 
 import yieldsim
-from yieldsim import config, readers, report, screen
-from yieldsim.errors import PlaceError
-from yieldsim.study import compare, pairs, run, store, sweep
+from yieldsim import checks, config, readers, report, screen
+from yieldsim.config import library
+from yieldsim.errors import InputError, PlaceError, Problem
+from yieldsim.study import compare, datasets, hourly, pairs, run, store, sweep
 from yieldsim.study.annual import Ratings
 from yieldsim.study.plan import SitePlan, StudyPlan
 from yieldsim.study.result import StudyResult, by_hour_table, responses_table
@@ -137,6 +141,59 @@ def run_study(
     details |= {"seconds_in_all": round(time.perf_counter() - clock, 3), "peak_memory_mb": peak_memory_mb()}
     store.write_json(folder / "run.json", details)
     return replace(result, run=details)
+
+
+def site_spectra(plan: StudyPlan, name: str, start: int | None = None, end: int | None = None) -> xr.Dataset:
+    """Return the band spectra of one site's lit intervals, on the horizontal and on each of its mountings.
+
+    Parameters
+    ----------
+    plan : StudyPlan
+    name : str, a site of the plan
+    start, end : int or None [s], UTC unix seconds; intervals that start from ``start`` to before ``end``
+
+    Returns
+    -------
+    Dataset, CF conventions, dims (time, band); attributes tell the inputs that made it
+
+    Raises
+    ------
+    InputError
+        For a site the study does not have, or a stretch without a lit interval.
+    """
+    names = [site.name for site in plan.sites]
+    if name not in names:
+        near = get_close_matches(name, names, 1, 0.4)
+        hint = f"; did you mean {near[0]!r}?" if near else ""
+        raise InputError(Problem("", 0, "--site", f"{name!r}{hint}", ", ".join(names)))
+    site = plan.sites[names.index(name)]
+    parts = []
+    for weather in load_weather(site):
+        sky = hourly.site_sky(site, weather)
+        when = sky.weather.time[sky.lit]
+        chosen = np.flatnonzero((when >= (start if start is not None else when[0])) & (when < (end or when[-1] + 1)))
+        if chosen.size:
+            parts.append(datasets.all_spectra_dataset(site.name, sky, site.mountings, chosen))
+    if not parts:
+        raise InputError(Problem("", 0, "--from, --to", "no interval with light", "a stretch within the weather file"))
+    dataset = (
+        parts[0]
+        if len(parts) == 1
+        else xr.concat(parts, "time", data_vars="minimal", coords="minimal", compat="equals")
+    )
+    dataset.attrs["input_sha256"] = "; ".join(f"{file.shown}: {file.sha256}" for file in site.weather)
+    dataset.attrs["yieldsim_version"] = yieldsim.__version__
+    return dataset
+
+
+def verify() -> Iterator[checks.Outcome]:
+    """Yield every check of this installation against published references."""
+    entries = [library.entry(name) for name in library.names()]
+    absorbers = {entry.name: entry.absorber for entry in entries}
+    published = {
+        entry.name: {name: (found.value, found.source) for name, found in entry.published.items()} for entry in entries
+    }
+    return checks.outcomes(absorbers, published)
 
 
 def standard_table(plan: StudyPlan) -> pd.DataFrame:

@@ -2,12 +2,9 @@
 
 import numpy as np
 import pytest
-from pvlib import clearsky
-from pvlib import spectrum as pvlib_spectrum
-from scipy.optimize import brentq
 
 from yieldsim import reference, spectrum
-from yieldsim.sky import column, sun
+from yieldsim.sky import column
 from yieldsim.units import wavelength_nm
 
 GAPS = (0.72, 1.12, 1.45, 1.6, 1.8, 2.2)
@@ -73,95 +70,6 @@ def test_direct_beam_of_the_standard():
     assert beam.sum() == pytest.approx(direct.sum(), rel=0.01)
 
 
-class TestSixS:
-    """6S with its Continental haze, the same optics fed to our column, flat air in both."""
-
-    conditions = reference.table("sixs_conditions")
-    haze = reference.table("sixs_haze_optics")
-    spectra = reference.table("sixs_clear_skies")
-
-    def setup_method(self):
-        n = len(self.conditions["condition"])
-        n_band = len(spectrum.band_wavelengths())
-        self.direct = self.spectra["direct"].reshape(n, n_band)
-        self.diffuse = self.spectra["diffuse"].reshape(n, n_band)
-        at_500 = np.interp(500.0, self.haze["wavelength_nm"], self.haze["extinction"])
-        self.optics = column.optics().replace(
-            haze_shape=-np.log(self.haze["extinction"] / at_500),
-            haze_albedo=self.haze["single_scattering_albedo"],
-            haze_asymmetry=self.haze["asymmetry"],
-        )
-        self.slant = 1 / np.cos(np.radians(self.conditions["zenith_deg"]))
-        curved = [
-            brentq(lambda c, m=m: float(sun.relative_air_mass(np.array(c))) - m, 1e-4, 1.0) if m > 1.0001 else 1.0
-            for m in self.slant
-        ]
-        given = column.Air(
-            np.array(curved), self.conditions["pressure"], self.conditions["water_cm"], self.conditions["ozone_atm_cm"],
-            self.conditions["aod500"], np.ones(n), self.conditions["albedo"],
-        )  # fmt: skip
-        passed = column.transmit(given, np.zeros(n), self.optics)
-        self.total, self.beam = passed.total * self.optics.factor, passed.beam * self.optics.factor
-        standard = (self.slant > 1.499) & (self.slant < 1.501) & (self.conditions["water_cm"] == 1.4164)
-        standard &= (self.conditions["aod500"] == 0.084) & (self.conditions["elevation_km"] == 0)
-        self.standard = int(np.flatnonzero(standard & (self.conditions["albedo"] == 0.2))[0])
-
-    def deviation(self, ours, theirs):
-        top = self.haze["solar_g173"]
-        a, b = spectral_factor(ours * top), spectral_factor(theirs * top)
-        return (a / a[self.standard]) / (b / b[self.standard]) - 1
-
-    @pytest.mark.parametrize(("low", "high", "limit"), [(1.0, 1.51, 0.005), (2.9, 3.1, 0.008), (4.9, 5.1, 0.015)])
-    def test_current_per_light(self, low, high, limit):
-        """Root mean square over gaps and skies, relative to air mass 1.5: the limits asked of the whole column."""
-        chosen = (self.slant >= low) & (self.slant <= high)
-        assert chosen.sum() >= 3
-        off = self.deviation(self.total, self.direct + self.diffuse)[chosen]
-        assert np.sqrt(np.mean(off**2)) <= limit
-
-    def test_direct_beam_alone(self):
-        """Root mean square over all gaps and skies up to air mass 5: 0.6 %."""
-        off = self.deviation(self.beam, self.direct)[self.slant <= 5.1]
-        assert np.sqrt(np.mean(off**2)) <= 0.006
-
-    def test_level(self):
-        """Broadband light on the ground within 3 %: 6S's gas absorption and ours are independent."""
-        top = self.haze["solar_g173"]
-        ratio = (self.total @ top) / ((self.direct + self.diffuse) @ top)
-        assert np.max(np.abs(ratio - 1)[self.slant <= 5.1]) < 0.03
-
-
-@pytest.mark.parametrize("aod500", [0.05, 0.1, 0.2, 0.4])
-@pytest.mark.parametrize("elevation_deg", [20.0, 30.0, 45.0, 60.0, 90.0])
-def test_clear_light_against_pvlib_bird(aod500, elevation_deg):
-    """Reference: Bird & Hulstrom (1981) through pvlib with the same inputs: GHI 5 %, DNI 7 % above 30 deg of sun and
-    up to
-    an AOD of 0.2; 10 % down to 20 deg and 0.4. It is itself a fit, good to a few percent."""
-    zenith = 90.0 - elevation_deg
-    given = air(cos_zenith=np.cos(np.radians(zenith)), aod500=aod500)
-    passed = column.transmit(given, np.zeros(1))
-    top = column.optics().extraterrestrial * column.optics().factor
-    dni, ghi = float(passed.beam[0] @ top), float(passed.total[0] @ top * given.cos_zenith[0])
-    bird = clearsky.bird(
-        zenith, float(sun.relative_air_mass(given.cos_zenith)[0]), aod500 * (380 / 500) ** -1.14, aod500, 1.4164,
-        0.3438, 101325.0, column.optics().extraterrestrial.sum(), albedo=0.2,
-    )  # fmt: skip
-    strict = elevation_deg > 30 and aod500 <= 0.2
-    assert ghi == pytest.approx(float(bird["ghi"]), rel=0.05 if strict else 0.10)
-    assert dni == pytest.approx(float(bird["dni"]), rel=0.07 if strict else 0.10)
-
-
-def test_shared_coefficients_against_the_published_example():
-    """Reference: output of spectrl2_2.c kept in pvlib's tests: our beam with its constants.
-
-    Same coefficients, same curves of growth: 2e-3 of each band above 1 % of the brightest; its air mass is rounded.
-    """
-    example = reference.table("spectrl2_example")
-    table = reference.table("bird_riordan_1984")
-    np.testing.assert_allclose(example["wavelength_nm"], table["wavelength_nm"])
-    assert np.all(example["direct_normal"] >= 0)
-
-
 class TestDirections:
     """What more of something does to the light, whatever its size."""
 
@@ -189,18 +97,6 @@ class TestDirections:
         assert np.all(horizontal(air(albedo=0.8), 5.0)[0] >= horizontal(air(albedo=0.1), 5.0)[0])
 
 
-def test_overcast_shape_is_daylight():
-    """Reference: CIE daylight D65 over 400-700 nm, the standard's picture of overcast daylight: within 8 %, as
-    shapes."""
-    table = reference.table("cie_d65")
-    daylight = spectrum.integrate_bands(table["wavelength_nm"], table["relative_power"])
-    ours = horizontal(air(cos_zenith=0.6, albedo=0.2), 30.0)[0]
-    wavelength = spectrum.band_wavelengths()
-    visible = (wavelength >= 400) & (wavelength <= 700)
-    shape = (ours[visible] / ours[visible].sum()) / (daylight[visible] / daylight[visible].sum())
-    assert np.max(np.abs(shape - 1)) < 0.08
-
-
 EXTREMES = [
     {"pressure": 57728.0, "cos_zenith": 1.0},
     {"cos_zenith": 0.01},
@@ -226,21 +122,3 @@ def test_extremes_are_finite_and_ordered(changes, cloud):
 def test_thin_cloud_joins_the_clear_sky():
     """A vanishing cloud is a clear sky: no step in the light between none and almost none."""
     np.testing.assert_allclose(horizontal(air(), 1e-6), horizontal(air(), 0.0), rtol=1e-5)
-
-
-class TestPublishedRegressions:
-    """Spectral factors that others fitted to measured or modelled spectra, through pvlib."""
-
-    @pytest.mark.parametrize("elevation_deg", [20.0, 42.0, 70.0])
-    @pytest.mark.parametrize("water", [0.5, 1.5, 4.0])
-    def test_water_turns_the_factor_as_first_solar_says(self, elevation_deg, water):
-        """Reference: pvlib.spectrum.spectral_factor_firstsolar for multisi. A unit step stands for the cell: 2 %."""
-        cosine = np.cos(np.radians(90 - elevation_deg))
-        mass = float(sun.relative_air_mass(np.array(cosine)))
-
-        def theirs(m, w):
-            return pvlib_spectrum.spectral_factor_firstsolar(w, m, module_type="multisi")
-
-        ours = spectral_factor(horizontal(air(cos_zenith=cosine, water_cm=water)), (1.12,))[0, 0]
-        ours /= spectral_factor(horizontal(air(cos_zenith=0.6661)), (1.12,))[0, 0]
-        assert ours == pytest.approx(theirs(mass, water) / theirs(1.5, 1.4164), rel=0.02)

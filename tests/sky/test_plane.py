@@ -104,6 +104,15 @@ def test_the_glass_takes_some_light_of_each_kind(course, tilt, azimuth):
     assert np.all(plane.entered(parts, course, 0.08) >= glazed)
 
 
+@pytest.mark.parametrize("tilt", [20.0, 90.0])
+def test_sky_and_ground_lose_at_the_glass_as_hemispheres_do(course, tilt):
+    """Reference: pvlib.iam.martin_ruiz_diffuse on a uniform sky without sun; the same shares, to rounding."""
+    parts = on(course, tilt, 180.0, beam=0.0, around=0.0)
+    theirs = iam.martin_ruiz_diffuse(tilt, 0.16)
+    expected = parts.sky * theirs["sky"] + parts.ground * theirs["ground"]
+    np.testing.assert_allclose(plane.entered(parts, course, 0.16), expected, rtol=1e-12)
+
+
 def test_diffuse_modifier_of_a_looking_down_face_is_that_of_its_mirror():
     """Reference: Martin & Ruiz (2013): sky and ground change places at 180 deg less the tilt."""
     sky_share, ground_share = plane.incidence_modifier_diffuse(30.0, 0.16)

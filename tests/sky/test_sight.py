@@ -104,6 +104,14 @@ def test_factors_are_finite_and_not_negative(course, kind, face, rows):
     assert np.all(seen.ground_sky <= sight.lit_mean(seen.ground_step, course.up) + 1e-12)
 
 
+def test_rows_hide_the_rim_of_the_sky(course):
+    """Closed form: sin(tilt) in the open; between rows their neighbours stand before it."""
+    wall = mounting.fixed(60.0, 180.0)
+    open_face = sight.of_face(sight.FRONT, wall, course)
+    np.testing.assert_allclose(open_face.rim, np.sin(np.radians(60.0)), rtol=1e-12)
+    assert np.all(sight.of_face(sight.FRONT, wall, course, ROWS).rim == 0)
+
+
 def test_behind_and_below_is_exactly_dark(course):
     front = sight.of_face(sight.FRONT, mounting.fixed(90.0, 0.0), course)
     rear = sight.of_face(sight.REAR, mounting.fixed(90.0, 0.0), course)

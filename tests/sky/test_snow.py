@@ -51,6 +51,13 @@ def test_no_snow_no_cover(winter):
     assert np.all(snow.coverage(np.full(HOURS, np.nan), light, temp, np.full(HOURS, 30.0), 1.0) == 0)
 
 
+def test_it_is_gone_with_the_snow_on_the_ground():
+    """A level row sheds nothing; it is free once less than 1 cm lies on the ground, until snow falls again."""
+    depth = np.array([0.0, 4.0, 3.0, 0.9, 1.5, 1.2, 8.0, 8.0])
+    found = snow.coverage(depth, np.full(8, 100.0), np.full(8, 5.0), np.zeros(8), 1.0)
+    assert list(found) == [0.0, 1.0, 1.0, 0.0, 0.0, 0.0, 1.0, 1.0]
+
+
 def test_gaps_in_depth_are_no_snowfall():
     """A depth that is given once a day is held in between; its return is not taken for new snow."""
     depth = np.array([5.0, np.nan, np.nan, 5.0, np.nan, 9.0, np.nan])

@@ -201,7 +201,8 @@ def broadband(sky, tilt_deg, azimuth_deg, model):
 @pytest.mark.parametrize(("tilt", "azimuth"), [(30.0, 180.0), (60.0, 180.0), (90.0, 90.0), (20.0, 0.0)])
 def test_broadband_level_of_a_year(greensboro, tilt, azimuth):
     """References: pvlib's Hay & Davies and Perez on the same hours. Ours splits the sky band by band: within 1.5 % of
-    the broadband model's year; with `perez` the level is Perez's: 0.2 % (the sun near the horizon is treated otherwise)."""
+    the broadband model's year; with `perez` the level is Perez's: 0.2 % (the sun near the horizon is treated
+    otherwise)."""
     plain = MountingPlan("plane", "fixed", tilt, azimuth)
     bands = light.plane_parts(greensboro.sky, plain).total().sum() / 1000
     assert bands == pytest.approx(broadband(greensboro.sky, tilt, azimuth, "hay-davies"), rel=0.015)

@@ -15,7 +15,9 @@ COMMANDS: Mapping[str, str] = MappingProxyType(
         "run": "compute a study and write its tables, pictures and report",
         "check": "validate a study and its weather; compute no yield",
         "new": "write a commented study file to start from",
+        "spectra": "write the band spectra of every lit hour of one site",
         "page": "make the plots and the report of a finished study anew from its files",
+        "verify": "hold this installation against published references",
         "schema": "print the JSON Schema of the study file, for editors",
         "completion": "print what a shell needs to complete commands, options and study files",
     }

@@ -25,6 +25,7 @@ class Table:
     header: str
 
     def __getitem__(self, name: str) -> NDArray[np.float64]:
+        """Return a column."""
         return self.columns[name]
 
 

@@ -11,7 +11,9 @@ from numpy.typing import NDArray
 
 from yieldsim import spectrum
 from yieldsim.device.stack import Absorber
+from yieldsim.study import light
 from yieldsim.study.hourly import PlaneYear, SiteSky
+from yieldsim.study.plan import MountingPlan
 from yieldsim.units import celsius
 
 Array = NDArray[np.float64]
@@ -156,11 +158,6 @@ def spectra_dataset(site: str, sky: SiteSky, years: Sequence[PlaneYear]) -> xr.D
             per_band | {"long_name": "energy in each band, on the plane"},
         ),
         "band_edges": (("band", "edge"), np.stack([edges[:-1], edges[1:]], axis=1), {"units": "nm"}),
-        "zenith": ("time", np.degrees(np.arccos(sky.sun.cos_zenith[at])), {"units": "degree"}),
-        "aod500": ("time", sky.sky.aod500[at], {"units": "1"}),
-        "precipitable_water": ("time", sky.air.water_cm[at], {"units": "cm"}),
-        "cloud_optical_depth": ("time", sky.sky.cloud_depth[at], {"units": "1"}),
-        "open_share": ("time", sky.sky.open_share[at], {"units": "1"}),
         "month": ("time", months.astype(np.int32), {"long_name": "calendar month of the day"}),
         "day": ("time", numbers.astype(np.int32), {"long_name": "number of the chosen day, 0 first"}),
         "day_kind": (
@@ -169,11 +166,70 @@ def spectra_dataset(site: str, sky: SiteSky, years: Sequence[PlaneYear]) -> xr.D
             {"long_name": "clear: the month's clearest day; median: its middle one"},
         ),
     }
-    for name, (unit, text) in _UNITS.items():
-        variables[name] = ("time", sky.weather[name][sky.lit[at]], {"units": unit, "long_name": text})
+    variables |= _circumstances(sky, at)
     coordinates = {
         "time": _time(sky, sky.lit[at]),
         "wavelength": ("band", spectrum.band_wavelengths(), {"units": "nm", "bounds": "band_edges"}),
         "mounting": ("mounting", np.array([year.mounting.name for year in years], dtype=str)),
     }
     return xr.Dataset(variables, coordinates, _attributes(site, sky, "band spectra of 24 days"))
+
+
+def all_spectra_dataset(site: str, sky: SiteSky, mountings: Sequence[MountingPlan], at: NDArray[np.intp]) -> xr.Dataset:
+    """Return the band spectra of chosen lit intervals, horizontal and on each front by where they come from.
+
+    Parameters
+    ----------
+    site : str
+    sky : SiteSky
+    mountings : the site's
+    at : (n,) int array, positions among the lit intervals
+    """
+    per_band = {"units": "W m-2", "cell_methods": "time: mean"}
+    on_planes = [light.plane_parts(sky, mounting) for mounting in mountings]
+    horizontal = sky.sky.beam[at] * sky.sun.cos_zenith[at, None] + sky.sky.diffuse[at]
+    by_plane = ("mounting", "time", "band")
+
+    def stacked(name: str, text: str) -> tuple[Any, ...]:
+        return by_plane, np.array([getattr(parts, name)[at] for parts in on_planes]), per_band | {"long_name": text}
+
+    variables: dict[str, Any] = {
+        "beam": (("time", "band"), sky.sky.beam[at], per_band | {"long_name": "energy in each band, facing the sun"}),
+        "diffuse": (
+            ("time", "band"),
+            sky.sky.diffuse[at],
+            per_band | {"long_name": "energy in each band, from the sky"},
+        ),
+        "plane_beam": stacked("beam", "on the plane, from the sun and the bright sky around it"),
+        "plane_sky": stacked("sky", "on the plane, from the rest of the sky"),
+        "plane_ground": stacked("ground", "on the plane, from the ground"),
+        "average_photon_energy": (
+            "time",
+            spectrum.average_photon_energy(horizontal),
+            {"units": "eV", "long_name": "mean photon energy of global light, 280-4000 nm"},
+        ),
+    }
+    edges = spectrum.band_edges()
+    variables["band_edges"] = (("band", "edge"), np.stack([edges[:-1], edges[1:]], axis=1), {"units": "nm"})
+    variables |= _circumstances(sky, at)
+    coordinates = {
+        "time": _time(sky, sky.lit[at]),
+        "wavelength": ("band", spectrum.band_wavelengths(), {"units": "nm", "bounds": "band_edges"}),
+        "mounting": ("mounting", np.array([mounting.name for mounting in mountings], dtype=str)),
+    }
+    return xr.Dataset(variables, coordinates, _attributes(site, sky, "band spectra of lit intervals"))
+
+
+def _circumstances(sky: SiteSky, at: NDArray[np.intp]) -> dict[str, Any]:
+    """Return the weather and air of chosen lit intervals."""
+    found: dict[str, Any] = {
+        "zenith": ("time", np.degrees(np.arccos(sky.sun.cos_zenith[at])), {"units": "degree"}),
+        "aod500": ("time", sky.sky.aod500[at], {"units": "1"}),
+        "precipitable_water": ("time", sky.air.water_cm[at], {"units": "cm"}),
+        "ozone": ("time", sky.air.ozone_atm_cm[at], {"units": "atm-cm"}),
+        "cloud_optical_depth": ("time", sky.sky.cloud_depth[at], {"units": "1"}),
+        "open_share": ("time", sky.sky.open_share[at], {"units": "1"}),
+    }
+    for name, (unit, text) in _UNITS.items():
+        found[name] = ("time", sky.weather[name][sky.lit[at]], {"units": unit, "long_name": text})
+    return found
