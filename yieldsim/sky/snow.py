@@ -54,8 +54,7 @@ def coverage(depth_cm: Array, light: Array, temp_air_c: Array, tilt_deg: Array, 
     depth = held(depth_cm)
     falls = (snowfall(depth) > COVERING_CM_H * interval_h) & (depth >= GONE_CM) & (tilt_deg < STEEPEST_DEG)
     slides = np.where(temp_air_c > light / SLIDING_W_M2_K, SLIDING_PER_H * np.sin(np.radians(tilt_deg)), 0.0)
-    slides = np.where(falls, 0.0, slides * interval_h)
-    slides = np.where(depth < GONE_CM, 1.0, slides)
+    slides = np.where(depth < GONE_CM, 1.0, slides * interval_h)
     gone = np.cumsum(slides)
     last = np.maximum.accumulate(np.where(falls, np.arange(len(depth)), -1))
     since = gone - gone[np.maximum(last, 0)]
