@@ -203,6 +203,13 @@ def studies(draw):
             st.sampled_from(["soiling", "snow", "wiring", "inverter", "availability"]), _monthly(0, 0.9)
         ),
         "gap_sweep": _sweeps(),
+        "gap_pairs": st.fixed_dictionaries(
+            {
+                "top_ev": st.tuples(st.floats(1.5, 1.6), st.floats(1.7, 1.8), st.floats(0.1, 1)).map(list),
+                "bottom_ev": st.tuples(st.floats(0.9, 1.0), st.floats(1.1, 1.2), st.floats(0.1, 1)).map(list),
+            },
+            optional={"terminals": st.sampled_from([2, 4, [2], [2, 4]]), "quality": st.just("ideal")},
+        ),
         "keep": st.lists(st.sampled_from(["annual", "monthly", "plots"]), min_size=1, max_size=3, unique=True),
     }
     return study | draw(st.fixed_dictionaries({}, optional=optional))
@@ -240,6 +247,7 @@ DAMAGES = (
     (("losses",), {"dust": 0.1}, "losses.dust"),
     (("gap_sweep",), {"from_ev": 2, "to_ev": 1, "step_ev": 0.1}, "gap_sweep"),
     (("gap_sweep",), {"from_ev": 1, "to_ev": 2, "step_ev": 0}, "gap_sweep.step_ev"),
+    (("gap_pairs",), {"top_ev": [1.5, 1.6, 0.1], "bottom_ev": [0.9, 1.0]}, "gap_pairs.bottom_ev"),
     (("keep",), ["everything"], "keep[0]"),
     (("chance",), {"draws": 10}, "chance"),
 )

@@ -147,6 +147,51 @@ def test_a_stack(loaded, minimal):
     assert loaded(minimal.replace("like: c-si", STACK)).absorbers[0].terminals == 2
 
 
+def test_a_stack_of_the_library(loaded, minimal):
+    base = library.entry("perovskite-si-2t").absorber
+    absorber = loaded(minimal.replace("like: c-si", "like: perovskite-si-2t, bifaciality: 0.5")).absorbers[0]
+    assert absorber.junctions == base.junctions
+    assert (absorber.name, absorber.bifaciality, absorber.terminals) == ("silicon", 0.5, base.terminals)
+
+
+PAIRS = "gap_pairs: {top_ev: [1.5, 1.6, 0.05], bottom_ev: [0.9, 1.0, 0.1]"
+
+
+def test_pairs_of_gaps(loaded, minimal):
+    pairs = loaded(f"{minimal}{PAIRS}, terminals: 2, quality: [ideal, {{like: gaas}}]}}\n").gap_pairs
+    assert pairs.pairs_ev == ((1.5, 0.9), (1.5, 1.0), (1.55, 0.9), (1.55, 1.0), (1.6, 0.9), (1.6, 1.0))
+    assert list(pairs.absorbers) == [("ideal", 2), ("like gaas", 2)]
+    assert [absorber.gaps_ev for absorber in pairs.absorbers["like gaas", 2]] == list(pairs.pairs_ev)
+    assert list(loaded(f"{minimal}{PAIRS}}}\n").gap_pairs.absorbers) == [
+        ("ideal", 2),
+        ("ideal", 4),
+        ("realistic", 2),
+        ("realistic", 4),
+    ]
+
+
+@pytest.mark.parametrize(
+    ("change", "where", "found"),
+    [
+        (("1.6, 0.05", "1.4, 0.05"), "gap_pairs", "a range from 1.5 to 1.4"),
+        (("bottom_ev: [0.9, 1.0, 0.1]", "bottom_ev: [0.9, 1.5, 0.1]"), "gap_pairs", "with bottom gaps to 1.5"),
+        (("1.6, 0.05", "1.6, 0.0001"), "gap_pairs.top_ev[2]", "0.0001"),
+        (("1.6, 0.05", "1.6"), "gap_pairs.top_ev", "a list of 2"),
+        (("[0.9, 1.0, 0.1]", "[0.1, 1.0, 0.1]"), "gap_pairs", "gap"),
+        (("0.05], ", "0.05], terminals: 3, "), "gap_pairs.terminals", "3"),
+        (("0.05], ", "0.05], quality: [ideal, ideal], "), "gap_pairs.quality[1]", "'ideal' again"),
+        (
+            ("[1.5, 1.6, 0.05], bottom_ev: [0.9, 1.0, 0.1]", "[1.5, 3, 0.001], bottom_ev: [0.9, 1.4, 0.001]"),
+            "gap_pairs",
+            "pairs",
+        ),
+    ],
+)
+def test_pairs_that_cannot_be(loaded, minimal, change, where, found):
+    assert change[0] in PAIRS
+    assert found in refused(loaded, f"{minimal}{PAIRS.replace(*change)}}}\n")[where].found
+
+
 def test_the_qualities_of_a_sweep_have_names(loaded, minimal):
     text = minimal + (
         "gap_sweep:\n  from_ev: 1\n  to_ev: 1.2\n  step_ev: 0.1\n  quality:\n"
@@ -199,6 +244,8 @@ STACK = "stack: [{like: perovskite-1.68, transmits: 0.05}, {gap_ev: 1.1, externa
         ((", like: c-si", ""), "absorbers[0]", "no `like`, `eqe`", "where the response comes from"),
         (("like: c-si", "like: c-si, stack: []"), "absorbers[0].stack", "a list of 0", "2 to 6 junctions"),
         (("like: c-si", "climate: wet, like: c-si"), "absorbers[0].climate", "does not take yet", ""),
+        (("like: c-si", "like: perovskite-si-2t, ideality: 1"), "absorbers[0]", "`ideality` of perovskite-si-2t", ""),
+        (("like: c-si", "stack: [{like: perovskite-si-2t}, {like: c-si}]"), "absorbers[0]", "as a junction", ""),
         (("like: c-si", "like: c-si, terminals: 4"), "absorbers[0]", "which has one junction", ""),
         (("like: c-si", "gap_ev: 1, quality: ideal, coupling: 0.1"), "absorbers[0]", "of one junction", "stack"),
         (("like: c-si", f"like: c-si, {STACK}"), "absorbers[0]", "`stack` beside like", "in the junctions"),
