@@ -222,7 +222,8 @@ def _spectra(mountings: Sequence[str], site: int) -> xr.Dataset:
             "wavelength": ("band", centre),
             "mounting": np.array(list(mountings), dtype=str),
         },
-        {"utc_offset_h": float(site), "latitude_deg": 40.0, "longitude_deg": 15.0 * site, "elevation_m": 100.0},
+        {"utc_offset_h": float(site), "latitude_deg": 40.0, "longitude_deg": 15.0 * site, "elevation_m": 100.0}
+        | {"source": "yieldsim from made_up.csv", "comment": "values are means over it. invented, for tests"},
     )
 
 

@@ -117,6 +117,11 @@ def test_hostile_names_are_text_and_nothing_else(factory):
         assert name in texts
 
 
+def test_a_site_says_where_it_lies_and_what_its_weather_says_of_itself(html):
+    texts = " ".join("".join(_Reader(html).texts).split())
+    assert "40.00° N, 15.00° E, 100 m. made_up.csv. Invented, for tests." in texts
+
+
 def test_no_text_ends_the_script_that_holds_the_data():
     text = page.script_json({"a": "</script><!--", "b": "\u2028&"})
     assert not re.search("[<>&\u2028]", text)

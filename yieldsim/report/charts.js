@@ -170,7 +170,8 @@ const gain = (factor) => (factor === null ? null : 100 * (factor - 1));
 function ledger(width) {
   const { fates, values } = study.ledger;
   const rows = chosen();
-  const order = fates.map((_, i) => i).reverse(); // what is delivered starts at zero, so that it can be compared
+  const any = (f) => rows.some((a) => (values[f][choice.place][a] ?? 0) > 0.005);
+  const order = fates.map((_, i) => i).filter(any).reverse(); // what is delivered starts at zero, so that it can be compared
   const data = rows.flatMap((a) => {
     let sum = 0;
     return order.map((f) => ({ a, f, v: values[f][choice.place][a] ?? 0, x1: sum, x2: (sum += values[f][choice.place][a] ?? 0) }));

@@ -21,6 +21,7 @@ from yieldsim.study.result import TABLES, StudyResult, records
 PAGE = "report.html"
 MOST_COLUMNS = 12  # places side by side in the table at a glance; annual.csv holds all
 _SOURCE = "source:"
+_TIMES = "values are means over it."
 _INPUTS_OF_AIR = {
     "aod500": "haze (aerosol optical depth at 500 nm)",
     "angstrom_exponent": "colour of the haze (Ångström exponent)",
@@ -109,8 +110,10 @@ def _about(attributes: Mapping[Any, Any]) -> dict[str, str]:
     """Return where a site lies and what its weather says of itself, from the attributes of its spectra."""
     keys = ("latitude_deg", "longitude_deg", "elevation_m")
     where = position(*(float(attributes[key]) for key in keys)) if all(key in attributes for key in keys) else ""
-    said = {key: str(attributes.get(key, "")).strip().rstrip(".") for key in ("source", "comment")}
-    return {"where": where} | said
+    source = str(attributes.get("source", "")).removeprefix("yieldsim from ")
+    # The comment of a dataset tells first how its times are meant, then what the weather file says of itself.
+    notes = str(attributes.get("comment", "")).rpartition(_TIMES)[2].strip().rstrip(".")
+    return {"where": where, "source": source, "notes": notes[:1].upper() + notes[1:]}
 
 
 def script_json(content: Any) -> str:
