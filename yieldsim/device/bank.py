@@ -10,7 +10,7 @@ from numpy.polynomial import chebyshev
 from numpy.typing import NDArray
 
 from yieldsim.constants import STANDARD_CELL_TEMPERATURE, STANDARD_IRRADIANCE, THERMAL_EV_PER_K
-from yieldsim.device import diode, kernel, series
+from yieldsim.device import kernel, series
 from yieldsim.device.fold import folded
 from yieldsim.device.junction import (
     Junction,
@@ -233,10 +233,6 @@ class Bank:
             absorber.terminals == 2,
         )
 
-    def _diode(self, j: int, currents: Array, temperature: Array, block: slice) -> diode.Diode:
-        heat = temperature[self.absorber_of[j], block]
-        return diode_at(self.junctions[j], currents, heat, self._saturation(j, heat))
-
     def _ends(self, currents: Array) -> tuple[Array, Array]:
         """Return short-circuit current and open-circuit voltage (n_absorber,) [A m-2], [V] at 25 degC."""
         temperature = np.full((len(self.absorbers), 1), STANDARD_CELL_TEMPERATURE)
@@ -256,18 +252,16 @@ class Bank:
 
     def _links(self, a: int, currents: Array, temperature: Array) -> list[series.Link]:
         """Return an absorber's junctions, linked by the light they emit; currents and temperature are of some hours."""
-        absorber, links = self.absorbers[a], []
-        thermal = THERMAL_EV_PER_K * temperature[a]
-        for i in range(len(absorber.junctions)):
+        absorber, heat, links = self.absorbers[a], temperature[a], []
+        for i, junction in enumerate(absorber.junctions):
             j = int(self.first_of[a]) + i
-            diode_of_hour = self._diode(j, currents[j], temperature, slice(None))
-            emits = absorber.coupling > 0 and i < len(absorber.junctions) - 1
-            emission: Array | float = 0.0
-            if emits:
-                emission = absorber.coupling * self.radiative_saturation(
-                    j, diode_of_hour.saturation_current, temperature[a]
-                )
-            links.append(series.Link(diode_of_hour, emission, thermal))
+            saturation = self._saturation(j, heat)
+            lowest = i == len(absorber.junctions) - 1
+            coupling = 0.0 if lowest else absorber.coupling
+            emission = coupling * self.radiative_saturation(j, saturation, heat) if coupling > 0 else 0.0
+            links.append(
+                series.Link(diode_at(junction, currents[j], heat, saturation), emission, THERMAL_EV_PER_K * heat)
+            )
         return links
 
     def radiative_saturation(self, j: int, saturation: Array, temperature: Array) -> Array:

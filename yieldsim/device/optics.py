@@ -49,11 +49,12 @@ def in_stack(junctions: Sequence[Junction], temperature: float) -> tuple[Respons
     """
     responses = [response_at(junctions[0], temperature)]
     down = handed_down(junctions[0], temperature)
-    for junction in junctions[1:]:
+    for i, junction in enumerate(junctions[1:]):
+        if i > 0:
+            down = product(handed_down(junctions[i], temperature), down, None)
         alone = response_at(junction, temperature)
         wave, level = product((alone.wavelength_nm, alone.quantum_efficiency / (1 - junction.reflection)), down, 0.0)
         responses.append(Response(wave, np.clip(level, 0.0, 1.0)))
-        down = product(handed_down(junction, temperature), down, None)
     return tuple(responses)
 
 
