@@ -124,6 +124,17 @@ def test_second_run_gives_the_same_bytes(five, tmp_path):
         assert (folder / name).read_bytes() == (tmp_path / name).read_bytes(), name
 
 
+@pytest.mark.parametrize("study", ["measured-film", "snow-and-rear-light", "tandem-wet-coast", "tracker-or-fixed"])
+def test_every_shipped_study_runs(study, tmp_path):
+    """Each is a question of its own; here: it runs, nothing is NaN, the ledger is exhaustive, the page is written."""
+    result = yieldsim.run_study(yieldsim.load_study(ROOT / "configs" / f"{study}.yaml"), tmp_path)
+    assert not result.annual.isna().any().any()
+    assert (result.annual["energy_kwh_m2"] > 0).all()
+    fates = result.ledger.drop(columns=["site", "mounting", "absorber"]).sum(axis=1)
+    assert (fates >= result.annual["poa_kwh_m2"].to_numpy() * (1 - 1e-9)).all()  # rear light comes on top
+    assert (tmp_path / "report.html").stat().st_size > 100_000
+
+
 def test_real_stations_run(tmp_path):
     """Two typical years that pvlib ships; silicon at Greensboro gains between 0.5 and 2 % by its spectrum."""
     result = yieldsim.run_study(yieldsim.load_study(ROOT / "configs" / "real-stations.yaml"), tmp_path)
