@@ -114,6 +114,22 @@ def test_low_hazy_sun_on_the_horizon_is_finite():
     assert sky.beam[0].sum() == pytest.approx(5.0)
 
 
+def test_thin_cloud_is_not_taken_for_haze():
+    """Thin cloud that changes from hour to hour scatters as thick haze would: it stays cloud, haze stays the
+    expected."""
+    rng = np.random.default_rng(12)
+    air = some_air(300, cos_zenith=np.full(300, 0.6))
+    sky = close(air, *light_of(air, rng.uniform(1.0, 4.0, 300), rng.uniform(0.1, 0.5, 300)))
+    assert np.mean(sky.aod500 > 0.4) < 0.02
+
+
+def test_steady_dust_is_believed():
+    """A day of thick haze that holds still is haze, however much more it is than expected."""
+    air = some_air(24, cos_zenith=np.full(24, 0.6))
+    sky = close(air, *light_of(air.with_aod500(np.full(24, 1.2)), np.zeros(24), np.ones(24)))
+    np.testing.assert_allclose(sky.aod500[1:-1], 1.2, rtol=1e-6)
+
+
 class TestMonthlyHaze:
     """A year of haze that scatters daily, with cloud and noise, gives its months back."""
 

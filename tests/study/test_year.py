@@ -1,10 +1,12 @@
 """The year's account on real weather: closure, factors, seasons, and what others have measured."""
 
 from dataclasses import replace
+from pathlib import Path
 
 import numpy as np
 import pytest
 
+from yieldsim import readers, screen
 from yieldsim.device.bank import Bank
 from yieldsim.device.junction import Junction
 from yieldsim.device.response import step
@@ -148,3 +150,31 @@ def test_losses_multiply():
     kept = annual.kept_share(LossesPlan({"soiling": (0.1,) * 12, "snow": (0.5, *(0.0,) * 11)}))
     assert kept[0] == pytest.approx(0.45)
     assert kept[5] == pytest.approx(0.9)
+
+
+def test_silicon_reverses(year_of):
+    """Direction away from the tropics: silicon the reverse of the wide gap (Dirnberger et al. 2015), at the high
+    mountain of
+    weather_samples, where summer air is dry. In wet summers vapour takes the infrared that silicon leaves, and hides
+    it."""
+    folder = Path(__file__).resolve().parents[2] / "weather_samples"
+    months = year_of(screen.screen(readers.read(str(folder / "highmoor.csv"))))
+    silicon, wide = months.monthly("spectral", "c-si"), months.monthly("spectral", "perovskite-1.68")
+    winter, summer = [0, 1, 10, 11], [4, 5, 6, 7]
+    assert silicon[winter].mean() > silicon[summer].mean() + 0.003
+    assert wide[winter].mean() < wide[summer].mean()
+
+
+def test_vapour_is_what_hides_silicon_s_season(greensboro, greensboro_weather, year_of):
+    """At humid Greensboro the same water all year turns silicon's summer gain down by more than half a point."""
+    dry = year_of(greensboro_weather, AtmospherePlan(water_cm=(1.4,) * 12)).monthly("spectral", "c-si")
+    wet = greensboro.monthly("spectral", "c-si")
+    winter, summer = [0, 1, 10, 11], [4, 5, 6, 7]
+    assert (dry[summer].mean() - dry[winter].mean()) < (wet[summer].mean() - wet[winter].mean()) - 0.005
+
+
+def test_the_narrowest_gap_reverses_over_the_year(greensboro):
+    """CIGS, 1.08 eV: better off in winter over whole months (Dirnberger et al. 2015: narrow gaps the reverse of wide
+    ones)."""
+    months = greensboro.monthly("spectral", "cigs")
+    assert months[[0, 1, 10, 11]].mean() > months[4:8].mean()

@@ -24,6 +24,8 @@ NEIGHBOUR_RATIO = 1.5  # haze of neighbouring clear hours agrees within this fac
 NEIGHBOUR_STEP = 0.05  # ... or within this optical depth, whichever is wider
 STEADY_STEP = 0.03  # haze of three hours in a row differs by no more than this depth ...
 STEADY_SHARE = 0.2  # ... or this share, whichever is wider, where it is to tell of a month
+EXCESS_RATIO = 2.5  # haze beyond this many times the expected, and ...
+EXCESS_STEP = 0.15  # ... beyond it by this depth, is taken for cloud unless it holds still
 PRIOR_DAYS = 1.0  # how many clear days the climatology counts for
 _DAY_HOURS = 2  # clear hours a day needs to tell of its haze
 _LEAST_COS_ZENITH = 0.2  # lower suns tell more of refraction and of the horizon than of haze
@@ -101,12 +103,15 @@ def close(
     monthly, clear_days = np.full(12, np.nan), np.zeros(12, dtype=np.intp)
     if haze_hourly:
         solved, clear = _solve_haze(air, earth_sun, dni, dhi, consecutive, constants)
-        prior = air.aod500
+        prior, still = air.aod500, steady(solved, consecutive)
         if calendar is not None:
             day, month = calendar
-            usable = clear & steady(solved, consecutive) & (air.cos_zenith > _LEAST_COS_ZENITH)
+            usable = clear & still & (air.cos_zenith > _LEAST_COS_ZENITH)
             monthly, clear_days = monthly_haze(solved, prior, usable, day, month)
             prior = monthly[month]
+        # Thin cloud may scatter as much as thick haze would: far more haze than expected must hold still to be
+        # believed.
+        clear &= still | (solved <= np.maximum(EXCESS_RATIO * prior, prior + EXCESS_STEP))
         brighter = (dni > _beam_shape(air.with_aod500(prior), earth_sun, constants)[1]) & (dni > _LEAST_BEAM)
         haze = np.where(clear | brighter, solved, prior)
     air = air.with_aod500(haze)
