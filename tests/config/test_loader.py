@@ -1,5 +1,6 @@
 """From study file to plan: defaults, overrides, errors that name line and key path, all at once."""
 
+import contextlib
 import hashlib
 import json
 import math
@@ -8,6 +9,7 @@ from pathlib import Path
 import numpy as np
 import pytest
 from hypothesis import HealthCheck, given, settings
+from hypothesis import strategies as st
 
 from tests import strategies
 from yieldsim.config import crosscheck, library, load, schema, site_schema, tree
@@ -346,6 +348,42 @@ def test_whatever_is_wrong_is_named_and_nothing_else_happens(tmp_path, broken):
     wheres = [problem.where for problem in caught.value.problems]
     assert set(named) <= set(wheres)
     assert all(problem.line == 1 for problem in caught.value.problems)  # JSON on one line: each knows its place
+
+
+SCRAPS = [
+    "{",
+    "}",
+    "[",
+    "]",
+    ":",
+    "- ",
+    "\n",
+    "  ",
+    "null",
+    ".nan",
+    "-1",
+    "'",
+    "&a ",
+    "*a",
+    "!x ",
+    "<<: ",
+    "\t",
+    "\0",
+    "é",
+    "#",
+]
+
+
+@given(
+    edits=st.lists(st.tuples(st.integers(0, 400), st.integers(0, 8), st.sampled_from(SCRAPS)), min_size=1, max_size=4)
+)
+@settings(max_examples=80, deadline=None, suppress_health_check=[HealthCheck.function_scoped_fixture])
+def test_a_study_damaged_anywhere_is_read_or_refused(tmp_path, minimal, edits):
+    text = minimal
+    for place, cut, scrap in edits:
+        text = text[:place] + scrap + text[place + cut :]
+    with contextlib.suppress(InputError):  # anything else fails the test
+        assert plan_of(tree.parse(text, "s.yaml"), tmp_path).sites
 
 
 # ------------------------------------------------------------------------------------- agreement with other parts

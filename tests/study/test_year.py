@@ -178,3 +178,15 @@ def test_the_narrowest_gap_reverses_over_the_year(greensboro):
     ones)."""
     months = greensboro.monthly("spectral", "cigs")
     assert months[[0, 1, 10, 11]].mean() > months[4:8].mean()
+
+
+def test_haze_of_its_own_is_used(greensboro_weather, greensboro, year_of):
+    """A site's darker haze leaves less light explained as clear or moves its spectra; sources say the study gave it."""
+    dark = year_of(greensboro_weather, AtmospherePlan(single_scattering_albedo=0.8, asymmetry=0.7))
+    assert np.max(np.abs(dark.year.spectral - greensboro.year.spectral)) > 1e-4
+    assert dict(dark.sky.sources)["single_scattering_albedo"] == "study"
+    assert dict(greensboro.sky.sources)["asymmetry"] == "Bird & Riordan 1984"
+    np.testing.assert_allclose(dark.sky.optics.haze_asymmetry, 0.7)
+    np.testing.assert_allclose(
+        dark.sky.optics.haze_albedo.max(), 0.8 * np.max(greensboro.sky.optics.haze_albedo) / 0.945
+    )

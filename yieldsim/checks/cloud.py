@@ -24,7 +24,7 @@ D65 = "CIE standard illuminant D65, table cie_d65"
 SUNS_DEG = (0.0, 30.0, 60.0, 70.0, 75.0)  # zenith: sun above 10 deg; 80 deg is reported
 #: Library entry -> regressions of its kind (model, key in pvlib) and how far [%] beyond their span ours may lie.
 REGRESSIONS: Mapping[str, tuple[tuple[tuple[str, str], ...], float]] = {
-    "c-si": ((("pvspec", "multisi"), ("jrc", "multisi")), 2.0),
+    "c-si": ((("pvspec", "monosi"), ("pvspec", "multisi"), ("jrc", "multisi")), 2.0),
     "cdte": ((("pvspec", "fs4-1"), ("pvspec", "fs4-2"), ("jrc", "cdte")), 3.0),
     "cigs": ((("pvspec", "cigs"),), 3.0),
     "a-si": ((("pvspec", "asi"),), 3.0),

@@ -104,7 +104,12 @@ class Builder:
             name=site.name,
             weather=tuple(weather),
             mountings=tuple(mounting_plan(name, each) for name, each in _site_mountings(site, shared).items()),
-            atmosphere=AtmospherePlan(**air, haze=cast(Literal["hourly", "fixed"], site.atmosphere.haze)),
+            atmosphere=AtmospherePlan(
+                **air,
+                haze=cast(Literal["hourly", "fixed"], site.atmosphere.haze),
+                single_scattering_albedo=site.atmosphere.single_scattering_albedo,
+                asymmetry=site.atmosphere.asymmetry,
+            ),
             ground=self._attempt((*path, "ground"), lambda: self.around.ground(site.ground)) or GroundPlan(),
             horizon=self._attempt((*path, "horizon"), lambda: self.around.horizon(site.horizon)),
             latitude_deg=site.latitude_deg,

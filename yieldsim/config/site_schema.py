@@ -61,6 +61,12 @@ class Atmosphere(Section):
     ozone_atm_cm: Annotated[float | list[float], Monthly(0.05, 0.7, "atm cm")] | None = Field(
         default=None, description="ozone column"
     )
+    single_scattering_albedo: Annotated[float, Number(0.5, 1)] | None = Field(
+        default=None, description="of haze at 400 nm: share of its extinction that scatters; 0.945 if left out"
+    )
+    asymmetry: Annotated[float, Number(0, 0.95)] | None = Field(
+        default=None, description="mean cosine of the angle haze scatters by; 0.65 if left out"
+    )
     haze: Annotated[str, Choice(("hourly", "fixed"))] = Field(
         default="hourly", description="hourly: solve the haze of clear hours from their beam; fixed: keep the given one"
     )

@@ -25,6 +25,7 @@ CLOUD_ASYMMETRY = 0.85  # water drops of 10 um in the visible, Hu & Stamnes (199
 DROP_RADIUS_NM = 10_000.0
 BIRD_PRESSURE = 101300.0  # Pa, the standard pressure of Bird & Riordan (1984)
 RAYLEIGH_MOMENT = 0.1  # second Legendre moment of Rayleigh's phase function
+HAZE_ALBEDO_400 = 0.945  # single-scattering albedo at 400 nm, Bird & Riordan (1984), rural aerosol
 HAZE_ASYMMETRY = 0.65  # Bird & Riordan (1984), rural aerosol
 DARK_SHARE = 0.1  # bands where the reference spectrum is below this share of the extraterrestrial one count as dark
 FACTOR_BOUNDS = (0.5, 2.0)
@@ -132,7 +133,7 @@ def bare_optics() -> Optics:
         water=gas["water"],
         mixed_gas=gas["mixed_gas"],
         haze_shape=np.log(wavelength / 500.0),
-        haze_albedo=0.945 * np.exp(-0.095 * np.log(wavelength / 400.0) ** 2),
+        haze_albedo=HAZE_ALBEDO_400 * np.exp(-0.095 * np.log(wavelength / 400.0) ** 2),
         haze_asymmetry=HAZE_ASYMMETRY * one,
         cloud_albedo=1 - absorbed,
     )
@@ -163,6 +164,24 @@ def optics() -> Optics:
             dark, 1.0, np.clip(factor * wanted / reference_plane(scaled.replace(factor=factor)), *FACTOR_BOUNDS)
         )
     return scaled.replace(factor=factor)
+
+
+def with_haze(constants: Optics, single_scattering_albedo: float | None, asymmetry: float | None) -> Optics:
+    """Return band constants with a site's own haze.
+
+    Parameters
+    ----------
+    constants : Optics
+    single_scattering_albedo : float or None [1], at 400 nm; its course over wavelength stays that of Bird & Riordan
+    (1984)
+    asymmetry : float or None [1], at all wavelengths
+    """
+    fields: dict[str, Array] = {}
+    if single_scattering_albedo is not None:
+        fields["haze_albedo"] = constants.haze_albedo * (single_scattering_albedo / HAZE_ALBEDO_400)
+    if asymmetry is not None:
+        fields["haze_asymmetry"] = np.full_like(constants.haze_asymmetry, asymmetry)
+    return constants.replace(**fields) if fields else constants
 
 
 def reference_air() -> Air:

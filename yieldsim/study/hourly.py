@@ -45,6 +45,7 @@ class SiteSky:
     sun : SunCourse of the lit intervals
     air : Air of the lit intervals, haze as given or expected
     sky : ClosedSky of the lit intervals, averages over the whole interval
+    optics : Optics of the air, the site's own haze in it
     sources : (input, where it came from) for each atmospheric input
     horizon : Horizon or None, the skyline around the site
     """
@@ -55,6 +56,7 @@ class SiteSky:
     sun: sun.SunCourse
     air: column.Air
     sky: closing.ClosedSky
+    optics: column.Optics
     sources: tuple[tuple[str, str], ...]
     horizon: Horizon | None = None
 
@@ -133,6 +135,7 @@ def site_sky(site: SitePlan, weather: Weather) -> SiteSky:
     month, day = local_month_and_day(weather)
     course = course.only(course.lit > 0)
     air, sources = _air(site, weather, lit, month[lit], day[lit], course.cos_zenith)
+    optics = column.with_haze(column.optics(), site.atmosphere.single_scattering_albedo, site.atmosphere.asymmetry)
     # Light is closed over the lit part of an interval, then spread over the whole of it.
     dni, dhi = weather["dni"][lit], weather["dhi"][lit]
     consecutive = np.diff(weather.time[lit], prepend=weather.time[0] - 1) == weather.interval_s
@@ -143,6 +146,7 @@ def site_sky(site: SitePlan, weather: Weather) -> SiteSky:
         dhi / course.lit,
         consecutive,
         haze_hourly=site.atmosphere.haze == "hourly",
+        constants=optics,
         calendar=_calendar(weather, lit, month, sources),
     )
     share = course.lit[:, None]
@@ -151,7 +155,7 @@ def site_sky(site: SitePlan, weather: Weather) -> SiteSky:
         days = ", ".join(str(count) for count in closed.clear_days)
         note = f"monthly medians of clear days from their beam (days a month: {days}), prior "
         sources = (("aod500", note + sources[0][1]), *sources[1:])
-    return SiteSky(weather, lit, month[lit], course, air, closed, sources, site.horizon)
+    return SiteSky(weather, lit, month[lit], course, air, closed, optics, sources, site.horizon)
 
 
 def _calendar(
@@ -190,6 +194,8 @@ def _air(
     sources = (
         ("aod500", haze_source + (HOURLY if plan.haze == "hourly" else "")),
         ("angstrom_exponent", exponent_source),
+        ("single_scattering_albedo", _said(plan.single_scattering_albedo)),
+        ("asymmetry", _said(plan.asymmetry)),
         ("precipitable_water", water_source),
         ("ozone", ozone_source),
         ("pressure", pressure_source),
@@ -220,6 +226,11 @@ def _albedo(plan: GroundPlan, weather: Weather, lit: NDArray[np.intp]) -> tuple[
     if snow.any():
         source += f"; snow in {snow.mean():.1%} of lit hours"
     return albedo, source
+
+
+def _said(given: float | None) -> str:
+    """Return where a number of the haze came from."""
+    return "Bird & Riordan 1984" if given is None else "study"
 
 
 def _given_or(given: Monthly | None, month: NDArray[np.intp], default: Array, source: str) -> tuple[Array, str]:

@@ -39,9 +39,9 @@ def rows_of(plan: MountingPlan) -> Rows | None:
 
 def sky_light(site: SiteSky, plan: MountingPlan) -> plane.SkyLight:
     """Return a site's light by where it comes from, hour means."""
-    optics, light = column.optics(), site.sky
+    optics, light = site.optics, site.sky
     top = (site.sun.earth_sun * site.sun.lit)[:, None] * optics.extraterrestrial
-    around = light.beam / top * column.forward_share(site.air.with_aod500(light.aod500))
+    around = light.beam / top * column.forward_share(site.air.with_aod500(light.aod500), optics)
     if plan.sky_model == "hay-davies":
         return plane.sky_light(light.beam, light.diffuse, around, site.sun.cos_zenith)
     near, rim = perez_1990.shares(

@@ -41,6 +41,8 @@ class AtmospherePlan:
     ----------
     aod500, angstrom_exponent, water_cm, ozone_atm_cm : 12 monthly values or None
     haze : ``hourly`` = solve the haze of clear hours from their beam; ``fixed`` = keep the given one
+    single_scattering_albedo : float or None [1], of haze at 400 nm; None = that of Bird & Riordan (1984)
+    asymmetry : float or None [1], mean cosine of haze's scattering angle; None = likewise
     """
 
     aod500: Monthly | None = None
@@ -48,6 +50,8 @@ class AtmospherePlan:
     water_cm: Monthly | None = None
     ozone_atm_cm: Monthly | None = None
     haze: Literal["hourly", "fixed"] = "hourly"
+    single_scattering_albedo: float | None = None
+    asymmetry: float | None = None
 
 
 @dataclass(frozen=True, slots=True)
