@@ -63,7 +63,8 @@ function gap_sweep(width) {
 }
 
 function gap_pairs(width) {
-  const one = study.gap_pairs.find((pairs) => pairs.place === choice.place) ?? study.gap_pairs[0];
+  const alike = study.gap_pairs.filter((pairs) => pairs.kind === pairKinds()[choice.pairs]);
+  const one = alike.find((pairs) => pairs.place === choice.place) ?? alike[0];
   const data = one.energy_kwh_m2.map((e, i) => ({ e, x: one.top_gap_ev[i], y: one.bottom_gap_ev[i] }));
   const best = data[d3.maxIndex(data, (d) => d.e)];
   const floor = d3.quantile(data, 0.1, (d) => d.e);

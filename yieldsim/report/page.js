@@ -14,6 +14,7 @@ const choice = {
   relative: "no",
   basis: "specific_yield_kwh_kwp",
   chance: 0,
+  pairs: 0,
 };
 
 // ------------------------------------------------------------------------------------------------ small helpers
@@ -162,6 +163,7 @@ function placeForm() {
 
 const others = () => study.absorbers.map((absorber, i) => [i, absorber.name]).filter(([i]) => i !== study.reference);
 const qualities = () => [...new Set((study.gap_sweep ?? []).map((curve) => curve.quality))];
+const pairKinds = () => [...new Set((study.gap_pairs ?? []).map((pairs) => pairs.kind))];
 const chanceMeasures = () => [...new Set((study.chance ?? []).map((row) => row.measure))];
 
 /** Fill the controls that belong to single charts. */
@@ -175,6 +177,10 @@ function controls() {
       select("Quality of the absorbers", "quality", qualities().map((name, i) => [i, name]), ["gap_sweep"]),
       select("Scale", "relative", [["no", "energy"], ["yes", "share of the best"]], ["gap_sweep"]),
     ],
+    gap_pairs: () => {
+      const kinds = pairKinds();
+      return kinds.length < 2 ? [] : [select("Kind of pair", "pairs", kinds.map((kind, i) => [i, kind]), ["gap_pairs"])];
+    },
     "chance-range": () => {
       const names = chanceMeasures().map((key, i) => [i, study.measures[key]?.name ?? key]);
       return [select("Measure", "chance", names, ["chance-range"])];

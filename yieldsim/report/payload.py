@@ -158,14 +158,19 @@ def _sweep(table: pd.DataFrame, found: Sequence[Place]) -> list[Tree]:
 
 def _pairs(table: pd.DataFrame, found: Sequence[Place]) -> list[Tree]:
     at_place = {(p.site, p.mounting): i for i, p in enumerate(found)}
+    kinds = [name for name in ("quality", "terminals") if name in table]
     return [
         {
             "place": -1 if site == STANDARD_SITE else at_place[str(site), str(mounting)],
+            "kind": ", ".join(
+                f"{value} terminals" if name == "terminals" else str(value)
+                for name, value in zip(kinds, kind, strict=True)
+            ),
             "top_gap_ev": _rounded(rows["top_gap_ev"]),
             "bottom_gap_ev": _rounded(rows["bottom_gap_ev"]),
             "energy_kwh_m2": _rounded(rows["energy_kwh_m2"]),
         }
-        for (site, mounting), rows in table.groupby(["site", "mounting"], sort=False)
+        for (site, mounting, *kind), rows in table.groupby(["site", "mounting", *kinds], sort=False)
         if site == STANDARD_SITE or (str(site), str(mounting)) in at_place
     ]
 
