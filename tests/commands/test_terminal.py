@@ -46,6 +46,12 @@ def test_progress_says_how_far_and_how_long_on_a_terminal():
     assert lines == ["", "1 of 5 done, about 40 s left  Saltmarsh Point", "5 of 5 done  Highmoor", ""]
 
 
+def test_progress_at_the_start_has_no_estimate():
+    stream = Terminal()
+    Progress(stream=stream)("Highmoor", 0, 5)
+    assert stream.getvalue().endswith("0 of 5 done  Highmoor")
+
+
 def test_progress_is_quiet_elsewhere():
     for stream, quiet in ((io.StringIO(), False), (Terminal(), True)):
         progress = Progress(quiet, stream)
