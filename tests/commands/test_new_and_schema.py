@@ -55,9 +55,10 @@ def test_lines_behind_a_comment_sign_are_study_too(tmp_path):
     lines = [line for line in text.splitlines() if not line.startswith(mounting)]
     file.write_text("\n".join(lines).replace("#   mounting:", "mounting:"), encoding="utf-8")
     plan = load(file)
-    assert [each.name for each in plan.sites[0].mountings] == ["flat", "steep"]
+    assert [each.name for each in plan.sites[0].mountings] == ["flat", "steep", "tracker", "fence"]
+    assert plan.sites[0].ground.surface == "grass"
     assert plan.sites[0].atmosphere.water_cm == (1.4,) * 12
-    assert [absorber.name for absorber in plan.absorbers][-1] == "my film"
+    assert [absorber.name for absorber in plan.absorbers][-2:] == ["my film", "tandem"]
 
 
 def test_schema_prints_json(capsys):

@@ -27,6 +27,8 @@ study: {name}                    # also the name of the output folder
 #   mounting:
 #     flat: {{kind: fixed, tilt_deg: 10, azimuth_deg: 180}}
 #     steep: {{kind: fixed, tilt_deg: 60, azimuth_deg: 180}}
+#     tracker: {{kind: tracker, row_pitch_m: 6}}
+#     fence: {{kind: vertical, azimuth_deg: 90}}
 mounting: {{kind: fixed, tilt_deg: 36, azimuth_deg: 180}}       # azimuth clockwise from north: 180 looks south
 
 sites:
@@ -34,7 +36,7 @@ sites:
     weather: pvlib:723170TYA.CSV          # pvlib ships it; yours: a path relative to this file
     # latitude_deg: 36.1                  # over what the weather file says; also longitude_deg, elevation_m
     # atmosphere: {{water_cm: 1.4, aod500: 0.12}}    # one number or twelve; what is left out is found or derived
-    # ground: {{albedo: 0.2}}
+    # ground: grass                       # a surface of the library, or {{albedo: 0.2}}
 
 absorbers:
   - {{name: silicon, like: c-si}}                     # an entry of the library; any field after it overrides
@@ -42,6 +44,7 @@ absorbers:
   - {{name: perovskite 1.55, like: perovskite-1.55}}
   - {{name: ideal 1.34, gap_ev: 1.34, quality: ideal}}          # a gap alone: what physics allows
   # - {{name: my film, gap_ev: 1.6, external_radiative_efficiency: 1.0e-3, series_resistance_ohm_cm2: 1.5}}
+  # - {{name: tandem, stack: [{{like: perovskite-1.68}}, {{like: c-si}}], terminals: 2}}      # top first
 
 reference: silicon                        # the others are set against this one
 
