@@ -84,7 +84,7 @@ def planes():
 def mountings():
     """Return one mounting of any kind as a study holds it."""
     azimuth = _number(0, 360)
-    model = {"sky_model": st.sampled_from(["hay-davies", "perez"])}
+    model = {"sky_model": st.sampled_from(["hay-davies", "perez", "radiance"])}
     # At the least height given here the widest row clears the ground at any tilt.
     rows = model | {"row_pitch_m": _number(3, 50), "row_width_m": _number(0.5, 3), "height_m": _number(1.5, 20)}
     turning = {

@@ -72,7 +72,7 @@ def test_several_kinds_in_one_study(loaded, minimal):
         ("{kind: tracker, row_width_m: 5, row_pitch_m: 9}", "mounting", "height_m 1.5", "at least 2.17"),
         ("{kind: vertical, azimuth_deg: 0, height_m: 0.9}", "mounting", "height_m 0.9", "clear the ground"),
         ("{kind: tracker, backtrack: 1}", "mounting.backtrack", "1", "true | false"),
-        ("{kind: tracker, sky_model: hay}", "mounting.sky_model", "'hay'", "hay-davies | perez"),
+        ("{kind: tracker, sky_model: hay}", "mounting.sky_model", "'hay'", "hay-davies | perez | radiance"),
         ("{kind: tracker, max_angle_deg: 100}", "mounting.max_angle_deg", "100", "from 0 to 90"),
     ],
 )

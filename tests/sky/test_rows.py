@@ -28,13 +28,15 @@ def test_alone_is_the_limit_of_wide_rows():
     np.testing.assert_allclose(rows.sky_view(cosine, 1e-6), (1 + cosine) / 2, atol=1e-6)
 
 
-@pytest.mark.parametrize("tilt", [5.0, 30.0, 60.0, 90.0])
-@pytest.mark.parametrize("zenith", [20.0, 60.0, 80.0, 88.0])
+SUN_BEFORE_ROWS = [
+    (tilt, zenith) for tilt in (5.0, 30.0, 60.0, 90.0) for zenith in (20.0, 60.0, 80.0, 88.0) if zenith - tilt > -90
+]
+
+
+@pytest.mark.parametrize(("tilt", "zenith"), SUN_BEFORE_ROWS)
 def test_shade_against_pvlib(tilt, zenith):
     """Reference: pvlib.shading.shaded_fraction1d (Martinez-Moreno et al. 2024), sun due south, rows facing it."""
     aoi = np.cos(np.radians(zenith - tilt))
-    if aoi <= 0:
-        pytest.skip("the sun is behind the rows")
     left = rows.shaded_cosine(np.array(aoi), np.array(np.cos(np.radians(zenith))), 0.4)
     theirs = shading.shaded_fraction1d(
         zenith, 180.0, axis_azimuth=90.0, shaded_row_rotation=tilt, collector_width=2.0, pitch=5.0

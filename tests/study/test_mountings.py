@@ -69,17 +69,21 @@ def account(sky, mounting, chosen=None, losses=None, dust=None):
 # ------------------------------------------------------------------------------------------------- directions
 
 
-def test_trackers_and_silicon(greensboro_weather):
+@pytest.mark.parametrize("model", ["hay-davies", "radiance"])
+def test_trackers_and_silicon(greensboro, greensboro_weather, model):
     """Direction, Ripalda et al. (2020): the spectrum favours trackers for silicon, fixed tilt for perovskite and CdTe.
 
-    At thin haze, as over most of the United States. The beam of this station's file tells of three times as much; there
-    a lone tracker's silicon gains less than fixed silicon does, because the low sun's beam has lost its visible part.
+    Trackers in a field of rows, under the haze the file's own beam tells of: silicon 1.0090 against 1.0085 fixed
+    (``radiance``: 1.0099 and 1.0091), CdTe 1.0111 against 1.0206. At thin haze, as over most of the United States, also
+    a tracker that stands alone; under this station's own haze a lone one's silicon gains less than fixed silicon does
+    (1.0070), because the beam of the lowest suns has lost its visible part. Rows turn back from those suns.
     """
-    sky = hourly.site_sky(SitePlan("here", (), (), THIN_HAZE), greensboro_weather)
-    fixed = account(sky, FIXED)[1]["spectral"]
-    for mounting in (TRACKER, MountingPlan("alone", "tracker")):
-        turning = account(sky, mounting)[1]["spectral"]
-        assert turning["c-si"] > fixed["c-si"] + 5e-4
+    thin = hourly.site_sky(SitePlan("here", (), (), THIN_HAZE), greensboro_weather)
+    alone = MountingPlan("alone", "tracker")
+    for sky, mounting, margin in ((greensboro.sky, TRACKER, 3e-4), (thin, TRACKER, 5e-4), (thin, alone, 5e-4)):
+        fixed = account(sky, replace(FIXED, sky_model=model))[1]["spectral"]
+        turning = account(sky, replace(mounting, sky_model=model))[1]["spectral"]
+        assert turning["c-si"] > fixed["c-si"] + margin
         for name in ("cdte", "perovskite-1.55", "perovskite-1.68"):
             assert turning[name] < fixed[name] - 2e-3
 
@@ -90,8 +94,8 @@ def test_walls_see_redder_light_in_a_temperate_climate(wall):
     plane than on a tilted one. Both stand alone: rows hide the low red sun, and with it most of the difference."""
     tilted = light.plane_parts(saltmarsh(), replace(FIXED, tilt_deg=35.0)).bands().sum(axis=0)
     upright = light.plane_parts(saltmarsh(), wall).bands().sum(axis=0)
-    # Redder by 1 meV at least: a thousand times what rounding and blocks of hours move it.
-    assert spectrum.average_photon_energy(upright) < spectrum.average_photon_energy(tilted) - 0.001
+    # Redder by 2 meV at least (10 and 22 found): a thousand times what rounding and blocks of hours move it.
+    assert spectrum.average_photon_energy(upright) < spectrum.average_photon_energy(tilted) - 0.002
 
 
 def test_order_and_size_of_a_temperate_site():
@@ -203,12 +207,15 @@ def broadband(sky, tilt_deg, azimuth_deg, model):
 def test_broadband_level_of_a_year(greensboro, tilt, azimuth):
     """References: pvlib's Hay & Davies and Perez on the same hours. Ours splits the sky band by band: within 1.5 % of
     the broadband model's year; with `perez` the level is Perez's: 0.2 % (the sun near the horizon is treated
-    otherwise)."""
+    otherwise). With `radiance` the level, that of computed clear skies, lies within 2.5 % of Perez's measured one."""
     plain = MountingPlan("plane", "fixed", tilt, azimuth)
     bands = light.plane_parts(greensboro.sky, plain).total().sum() / 1000
     assert bands == pytest.approx(broadband(greensboro.sky, tilt, azimuth, "hay-davies"), rel=0.015)
     bands = light.plane_parts(greensboro.sky, replace(plain, sky_model="perez")).total().sum() / 1000
-    assert bands == pytest.approx(broadband(greensboro.sky, tilt, azimuth, "perez"), rel=0.002)
+    measured = broadband(greensboro.sky, tilt, azimuth, "perez")
+    assert bands == pytest.approx(measured, rel=0.002)
+    bands = light.plane_parts(greensboro.sky, replace(plain, sky_model="radiance")).total().sum() / 1000
+    assert bands == pytest.approx(measured, rel=0.025)
 
 
 # ------------------------------------------------------------------------------------------------- invariants

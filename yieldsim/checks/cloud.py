@@ -22,12 +22,18 @@ ORDINATES = "discrete ordinates, 32 streams (PythonicDISORT, Ho 2024), table dis
 ONE_LAYER = "discrete ordinates, 32 streams (PythonicDISORT, Ho 2024), table discrete_ordinates_layer"
 D65 = "CIE standard illuminant D65, table cie_d65"
 SUNS_DEG = (0.0, 30.0, 60.0, 70.0, 75.0)  # zenith: sun above 10 deg; 80 deg is reported
-#: Library entry -> regressions of its kind (model, key in pvlib) and how far [%] beyond their span ours may lie.
-REGRESSIONS: Mapping[str, tuple[tuple[tuple[str, str], ...], float]] = {
-    "c-si": ((("pvspec", "monosi"), ("pvspec", "multisi"), ("jrc", "multisi")), 2.0),
-    "cdte": ((("pvspec", "fs4-1"), ("pvspec", "fs4-2"), ("jrc", "cdte")), 3.0),
-    "cigs": ((("pvspec", "cigs"),), 3.0),
-    "a-si": ((("pvspec", "asi"),), 3.0),
+#: Technology -> library entry, its regressions (model, key in pvlib) and how far [%] beyond their span ours may lie.
+#: Multicrystalline silicon and cadmium telluride have several, which differ by 2 and 6 % among themselves. For the JRC's
+#: own cadmium telluride the figure is reported alone: it lies 4 to 6 % above pvspec's for modules of the same kind.
+REGRESSIONS: Mapping[str, tuple[str, tuple[tuple[str, str], ...], float | None]] = {
+    "monocrystalline silicon": ("c-si", (("pvspec", "monosi"),), 3.0),
+    "multicrystalline silicon": ("c-si", (("pvspec", "multisi"), ("jrc", "multisi")), 2.0),
+    "cadmium telluride": ("cdte", (("pvspec", "fs4-1"), ("pvspec", "fs4-2"), ("jrc", "cdte")), 2.0),
+    "cadmium telluride, series 4-1": ("cdte", (("pvspec", "fs4-1"),), 3.0),
+    "cadmium telluride, series 4-2": ("cdte", (("pvspec", "fs4-2"),), 3.0),
+    "cadmium telluride, JRC": ("cdte", (("jrc", "cdte"),), None),
+    "CIGS": ("cigs", (("pvspec", "cigs"),), 3.0),
+    "amorphous silicon": ("a-si", (("pvspec", "asi"),), 3.0),
 }
 CLEAR_KEYS: Mapping[str, str] = {"c-si": "monosi", "cdte": "cdte", "cigs": "cigs"}
 
@@ -121,15 +127,37 @@ def ordinate_outcomes() -> Iterator[Outcome]:
         yield Outcome("cloud", name, ORDINATES, worst, worst, limit)
 
 
-def light(air_mass: float, water_cm: float, cloud: Array | float = 0.0) -> Array:
-    """Return band spectra on the horizontal over the sine of the sun's height, one row a cloud depth, standard air."""
+def standard_air(air_mass: float, water_cm: float, hours: int, albedo: Array) -> column.Air:
+    """Return the standard's air but for the sun's height and the water."""
+    each = np.ones(hours)
+    fields = (seen_at(air_mass), 101325.0, water_cm, 0.3438, 0.084, 1.14)
+    return column.Air(*(field * each for field in fields), albedo=np.broadcast_to(albedo, (hours, len(albedo))).copy())
+
+
+def on_plane(air_mass: float, water_cm: float, albedo: Array, cloud: Array | float = 0.0) -> Array:
+    """Return band spectra (n_cloud, n_band) [W m-2] on the standard's plane, tilted 37 deg towards the sun.
+
+    Parameters
+    ----------
+    albedo : (n_band,) array [1]
+    """
     cloud = np.atleast_1d(np.asarray(cloud, dtype=np.float64))
-    each = np.ones(len(cloud))
-    air = column.Air(
-        seen_at(air_mass) * each, 101325.0 * each, water_cm * each, 0.3438 * each, 0.084 * each, 1.14 * each, 0.2 * each
+    return column.facing_sun(
+        standard_air(air_mass, water_cm, len(cloud), albedo), cloud, column.REFERENCE_TILT_DEG, column.optics()
     )
+
+
+def horizontal(air_mass: float, water_cm: float, albedo: Array, cloud: Array | float = 0.0) -> Array:
+    """Return the same on the horizontal over the sine of the sun's height."""
+    cloud = np.atleast_1d(np.asarray(cloud, dtype=np.float64))
     optics = column.optics()
-    return column.transmit(air, cloud).total * optics.extraterrestrial * optics.factor
+    passed = column.transmit(standard_air(air_mass, water_cm, len(cloud), albedo), cloud, optics)
+    return passed.total * optics.extraterrestrial * optics.factor
+
+
+def grey(albedo: float = 0.2) -> Array:
+    """Return a grey ground, (n_band,) [1]."""
+    return np.full(len(band_wavelengths()), albedo)
 
 
 def daylight_deviation() -> Array:
@@ -137,7 +165,7 @@ def daylight_deviation() -> Array:
     table, wavelength = reference.table("cie_d65"), band_wavelengths()
     visible = (wavelength >= 400) & (wavelength <= 700)
     theirs = integrate_bands(table["wavelength_nm"], table["relative_power"])[visible]
-    ours = light(1.6, 1.42, 30.0)[0, visible]
+    ours = horizontal(1.6, 1.42, grey(), 30.0)[0, visible]
     return np.asarray((ours / ours.sum()) / (theirs / theirs.sum()) - 1)
 
 
@@ -147,11 +175,18 @@ def yields_at_standard(absorbers: Sequence[Absorber]) -> Array:
 
 
 def cloud_effect(yields: Array, clearness: float) -> Array:
-    """Return the factor at a clear-sky index over that under clear sky, air mass 1.5, (n_absorber,) [1]."""
-    clear, cloudy = light(1.5, 1.42), light(1.5, 1.42, np.geomspace(0.05, 200.0, 120))
-    index, factors = cloudy.sum(axis=1) / clear.sum(), spectral_factor(cloudy, yields)
-    at = np.array([np.interp(-clearness, -index, row) for row in factors.T])
-    return np.asarray(at / spectral_factor(clear, yields)[0])
+    """Return the factor at a clear-sky index over that under clear sky, air mass 1.5, (n_absorber,) [1].
+
+    Notes
+    -----
+    The regressions come from planes tilted towards the sun; what lay before them is not told, so that a grey ground
+    stands for it. The index is that of the horizontal.
+    """
+    depths = np.concatenate([[0.0], np.geomspace(0.05, 200.0, 120)])
+    total = horizontal(1.5, 1.42, grey(), depths).sum(axis=1)
+    factors = spectral_factor(on_plane(1.5, 1.42, grey(), depths), yields)
+    at = np.array([np.interp(-clearness, -total / total[0], row) for row in factors.T])
+    return np.asarray(at / factors[0])
 
 
 def published_effect(model: str, key: str, clearness: float) -> float:
@@ -169,21 +204,30 @@ def outside(value: float, span: Sequence[float]) -> float:
 
 def regression_outcomes(library: Mapping[str, Absorber]) -> Iterator[Outcome]:
     """Yield the comparison of the cloud's effect with regressions, and daylight."""
-    for name, (models, limit) in REGRESSIONS.items():
-        yields = yields_at_standard([library[name]])
+    for name, (entry, models, limit) in REGRESSIONS.items():
+        yields = yields_at_standard([library[entry]])
         for clearness in (0.2, 0.4, 0.6, 0.8):
             ours = float(cloud_effect(yields, clearness)[0])
             span = [published_effect(model, key, clearness) for model, key in models]
             source = ", ".join(f"spectral_factor_{model} {key}" for model, key in models) + ", pvlib"
-            text = f"{name}: factor at clear-sky index {clearness:g} over clear, beyond the span"
+            beyond = ", beyond the span" if len(models) > 1 else ""
+            text = f"{name}: factor at clear-sky index {clearness:g} over clear{beyond}"
             yield Outcome("cloud", text, source, ours, outside(ours, span), limit, "1")
     off = 100 * float(np.max(np.abs(daylight_deviation())))
     yield Outcome("cloud", "overcast spectrum, 400-700 nm, largest deviation of shape", D65, off, off, 8.0)
 
 
 def clear_factor(yields: Array, air_mass: float, water_cm: float) -> Array:
-    """Return the clear-sky factor over that at air mass 1.5 and 1.42 cm of water, (n_absorber,) [1]."""
-    here, standard = light(air_mass, water_cm), light(1.5, 1.42)
+    """Return the clear-sky factor over that at air mass 1.5 and 1.42 cm of water, (n_absorber,) [1].
+
+    Notes
+    -----
+    On the standard's plane over its ground: there Lee & Panchula simulated theirs (37 deg towards the equator, all
+    else as in ASTM G173), and Caballero et al. measured on a tilted plane. On the horizontal a low sun gives so much
+    less beam that cadmium telluride comes out 4 to 6 % higher at air mass 5.
+    """
+    soil = column.reference_air().albedo[0]
+    here, standard = on_plane(air_mass, water_cm, soil), on_plane(1.5, 1.42, soil)
     return np.asarray(spectral_factor(here, yields)[0] / spectral_factor(standard, yields)[0])
 
 
@@ -202,7 +246,7 @@ def clear_regression_outcomes(library: Mapping[str, Absorber]) -> Iterator[Outco
     source = "spectral_factor_firstsolar (Lee & Panchula 2016), _caballero (Caballero et al. 2018), pvlib"
     for name, key in CLEAR_KEYS.items():
         yields = yields_at_standard([library[name]])
-        for masses, limit in (((1.0, 1.5, 2.0, 3.0), 2.0), ((4.0, 5.0), None)):
+        for masses, limit in (((1.0, 1.5, 2.0, 3.0), 2.0), ((4.0, 5.0), 3.0)):
             cases = [(mass, water) for mass in masses for water in (0.5, 1.42, 2.5, 4.0)]
             far = [outside(float(clear_factor(yields, *case)[0]), published_clear(key, *case)) for case in cases]
             text = f"{name}: clear-sky factor, air mass {masses[0]:g}-{masses[-1]:g}, water 0.5-4 cm, beyond the span"

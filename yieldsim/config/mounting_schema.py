@@ -30,12 +30,12 @@ class MountingKind(Choice):
 def _sky_model() -> Any:
     return Field(
         default="hay-davies",
-        description="how much of the sky's light comes from around the sun: hay-davies, band by band, or perez, "
-        "whose level is that of measured planes",
+        description="how much of the sky's light comes from around the sun: hay-davies, band by band; perez, "
+        "whose level is that of measured planes; or radiance, fitted to computed clear skies band by band",
     )
 
 
-_SkyModel = Annotated[str, Choice(("hay-davies", "perez"))]
+_SkyModel = Annotated[str, Choice(("hay-davies", "perez", "radiance"))]
 _Azimuth = Annotated[float, Number(0, 360, "deg clockwise from north")]
 
 

@@ -203,19 +203,36 @@ def reference_air() -> Air:
 
 def reference_plane(constants: Optics) -> Array:
     """Return band energies on the standard's plane (37 deg towards the sun) under its air, (n_band,) [W m-2]."""
+    return np.asarray(facing_sun(reference_air(), np.zeros(1), REFERENCE_TILT_DEG, constants)[0])
+
+
+def facing_sun(air: Air, cloud_depth: Array, tilt_deg: float, constants: Optics | None = None) -> Array:
+    """Return band energies on a plane tilted towards the sun, its ground that of the air.
+
+    Parameters
+    ----------
+    air : Air of n hours
+    cloud_depth : (n,) array [1]
+    tilt_deg : float [deg]
+    constants : Optics, those with the reference folded in unless given; ``factor`` is applied
+
+    Returns
+    -------
+    (n, n_band) array [W m-2], at the mean earth-sun distance
+    """
     from yieldsim.sky.plane import isotropic_parts, sky_light
 
-    air = reference_air()
-    passed = transmit(air, np.zeros(1), constants)
-    cos_zenith = air.cos_zenith
+    constants = optics() if constants is None else constants
+    passed = transmit(air, cloud_depth, constants)
+    cos_zenith = air.cos_zenith[:, None]
     normal = constants.extraterrestrial * passed.beam * constants.factor
     horizontal = constants.extraterrestrial * passed.total * constants.factor * cos_zenith
     around = passed.beam * constants.factor * forward_share(air, constants)
-    light = sky_light(normal, horizontal - normal * cos_zenith, around, cos_zenith)
-    cos_aoi = float(np.cos(np.arccos(cos_zenith[0]) - np.radians(REFERENCE_TILT_DEG)))
-    sky_view, ground_view = isotropic_parts(REFERENCE_TILT_DEG)
-    on_plane = light.direct * cos_aoi + light.uniform * sky_view + horizontal * air.albedo * ground_view
-    return np.asarray(on_plane[0])
+    light = sky_light(normal, horizontal - normal * cos_zenith, around, air.cos_zenith)
+    cos_aoi = np.maximum(np.cos(np.arccos(cos_zenith) - np.radians(tilt_deg)), 0.0)
+    sky_view, ground_view = isotropic_parts(tilt_deg)
+    albedo = air.albedo if air.albedo.ndim == 2 else air.albedo[:, None]
+    return np.asarray(light.direct * cos_aoi + light.uniform * sky_view + horizontal * albedo * ground_view)
 
 
 def transmit(air: Air, cloud_depth: Array, constants: Optics | None = None) -> Transmittance:

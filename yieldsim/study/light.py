@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Sequence
+from collections.abc import Callable, Mapping, Sequence
 from dataclasses import replace
 from typing import TYPE_CHECKING
 
@@ -10,7 +10,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from yieldsim.device.stack import Absorber
-from yieldsim.sky import column, dust, mounting, perez_1990, plane, sight, snow
+from yieldsim.sky import clear_radiance, column, dust, mounting, perez_1990, plane, sight, snow
 from yieldsim.sky.mounting import Stance
 from yieldsim.sky.rows import Rows
 from yieldsim.study.plan import LossesPlan, MountingPlan
@@ -19,6 +19,7 @@ if TYPE_CHECKING:  # hourly imports this module
     from yieldsim.study.hourly import SiteSky
 
 Array = NDArray[np.float64]
+Shares = tuple[Array, Array | None, float]
 
 COS_85 = float(np.cos(np.radians(85.0)))  # where Perez et al. (1990) stop to follow the sun down
 
@@ -39,16 +40,43 @@ def rows_of(plan: MountingPlan) -> Rows | None:
 
 def sky_light(site: SiteSky, plan: MountingPlan) -> plane.SkyLight:
     """Return a site's light by where it comes from, hour means."""
-    optics, light = site.optics, site.sky
-    top = (site.sun.earth_sun * site.sun.lit)[:, None] * optics.extraterrestrial
-    around = light.beam / top * column.forward_share(site.air.with_aod500(light.aod500), optics)
-    if plan.sky_model == "hay-davies":
-        return plane.sky_light(light.beam, light.diffuse, around, site.sun.cos_zenith)
-    near, rim = perez_1990.shares(
-        light.beam.sum(axis=1), light.diffuse.sum(axis=1), top.sum(axis=1), site.sun.cos_zenith
-    )
-    around = plane.at_level(np.clip(around, 0.0, 1.0), light.diffuse, near)
-    return plane.sky_light(light.beam, light.diffuse, around, site.sun.cos_zenith, rim[:, None], COS_85)
+    around, rim, least = SKY_MODELS[plan.sky_model](site)
+    return plane.sky_light(site.sky.beam, site.sky.diffuse, around, site.sun.cos_zenith, rim, least)
+
+
+def _hay_davies(site: SiteSky) -> Shares:
+    """Return Hay & Davies' shares, band by band, of haze's part of the scattering: Rayleigh's knows no direction."""
+    air = site.air.with_aod500(site.sky.aod500)
+    around = site.sky.beam / _top(site) * column.forward_share(air, site.optics)
+    return around, None, plane.LEAST_COS_ZENITH
+
+
+def _perez(site: SiteSky) -> Shares:
+    """Return Perez's broadband shares, the band's colour after Hay & Davies."""
+    light = site.sky
+    top = _top(site).sum(axis=1)
+    near, rim = perez_1990.shares(light.beam.sum(axis=1), light.diffuse.sum(axis=1), top, site.sun.cos_zenith)
+    around, _, _ = _hay_davies(site)
+    return plane.at_level(np.clip(around, 0.0, 1.0), light.diffuse, near), rim[:, None], COS_85
+
+
+def _radiance(site: SiteSky) -> Shares:
+    """Return the shares fitted to radiances of clear skies, band by band."""
+    air = site.air.with_aod500(site.sky.aod500)
+    around, rim = clear_radiance.shares(air, site.sky.open_share, site.optics)
+    return around, rim, plane.LEAST_COS_ZENITH
+
+
+def _top(site: SiteSky) -> Array:
+    return np.asarray((site.sun.earth_sun * site.sun.lit)[:, None] * site.optics.extraterrestrial)
+
+
+#: Share of sky light from around the sun, from the rim, and the least cosine of the zenith, by the name in a study.
+SKY_MODELS: Mapping[str, Callable[[SiteSky], Shares]] = {
+    "hay-davies": _hay_davies,
+    "perez": _perez,
+    "radiance": _radiance,
+}
 
 
 def plane_parts(site: SiteSky, plan: MountingPlan) -> plane.PlaneParts:

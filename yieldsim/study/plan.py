@@ -89,7 +89,7 @@ class MountingPlan:
     row_pitch_m : float or None [m], from row to row; None = one row alone
     row_width_m : float [m], of a row along the plane, square to its length
     height_m : float [m], of a row's middle line, a tracker's axis, above the ground
-    sky_model : ``hay-davies`` or ``perez``, how much of the sky's light comes from around the sun
+    sky_model : ``hay-davies``, ``perez`` or ``radiance``, how much of the sky's light comes from around the sun
     """
 
     name: str
@@ -103,7 +103,7 @@ class MountingPlan:
     row_pitch_m: float | None = None
     row_width_m: float = 2.0
     height_m: float = 1.5
-    sky_model: Literal["hay-davies", "perez"] = "hay-davies"
+    sky_model: Literal["hay-davies", "perez", "radiance"] = "hay-davies"
 
     def words(self) -> str:
         """Return what a person would say of it."""
