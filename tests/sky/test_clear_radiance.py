@@ -39,8 +39,8 @@ def fitted():
 @pytest.mark.parametrize(("chosen", "limit"), [(SMOOTH & FACING, 0.04), (SMOOTH & ~FACING, 0.16), (FACING, 0.05)])
 def test_fit(fitted, chosen, limit):
     """Reference: PythonicDISORT, 64 streams (table tilted_skies, which the four numbers were fitted to). All bands
-    alike from 350 to 1600 nm: 3.4 % rms on planes that face the sun, 14.6 % on the others and on walls, where three parts
-    cannot follow a wide glow; with peaked haze and black ground, not fitted to, 3.6 % and no more than 5 %."""
+    alike from 350 to 1600 nm: 3.4 % rms on planes that face the sun, 14.6 % on the others and on walls, where three
+    parts cannot follow a wide glow; with peaked haze and black ground, not fitted to, 3.6 % and no more than 5 %."""
     assert rms(fitted[chosen]) < limit
 
 

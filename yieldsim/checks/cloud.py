@@ -23,8 +23,8 @@ ONE_LAYER = "discrete ordinates, 32 streams (PythonicDISORT, Ho 2024), table dis
 D65 = "CIE standard illuminant D65, table cie_d65"
 SUNS_DEG = (0.0, 30.0, 60.0, 70.0, 75.0)  # zenith: sun above 10 deg; 80 deg is reported
 #: Technology -> library entry, its regressions (model, key in pvlib) and how far [%] beyond their span ours may lie.
-#: Multicrystalline silicon and cadmium telluride have several, which differ by 2 and 6 % among themselves. For the JRC's
-#: own cadmium telluride the figure is reported alone: it lies 4 to 6 % above pvspec's for modules of the same kind.
+#: Multicrystalline silicon and cadmium telluride have several, which differ by 2 and 6 % among themselves. For the
+#: JRC's own cadmium telluride the figure is only reported: it lies 4 to 6 % above pvspec's for modules of its kind.
 REGRESSIONS: Mapping[str, tuple[str, tuple[tuple[str, str], ...], float | None]] = {
     "monocrystalline silicon": ("c-si", (("pvspec", "monosi"),), 3.0),
     "multicrystalline silicon": ("c-si", (("pvspec", "multisi"), ("jrc", "multisi")), 2.0),
@@ -130,8 +130,15 @@ def ordinate_outcomes() -> Iterator[Outcome]:
 def standard_air(air_mass: float, water_cm: float, hours: int, albedo: Array) -> column.Air:
     """Return the standard's air but for the sun's height and the water."""
     each = np.ones(hours)
-    fields = (seen_at(air_mass), 101325.0, water_cm, 0.3438, 0.084, 1.14)
-    return column.Air(*(field * each for field in fields), albedo=np.broadcast_to(albedo, (hours, len(albedo))).copy())
+    return column.Air(
+        cos_zenith=seen_at(air_mass) * each,
+        pressure=101325.0 * each,
+        water_cm=water_cm * each,
+        ozone_atm_cm=0.3438 * each,
+        aod500=0.084 * each,
+        angstrom_exponent=1.14 * each,
+        albedo=np.broadcast_to(albedo, (hours, len(albedo))).copy(),
+    )
 
 
 def on_plane(air_mass: float, water_cm: float, albedo: Array, cloud: Array | float = 0.0) -> Array:
