@@ -10,6 +10,7 @@ from dataclasses import replace
 from datetime import UTC, datetime
 from difflib import get_close_matches
 from importlib import metadata
+from itertools import combinations
 from pathlib import Path
 from typing import Any
 
@@ -21,7 +22,7 @@ import yieldsim
 from yieldsim import checks, config, readers, report, screen
 from yieldsim.config import library
 from yieldsim.errors import InputError, PlaceError, Problem
-from yieldsim.study import compare, datasets, hourly, pairs, run, store, sweep
+from yieldsim.study import compare, datasets, generation, hourly, pairs, run, store, sweep
 from yieldsim.study.annual import Ratings
 from yieldsim.study.plan import SitePlan, StudyPlan
 from yieldsim.study.result import StudyResult, by_hour_table, responses_table
@@ -106,6 +107,8 @@ def run_study(
     paired = run.rows(pieces, "gap_pairs")
     if plan.gap_pairs is not None:
         paired += pairs.standard_rows(plan.gap_pairs)
+    standing = pairs.material_rows(paired, paired_materials(plan))
+    films = generation.rows(plan.absorbers, plan.films)
     details: dict[str, Any] = {
         "study": plan.name,
         "yieldsim": yieldsim.__version__,
@@ -129,6 +132,8 @@ def run_study(
         weather_quality=pd.DataFrame(run.rows(pieces, "weather_quality")),
         standard=standard,
         gap_pairs=pd.DataFrame(paired) if paired else None,
+        gap_pair_materials=pd.DataFrame(standing) if standing else None,
+        generation=pd.DataFrame(films) if films else None,
         ledger=pd.DataFrame(run.rows(pieces, "ledger")).fillna(0.0),
         responses=responses_table(plan.absorbers),
         by_hour=pd.concat(by_hour, ignore_index=True) if by_hour else None,
@@ -141,6 +146,21 @@ def run_study(
     details |= {"seconds_in_all": round(time.perf_counter() - clock, 3), "peak_memory_mb": peak_memory_mb()}
     store.write_json(folder / "run.json", details)
     return replace(result, run=details)
+
+
+def paired_materials(plan: StudyPlan) -> list[tuple[str, float, float]]:
+    """Return (name, top gap, bottom gap [eV]) of pairs of today: the study's, the library's, and its films on others.
+
+    A film of the library stands on any other of it whose gap is narrower by 0.3 eV; nearer ones make no pair.
+    """
+    entries = [library.entry(name).absorber for name in library.names()]
+    pairs_of_two = [each for each in (*plan.absorbers, *entries) if len(each.junctions) == 2]
+    found = {each.gaps_ev: each.name for each in reversed(pairs_of_two)}
+    single = sorted((each for each in entries if len(each.junctions) == 1), key=lambda each: each.gaps_ev)
+    for lower, upper in combinations(single, 2):
+        if upper.gaps_ev[0] - lower.gaps_ev[0] >= 0.3:
+            found.setdefault((upper.gaps_ev[0], lower.gaps_ev[0]), f"{upper.name} on {lower.name}")
+    return [(name, top, bottom) for (top, bottom), name in sorted(found.items())]
 
 
 def site_spectra(plan: StudyPlan, name: str, start: int | None = None, end: int | None = None) -> xr.Dataset:

@@ -19,17 +19,14 @@ GAPS = {
     "silicon": 1.12, "cadmium telluride": 1.48, "copper indium gallium": 1.15, "gallium arsenide": 1.42,
     "amorphous silicon": 1.72, "perovskite 1.55": 1.55, "perovskite 1.68": 1.68, "ideal 1.34": 1.34,
 }  # fmt: skip
-FATES = (
-    "reflected",
-    "below_gap",
-    "uncollected",
-    "thermalised",
-    "recombined",
-    "heat",
-    "mismatch",
-    "system",
-    "delivered",
-)
+#: Fates and share of what is not delivered, as a ledger has them.
+LOST = {
+    "reflected": 0.04, "below_gap": 0.25, "uncollected": 0.06, "thermalised": 0.35, "radiative_voltage": 0.12,
+    "nonradiative_voltage": 0.08, "fill_factor": 0.04, "resistance": 0.005, "mismatch": -0.001, "snow": 0.0,
+    "soiling": 0.03, "wiring": 0.026,
+}  # fmt: skip
+FATES = (*LOST, "delivered")
+KINDS = (("ideal", 2), ("ideal", 4), ("like perovskite-1.68", 2))
 
 
 def make(
@@ -255,8 +252,7 @@ def _rest(annual: pd.DataFrame, gaps: dict[str, float]) -> dict[str, Any]:
     key = annual[["site", "mounting", "absorber"]]
     energy = annual["energy_kwh_m2"]
     lost = annual["poa_kwh_m2"] - energy
-    parts = np.array([0.04, 0.25, 0.06, 0.35, 0.2, 0.05, 0.0, 0.05])
-    ledger = key.assign(**{name: lost * part for name, part in zip(FATES, parts, strict=False)}, delivered=energy)
+    ledger = key.assign(**{name: lost * part for name, part in LOST.items()}, delivered=energy)
     chance = [
         key.assign(measure=name, p90=annual[name] * 0.94, p50=annual[name], p10=annual[name] * 1.06)
         for name in ("specific_yield_kwh_kwp", "energy_kwh_m2")
@@ -275,21 +271,52 @@ def _rest(annual: pd.DataFrame, gaps: dict[str, float]) -> dict[str, Any]:
     )
     sites = [*dict.fromkeys(zip(annual["site"], annual["mounting"], strict=True)), (STANDARD_SITE, "")]
     pairs = [
-        (
-            site,
-            mounting,
-            float(top),
-            float(bottom),
-            900 - 800 * (top - 1.7) ** 2 - 900 * (bottom - 1.1 - (top - 1.7)) ** 2,
-        )
+        (site, mounting, quality, terminals, float(top), float(bottom), _pair_energy(top, bottom, terminals))
         for site, mounting in sites
+        for quality, terminals in KINDS
         for top in np.round(np.arange(1.5, 2.001, 0.04), 2)
         for bottom in np.round(np.arange(0.9, 1.301, 0.04), 2)
     ]
+    columns = ["site", "mounting", "quality", "terminals", "top_gap_ev", "bottom_gap_ev", "energy_kwh_m2"]
+    materials = {"perovskite on silicon": (1.68, 1.12), "two perovskites of a long name": (1.78, 1.25)}
+    standing = [
+        (*place, *kind, name, top, bottom, _pair_energy(top, bottom, kind[1]), 1.7, 1.1,
+         1 - _pair_energy(top, bottom, kind[1]) / _pair_energy(1.7, 1.1, kind[1]))
+        for place in sites
+        for kind in KINDS
+        for name, (top, bottom) in materials.items()
+    ]  # fmt: skip
+    depth = np.linspace(0, 1, 40) ** 3
+    films = pd.concat(
+        [
+            pd.DataFrame(
+                {
+                    "absorber": name,
+                    "junction": junction,
+                    "depth_um": thickness * depth,
+                    "generation_ma_cm2_um": 80 / thickness * np.exp(-4 * depth),
+                    "share_above": (1 - np.exp(-4 * depth)) / (1 - np.exp(-4)),
+                }
+            )
+            for name in list(gaps)[:3]
+            for junction, thickness in ((1, 0.5), (2, 160.0))
+        ],
+        ignore_index=True,
+    )
     return {
         "ledger": ledger,
         "chance": pd.concat(chance, ignore_index=True),
         "head_to_head": duel,
         "worth": worth,
-        "gap_pairs": pd.DataFrame(pairs, columns=["site", "mounting", "top_gap_ev", "bottom_gap_ev", "energy_kwh_m2"]),
+        "gap_pairs": pd.DataFrame(pairs, columns=columns),
+        "gap_pair_materials": pd.DataFrame(
+            standing,
+            columns=[*columns[:4], "material", *columns[4:], "best_top_gap_ev", "best_bottom_gap_ev", "behind_best"],
+        ),
+        "generation": films,
     }
+
+
+def _pair_energy(top: float, bottom: float, terminals: int) -> float:
+    apart = 900 if terminals == 2 else 200
+    return float(900 - 800 * (top - 1.7) ** 2 - apart * (bottom - 1.1 - (top - 1.7)) ** 2)

@@ -17,7 +17,7 @@ TWELVE = {f"absorber of a long name no {i:02d}": 0.75 + 0.11 * i for i in range(
 
 @pytest.fixture(scope="module")
 def crowded(factory):
-    return factory.make(LONG_SITES, TWELVE)
+    return factory.make(LONG_SITES, TWELVE, full=True)
 
 
 def _boxes(figure):
@@ -71,17 +71,19 @@ def test_slanted_names_of_edges_keep_a_line_apart(crowded):
 
 
 @pytest.mark.parametrize("name", plots.PICTURES)
-def test_every_axis_names_what_it_shows_with_its_unit(name, study):
+def test_every_axis_names_what_it_shows_with_its_unit(name, full):
     with canvas.style():
-        figure = plots.PICTURES[name](study)
+        figure = plots.PICTURES[name](full)
     for axes in figure.axes:
+        if not axes.axison:  # a helper for labels
+            continue
         assert "[" in axes.get_xlabel() or axes.get_xlabel() == "month"
-        rows_are_names = name == "annual_yield"
+        rows_are_names = name in ("annual_yield", "ledger") or "behind" in axes.get_xlabel()
         assert "[" in axes.get_ylabel() or rows_are_names
 
 
 def test_the_same_result_gives_the_same_bytes(tmp_path, factory):
-    small = factory.make(["One", "Two"], {"silicon": 1.12, "wide": 1.68})
+    small = factory.make(["One", "Two"], {"silicon": 1.12, "wide": 1.68}, full=True)
     one, two = (plots.write_plots(small, tmp_path / name) for name in ("a", "b"))
     assert {file.name for file in one} == {f"{name}.{kind}" for name in plots.PICTURES for kind in ("svg", "png")}
     for first, second in zip(one, two, strict=True):
@@ -101,7 +103,7 @@ def test_a_user_s_own_settings_change_nothing(factory):
 
 def test_hostile_names_are_drawn_as_text(tmp_path, factory):
     names = ["<script>alert(1)</script>", "$\\frac{$", "سلام", "🌞 sun", "x" * 200, "a\nb"]
-    made = factory.make(names[:3], {name: 1.1 + 0.1 * i for i, name in enumerate(names)})
+    made = factory.make(names[:3], {name: 1.1 + 0.1 * i for i, name in enumerate(names)}, full=True)
     for file in plots.write_plots(made, tmp_path):
         assert b"<script" not in file.read_bytes()
 
@@ -129,3 +131,38 @@ def test_the_telling_hours_are_clear_high_clear_low_and_dull(study):
     assert [name.split(" (")[0] for name in names] == ["clear, high sun", "clear, low sun", "overcast"]
     heights = [90 - float(dataset["zenith"][at]) for _, at in plots.typical_moments(dataset)]
     assert heights[0] > heights[1]
+
+
+def test_ledger_bars_are_the_shares(full):
+    """Every number beside a bar is its share of the light; they add up to 100 % but for rounding."""
+    with canvas.style():
+        figure = plots.ledger(full)
+    first = full.ledger.iloc[0]
+    fates = [name for name in full.ledger.columns if name not in ("site", "mounting", "absorber")]
+    shares = 100 * first[fates].astype(float) / float(first[fates].sum())
+    axes = figure.axes[0]
+    top = max(text.get_position()[1] for text in axes.texts if text.get_text()[-1].isdigit())
+    shown = [text.get_text().replace("−", "-") for text in axes.texts if text.get_position()[1] == top]
+    assert [f"{share:.1f}" for share in shares if abs(share) > 0.05] == shown
+    assert sum(map(float, shown)) == pytest.approx(100, abs=0.7)
+
+
+def test_gap_pairs_mark_the_best_and_today_s(full):
+    with canvas.style():
+        figure = plots.gap_pairs(full)
+    axes = figure.axes[0]
+    frame = full.gap_pairs.iloc[: len(full.gap_pairs)]
+    mine = frame[(frame["site"] == frame["site"].iloc[0]) & (frame["quality"] == "ideal") & (frame["terminals"] == 2)]
+    best = mine.loc[mine["energy_kwh_m2"].idxmax()]
+    texts = [text.get_text().strip() for text in axes.texts]
+    assert f"{best['top_gap_ev']:.2f}/{best['bottom_gap_ev']:.2f} eV" in texts
+    assert {"a", "b"} <= set(texts)
+    assert any("two perovskites" in text.get_text() for text in figure.texts)
+
+
+def test_generation_ends_where_the_film_ends(full):
+    with canvas.style():
+        figure = plots.PICTURES["generation"](full)
+    shares = [line.get_ydata()[-1] for line in figure.axes[1].lines if len(line.get_xdata()) > 10]
+    assert len(shares) == 6
+    np.testing.assert_allclose(shares, 100.0)

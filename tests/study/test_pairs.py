@@ -93,3 +93,33 @@ def test_bifacial_pairs_take_rear_light(greensboro):
     lit = pairs.pair_rows(*args, GapPairsPlan(every, {("q", 4): (both,)}), LossesPlan())[0]
     dark = pairs.pair_rows(*args, GapPairsPlan(every, {("q", 4): (stack(1.7, 1.12, 4),)}), LossesPlan())[0]
     assert lit["energy_kwh_m2"] > dark["energy_kwh_m2"] * 1.05
+
+
+def table(energy, quality="ideal"):
+    """Rows over tops 1.6-1.8 and bottoms 1.0-1.2 eV."""
+    return [
+        {"site": "here", "mounting": "m", "quality": quality, "terminals": 2,
+         "top_gap_ev": top, "bottom_gap_ev": bottom, "energy_kwh_m2": energy(top, bottom)}
+        for top in (1.6, 1.7, 1.8)
+        for bottom in (1.0, 1.1, 1.2)
+    ]  # fmt: skip
+
+
+def test_how_far_today_s_pairs_stay_behind():
+    """Closed form: on a plane of energies the share lost is that plane's, between pairs too; kinds are kept apart, and
+    what lies beyond the pairs computed is left out."""
+
+    def energy(top, bottom):
+        return 500 + 100 * top - 50 * bottom
+
+    rows = table(energy) + table(lambda top, bottom: 300 - 10 * top + 20 * bottom, "realistic")
+    found = pairs.material_rows(rows, [("one", 1.65, 1.12), ("far", 1.9, 1.1), ("best", 1.8, 1.0)])
+    assert [(row["quality"], row["material"]) for row in found] == [
+        ("ideal", "one"), ("ideal", "best"), ("realistic", "one"), ("realistic", "best"),
+    ]  # fmt: skip
+    one, best = found[:2]
+    assert one["energy_kwh_m2"] == pytest.approx(energy(1.65, 1.12), rel=1e-12)
+    assert one["behind_best"] == pytest.approx(1 - energy(1.65, 1.12) / energy(1.8, 1.0), rel=1e-12)
+    assert (one["best_top_gap_ev"], one["best_bottom_gap_ev"]) == (1.8, 1.0)
+    assert best["behind_best"] == pytest.approx(0.0, abs=1e-12)
+    assert (found[2]["best_top_gap_ev"], found[2]["best_bottom_gap_ev"]) == (1.6, 1.2)

@@ -21,6 +21,7 @@ from yieldsim.device import stack as stack_module
 from yieldsim.device.junction import Junction
 from yieldsim.device.response import scaled, step
 from yieldsim.device.stack import Absorber
+from yieldsim.study.plan import FilmPlan
 
 DEFAULT_INDEX = 3.5  # of a semiconductor whose table has none; matters for scattered light only (common practice)
 _A_M2_PER_MA_CM2 = 10.0
@@ -39,22 +40,22 @@ class Maker:
         self.folder = folder
         self.inputs: dict[str, str] = {}
         self.findings: list[tuple[str, str]] = []
+        self.films: list[FilmPlan] = []
 
     def absorber(self, spec: Spec) -> Absorber:
         """Return the absorber of a study; raises ValueError for what its records refuse, InputError for its files."""
         module = _module_of(spec)
         if spec.stack is not None:
-            layers = enumerate(spec.stack, 1)
-            stacked = tuple(self._junction(layer, f"{spec.name}, junction {i}", 1.0) for i, layer in layers)
+            stacked = tuple(self._junction(layer, spec.name, i, 1.0) for i, layer in enumerate(spec.stack, 1))
             return Absorber(name=spec.name, junctions=stacked, **module)
         if spec.like is None:
-            only = self._junction(spec, spec.name, module.get("area_fraction", 1.0))
+            only = self._junction(spec, spec.name, None, module.get("area_fraction", 1.0))
             return Absorber(name=spec.name, junctions=(only,), **module)
         entry = library.entry(spec.like).absorber
         if len(entry.junctions) == 1:
             if "terminals" in module or "coupling" in module:
                 raise ValueError(f"`terminals` or `coupling` of {spec.like}, which has one junction")
-            only = self._junction(spec, spec.name, module.get("area_fraction", entry.area_fraction))
+            only = self._junction(spec, spec.name, None, module.get("area_fraction", entry.area_fraction))
             return replace(entry, name=spec.name, junctions=(only,), **module)
         inside = [f"`{key}`" for key in spec.junction_keys() if key != "like"]
         if inside:
@@ -63,25 +64,31 @@ class Maker:
             )
         return replace(entry, name=spec.name, **module)
 
-    def _junction(self, spec: Source, called: str, area_fraction: float) -> Junction:
-        junction = replace(self._base(spec, called), **spec.given(*spec.QUALITY, *spec.LIGHT))
+    def _junction(self, spec: Source, name: str, number: int | None, area_fraction: float) -> Junction:
+        """Return a junction of an absorber; number: its place in a stack, 1 for the top one."""
+        called = name if number is None else f"{name}, junction {number}"
+        made = None if spec.material is None else self._material(spec.material, called)
+        if spec.material is not None and made is not None:
+            trapping = cast(material.Trapping, spec.material.trapping)
+            self.films.append(FilmPlan(name, number or 1, made, spec.material.thickness_um * 1e-6, trapping))
+        junction = replace(self._base(spec, called, made), **spec.given(*spec.QUALITY, *spec.LIGHT))
         if spec.datasheet is None:
             return junction
         solved = datasheet.solve(junction, _sheet(spec.datasheet), area_fraction)
         self._tell(called, solved.findings)
         return solved.junction
 
-    def _base(self, spec: Source, called: str) -> Junction:
+    def _base(self, spec: Source, called: str, made: material.Material | None) -> Junction:
         """Return a junction with the response its origin gives, and all else as that or the record has it."""
         if spec.like is not None:
             entry = library.entry(spec.like).absorber
             if len(entry.junctions) > 1:
                 raise ValueError(f"{spec.like} as a junction: it has several; name them one by one")
             return _moved(entry, spec.gap_ev).junctions[0]
-        if spec.material is not None:
+        if spec.material is not None and made is not None:
             gap = {} if spec.gap_ev is None else {"gap_ev": spec.gap_ev}
             return material.junction_of(
-                self._material(spec.material, called),
+                made,
                 spec.material.thickness_um * 1e-6,
                 cast(material.Trapping, spec.material.trapping),
                 spec.reflection or 0.0,

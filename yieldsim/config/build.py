@@ -79,6 +79,7 @@ class Builder:
             folder=str(self.folder),
             inputs={**self.around.inputs, **maker.inputs},
             findings=tuple(maker.findings),
+            films=tuple(maker.films),
         )
         return replace(plan, resolved=resolved(study, plan))
 

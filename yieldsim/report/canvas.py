@@ -83,22 +83,26 @@ def head(figure: Figure, text: str) -> None:
     figure.text(x, y, text, fontsize=8.5, color=GREY)
 
 
-def label_ends(axes: Axes, ends: Sequence[tuple[float, str, Mark]], end: float, size: tuple[float, float]) -> None:
+def label_ends(
+    axes: Axes, ends: Sequence[tuple[float, str, Mark]], end: float | Sequence[float], size: tuple[float, float]
+) -> None:
     """Write a label to the right of each line's end, none over another, a hair line leading to it.
 
     Parameters
     ----------
     axes : Axes with its limits set
     ends : (y of the line's end, text, mark of the line) each
-    end : x of the lines' ends
+    end : x of the lines' ends, one for all or one each
     size : of the panel [in]
     """
     low, high = axes.get_ylim()
     left, right = axes.get_xlim()
     label_x = right + LEAD_IN * (right - left) / size[0]
     gap = (high - low) * LABEL_IN / size[1]
-    for (y, text, mark), place in zip(ends, spread([y for y, _, _ in ends], gap, low, high), strict=True):
-        axes.plot([end, label_x], [y, place], color=mark.colour, linewidth=0.7, clip_on=False)
+    at = [end] * len(ends) if isinstance(end, (int, float)) else end
+    places = spread([y for y, _, _ in ends], gap, low, high)
+    for x, (y, text, mark), place in zip(at, ends, places, strict=True):
+        axes.plot([x, label_x], [y, place], color=mark.colour, linewidth=0.7, clip_on=False)
         axes.plot(label_x, place, mark.marker, color=mark.colour, markersize=4, clip_on=False)
         axes.annotate(
             text,

@@ -12,6 +12,7 @@ from matplotlib.axes import Axes
 from matplotlib.figure import Figure
 from matplotlib.ticker import MaxNLocator
 
+from yieldsim.report import gap_pair_plot, generation_plot, ledger_plot
 from yieldsim.report.canvas import (
     GREY,
     LABEL_IN,
@@ -260,10 +261,25 @@ def typical_moments(dataset: xr.Dataset) -> list[tuple[str, int]]:
     return [(f"{name} ({height[at]:.0f}° up)", at) for name, at in found]
 
 
+def ledger(result: StudyResult) -> Figure | None:
+    """Draw where each year's light goes: a table of bars a site."""
+    chosen, more = _first(result.annual)
+    return ledger_plot.draw(result, chosen, place_names(chosen), more)
+
+
+def gap_pairs(result: StudyResult) -> Figure | None:
+    """Draw annual energy over the gaps of two junctions: a map for each place and kind."""
+    chosen, more = _first(result.annual)
+    return gap_pair_plot.draw(result, chosen, place_names(chosen), more)
+
+
 #: Picture -> what draws it; a picture without numbers is left out.
 PICTURES: Mapping[str, Callable[[StudyResult], Figure | None]] = {
     "annual_yield": annual_yield,
     "spectral_factor": spectral_factor,
     "energy_over_gap": energy_over_gap,
     "spectra": spectra,
+    "ledger": ledger,
+    "gap_pairs": gap_pairs,
+    "generation": generation_plot.draw,
 }

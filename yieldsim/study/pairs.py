@@ -130,6 +130,59 @@ def standard_rows(plan: GapPairsPlan) -> list[Row]:
     return rows
 
 
+def material_rows(rows: Sequence[Row], materials: Sequence[tuple[str, float, float]]) -> list[Row]:
+    """Return how far pairs of today's materials stay behind the best pair, one row per place, kind and material.
+
+    Parameters
+    ----------
+    rows : those of `pair_rows` and `standard_rows`
+    materials : (name, top gap [eV], bottom gap [eV]) each
+
+    Returns
+    -------
+    rows with the best pair of the place and kind, and the share of its energy that two junctions with the material's
+    gaps and the *same quality as the rest* would lose; materials beyond the pairs computed have none
+
+    Notes
+    -----
+    Linear between the pairs computed; a material's own quality is not in it: it is the gaps that are compared.
+    """
+    found: list[Row] = []
+    for kind, members in _by_kind(rows).items():
+        top, bottom = (np.unique([float(row[name]) for row in members]) for name in ("top_gap_ev", "bottom_gap_ev"))
+        energy = np.full((len(top), len(bottom)), np.nan)
+        for row in members:
+            at = np.searchsorted(top, float(row["top_gap_ev"])), np.searchsorted(bottom, float(row["bottom_gap_ev"]))
+            energy[at] = float(row["energy_kwh_m2"])
+        best = np.unravel_index(np.nanargmax(energy), energy.shape)
+        for name, upper, lower in materials:
+            at_gaps = _between(top, bottom, energy, upper, lower)
+            if np.isfinite(at_gaps):
+                row = dict(zip(_KIND, kind, strict=True)) | {"material": name}
+                row |= {"top_gap_ev": upper, "bottom_gap_ev": lower, "energy_kwh_m2": at_gaps}
+                row |= {"best_top_gap_ev": float(top[best[0]]), "best_bottom_gap_ev": float(bottom[best[1]])}
+                found.append(row | {"behind_best": 1 - at_gaps / float(energy[best])})
+    return found
+
+
+_KIND = ("site", "mounting", "quality", "terminals")
+
+
+def _by_kind(rows: Sequence[Row]) -> dict[tuple[str | int | float, ...], list[Row]]:
+    kinds: dict[tuple[str | int | float, ...], list[Row]] = {}
+    for row in rows:
+        kinds.setdefault(tuple(row[name] for name in _KIND), []).append(row)
+    return kinds
+
+
+def _between(top: Array, bottom: Array, energy: Array, upper: float, lower: float) -> float:
+    """Return the energy at a pair of gaps, linear in both; NaN beyond the grid."""
+    if not (top[0] <= upper <= top[-1] and bottom[0] <= lower <= bottom[-1]):
+        return float("nan")
+    along = np.array([np.interp(lower, bottom, row) for row in energy])
+    return float(np.interp(upper, top, along))
+
+
 def _rows(
     site: str,
     mounting: str,

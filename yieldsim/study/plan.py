@@ -6,6 +6,7 @@ from collections.abc import Mapping
 from dataclasses import dataclass, field
 from typing import Any, Literal
 
+from yieldsim.device.material import Material, Trapping
 from yieldsim.device.stack import Absorber
 from yieldsim.sky.horizon import Horizon
 
@@ -166,6 +167,26 @@ class GapPairsPlan:
 
 
 @dataclass(frozen=True, slots=True)
+class FilmPlan:
+    """A junction that is made from a material, so that it can be told where in it light makes its pairs.
+
+    Parameters
+    ----------
+    absorber : str, its name
+    junction : int, 1 for the top one
+    material : Material
+    thickness : float [m]
+    trapping : see `material.absorptance`
+    """
+
+    absorber: str
+    junction: int
+    material: Material
+    thickness: float
+    trapping: Trapping
+
+
+@dataclass(frozen=True, slots=True)
 class LossesPlan:
     """Shares of energy lost besides what absorbers do.
 
@@ -193,6 +214,7 @@ class StudyPlan:
     folder : str, absolute path its relative paths start from; for ``run.json``
     inputs : file as the study names it -> SHA-256, of the files that absorbers are made from
     findings : (absorber, plain words), what was found and done while they were made
+    films : junctions made from a material
     """
 
     name: str
@@ -207,3 +229,4 @@ class StudyPlan:
     folder: str = ""
     inputs: Mapping[str, str] = field(default_factory=dict)
     findings: tuple[tuple[str, str], ...] = ()
+    films: tuple[FilmPlan, ...] = ()

@@ -28,6 +28,8 @@ TABLES: Mapping[str, str] = {
     "by_hour": "by_hour.csv",
     "ledger": "ledger.csv",
     "gap_pairs": "gap_pairs.csv",
+    "gap_pair_materials": "gap_pair_materials.csv",
+    "generation": "generation.csv",
     "chance": "chance.csv",
     "head_to_head": "head_to_head.csv",
     "worth": "worth.csv",
@@ -37,7 +39,7 @@ TABLES: Mapping[str, str] = {
 TEXT_COLUMNS = frozenset(
     {
         "site", "mounting", "absorber", "other", "kind", "first", "last", "found", "done", "quality", "measure",
-        "currency",
+        "currency", "material",
     }
 )  # fmt: skip
 
@@ -68,6 +70,11 @@ class StudyResult:
     by_hour : ``site, mounting, absorber, month, hour, specific_yield_kwh_kwp``, see `by_hour_table`
     ledger : ``site, mounting, absorber`` and one column [kWh m-2] per fate of the light, in the order it meets them
     gap_pairs : ``site, mounting, top_gap_ev, bottom_gap_ev, energy_kwh_m2``; `STANDARD_SITE` as in `gap_sweep`
+    gap_pair_materials : ``site, mounting, quality, terminals, material, top_gap_ev, bottom_gap_ev, energy_kwh_m2,
+        best_top_gap_ev, best_bottom_gap_ev, behind_best``: what gaps of today's materials give away, see
+        `pairs.material_rows`
+    generation : ``absorber, junction, depth_um, generation_ma_cm2_um, share_above``, where junctions made from a
+        material make their pairs under the standard spectrum, see `generation.rows`
     chance : ``site, mounting, absorber, measure, p90, p50, p10``; P90 is exceeded with 90 % probability
     head_to_head : ``site, mounting, absorber, other, probability, margin_p90, margin_p50, margin_p10``; probability
         that ``absorber`` yields more than ``other``, margins as shares of the other's yield
@@ -88,6 +95,8 @@ class StudyResult:
     by_hour: pd.DataFrame | None = None
     ledger: pd.DataFrame | None = None
     gap_pairs: pd.DataFrame | None = None
+    gap_pair_materials: pd.DataFrame | None = None
+    generation: pd.DataFrame | None = None
     chance: pd.DataFrame | None = None
     head_to_head: pd.DataFrame | None = None
     worth: pd.DataFrame | None = None
