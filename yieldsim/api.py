@@ -21,6 +21,7 @@ import xarray as xr
 import yieldsim
 from yieldsim import checks, config, readers, report, screen
 from yieldsim.config import library
+from yieldsim.device.stack import gap_label
 from yieldsim.errors import InputError, PlaceError, Problem
 from yieldsim.study import compare, datasets, generation, hourly, pairs, run, store, sweep
 from yieldsim.study.annual import Ratings
@@ -224,7 +225,7 @@ def standard_table(plan: StudyPlan) -> pd.DataFrame:
         {
             "absorber": [absorber.name for absorber in plan.absorbers],
             "terminals": [absorber.terminals for absorber in plan.absorbers],
-            "gap_ev": [compare.gap_text(absorber) for absorber in plan.absorbers],
+            "gap_ev": [gap_label(absorber) for absorber in plan.absorbers],
             "stc_efficiency": efficiency,
             "jsc_a_m2": standard.short_circuit,
             "voc_v": standard.open_circuit,

@@ -89,7 +89,7 @@ def test_it_asks_for_nothing_but_itself_and_says_nothing(opened):
 def test_every_chart_is_drawn_and_named(shown, full):
     tab = shown
     charts = tab.locator("figure.chart")
-    assert charts.count() == 11
+    assert charts.count() == 12
     for chart in charts.all():
         svg = chart.locator(".stage svg")
         assert svg.get_attribute("role") == "img"

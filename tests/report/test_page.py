@@ -79,7 +79,7 @@ def test_parts_that_a_result_lacks_do_not_appear(study):
 
 def test_every_chart_has_a_table_and_a_file_beside_it(html, full):
     figures = re.findall(r'<figure class="chart".*?</figure>', html, re.DOTALL)
-    assert len(figures) == 11
+    assert len(figures) == 12
     files = {name for name, _ in full.tables()} | {"spectra/"}
     for figure in figures:
         assert "<summary>" in figure
@@ -126,6 +126,18 @@ def test_no_text_ends_the_script_that_holds_the_data():
     text = page.script_json({"a": "</script><!--", "b": "\u2028&"})
     assert not re.search("[<>&\u2028]", text)
     assert json.loads(text) == {"a": "</script><!--", "b": "\u2028&"}
+
+
+def test_pairs_of_today_and_films_are_those_of_the_tables(full):
+    tree = payload.payload(full)
+    table = full.gap_pair_materials
+    for pairs in tree["gap_pairs"]:
+        assert [each["name"] for each in pairs["materials"]] == list(dict.fromkeys(table["material"]))
+    assert tree["gap_pairs"][0]["materials"][0]["behind_best"] == pytest.approx(table["behind_best"].iloc[0], rel=1e-6)
+    films = tree["generation"]
+    assert len(films) == len(full.generation.groupby(["absorber", "junction"]))
+    assert {film["junctions"] for film in films} == {2}
+    assert sum(len(film["depth_um"]) for film in films) == len(full.generation)
 
 
 def test_the_charts_numbers_are_those_of_the_tables(full):

@@ -73,22 +73,51 @@ function gap_pairs(width) {
   const gaps = (key) => [...new Set(data.map((d) => d[key]))].sort(d3.ascending);
   const sparse = (list, most) => list.filter((_, i) => i % Math.ceil(list.length / most) === 0);
   const [tops, bottoms] = [gaps("x"), gaps("y")];
+  const flat = data.filter((d) => d.e >= 0.99 * best.e);
+  const nearest = (list, v) => d3.least(list, (g) => Math.abs(g - v));
+  const today = one.materials.map((m) => ({ ...m, x: nearest(tops, m.top_gap_ev), y: nearest(bottoms, m.bottom_gap_ev) }));
+  const ofToday = (m) => `${m.name}, ${figures(m.top_gap_ev, 2)} over ${figures(m.bottom_gap_ev, 2)} eV: ${signed(-100 * m.behind_best, 1)} % of the best`;
   const svg = plot(width, {
     marginLeft: 52, marginRight: 12, marginBottom: 38, marginTop: 26, height: 380,
     x: { type: "band", padding: 0, domain: tops, ticks: sparse(tops, 8), tickFormat: (v) => figures(v, 2), label: "gap on top [eV]", labelAnchor: "center", labelArrow: "none", tickSize: 0 },
     y: { type: "band", padding: 0, domain: bottoms.slice().reverse(), ticks: sparse(bottoms, 10), tickFormat: (v) => figures(v, 2), label: "gap below [eV]", labelArrow: "none", tickSize: 0 },
     marks: [
       Plot.cell(data, { x: "x", y: "y", fill: "var(--s0)", fillOpacity: shade, inset: 0 }),
+      Plot.cell(flat, { x: "x", y: "y", fill: "none", stroke: "currentColor", strokeWidth: 1.2, inset: 0.5 }),
+      Plot.dot(today, { x: "x", y: "y", r: 4, symbol: "square", fill: "var(--s1)", stroke: "var(--paper)", strokeWidth: 1 }),
       Plot.dot([best], { x: "x", y: "y", r: 8, stroke: "currentColor", strokeWidth: 2.5 }),
       Plot.tip(data, Plot.pointer({ x: "x", y: "y", title: text })),
     ],
   });
   return {
     svg,
-    note: `Best at ${placeName(one.place)}: ${figures(best.x, 2)} over ${figures(best.y, 2)} eV with ${figures(best.e, 1)} kWh/m².`,
+    note: `Best at ${placeName(one.place)}: ${figures(best.x, 2)} over ${figures(best.y, 2)} eV with ${figures(best.e, 1)} kWh/m².` + (today.length ? ` Gaps of today, at the same quality: ${today.map(ofToday).join("; ")}.` : ""),
     alt: `Energy a year over the gaps of two junctions at ${placeName(one.place)}.`,
     points: data.map((d) => ({ x: d.x, y: d.y, text: text(d) })),
     table: () => ({ columns: ["gap on top [eV]", "gap below [eV]", "energy [kWh/m²]"], rows: data.map((d) => [figures(d.x, 2), figures(d.y, 2), figures(d.e, 1)]) }),
+  };
+}
+
+function generation(width) {
+  const films = study.generation.map((film, number) => ({ ...film, number, name: film.junctions > 1 ? `${names()[film.absorber]}, junction ${film.junction}` : names()[film.absorber] }));
+  const least = 1e-3; // um, where the logarithm of the depth begins
+  const data = films.flatMap((film) => film.depth_um.map((x, i) => ({ film, x: Math.max(x, least), y: 100 * film.share_above[i], rate: film.generation_ma_cm2_um[i] })));
+  const text = (d) => `${d.film.name}: ${figures(d.y, 1)} % of all pairs are made within ${d.x.toPrecision(3)} µm of its front; there ${d.rate.toPrecision(3)} mA/cm² per µm`;
+  const svg = plot(width, {
+    marginLeft: 48, marginRight: 14, marginBottom: 38, marginTop: 26, height: 320,
+    x: { type: "log", domain: [least, d3.max(data, (d) => d.x)], grid: true, ticks: 6, tickFormat: (v) => (Math.log10(v) % 1 === 0 ? `${+v.toPrecision(1)}` : ""), label: "depth below the front of the film [µm]", labelAnchor: "center", labelArrow: "none" },
+    y: { domain: [0, 100], grid: true, label: "share of pairs made above [%]", labelArrow: "none" },
+    marks: [
+      ...films.map((film) => Plot.line(data.filter((d) => d.film === film), { x: "x", y: "y", stroke: look(film.number).colour, strokeDasharray: look(film.number).dash, strokeWidth: 1.8 })),
+      Plot.tip(data, Plot.pointer({ x: "x", y: "y", title: text, maxRadius: 40 })),
+    ],
+  });
+  return {
+    svg,
+    legend: legendOf(films.map((film) => film.name), true),
+    alt: "Share of pairs made above each depth, per film, under the standard spectrum.",
+    points: data.map((d) => ({ x: d.x, y: d.y, text: text(d) })),
+    table: () => ({ columns: ["film", "depth [µm]", "charge made [mA/cm² per µm]", "share above [%]"], rows: data.filter((_, i) => i % 8 === 0).map((d) => [d.film.name, d.x.toPrecision(3), d.rate.toPrecision(3), figures(d.y, 1)]) }),
   };
 }
 
@@ -156,7 +185,7 @@ function worth(width) {
   };
 }
 
-const CHARTS = { overview, monthly, factors, ledger, hours, spectrum, gap_sweep, gap_pairs, "chance-range": chanceRange, duel, "worth-chart": worth };
+const CHARTS = { overview, monthly, factors, ledger, hours, spectrum, gap_sweep, gap_pairs, generation, "chance-range": chanceRange, duel, "worth-chart": worth };
 
 // ---------------------------------------------------------------------------------------------------------- start
 

@@ -55,7 +55,8 @@ def payload(result: StudyResult) -> Tree:
         ("by_hour", result.by_hour, lambda table: _by_hour(table, found, absorbers)),
         ("ledger", result.ledger, lambda table: _ledger(table, found, absorbers)),
         ("gap_sweep", result.gap_sweep, lambda table: _sweep(table, found)),
-        ("gap_pairs", result.gap_pairs, lambda table: _pairs(table, found)),
+        ("gap_pairs", result.gap_pairs, lambda table: _pairs(table, result.gap_pair_materials, found)),
+        ("generation", result.generation, lambda table: _films(table, absorbers)),
         ("chance", result.chance, lambda table: _listed(table, found, absorbers)),
         ("head_to_head", result.head_to_head, lambda table: _listed(table, found, absorbers)),
         ("worth", result.worth, lambda table: _listed(table, found, absorbers)),
@@ -156,22 +157,43 @@ def _sweep(table: pd.DataFrame, found: Sequence[Place]) -> list[Tree]:
     return curves
 
 
-def _pairs(table: pd.DataFrame, found: Sequence[Place]) -> list[Tree]:
+def _pairs(table: pd.DataFrame, materials: pd.DataFrame | None, found: Sequence[Place]) -> list[Tree]:
     at_place = {(p.site, p.mounting): i for i, p in enumerate(found)}
     kinds = [name for name in ("quality", "terminals") if name in table]
+    keys = ["site", "mounting", *kinds]
+    today: dict[Any, list[Tree]] = {}
+    for row in [] if materials is None else records(materials):
+        point = {name: _number(row[name]) for name in ("top_gap_ev", "bottom_gap_ev", "behind_best")}
+        today.setdefault(tuple(row[key] for key in keys), []).append({"name": str(row["material"]), **point})
     return [
         {
-            "place": -1 if site == STANDARD_SITE else at_place[str(site), str(mounting)],
+            "place": -1 if place[0] == STANDARD_SITE else at_place[str(place[0]), str(place[1])],
             "kind": ", ".join(
                 f"{value} terminals" if name == "terminals" else str(value)
-                for name, value in zip(kinds, kind, strict=True)
+                for name, value in zip(kinds, place[2:], strict=True)
             ),
             "top_gap_ev": _rounded(rows["top_gap_ev"]),
             "bottom_gap_ev": _rounded(rows["bottom_gap_ev"]),
             "energy_kwh_m2": _rounded(rows["energy_kwh_m2"]),
+            "materials": today.get(place, []),
         }
-        for (site, mounting, *kind), rows in table.groupby(["site", "mounting", *kinds], sort=False)
-        if site == STANDARD_SITE or (str(site), str(mounting)) in at_place
+        for place, rows in table.groupby(keys, sort=False)
+        if place[0] == STANDARD_SITE or (str(place[0]), str(place[1])) in at_place
+    ]
+
+
+def _films(table: pd.DataFrame, absorbers: Sequence[str]) -> list[Tree]:
+    junctions = {str(name): len(set(rows["junction"])) for name, rows in table.groupby("absorber")}
+    return [
+        {
+            "absorber": absorbers.index(str(name)),
+            "junction": str(junction),
+            "junctions": junctions[str(name)],
+            "depth_um": _rounded(rows["depth_um"], 4),
+            "generation_ma_cm2_um": _rounded(rows["generation_ma_cm2_um"], 4),
+            "share_above": _rounded(rows["share_above"], 5),
+        }
+        for (name, junction), rows in table.groupby(["absorber", "junction"], sort=False)
     ]
 
 

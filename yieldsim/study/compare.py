@@ -8,7 +8,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from yieldsim.constants import STANDARD_IRRADIANCE
-from yieldsim.device.stack import Absorber
+from yieldsim.device.stack import Absorber, gap_label
 from yieldsim.study.annual import Factors, Ratings, Sums, factors
 from yieldsim.study.plan import Row
 
@@ -28,11 +28,6 @@ MEASURES = (
     "specific_yield_kwh_kwp",
     "energy_kwh_m2",
 )
-
-
-def gap_text(absorber: Absorber) -> str:
-    """Return the gaps [eV] as text, top junction first: ``1.68/1.12``."""
-    return "/".join(f"{junction.gap_ev:.12g}" for junction in absorber.junctions)
 
 
 def measures(total: Sums, ratings: Ratings, area_fraction: Array) -> dict[str, Array]:
@@ -79,7 +74,7 @@ def annual_rows(
     rows: list[Row] = []
     for i, absorber in enumerate(absorbers):
         row: Row = {"site": site, "mounting": mounting, "absorber": absorber.name, **more}
-        row |= {"terminals": absorber.terminals, "gap_ev": gap_text(absorber)}
+        row |= {"terminals": absorber.terminals, "gap_ev": gap_label(absorber)}
         row |= {name: float(found[name][i, 0]) for name in MEASURES}
         row["stc_efficiency"] = float(efficiency[i])
         row |= {name: int(order[i]) for name, order in ranks.items()}
