@@ -129,7 +129,7 @@ def test_no_text_ends_the_script_that_holds_the_data():
 
 
 def test_pairs_of_today_and_films_are_those_of_the_tables(full):
-    tree = payload.payload(full)
+    tree = payload(full)
     table = full.gap_pair_materials
     for pairs in tree["gap_pairs"]:
         assert [each["name"] for each in pairs["materials"]] == list(dict.fromkeys(table["material"]))
