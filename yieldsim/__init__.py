@@ -1,4 +1,12 @@
-"""yieldsim: which light absorber wins at which site, by how much, how surely."""
+"""yieldsim: which light absorber wins at which site, by how much, how surely.
+
+    plan = yieldsim.load_study("mine.yaml")
+    result = yieldsim.run_study(plan, "results")
+    result.annual                                      # pandas
+    yieldsim.site_spectra(plan, "Saltmarsh Point")     # xarray
+
+See `yieldsim.api` for an example that runs as it stands.
+"""
 
 from __future__ import annotations
 
@@ -7,7 +15,15 @@ from typing import Any
 
 __version__ = "0.1.0"
 
-_HOME = {"load_study": "yieldsim.api", "run_study": "yieldsim.api"}
+_HOME = {
+    "InputError": "yieldsim.errors",
+    "PlaceError": "yieldsim.errors",
+    "load_study": "yieldsim.api",
+    "load_weather": "yieldsim.api",
+    "run_study": "yieldsim.api",
+    "site_spectra": "yieldsim.api",
+    "verify": "yieldsim.api",
+}
 
 __all__ = ["__version__", *sorted(_HOME)]
 

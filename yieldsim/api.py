@@ -1,4 +1,25 @@
-"""Load a study, run it, get the result: what a notebook uses and the commands call; where all parts meet."""
+"""Load a study, run it, get the result: what a notebook uses and the commands call; where all parts meet.
+
+>>> import tempfile
+>>> from pathlib import Path
+>>> import yieldsim
+>>> folder = Path(tempfile.mkdtemp())
+>>> _ = (folder / "mine.yaml").write_text('''
+... study: mine
+... mounting: {tilt_deg: 30, azimuth_deg: 180}
+... sites: [{name: Greensboro, weather: "pvlib:723170TYA.CSV"}]
+... absorbers: [{name: silicon, like: c-si}, {name: film, like: cdte}]
+... keep: [annual, monthly]
+... ''', encoding="utf-8")
+>>> plan = yieldsim.load_study(folder / "mine.yaml")
+>>> result = yieldsim.run_study(plan, folder / "results")
+>>> table = result.annual.set_index("absorber")
+>>> bool(table.loc["film", "spectral_factor"] > table.loc["silicon", "spectral_factor"])
+True
+>>> spectra = yieldsim.site_spectra(plan, "Greensboro")
+>>> spectra["beam"].dims
+('time', 'band')
+"""
 
 from __future__ import annotations
 
@@ -47,6 +68,17 @@ def load_study(path: str | Path) -> StudyPlan:
     ------
     InputError
         With everything that is wrong, each with file, line, key path, what was found and what is allowed.
+
+    Examples
+    --------
+    >>> import tempfile
+    >>> path = Path(tempfile.mkdtemp(), "wrong.yaml")
+    >>> _ = path.write_text("study: wrong\\nsites: []\\nabsorbers: [{name: silicon, like: c-si}]\\n", encoding="utf-8")
+    >>> try:
+    ...     load_study(path)
+    ... except InputError as error:
+    ...     print([(problem.line, problem.where) for problem in error.problems])
+    [(2, 'sites')]
     """
     return config.load(Path(path))
 
@@ -208,7 +240,14 @@ def site_spectra(plan: StudyPlan, name: str, start: int | None = None, end: int 
 
 
 def verify() -> Iterator[checks.Outcome]:
-    """Yield every check of this installation against published references."""
+    """Yield every check of this installation against published references.
+
+    Examples
+    --------
+    >>> first = next(verify())
+    >>> first.passed
+    True
+    """
     entries = [library.entry(name) for name in library.names()]
     absorbers = {entry.name: entry.absorber for entry in entries}
     published = {
