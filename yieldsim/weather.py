@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import re
 from collections.abc import Mapping
-from dataclasses import dataclass, field
+from dataclasses import dataclass, field, replace
 from enum import IntFlag
 from types import MappingProxyType
 
@@ -174,6 +174,13 @@ class Weather:
     def __contains__(self, name: object) -> bool:
         """Return whether there is a column of that name."""
         return name in self.columns
+
+
+def cut(weather: Weather, start: int, end: int) -> Weather:
+    """Return the intervals from ``start`` to before ``end``; what was found stays with all of it."""
+    columns = {name: values[start:end] for name, values in weather.columns.items()}
+    arrays = {name: getattr(weather, name)[start:end] for name in ("time", "flags", "row")}
+    return replace(weather, columns=columns, **arrays)
 
 
 def _faults(weather: Weather) -> list[tuple[str, str, str]]:

@@ -75,7 +75,7 @@ def study(names: Sequence[str], folder: Path) -> StudyPlan:
 
 def case_of(name: str, folder: Path) -> Case:
     plan = study([name], folder)
-    return Case(plan, plan.sites[0], api.load_weather(plan.sites[0])[0])
+    return Case(plan, plan.sites[0], next(iter(api.load_weather(plan.sites[0]))))
 
 
 # --------------------------------------------------------------------------------------------------- what is timed
@@ -88,7 +88,7 @@ def full_chain(case: Case, n_absorber: int = 12, n_gap: int = 0, ledger: bool = 
     sky = hourly.site_sky(case.site, case.weather)
     parts = light.plane_parts(sky, mounting)
     year = hourly.plane_year(sky, mounting, parts, absorbers)
-    total = annual.sums(year, sky.month, piece.monthly_hours(sky), case.weather.interval_s, case.plan.losses)
+    total = annual.sums(year, sky.month, piece.monthly_hours(sky.weather), case.weather.interval_s, case.plan.losses)
     compare.annual_rows(case.site.name, mounting.name, absorbers, annual.Ratings.of(absorbers), total)
     if ledger:
         hourly.light_paid(year, absorbers, sky.month)

@@ -33,7 +33,7 @@ def run(options: argparse.Namespace) -> int:
     from yieldsim import api
     from yieldsim.errors import InputError
     from yieldsim.report.quality import write_quality
-    from yieldsim.study.piece import quality_rows
+    from yieldsim.study.piece import sky_quality_rows
     from yieldsim.study.store import file_stem
 
     plan = api.load_study(options.study)
@@ -46,7 +46,7 @@ def run(options: argparse.Namespace) -> int:
             problems.extend(found.problems)
             print(f"\n{bold(plain(site.name))}: not usable")
             continue
-        rows += [row for sky in found for row in quality_rows(site.name, sky)]
+        rows += [row for sky in found for row in sky_quality_rows(site.name, sky)]
         pictures = _pictures(site.name, found, out / "weather")
         print(f"\n{describe(site, found)}\n{_line('picture', ', '.join(pictures))}")
     if rows:

@@ -46,8 +46,15 @@ class Sums:
         return Sums(**{name: getattr(self, name).sum(axis=-1, keepdims=True) for name in self.__slots__})
 
 
+def added(first: Sums, second: Sums) -> Sums:
+    """Return the sums of two stretches of time together."""
+    return Sums(**{name: getattr(first, name) + getattr(second, name) for name in Sums.__slots__})
+
+
 def mean(years: Sequence[Sums]) -> Sums:
     """Return the mean of several years' sums, month by month."""
+    if len(years) == 1:
+        return years[0]
     return Sums(**{name: np.mean([getattr(year, name) for year in years], axis=0) for name in Sums.__slots__})
 
 

@@ -112,6 +112,13 @@ def hourly_dataset(site: str, sky: SiteSky, years: Sequence[PlaneYear], absorber
     return xr.Dataset(variables, coordinates, _attributes(site, sky, "hourly means"))
 
 
+def joined(parts: Sequence[xr.Dataset]) -> xr.Dataset:
+    """Return datasets of one kind, one stretch of time after the other, as one."""
+    if len(parts) == 1:
+        return parts[0]
+    return xr.concat(parts, "time", data_vars="minimal", coords="minimal", compat="equals", combine_attrs="override")
+
+
 def chosen_days(sky: SiteSky) -> list[tuple[int, str, NDArray[np.intp]]]:
     """Return (month, kind, positions among the lit intervals) of the clearest and the median day of each month.
 
@@ -141,7 +148,7 @@ def spectra_dataset(site: str, sky: SiteSky, years: Sequence[PlaneYear]) -> xr.D
     at = np.concatenate([positions for _, _, positions in days])
     kinds = np.concatenate([[kind] * len(positions) for _, kind, positions in days])
     months = np.concatenate([[month + 1] * len(positions) for month, _, positions in days])
-    numbers = np.concatenate([[i] * len(positions) for i, (_, _, positions) in enumerate(days)])
+    numbers = np.concatenate([[2 * month + (kind == "median")] * len(at) for month, kind, at in days])
     front = np.array([(y.parts.beam + y.parts.sky + y.parts.ground)[at] for y in years])
     edges = spectrum.band_edges()
     per_band = {"units": "W m-2"}
@@ -159,7 +166,11 @@ def spectra_dataset(site: str, sky: SiteSky, years: Sequence[PlaneYear]) -> xr.D
         ),
         "band_edges": (("band", "edge"), np.stack([edges[:-1], edges[1:]], axis=1), {"units": "nm"}),
         "month": ("time", months.astype(np.int32), {"long_name": "calendar month of the day"}),
-        "day": ("time", numbers.astype(np.int32), {"long_name": "number of the chosen day, 0 first"}),
+        "day": (
+            "time",
+            numbers.astype(np.int32),
+            {"long_name": "number of the chosen day: two a month, January's clearest is 0"},
+        ),
         "day_kind": (
             "time",
             kinds.astype(str),

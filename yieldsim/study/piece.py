@@ -2,10 +2,11 @@
 
 from __future__ import annotations
 
-from collections.abc import Sequence
+from collections.abc import Iterable, Mapping, Sequence
+from dataclasses import dataclass, field
 from datetime import UTC, datetime
 from pathlib import Path
-from typing import Any
+from typing import TYPE_CHECKING, Any
 
 import numpy as np
 
@@ -13,12 +14,23 @@ import yieldsim
 from yieldsim.device.stack import Absorber
 from yieldsim.study import annual, compare, datasets, light, pairs, store, sweep
 from yieldsim.study.annual import Ratings
-from yieldsim.study.hourly import FacesOfYear, SiteSky, light_paid, local_month_and_day, plane_year, site_sky
+from yieldsim.study.book import Book
+from yieldsim.study.hourly import (
+    FacesOfYear,
+    PlaneYear,
+    SiteSky,
+    light_paid,
+    local_month_and_day,
+    plane_year,
+    site_sky,
+)
 from yieldsim.study.ledger import ledger_rows
-from yieldsim.study.plan import GapPairsPlan, Row, SitePlan, StudyPlan
+from yieldsim.study.parts import parts
+from yieldsim.study.plan import GapPairsPlan, MountingPlan, Row, SitePlan, StudyPlan
 from yieldsim.weather import Weather
 
-_NAMES = ("site", "mounting", "absorber")
+if TYPE_CHECKING:
+    import xarray as xr
 
 
 def key(plan: StudyPlan, site: SitePlan) -> str:
@@ -29,55 +41,85 @@ def key(plan: StudyPlan, site: SitePlan) -> str:
     return store.fingerprint(version, *parts, kept)
 
 
-def compute(plan: StudyPlan, site: SitePlan, years: Sequence[Weather], folder: Path) -> dict[str, Any]:
+def compute(plan: StudyPlan, site: SitePlan, years: Iterable[Weather], folder: Path) -> dict[str, Any]:
     """Return a site's rows and write its datasets.
 
     Parameters
     ----------
     plan : StudyPlan
     site : SitePlan, one of its sites
-    years : screened weather, one a year
+    years : screened weather, one a year; one year is held at a time
     folder : Path of the study's results
 
     Returns
     -------
-    dict of ``annual, yearly, monthly, gap_sweep, weather_quality`` rows, JSON-able; kept on disk with its key
+    dict of table name -> rows, JSON-able; kept on disk with its key
+
+    Notes
+    -----
+    The first year gives the datasets of hours and spectra.
     """
-    skies = [site_sky(site, weather) for weather in years]
-    ratings = Ratings.of(plan.absorbers)
-    piece: dict[str, Any] = {name: [] for name in ("annual", "yearly", "monthly", "gap_sweep", "gap_pairs", "ledger")}
-    piece["weather_quality"] = [row for sky in skies for row in quality_rows(site.name, sky)]
-    first_year: list[Any] = []
-    for mounting in site.mountings:
-        totals, swept, paired, ledgers = [], [], [], []
-        for sky in skies:
-            parts = light.plane_parts(sky, mounting)
-            losses, dust = light.with_snow(plan.losses, sky, mounting, parts), light.dust_colour(sky, plan.losses)
-            year = plane_year(sky, mounting, parts, plan.absorbers, dust)
-            if plan.gap_sweep is not None:
-                swept.append(sweep.sweep_rows(site.name, sky, mounting, parts, plan.gap_sweep, losses, dust))
-            if plan.gap_pairs is not None:
-                faces = FacesOfYear(sky, parts, light.rear_parts(sky, mounting, _first_pairs(plan.gap_pairs)), dust)
-                paired.append(pairs.pair_rows(site.name, sky, mounting, faces, plan.gap_pairs, losses))
-            total = annual.sums(year, sky.month, monthly_hours(sky), sky.weather.interval_s, losses)
-            totals.append(total)
-            paid = light_paid(year, plan.absorbers, sky.month)
-            ledgers.append(ledger_rows(site.name, mounting.name, plan.absorbers, paid, losses, sky.weather.interval_s))
-            if sky is skies[0]:
-                first_year.append(year)
-            if len(skies) > 1:
-                piece["yearly"] += compare.annual_rows(
-                    site.name, mounting.name, plan.absorbers, ratings, total, year=_calendar_year(sky)
-                )
-        total = annual.mean(totals)
-        piece["annual"] += compare.annual_rows(site.name, mounting.name, plan.absorbers, ratings, total)
-        piece["monthly"] += compare.monthly_rows(site.name, mounting.name, plan.absorbers, ratings, total)
-        piece["gap_sweep"] += _mean_rows(swept, ("poa_kwh_m2", "energy_kwh_m2"))
-        piece["gap_pairs"] += _mean_rows(paired, ("poa_kwh_m2", "energy_kwh_m2"))
-        piece["ledger"] += _mean_rows(ledgers, [name for name in ledgers[0][0] if name not in _NAMES])
-    files = _write_datasets(plan, site, skies[0], first_year, folder)
+    books = {mounting.name: Book() for mounting in site.mountings}
+    quality: list[Row] = []
+    calendar: list[int] = []
+    datasets_of = _Datasets(plan, site)
+    for weather in years:
+        calendar.append(_calendar_year(weather))
+        skies: list[_Told] = []
+        for part in parts(weather):
+            sky = site_sky(site, part)
+            found = [_enter(books[mounting.name], plan, site, mounting, sky, not skies) for mounting in site.mountings]
+            if len(calendar) == 1:
+                datasets_of.add(sky, found)
+            skies.append(_Told.of(sky))
+        quality += quality_rows(site.name, weather, skies)
+    piece = {"weather_quality": quality} | _tables(plan, site, books, calendar)
+    files = datasets_of.write(folder)
     store.write_piece(folder, store.file_stem(site.name), key(plan, site), piece, files)
     return piece
+
+
+def _enter(
+    book: Book, plan: StudyPlan, site: SitePlan, mounting: MountingPlan, sky: SiteSky, new_year: bool
+) -> PlaneYear:
+    """Enter a stretch of time into the book of a mounting; return what its plane received and gave."""
+    parts_of_light = light.plane_parts(sky, mounting)
+    losses = light.with_snow(plan.losses, sky, mounting, parts_of_light)
+    dust = light.dust_colour(sky, plan.losses)
+    year = plane_year(sky, mounting, parts_of_light, plan.absorbers, dust)
+    book.add(
+        annual.sums(year, sky.month, monthly_hours(sky.weather), sky.weather.interval_s, losses), new_year=new_year
+    )
+    if plan.gap_sweep is not None:
+        swept = sweep.sweep_rows(site.name, sky, mounting, parts_of_light, plan.gap_sweep, losses, dust)
+        book.add_rows("gap_sweep", swept)
+    if plan.gap_pairs is not None:
+        rear = light.rear_parts(sky, mounting, _first_pairs(plan.gap_pairs))
+        faces = FacesOfYear(sky, parts_of_light, rear, dust)
+        book.add_rows("gap_pairs", pairs.pair_rows(site.name, sky, mounting, faces, plan.gap_pairs, losses))
+    paid = light_paid(year, plan.absorbers, sky.month)
+    entries = ledger_rows(site.name, mounting.name, plan.absorbers, paid, losses, sky.weather.interval_s)
+    book.add_rows("ledger", entries)
+    return year
+
+
+def _tables(plan: StudyPlan, site: SitePlan, books: Mapping[str, Book], calendar: Sequence[int]) -> dict[str, Any]:
+    """Return the rows of every table but that of the weather."""
+    ratings = Ratings.of(plan.absorbers)
+    found: dict[str, list[Row]] = {name: [] for name in ("annual", "yearly", "monthly", *_SUMMED)}
+    for mounting, book in books.items():
+        total = book.mean()
+        found["annual"] += compare.annual_rows(site.name, mounting, plan.absorbers, ratings, total)
+        found["monthly"] += compare.monthly_rows(site.name, mounting, plan.absorbers, ratings, total)
+        if len(calendar) > 1:
+            for number, each in zip(calendar, book.years, strict=True):
+                found["yearly"] += compare.annual_rows(site.name, mounting, plan.absorbers, ratings, each, year=number)
+        for name in _SUMMED:
+            found[name] += book.mean_rows(name)
+    return found
+
+
+_SUMMED = ("gap_sweep", "gap_pairs", "ledger")
 
 
 def _first_pairs(plan: GapPairsPlan) -> list[Absorber]:
@@ -85,36 +127,67 @@ def _first_pairs(plan: GapPairsPlan) -> list[Absorber]:
     return [absorbers[0] for absorbers in plan.absorbers.values()]
 
 
-def _mean_rows(by_year: Sequence[list[Row]], measures: Sequence[str]) -> list[Row]:
-    """Return the rows of the first year, the measures averaged over the years."""
-    return [
-        {**rows[0], **{measure: float(np.mean([row[measure] for row in rows])) for measure in measures}}
-        for rows in zip(*by_year, strict=True)
-    ]
+@dataclass(slots=True)
+class _Datasets:
+    """The datasets of a site's first year, gathered part by part."""
+
+    plan: StudyPlan
+    site: SitePlan
+    hourly: list[xr.Dataset] = field(default_factory=list)
+    spectra: list[xr.Dataset] = field(default_factory=list)
+
+    def add(self, sky: SiteSky, years: Sequence[PlaneYear]) -> None:
+        """Take what is kept of a part."""
+        if "hourly" in self.plan.keep:
+            self.hourly.append(datasets.hourly_dataset(self.site.name, sky, years, self.plan.absorbers))
+        if "spectra" in self.plan.keep:
+            self.spectra.append(datasets.spectra_dataset(self.site.name, sky, years))
+
+    def write(self, folder: Path) -> list[Path]:
+        """Write the datasets and return their files."""
+        files = []
+        for kind in ("hourly", "spectra"):
+            if found := getattr(self, kind):
+                path = folder / kind / f"{store.file_stem(self.site.name)}.nc"
+                store.write_netcdf(path, datasets.joined(found))
+                files.append(path)
+        return files
 
 
-def _write_datasets(plan: StudyPlan, site: SitePlan, sky: SiteSky, years: list[Any], folder: Path) -> list[Path]:
-    stem = store.file_stem(site.name)
-    files = []
-    if "hourly" in plan.keep:
-        path = folder / "hourly" / f"{stem}.nc"
-        store.write_netcdf(path, datasets.hourly_dataset(site.name, sky, years, plan.absorbers))
-        files.append(path)
-    if "spectra" in plan.keep:
-        path = folder / "spectra" / f"{stem}.nc"
-        store.write_netcdf(path, datasets.spectra_dataset(site.name, sky, years))
-        files.append(path)
-    return files
-
-
-def monthly_hours(sky: SiteSky) -> annual.Array:
+def monthly_hours(weather: Weather) -> annual.Array:
     """Return the hours the weather covers in each month, (12,) [h]."""
-    month, _ = local_month_and_day(sky.weather)
-    return np.asarray(np.bincount(month, minlength=12) * (sky.weather.interval_s / 3600.0), dtype=np.float64)
+    month, _ = local_month_and_day(weather)
+    return np.asarray(np.bincount(month, minlength=12) * (weather.interval_s / 3600.0), dtype=np.float64)
 
 
-def quality_rows(site: str, sky: SiteSky) -> list[Row]:
-    """Return what was found in a site's weather and where each atmospheric input came from."""
+@dataclass(frozen=True, slots=True)
+class _Told:
+    """What a sky tells of its air: intervals lit and clear, where each input came from."""
+
+    lit: int
+    clear: int
+    sources: tuple[tuple[str, str], ...]
+
+    @classmethod
+    def of(cls, sky: SiteSky) -> _Told:
+        """Return it of a sky that need not be kept."""
+        return cls(len(sky.lit), int(sky.sky.clear.sum()), sky.sources)
+
+
+def sky_quality_rows(site: str, sky: SiteSky) -> list[Row]:
+    """Return what was found in the weather of a sky and where each atmospheric input came from."""
+    return quality_rows(site, sky.weather, [_Told.of(sky)])
+
+
+def quality_rows(site: str, weather: Weather, skies: Sequence[_Told]) -> list[Row]:
+    """Return what was found in a site's weather and where each atmospheric input came from.
+
+    Parameters
+    ----------
+    site : str
+    weather : Weather of a year
+    skies : what its parts tell, in order
+    """
     rows: list[Row] = [
         {
             "site": site,
@@ -125,33 +198,28 @@ def quality_rows(site: str, sky: SiteSky) -> list[Row]:
             "found": finding.found,
             "done": finding.done,
         }
-        for finding in sky.weather.findings
+        for finding in weather.findings
     ]
-    n = len(sky.lit)
-    for name, source in sky.sources:
-        rows.append(
-            {
-                "site": site,
-                "kind": f"source:{name}",
-                "rows": n,
-                "first": "",
-                "last": "",
-                "found": source,
-                "done": "used",
-            }
-        )
-    clear = int(sky.sky.clear.sum())
+    blank: Row = {"site": site, "first": "", "last": "", "done": "used"}
+    n, clear = sum(sky.lit for sky in skies), sum(sky.clear for sky in skies)
+    for name in dict(skies[0].sources):
+        told: dict[str, int] = {}
+        for sky in skies:
+            source = dict(sky.sources)[name]
+            told[source] = told.get(source, 0) + sky.lit
+        rows += [blank | {"kind": f"source:{name}", "rows": count, "found": found} for found, count in told.items()]
     text = f"{clear} of {n} lit intervals are clear: their own haze explains beam and diffuse light"
-    rows.append(
-        {"site": site, "kind": "clear_hours", "rows": clear, "first": "", "last": "", "found": text, "done": "used"}
-    )
-    return rows
+    rows.append(blank | {"kind": "clear_hours", "rows": clear, "found": text})
+    return [{name: row[name] for name in _QUALITY} for row in rows]
+
+
+_QUALITY = ("site", "kind", "rows", "first", "last", "found", "done")
 
 
 def _stamp(seconds: int) -> str:
     return datetime.fromtimestamp(seconds, UTC).strftime("%Y-%m-%dT%H:%M:%SZ") if seconds else ""
 
 
-def _calendar_year(sky: SiteSky) -> int:
-    middle = int(sky.weather.time[len(sky.weather) // 2])
+def _calendar_year(weather: Weather) -> int:
+    middle = int(weather.time[len(weather) // 2])
     return datetime.fromtimestamp(middle, UTC).year

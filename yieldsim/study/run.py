@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import time
-from collections.abc import Callable, Iterator, Mapping, Sequence
+from collections.abc import Callable, Iterable, Iterator, Mapping, Sequence
 from concurrent.futures import ProcessPoolExecutor, as_completed
 from multiprocessing import get_context
 from pathlib import Path
@@ -14,7 +14,7 @@ from yieldsim.study import piece, store
 from yieldsim.study.plan import SitePlan, StudyPlan
 from yieldsim.weather import Weather
 
-LoadWeather = Callable[[SitePlan], Sequence[Weather]]
+LoadWeather = Callable[[SitePlan], Iterable[Weather]]
 Progress = Callable[[str, int, int], None]  # what is being done, steps finished, steps in all
 
 
