@@ -16,7 +16,7 @@ import numpy as np
 from scipy.optimize import brentq
 
 from yieldsim import reference, spectrum
-from yieldsim.sky import column, sun
+from yieldsim.sky import column, growth, sun
 
 LEAST = 0.02
 LAST_NM = 2550.0  # beyond it neither line-by-line table has data: Bird & Riordan's coefficients stay
@@ -73,8 +73,8 @@ def main():
     share = np.divide(water, lines, out=np.zeros_like(lines), where=lines > 0)
     depth = np.where(lines > LEAST, gas, lines)
     far = wavelength > LAST_NM
-    wet = coefficients(column.water_depth, depth * share, water_path)
-    even = coefficients(column.mixed_gas_depth, depth * (1 - share), air_path)
+    wet = coefficients(growth.water_depth, depth * share, water_path)
+    even = coefficients(growth.mixed_gas_depth, depth * (1 - share), air_path)
     rows = zip(wavelength, np.where(far, bird["water"], wet), np.where(far, bird["mixed_gas"], even), strict=True)
     text = [f"# {line}" for line in HEADER] + ["wavelength_nm,water,mixed_gas"]
     text += [f"{nm:g},{a:.6g},{b:.6g}" for nm, a, b in rows]

@@ -5,7 +5,7 @@ import pytest
 
 from yieldsim import reference, spectrum
 from yieldsim.checks.record import spectral_factor, step_yields
-from yieldsim.sky import column
+from yieldsim.sky import column, growth
 
 GAPS = (0.72, 1.12, 1.45, 1.6, 1.8, 2.2)
 CASES = [(mass, water) for mass in (1.0, 2.0, 3.0, 5.0) for water in (0.5, 1.42, 2.5, 4.0)]
@@ -43,7 +43,7 @@ def of_table(name):
 
 
 def of_coefficients(vapour, mixed):
-    return lambda mass, water: column.water_depth(vapour, water * mass) + column.mixed_gas_depth(mixed, np.array(mass))
+    return lambda mass, water: growth.water_depth(vapour, water * mass) + growth.mixed_gas_depth(mixed, np.array(mass))
 
 
 def rms(ours, theirs):

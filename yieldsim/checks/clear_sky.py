@@ -11,7 +11,7 @@ from scipy.optimize import brentq
 
 from yieldsim import reference
 from yieldsim.checks.record import Outcome, rms, spectral_factor, step_yields
-from yieldsim.sky import column, sun
+from yieldsim.sky import column, growth, sun
 from yieldsim.spectrum import band_wavelengths
 
 Array = NDArray[np.float64]
@@ -166,8 +166,8 @@ def example_beam() -> tuple[Array, Array]:
     air_path = mass * EXAMPLE["pressure"] / column.BIRD_PRESSURE
     depth: Array = column.bare_optics().rayleigh * air_path
     depth = depth + EXAMPLE["aod500"] * (bird["wavelength_nm"] / 500.0) ** -1.14 * mass
-    depth = depth + column.water_depth(bird["water"], np.array(EXAMPLE["water_cm"] * mass))
-    depth = depth + column.mixed_gas_depth(bird["mixed_gas"], np.array(air_path))
+    depth = depth + growth.water_depth(bird["water"], np.array(EXAMPLE["water_cm"] * mass))
+    depth = depth + growth.mixed_gas_depth(bird["mixed_gas"], np.array(air_path))
     ozone_mass = float(sun.ozone_air_mass(np.array(np.cos(np.radians(EXAMPLE["zenith_deg"])))))
     depth = depth + bird["ozone"] * EXAMPLE["ozone_atm_cm"] * ozone_mass
     return example["direct_normal"], example["extraterrestrial"] * np.exp(-depth)

@@ -9,7 +9,8 @@ import numpy as np
 from numpy.typing import NDArray
 
 from yieldsim import reference, spectrum
-from yieldsim.sky import kernel
+from yieldsim.sky import growth, kernel
+from yieldsim.sky.growth import mixed_gas_depth, water_depth
 from yieldsim.sky.layer import MOMENTS, Layer, add_layers, four_stream
 from yieldsim.sky.sun import ozone_air_mass, relative_air_mass
 
@@ -257,24 +258,18 @@ def transmit(air: Air, cloud_depth: Array, constants: Optics | None = None) -> T
     (1.2 times that inside the cloud) where a cloud has scattered it.
     """
     constants = optics() if constants is None else constants
-    air_mass = relative_air_mass(air.cos_zenith)
     cloud = np.asarray(cloud_depth, dtype=np.float64)
-    fields = (air_mass, ozone_air_mass(air.cos_zenith), air.pressure / BIRD_PRESSURE, air.water_cm, air.ozone_atm_cm)
-    hours = np.stack([*fields, air.aod500, air.angstrom_exponent], axis=1)
-    slants = np.concatenate([*_slants(air_mass[:, None], cloud[:, None]), cloud[:, None]], axis=1)
+    masses = (relative_air_mass(air.cos_zenith), ozone_air_mass(air.cos_zenith))
+    content = (air.pressure / BIRD_PRESSURE, air.water_cm, air.ozone_atm_cm, air.aod500, air.angstrom_exponent, cloud)
+    hours = np.stack([*masses, *content], axis=1)
     albedo = air.albedo[:, None] if air.albedo.ndim == 1 else air.albedo
     n_band = len(constants.factor)
     beam, total = np.empty((len(cloud), n_band)), np.empty((len(cloud), n_band))
-    bands = np.zeros((len(kernel.BAND_ROWS), kernel.STRIDE))
-    for row, name in zip(bands, kernel.BAND_ROWS, strict=True):
-        row[:n_band] = getattr(constants, name)
-    shares = np.stack([AIR_SHARE, WATER_SHARE, HAZE_SHARE], axis=1)
-    # fmt: off
-    kernel.transmit(
-        hours, np.ascontiguousarray(albedo), slants, shares, bands.ravel(), n_band,
-        CLOUD_ASYMMETRY, RAYLEIGH_MOMENT, _OPEN_SKY, beam, total,
-    )
-    # fmt: on
+    bands = np.concatenate([growth.padded(getattr(constants, name)) for name in kernel.BAND_ROWS])
+    shares = (*AIR_SHARE, *WATER_SHARE, *HAZE_SHARE)
+    fixed = np.array([*shares, CLOUD_ASYMMETRY, RAYLEIGH_MOMENT, _OPEN_SKY, DIFFUSIVITY, CLOUD_PATH])
+    tables, laws = growth.tables(constants.water, constants.mixed_gas), np.array([growth.WATER_LAW, growth.MIXED_LAW])
+    kernel.transmit(hours, np.ascontiguousarray(albedo), bands, tables, laws, fixed, beam, total)
     return Transmittance(beam, total)
 
 
@@ -334,18 +329,6 @@ def beam_transmittance(air: Air, constants: Optics | None = None) -> tuple[Array
     depth += pressure_ratio * constants.rayleigh * air_mass
     slope = np.exp(-air.angstrom_exponent[:, None] * constants.haze_shape) * air_mass
     return np.exp(-depth), slope
-
-
-def water_depth(coefficient: Array, path_cm: Array) -> Array:
-    """Return the optical depth of vapour along a slant path [cm] (Bird & Riordan 1984, eq. 2-8)."""
-    product = coefficient * path_cm
-    return np.asarray(0.2385 * product / (1 + 20.07 * product) ** 0.45)
-
-
-def mixed_gas_depth(coefficient: Array, air_mass: Array) -> Array:
-    """Return the optical depth of uniformly mixed gas along an air mass (Bird & Riordan 1984, eq. 2-11)."""
-    product = coefficient * air_mass
-    return np.asarray(1.41 * product / (1 + 118.3 * product) ** 0.45)
 
 
 def _slants(air_mass: Array, cloud: Array) -> tuple[Array, Array, Array]:

@@ -1,12 +1,15 @@
 """The column's equations compiled: hours outside, bands inside, no library call in the inner loops.
 
-Same equations as `column.transmit_plain` with `layer.four_stream`, which the tests hold this to. Loops over bands are
-plain arithmetic on rows of scratch memory, so that the compiler can take several bands at once.
+Same equations as `column.transmit_plain` with `layer.four_stream`, which the tests hold this to. Rows of scratch memory
+hold one value a band; each loop over bands is plain arithmetic on such rows, so that the compiler takes four bands at
+once. Intensities are scaled by the roots of their streams' slants, which makes every matrix of a layer symmetric.
 """
 
 from __future__ import annotations
 
 import math
+from collections.abc import Callable
+from typing import Any, TypeVar, cast
 
 import numpy as np
 from numba import njit
@@ -16,272 +19,364 @@ from yieldsim.sky.layer import RESONANCE, STREAMS
 
 Array = NDArray[np.float64]
 
+_Function = TypeVar("_Function", bound=Callable[..., Any])
+
+
+def _compiled(function: _Function) -> _Function:
+    """Compile a function when it is first called; kept on disk for the next process until this file changes.
+
+    No fast-math flags: with them, code just compiled and code read from the cache gave other last digits, and two runs
+    other bytes. The loops are vectorised all the same.
+    """
+    return cast(_Function, njit(error_model="numpy", cache=True, nogil=True)(function))
+
+
 _M1, _M2 = STREAMS
-# Legendre polynomials of order 2 and 3 at the two streams.
+_S1, _S2 = math.sqrt(_M1), math.sqrt(_M2)
+# Division is slow: reciprocals of the streams' slants and of their roots.
+_I1, _I2, _I12, _IS1, _IS2 = 1 / _M1, 1 / _M2, 1 / (_S1 * _S2), 1 / _S1, 1 / _S2
+# Legendre polynomials of order 2 and 3 at the two streams, and products of orders 1 to 3.
 _A2, _B2 = (3 * _M1**2 - 1) / 2, (3 * _M2**2 - 1) / 2
 _A3, _B3 = (5 * _M1**3 - 3 * _M1) / 2, (5 * _M2**3 - 3 * _M2) / 2
+_AA1, _AB1, _BB1 = _M1 * _M1, _M1 * _M2, _M2 * _M2
+_AA2, _AB2, _BB2 = _A2 * _A2, _A2 * _B2, _B2 * _B2
+_AA3, _AB3, _BB3 = _A3 * _A3, _A3 * _B3, _B3 * _B3
 _LOG2E = 1.4426950408889634
 _LN2_HIGH, _LN2_LOW = 0.6931471803691238, 1.9082149292705877e-10  # ln 2 in two parts (Cody & Waite 1980)
 _LOWEST = -700.0  # exp of less is below the smallest number that keeps all digits
+_ROUNDER = 6755399441055744.0  # 1.5 x 2**52: added to a number it leaves the nearest integer in the lowest bits
 _PI = math.pi
 _RESONANCE = RESONANCE
+_SERIES = 0.02  # below it tanh(x)/x by its series, whose next term is 5e-16
 
-# Offsets of rows in flat scratch memory, one value a band. The distance is a constant, so that the compiler can see
-# that rows do not overlap and take several bands at once.
+# Distance of rows in flat scratch memory. It is a constant, so that the compiler can see that rows do not overlap.
 STRIDE = 128
-_PATH_WATER, _PATH_MIXED, _HAZE, _BEAM, _DOWN1, _DOWN2, _R11, _R12 = (STRIDE * row for row in range(8))
-_R21, _R22, _DEPTH, _OZONE, _TAU, _OMEGA, _C1, _C2, _C3 = (STRIDE * row for row in range(8, 17))
-_N_SCRATCH = 17
-# Offsets of rows of band constants.
+LANES = 4  # loops over bands run to a multiple of it; bands beyond the last are copies of it
+(
+    _SHAPE, _HAZE, _OZONE, _GAS_PATH, _GAS, _DEPTH, _TAU, _W0, _W1, _W2, _W3, _P11, _P12, _P22, _N11, _N12, _N22,
+    _LARGE, _SMALL, _ROOT_L, _ROOT_S, _FADE_L, _FADE_S, _PASSED, _R11, _R12, _R22, _Q11, _Q12, _Q22, _DOWN1, _DOWN2,
+    _UP1, _UP2,
+) = (STRIDE * row for row in range(34))  # fmt: skip
+# What the layers joined so far do to light, then what arrives.
+(
+    _SUM_PATH, _SUM_DEPTH, _BEAM, _D1, _D2, _S11, _S12, _S22, _GROUND, _STRAIGHT, _TOTAL,
+) = (STRIDE * row for row in range(34, 45))  # fmt: skip
+_N_SCRATCH = 45
+# Rows of band constants.
 BAND_ROWS = (
-    "rayleigh", "ozone", "water", "mixed_gas", "gas_scale", "haze_shape", "haze_albedo", "haze_asymmetry",
-    "cloud_albedo",
+    "rayleigh", "ozone", "gas_scale", "haze_shape", "haze_albedo", "haze_asymmetry", "cloud_albedo", "water",
+    "mixed_gas",
 )  # fmt: skip
-_RAYLEIGH, _OZONE_K, _WATER_K, _MIXED_K, _GAS_SCALE, _SHAPE, _HAZE_ALBEDO, _HAZE_G, _CLOUD_ALBEDO = (
+_RAYLEIGH, _OZONE_K, _GAS_SCALE, _HAZE_SHAPE, _HAZE_ALBEDO, _HAZE_G, _CLOUD_ALBEDO, _WATER_K, _MIXED_K = (
     STRIDE * row for row in range(9)
 )
+# Curves of growth are tabled over the logarithm of the path, alike for all bands, so that an hour's six weights serve
+# every band: 6-point Lagrange, 8e-11 of the depth off at most.
+NODE_STEP = 0.05
+WATER_NODES = math.log(0.003) + NODE_STEP * np.arange(250)  # ln cm, up to 800 cm
+MIXED_NODES = math.log(0.05) + NODE_STEP * np.arange(146)  # up to 74
+_FIRST_WATER, _N_WATER, _FIRST_MIXED, _N_MIXED = WATER_NODES[0], len(WATER_NODES), MIXED_NODES[0], len(MIXED_NODES)
+# Columns of an hour, places of the column's constants.
+_AIR_MASS, _OZONE_MASS, _PRESSURE, _WATER, _OZONE_CM, _AOD, _EXPONENT, _CLOUD = range(8)
+_AIR_SHARE, _WATER_SHARE, _HAZE_SHARE = 0, 3, 6
+_CLOUD_G, _RAYLEIGH_MOMENT, _OPEN_SKY, _DIFFUSIVITY, _CLOUD_PATH = range(9, 14)
 
-# No fast-math flags: with them, code just compiled and code read from the cache gave other last digits, and two runs
-# other bytes. The loops are vectorised all the same.
 
-
-@njit(error_model="numpy", cache=True)
+@_compiled
 def _exp(x: float) -> float:
-    """Return exp(x) for x <= 0 to 2e-16 of its value; 2**k is made by setting the exponent's bits."""
+    """Return exp(x) for x <= 700 to 1e-14 of its value; 2**k is made by setting the exponent's bits."""
     x = max(x, _LOWEST)
-    k = np.floor(x * _LOG2E + 0.5)
+    shifted = x * _LOG2E + _ROUNDER
+    k = shifted - _ROUNDER
     r = (x - k * _LN2_HIGH) - k * _LN2_LOW
-    p = 1.0 / 479001600.0
-    p = p * r + 1.0 / 39916800.0
-    p = p * r + 1.0 / 3628800.0
-    p = p * r + 1.0 / 362880.0
-    p = p * r + 1.0 / 40320.0
-    p = p * r + 1.0 / 5040.0
-    p = p * r + 1.0 / 720.0
-    p = p * r + 1.0 / 120.0
-    p = p * r + 1.0 / 24.0
-    p = p * r + 1.0 / 6.0
-    p = p * r + 0.5
-    p = p * r + 1.0
-    p = p * r + 1.0
-    bits = (np.int64(k) + np.int64(1023)) << np.int64(52)
-    return p * np.int64(bits).view(np.float64)  # type: ignore[no-any-return]
+    r2 = r * r
+    low = (1.0 + r) + r2 * (0.5 + r * (1 / 6))
+    middle = ((1 / 24) + r * (1 / 120)) + r2 * ((1 / 720) + r * (1 / 5040))
+    high = ((1 / 40320) + r * (1 / 362880)) + r2 * ((1 / 3628800) + r * (1 / 39916800))
+    r4 = r2 * r2
+    power = (np.float64(shifted).view(np.int64) + np.int64(1023)) << np.int64(52)
+    return (low + r4 * (middle + r4 * high)) * np.int64(power).view(np.float64)
 
 
-@njit(error_model="numpy", cache=True)
-def _log(x: float) -> float:
-    """Return ln(x) for normal x > 0, by the exponent's bits and the series of atanh."""
-    bits = np.float64(x).view(np.int64)
-    exponent = ((bits >> np.int64(52)) & np.int64(2047)) - np.int64(1022)
-    fraction = np.int64((bits & np.int64(0x000FFFFFFFFFFFFF)) | np.int64(0x3FE0000000000000)).view(np.float64)
-    below = fraction < 0.7071067811865476
-    fraction = fraction * 2.0 if below else fraction
-    power = np.float64(exponent) - (1.0 if below else 0.0)
-    s = (fraction - 1.0) / (fraction + 1.0)
-    q = s * s
-    p = 1.0 / 21.0
-    p = p * q + 1.0 / 19.0
-    p = p * q + 1.0 / 17.0
-    p = p * q + 1.0 / 15.0
-    p = p * q + 1.0 / 13.0
-    p = p * q + 1.0 / 11.0
-    p = p * q + 1.0 / 9.0
-    p = p * q + 1.0 / 7.0
-    p = p * q + 1.0 / 5.0
-    p = p * q + 1.0 / 3.0
-    p = p * q + 1.0
-    return power * _LN2_HIGH + (2.0 * s * p + power * _LN2_LOW)
+@_compiled
+def _start(s: Array, n: int, bands: Array, hour: Array, known_exponent: float) -> None:
+    """Begin a column: haze and the depth of ozone along the beam; nothing above yet."""
+    exponent, aod = hour[_EXPONENT], hour[_AOD]
+    ozone = hour[_OZONE_CM] * hour[_OZONE_MASS]
+    if exponent != known_exponent:
+        for b in range(n):
+            s[_SHAPE + b] = _exp(-exponent * bands[_HAZE_SHAPE + b])
+    for b in range(n):
+        s[_HAZE + b] = aod * s[_SHAPE + b]
+        s[_OZONE + b] = bands[_GAS_SCALE + b] * bands[_OZONE_K + b] * ozone
+        s[_SUM_PATH + b] = 0.0
+        s[_SUM_DEPTH + b] = 0.0
 
 
-@njit(error_model="numpy", cache=True)
-def _tanh_over(k_squared: float, tau: float) -> float:
-    """Return tanh(k tau/2)/k."""
-    x = math.sqrt(k_squared) * tau * 0.5
-    square = x * x
-    series = 1.0 - square / 3.0 * (1.0 - square * 0.4 * (1.0 - square * (17.0 / 42.0)))
-    faded = _exp(-2.0 * x)
-    direct = (1.0 - faded) / ((1.0 + faded) * max(x, 1e-30))
-    return (direct if x > 0.02 else series) * tau * 0.5
+@_compiled
+def _nodes(first_node: float, n_node: int, path: float, weights: Array) -> int:
+    """Set the weights of six nodes around a path; return where the first one's row starts, -1 beyond the table."""
+    if not path > 0:
+        return -1
+    place = (math.log(path) - first_node) / NODE_STEP
+    node = math.floor(place)
+    if node < 2 or node > n_node - 4:
+        return -1
+    x = place - node
+    a, b, c, d, e, f = x + 2, x + 1, x, x - 1, x - 2, x - 3
+    weights[0], weights[1] = -b * c * d * e * f / 120, a * c * d * e * f / 24
+    weights[2], weights[3] = -a * b * d * e * f / 12, a * b * c * e * f / 12
+    weights[4], weights[5] = -a * b * c * d * f / 24, a * b * c * d * e / 120
+    return (int(node) - 2) * STRIDE
 
 
-@njit(error_model="numpy", cache=True)
-def _join(scratch: Array, n_band: int, mu: float, first: bool) -> None:
-    """Solve the layer whose optics stand in scratch by four streams and add it below what stands there already."""
-    l1, l2, l3 = -mu, (3 * mu * mu - 1) / 2, -(5 * mu * mu * mu - 3 * mu) / 2
-    into = 1.0 / mu
-    square = into * into
-    for b in range(n_band):
-        tau, omega = scratch[_TAU + b], scratch[_OMEGA + b]
-        c1, c2, c3 = scratch[_C1 + b], scratch[_C2 + b], scratch[_C3 + b]
-        # Phase function between streams: even and odd orders give the sum and difference of both hemispheres.
-        e11, e12, e22 = 1.0 + c2 * _A2 * _A2, 1.0 + c2 * _A2 * _B2, 1.0 + c2 * _B2 * _B2
-        o11 = c1 * _M1 * _M1 + c3 * _A3 * _A3
-        o12 = c1 * _M1 * _M2 + c3 * _A3 * _B3
-        o22 = c1 * _M2 * _M2 + c3 * _B3 * _B3
-        w = omega * 0.5
-        p11, p12 = (w * e11 - 1.0) / _M1, w * e12 / _M1
-        p21, p22 = w * e12 / _M2, (w * e22 - 1.0) / _M2
-        m11, m12 = (w * o11 - 1.0) / _M1, w * o12 / _M1
-        m21, m22 = w * o12 / _M2, (w * o22 - 1.0) / _M2
-        # k^2 as (a-b)(a+b) and as (a+b)(a-b): the same eigenvalues.
-        g11, g12 = m11 * p11 + m12 * p21, m11 * p12 + m12 * p22
-        g21, g22 = m21 * p11 + m22 * p21, m21 * p12 + m22 * p22
-        h11, h12 = p11 * m11 + p12 * m21, p11 * m12 + p12 * m22
-        h21, h22 = p21 * m11 + p22 * m21, p21 * m12 + p22 * m22
-        half = (g11 + g22) * 0.5
-        determinant = g11 * g22 - g12 * g21
+@_compiled
+def _curve(
+    s: Array, n: int, table: Array, start_row: int, w: Array, bands: Array, row: int, path: float, law: Array
+) -> None:
+    """Add a gas's depth along a path to the row of the path's depth."""
+    if start_row >= 0:
+        w0, w1, w2, w3, w4, w5 = w[0], w[1], w[2], w[3], w[4], w[5]
+        for b in range(n):
+            t = start_row + b
+            s[_GAS_PATH + b] += (
+                (w0 * table[t] + w1 * table[t + STRIDE])
+                + (w2 * table[t + 2 * STRIDE] + w3 * table[t + 3 * STRIDE])
+                + (w4 * table[t + 4 * STRIDE] + w5 * table[t + 5 * STRIDE])
+            )
+    else:  # rare: air drier or longer than the table
+        for b in range(n):
+            y = bands[row + b] * path
+            s[_GAS_PATH + b] += law[0] * y / (1.0 + law[1] * y) ** 0.45
+
+
+@_compiled
+def _gas(
+    s: Array, n: int, bands: Array, tables: tuple[Array, Array], laws: Array, water_path: float, air_path: float,
+    slant: float,
+) -> None:  # fmt: skip
+    """Set the vertical depth of gas in the next layer from its paths down to the layer's foot."""
+    weights = np.empty(6)
+    for b in range(n):
+        s[_GAS_PATH + b] = 0.0
+    at = _nodes(_FIRST_WATER, _N_WATER, water_path, weights)
+    _curve(s, n, tables[0], at, weights, bands, _WATER_K, water_path, laws[0])
+    at = _nodes(_FIRST_MIXED, _N_MIXED, air_path, weights)
+    _curve(s, n, tables[1], at, weights, bands, _MIXED_K, air_path, laws[1])
+    inverse = 1.0 / slant
+    for b in range(n):
+        s[_GAS + b] = (s[_GAS_PATH + b] - s[_SUM_PATH + b]) * (bands[_GAS_SCALE + b] * inverse)
+        s[_SUM_PATH + b] = s[_GAS_PATH + b]
+
+
+@_compiled
+def _mix(s: Array, n: int, bands: Array, air_depth: float, haze_share: float, cloud: float, fixed: Array) -> None:
+    """Mix a layer, cut its phase function by delta-M: depth, and half the albedo times each moment."""
+    cg, moment, open_sky = fixed[_CLOUD_G], fixed[_RAYLEIGH_MOMENT], fixed[_OPEN_SKY]
+    cg2, cg3, cg4 = cg * cg, cg * cg * cg, cg * cg * cg * cg
+    for b in range(n):
+        air, haze = bands[_RAYLEIGH + b] * air_depth, s[_HAZE + b] * haze_share
+        depth = air + haze + s[_GAS + b] + cloud
+        s[_SUM_DEPTH + b] += depth
+        h, c, g = haze * bands[_HAZE_ALBEDO + b], cloud * bands[_CLOUD_ALBEDO + b], bands[_HAZE_G + b]
+        h1 = h * g
+        h2 = h1 * g
+        h3 = h2 * g
+        peak = h3 * g + c * cg4
+        tau = depth + open_sky - peak
+        inverse = 0.5 / tau
+        s[_TAU + b] = tau
+        s[_W0 + b] = (air + h + open_sky + c - peak) * inverse
+        s[_W1 + b] = 3.0 * (h1 + c * cg - peak) * inverse
+        s[_W2 + b] = 5.0 * (h2 + c * cg2 + air * moment - peak) * inverse
+        s[_W3 + b] = 7.0 * (h3 + c * cg3 - peak) * inverse
+
+
+@_compiled
+def _modes(s: Array, n: int) -> None:
+    """Set the layer's matrices for sum (P) and difference (N) of both hemispheres and the roots of N P."""
+    for b in range(n):
+        w0, w1, w2, w3 = s[_W0 + b], s[_W1 + b], s[_W2 + b], s[_W3 + b]
+        p11, p12, p22 = (w0 + w2 * _AA2 - 1.0) * _I1, (w0 + w2 * _AB2) * _I12, (w0 + w2 * _BB2 - 1.0) * _I2
+        n11, n22 = (w1 * _AA1 + w3 * _AA3 - 1.0) * _I1, (w1 * _BB1 + w3 * _BB3 - 1.0) * _I2
+        n12 = (w1 * _AB1 + w3 * _AB3) * _I12
+        half = ((n11 * p11 + n12 * p12) + (n12 * p12 + n22 * p22)) * 0.5
+        determinant = (n11 * n22 - n12 * n12) * (p11 * p22 - p12 * p12)
         large = half + math.sqrt(max(half * half - determinant, 1e-30))
         small = max(determinant / large, 0.0)
-        at_large, at_small = _tanh_over(large, tau), _tanh_over(small, tau)
-        slope = (at_large - at_small) / (large - small)
-        t11, t12 = at_small + slope * (g11 - small), slope * g12
-        t21, t22 = slope * g21, at_small + slope * (g22 - small)
-        u11, u12 = at_small + slope * (h11 - small), slope * h12
-        u21, u22 = slope * h21, at_small + slope * (h22 - small)
-        x11, x12 = p11 * t11 + p12 * t21, p11 * t12 + p12 * t22
-        x21, x22 = p21 * t11 + p22 * t21, p21 * t12 + p22 * t22
-        y11, y12 = m11 * u11 + m12 * u21, m11 * u12 + m12 * u22
-        y21, y22 = m21 * u11 + m22 * u21, m21 * u12 + m22 * u22
+        s[_LARGE + b], s[_SMALL + b] = large, small
+        s[_ROOT_L + b], s[_ROOT_S + b] = math.sqrt(large), math.sqrt(small)
+        s[_P11 + b], s[_P12 + b], s[_P22 + b] = p11, p12, p22
+        s[_N11 + b], s[_N12 + b], s[_N22 + b] = n11, n12, n22
+
+
+@_compiled
+def _fade(s: Array, n: int, into: float) -> None:
+    for b in range(n):
+        tau = s[_TAU + b]
+        s[_FADE_L + b] = _exp(-s[_ROOT_L + b] * tau)
+        s[_FADE_S + b] = _exp(-s[_ROOT_S + b] * tau)
+        s[_PASSED + b] = _exp(-into * tau)
+
+
+@_compiled
+def _solve(s: Array, n: int, mu: float) -> None:
+    """Set what the layer throws back (R) and lets through (Q) of diffuse light, and makes of the beam."""
+    into, square = 1.0 / mu, 1.0 / (mu * mu)
+    l1, l2, l3 = -mu, (3 * mu * mu - 1) / 2, -(5 * mu * mu * mu - 3 * mu) / 2
+    ka, kb, ea, eb = into / _PI * _IS1, into / _PI * _IS2, l2 * _A2, l2 * _B2
+    oa1, oa3, ob1, ob3 = l1 * _M1, l3 * _A3, l1 * _M2, l3 * _B3
+    least = _RESONANCE * square
+    for b in range(n):
+        p11, p12, p22, n11, n12, n22 = s[_P11 + b], s[_P12 + b], s[_P22 + b], s[_N11 + b], s[_N12 + b], s[_N22 + b]
+        large, small, root_l, root_s = s[_LARGE + b], s[_SMALL + b], s[_ROOT_L + b], s[_ROOT_S + b]
+        fade_l, fade_s, half = s[_FADE_L + b], s[_FADE_S + b], 0.5 * s[_TAU + b]
+        # tanh(k tau/2)/k at both roots; divisions are shared throughout, since they are slow.
+        below_l, below_s, between = (1.0 + fade_l) * root_l, (1.0 + fade_s) * max(root_s, 1e-30), large - small
+        shared = 1.0 / (below_l * below_s * between)
+        inverse = shared * between
+        x = root_s * half
+        x = x * x
+        series = (1.0 - x * (1 / 3) * (1.0 - x * 0.4 * (1.0 - x * (17.0 / 42.0)))) * half
+        at_large = (1.0 - fade_l) * below_s * inverse
+        at_small = (1.0 - fade_s) * below_l * inverse if x > _SERIES * _SERIES else series
+        slope = (at_large - at_small) * (shared * below_l * below_s)
+        g11, g12, g21, g22 = n11 * p11 + n12 * p12, n11 * p12 + n12 * p22, n12 * p11 + n22 * p12, n12 * p12 + n22 * p22
+        t11, t12, t21, t22 = (
+            at_small + slope * (g11 - small),
+            slope * g12,
+            slope * g21,
+            at_small + slope * (g22 - small),
+        )
+        x11, x12, x22 = 1.0 - (p11 * t11 + p12 * t21), p11 * t12 + p12 * t22, 1.0 - (p12 * t12 + p22 * t22)
+        y11, y12, y22 = 1.0 - (n11 * t11 + n12 * t12), n11 * t21 + n12 * t22, 1.0 - (n12 * t21 + n22 * t22)
+        even, odd = x11 * x22 - x12 * x12, y11 * y22 - y12 * y12
+        apart_l, apart_s = square - large, square - small
+        apart_l = least if abs(apart_l) < least else apart_l
+        apart_s = least if abs(apart_s) < least else apart_s
+        apart, both = apart_l * apart_s, even * odd
+        shared = 1.0 / (both * apart)
+        apart, inverse = shared * both, shared * apart
+        even, odd = inverse * odd, inverse * even
         # (1 + X)(1 - X)^-1 = 2 (1 - X)^-1 - 1
-        d = 1.0 / ((1.0 - x11) * (1.0 - x22) - x12 * x21)
-        even11, even12, even21, even22 = (1.0 - x22) * d, x12 * d, x21 * d, (1.0 - x11) * d
-        d = 1.0 / ((1.0 - y11) * (1.0 - y22) - y12 * y21)
-        odd11, odd12, odd21, odd22 = (1.0 - y22) * d, y12 * d, y21 * d, (1.0 - y11) * d
-        r11, r12, r21, r22 = even11 - odd11, even12 - odd12, even21 - odd21, even22 - odd22
-        q11, q12, q21, q22 = even11 + odd11 - 1.0, even12 + odd12, even21 + odd21, even22 + odd22 - 1.0
+        e11, e12, e22, o11, o12, o22 = x22 * even, x12 * even, x11 * even, y22 * odd, y12 * odd, y11 * odd
+        r11, r12, r22 = e11 - o11, e12 - o12, e22 - o22
+        q11, q12, q22 = e11 + o11 - 1.0, e12 + o12, e22 + o22 - 1.0
         # The beam's source and the particular solution that goes with it.
-        strength = omega * into / (4.0 * _PI)
-        even_a, odd_a = 1.0 + c2 * l2 * _A2, c1 * l1 * _M1 + c3 * l3 * _A3
-        even_b, odd_b = 1.0 + c2 * l2 * _B2, c1 * l1 * _M2 + c3 * l3 * _B3
-        sum_a, sum_b = 2.0 * strength * even_a / _M1, 2.0 * strength * even_b / _M2
-        dif_a, dif_b = 2.0 * strength * odd_a / _M1, 2.0 * strength * odd_b / _M2
-        right_a = m11 * sum_a + m12 * sum_b + dif_a * into
-        right_b = m21 * sum_a + m22 * sum_b + dif_b * into
-        apart_large, apart_small = square - large, square - small
-        apart_large = _RESONANCE * square if abs(apart_large) < _RESONANCE * square else apart_large
-        apart_small = _RESONANCE * square if abs(apart_small) < _RESONANCE * square else apart_small
-        d = 1.0 / (apart_large * apart_small)
-        both_a = ((square - g22) * right_a + g12 * right_b) * d
-        both_b = (g21 * right_a + (square - g11) * right_b) * d
-        gap_a = (p11 * both_a + p12 * both_b + sum_a) * mu
-        gap_b = (p21 * both_a + p22 * both_b + sum_b) * mu
-        high_a, high_b = (both_a + gap_a) * 0.5, (both_b + gap_b) * 0.5
-        low_a, low_b = (both_a - gap_a) * 0.5, (both_b - gap_b) * 0.5
-        passed = _exp(-tau * into)
+        w0, w1, w2, w3 = s[_W0 + b], s[_W1 + b], s[_W2 + b], s[_W3 + b]
+        sum_a, sum_b = ka * (w0 + w2 * ea), kb * (w0 + w2 * eb)
+        right_a = n11 * sum_a + n12 * sum_b + ka * (w1 * oa1 + w3 * oa3) * into
+        right_b = n12 * sum_a + n22 * sum_b + kb * (w1 * ob1 + w3 * ob3) * into
+        both_a = ((square - g22) * right_a + g12 * right_b) * apart
+        both_b = (g21 * right_a + (square - g11) * right_b) * apart
+        gap_a, gap_b = (p11 * both_a + p12 * both_b + sum_a) * mu, (p12 * both_a + p22 * both_b + sum_b) * mu
+        high_a, high_b, low_a, low_b = both_a + gap_a, both_b + gap_b, both_a - gap_a, both_b - gap_b
+        high_a, high_b, low_a, low_b = high_a * 0.5, high_b * 0.5, low_a * 0.5, low_b * 0.5
+        passed = s[_PASSED + b]
         lit_a, lit_b = high_a * passed, high_b * passed
-        v_a = low_a * passed - (q11 * low_a + q12 * low_b) - (r11 * lit_a + r12 * lit_b)
-        v_b = low_b * passed - (q21 * low_a + q22 * low_b) - (r21 * lit_a + r22 * lit_b)
-        if first:
-            scratch[_DOWN1 + b], scratch[_DOWN2 + b], scratch[_BEAM + b] = v_a, v_b, passed
-            scratch[_R11 + b], scratch[_R12 + b], scratch[_R21 + b], scratch[_R22 + b] = r11, r12, r21, r22
-        else:
-            up_a = high_a - (r11 * low_a + r12 * low_b) - (q11 * lit_a + q12 * lit_b)
-            up_b = high_b - (r21 * low_a + r22 * low_b) - (q21 * lit_a + q22 * lit_b)
-            s11, s12, s21, s22 = scratch[_R11 + b], scratch[_R12 + b], scratch[_R21 + b], scratch[_R22 + b]
-            beam = scratch[_BEAM + b]
-            z11, z12 = s11 * r11 + s12 * r21, s11 * r12 + s12 * r22
-            z21, z22 = s21 * r11 + s22 * r21, s21 * r12 + s22 * r22
-            d = 1.0 / ((1.0 - z11) * (1.0 - z22) - z12 * z21)
-            n11, n12, n21, n22 = (1.0 - z22) * d, z12 * d, z21 * d, (1.0 - z11) * d
-            a_in = scratch[_DOWN1 + b] + beam * (s11 * up_a + s12 * up_b)
-            b_in = scratch[_DOWN2 + b] + beam * (s21 * up_a + s22 * up_b)
-            a_met, b_met = n11 * a_in + n12 * b_in, n21 * a_in + n22 * b_in
-            scratch[_DOWN1 + b] = q11 * a_met + q12 * b_met + beam * v_a
-            scratch[_DOWN2 + b] = q21 * a_met + q22 * b_met + beam * v_b
-            # R' = R + T N S T
-            j11, j12 = n11 * s11 + n12 * s21, n11 * s12 + n12 * s22
-            j21, j22 = n21 * s11 + n22 * s21, n21 * s12 + n22 * s22
-            i11, i12 = j11 * q11 + j12 * q21, j11 * q12 + j12 * q22
-            i21, i22 = j21 * q11 + j22 * q21, j21 * q12 + j22 * q22
-            scratch[_R11 + b], scratch[_R12 + b] = r11 + q11 * i11 + q12 * i21, r12 + q11 * i12 + q12 * i22
-            scratch[_R21 + b], scratch[_R22 + b] = r21 + q21 * i11 + q22 * i21, r22 + q21 * i12 + q22 * i22
-            scratch[_BEAM + b] = beam * passed
+        s[_DOWN1 + b] = low_a * passed - (q11 * low_a + q12 * low_b) - (r11 * lit_a + r12 * lit_b)
+        s[_DOWN2 + b] = low_b * passed - (q12 * low_a + q22 * low_b) - (r12 * lit_a + r22 * lit_b)
+        s[_UP1 + b] = high_a - (r11 * low_a + r12 * low_b) - (q11 * lit_a + q12 * lit_b)
+        s[_UP2 + b] = high_b - (r12 * low_a + r22 * low_b) - (q12 * lit_a + q22 * lit_b)
+        s[_R11 + b], s[_R12 + b], s[_R22 + b] = r11, r12, r22
+        s[_Q11 + b], s[_Q12 + b], s[_Q22 + b] = q11, q12, q22
 
 
-@njit(error_model="numpy", cache=True)
-def _mix(
-    scratch: Array, n_band: int, shares: Array, water_path: float, air_path: float, slant: float, pressure_ratio: float,
-    cloud: float, cloud_asymmetry: float, rayleigh_moment: float, open_sky: float, bands: Array,
-) -> None:  # fmt: skip
-    """Put one layer's optical depth, albedo and moments, cut by delta-M, into scratch; lengthen the gas paths."""
-    cg = cloud_asymmetry
-    air_share, haze_share = shares[0], shares[2]
-    for b in range(n_band):
-        y = bands[_WATER_K + b] * water_path
-        wet = 0.2385 * y * _exp(-0.45 * _log(1.0 + 20.07 * y))
-        y = bands[_MIXED_K + b] * air_path
-        even = 1.41 * y * _exp(-0.45 * _log(1.0 + 118.3 * y))
-        gas = (wet - scratch[_PATH_WATER + b] + even - scratch[_PATH_MIXED + b]) * bands[_GAS_SCALE + b] / slant
-        scratch[_PATH_WATER + b], scratch[_PATH_MIXED + b] = wet, even
-        air = bands[_RAYLEIGH + b] * pressure_ratio * air_share
-        haze = scratch[_HAZE + b] * haze_share
-        clear_depth = air + haze + gas + open_sky
-        depth = clear_depth + cloud
-        scratch[_DEPTH + b] += depth - open_sky
-        hs, cs = haze * bands[_HAZE_ALBEDO + b], cloud * bands[_CLOUD_ALBEDO + b]
-        scattered = air + hs + open_sky + cs
-        hg = bands[_HAZE_G + b]
-        n = 1.0 / scattered
-        x1 = (hs * hg + cs * cg) * n
-        x2 = (hs * hg * hg + cs * cg * cg + air * rayleigh_moment) * n
-        x3 = (hs * hg * hg * hg + cs * cg * cg * cg) * n
-        f = (hs * hg * hg * hg * hg + cs * cg * cg * cg * cg) * n
-        albedo = scattered / depth
-        kept = 1.0 - albedo * f
-        scratch[_TAU + b] = kept * depth
-        scratch[_OMEGA + b] = (1.0 - f) * albedo / kept
-        n = 1.0 / (1.0 - f)
-        scratch[_C1 + b] = 3.0 * (x1 - f) * n
-        scratch[_C2 + b], scratch[_C3 + b] = 5.0 * (x2 - f) * n, 7.0 * (x3 - f) * n
+@_compiled
+def _first(s: Array, n: int) -> None:
+    for b in range(n):
+        s[_D1 + b], s[_D2 + b], s[_BEAM + b] = s[_DOWN1 + b], s[_DOWN2 + b], s[_PASSED + b]
+        s[_S11 + b], s[_S12 + b], s[_S22 + b] = s[_R11 + b], s[_R12 + b], s[_R22 + b]
 
 
-@njit(error_model="numpy", cache=True)
+@_compiled
+def _add(s: Array, n: int) -> None:
+    """Add the layer below those joined so far."""
+    for b in range(n):
+        r11, r12, r22, q11, q12, q22 = s[_R11 + b], s[_R12 + b], s[_R22 + b], s[_Q11 + b], s[_Q12 + b], s[_Q22 + b]
+        s11, s12, s22, beam = s[_S11 + b], s[_S12 + b], s[_S22 + b], s[_BEAM + b]
+        up_a, up_b = s[_UP1 + b], s[_UP2 + b]
+        z11, z12, z21, z22 = s11 * r11 + s12 * r12, s11 * r12 + s12 * r22, s12 * r11 + s22 * r12, s12 * r12 + s22 * r22
+        d = 1.0 / ((1.0 - z11) * (1.0 - z22) - z12 * z21)
+        n11, n12, n21, n22 = (1.0 - z22) * d, z12 * d, z21 * d, (1.0 - z11) * d
+        in_a = s[_D1 + b] + beam * (s11 * up_a + s12 * up_b)
+        in_b = s[_D2 + b] + beam * (s12 * up_a + s22 * up_b)
+        met_a, met_b = n11 * in_a + n12 * in_b, n21 * in_a + n22 * in_b
+        s[_D1 + b] = q11 * met_a + q12 * met_b + beam * s[_DOWN1 + b]
+        s[_D2 + b] = q12 * met_a + q22 * met_b + beam * s[_DOWN2 + b]
+        # R' = R + Q (1 - S R)^-1 S Q
+        j11, j12, j22 = n11 * s11 + n12 * s12, n11 * s12 + n12 * s22, n21 * s12 + n22 * s22
+        i11, i12, i21, i22 = j11 * q11 + j12 * q12, j11 * q12 + j12 * q22, j12 * q11 + j22 * q12, j12 * q12 + j22 * q22
+        s[_S11 + b], s[_S12 + b] = r11 + q11 * i11 + q12 * i21, r12 + q11 * i12 + q12 * i22
+        s[_S22 + b] = r22 + q12 * i12 + q22 * i22
+        s[_BEAM + b] = beam * s[_PASSED + b]
+
+
+@_compiled
+def _slant(fixed: Array, air_mass: float, cloud: float, layer: int) -> float:
+    """`column._slants`: slant of light's way through the gas of a layer."""
+    if layer == 0:
+        return air_mass
+    straight = math.exp(-(1.0 - fixed[_CLOUD_G] * fixed[_CLOUD_G]) * cloud * air_mass)
+    path = fixed[_DIFFUSIVITY] * fixed[_CLOUD_PATH] if layer == 1 else fixed[_DIFFUSIVITY]
+    return float(straight * air_mass + (1.0 - straight) * path)
+
+
+@_compiled
+def _on_ground(s: Array, n: int, albedo: Array, air_mass: float) -> None:
+    """Set the transmittance of all light and of the beam, the ground's throw to and fro in it."""
+    for b in range(n):
+        s[_GROUND + b] = albedo[min(b, len(albedo) - 1)]
+    for b in range(n):
+        back = _M1 * s[_S11 + b] + 2.0 * _S1 * _S2 * s[_S12 + b] + _M2 * s[_S22 + b]
+        down = s[_BEAM + b] + _PI * (_S1 * s[_D1 + b] + _S2 * s[_D2 + b])
+        straight = _exp(-(s[_SUM_DEPTH + b] * air_mass + s[_OZONE + b]))
+        s[_STRAIGHT + b] = straight
+        s[_TOTAL + b] = max(down * _exp(-s[_OZONE + b]) / (1.0 - s[_GROUND + b] * back), straight)
+
+
+@_compiled
 def transmit(
-    hours: Array, albedo: Array, slants: Array, shares: Array, bands: Array, n_band: int,
-    cloud_asymmetry: float, rayleigh_moment: float, open_sky: float, beam: Array, total: Array,
+    hours: Array, albedo: Array, bands: Array, tables: tuple[Array, Array], laws: Array, fixed: Array,
+    beam: Array, total: Array,
 ) -> None:  # fmt: skip
     """Fill the transmittances of each hour.
 
     Parameters
     ----------
-    hours : (n, 7) array, air mass, ozone air mass, pressure ratio, water [cm], ozone [atm-cm], AOD at 500 nm,
-        Angstrom exponent
+    hours : (n, 8) array, the `HOUR` columns: air mass, ozone air mass, pressure ratio, water [cm], ozone [atm-cm], AOD
+        at 500 nm, Angstrom exponent, cloud depth
     albedo : (n, n_band) or (n, 1) array [1]
-    slants : (n, 4) array [1], slant of gas paths above, in and below the cloud, and cloud depth
-    shares : (3, 3) array [1], per layer of air, water and haze
-    bands : (9 x STRIDE,) array, the `BAND_ROWS` one after the other, each padded to STRIDE
-    n_band : int, at most STRIDE
+    bands : (9 x STRIDE,) array, the `BAND_ROWS` one after the other, each padded to STRIDE with its last value
+    tables : two flat arrays, depth of vapour and of mixed gas in each band at the nodes' paths, a row of STRIDE a node
+    laws : (2, 2) array, the factors in their curves of growth
+    fixed : (14,) array, shares of air, water and haze by layer, then the column's other constants
     beam, total : (n, n_band) arrays to fill [1]
     """
-    scratch = np.zeros(_N_SCRATCH * STRIDE)
+    s = np.zeros(_N_SCRATCH * STRIDE)
+    n_band = beam.shape[1]
+    n = (n_band + LANES - 1) // LANES * LANES
+    known_exponent = math.nan
     for h in range(hours.shape[0]):
-        air_mass, ozone_mass, pressure_ratio = hours[h, 0], hours[h, 1], hours[h, 2]
-        water, ozone, aod, exponent = hours[h, 3], hours[h, 4], hours[h, 5], hours[h, 6]
-        cloud = slants[h, 3]
-        for b in range(n_band):
-            # _exp takes no positive argument: short waves by the reciprocal.
-            x = exponent * bands[_SHAPE + b]
-            scratch[_HAZE + b] = aod * (_exp(-abs(x)) if x >= 0 else 1.0 / _exp(-abs(x)))
-            scratch[_OZONE + b] = _exp(-bands[_GAS_SCALE + b] * bands[_OZONE_K + b] * ozone * ozone_mass)
-            scratch[_PATH_WATER + b] = 0.0
-            scratch[_PATH_MIXED + b] = 0.0
-            scratch[_DEPTH + b] = 0.0
+        hour = hours[h]
+        air_mass, cloud = hour[_AIR_MASS], hour[_CLOUD]
+        _start(s, n, bands, hour, known_exponent)
+        known_exponent = hour[_EXPONENT]
         water_path, air_path = 0.0, 0.0
-        mu = 1.0 / air_mass
         for i in range(3):
-            slant = slants[h, i]
-            water_path += water * shares[i, 1] * slant
-            air_path += pressure_ratio * shares[i, 0] * slant
-            _mix(
-                scratch, n_band, shares[i], water_path, air_path, slant, pressure_ratio,
-                cloud if i == 1 else 0.0, cloud_asymmetry, rayleigh_moment, open_sky, bands,
-            )  # fmt: skip
-            _join(scratch, n_band, mu, i == 0)
-        wide = albedo.shape[1] > 1
+            slant = _slant(fixed, air_mass, cloud, i)
+            air = hour[_PRESSURE] * fixed[_AIR_SHARE + i]
+            water_path += hour[_WATER] * fixed[_WATER_SHARE + i] * slant
+            air_path += air * slant
+            _gas(s, n, bands, tables, laws, water_path, air_path, slant)
+            _mix(s, n, bands, air, fixed[_HAZE_SHARE + i], cloud if i == 1 else 0.0, fixed)
+            _modes(s, n)
+            _fade(s, n, air_mass)
+            _solve(s, n, 1.0 / air_mass)
+            if i > 0:
+                _add(s, n)
+            else:
+                _first(s, n)
+        _on_ground(s, n, albedo[h], air_mass)
         for b in range(n_band):
-            back = _M1 * (scratch[_R11 + b] + scratch[_R12 + b]) + _M2 * (scratch[_R21 + b] + scratch[_R22 + b])
-            down = scratch[_BEAM + b] + _PI * (_M1 * scratch[_DOWN1 + b] + _M2 * scratch[_DOWN2 + b])
-            ground = albedo[h, b] if wide else albedo[h, 0]
-            straight = _exp(-scratch[_DEPTH + b] * air_mass) * scratch[_OZONE + b]
-            beam[h, b] = straight
-            total[h, b] = max(down / (1.0 - ground * back) * scratch[_OZONE + b], straight)
+            beam[h, b], total[h, b] = s[_STRAIGHT + b], s[_TOTAL + b]
