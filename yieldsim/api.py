@@ -42,12 +42,13 @@ import xarray as xr
 import yieldsim
 from yieldsim import checks, config, readers, report, screen
 from yieldsim.config import library
+from yieldsim.config.many import Cell
 from yieldsim.device.stack import gap_label
 from yieldsim.errors import InputError, PlaceError, Problem
-from yieldsim.study import compare, datasets, generation, hourly, pairs, run, store, sweep
+from yieldsim.study import compare, datasets, generation, hourly, pairs, region, run, store, sweep
 from yieldsim.study.annual import Ratings
 from yieldsim.study.plan import SitePlan, StudyPlan
-from yieldsim.study.result import StudyResult, by_hour_table, responses_table
+from yieldsim.study.result import StudyResult, by_hour_table, records, responses_table
 from yieldsim.weather import Weather
 
 _VERSIONS_OF = ("numpy", "scipy", "pandas", "xarray", "pvlib", "numba", "h5py", "h5netcdf", "matplotlib", "pydantic")
@@ -80,7 +81,15 @@ def load_study(path: str | Path) -> StudyPlan:
     ...     print([(problem.line, problem.where) for problem in error.problems])
     [(2, 'sites')]
     """
-    return config.load(Path(path))
+    return config.load(Path(path), grid_cells)
+
+
+def grid_cells(path: Path, shown: str) -> list[Cell]:
+    """Return the cells of a grid of weather, as `config.many` wants them."""
+    from yieldsim.readers import grid
+
+    found = grid.cells(path, shown)
+    return [Cell(each.row, each.column, each.latitude_deg, each.longitude_deg, each.elevation_m) for each in found]
 
 
 def load_weather(site: SitePlan) -> Sequence[Weather]:
@@ -88,7 +97,8 @@ def load_weather(site: SitePlan) -> Sequence[Weather]:
     overrides = {name: getattr(site, name) for name in ("latitude_deg", "longitude_deg", "elevation_m")}
     return [
         screen.screen(
-            readers.read(file.path, file.format, file.timestamps, shown=file.shown, **overrides), site.allow_gaps
+            readers.read(file.path, file.format, file.timestamps, shown=file.shown, cell=file.cell, **overrides),
+            site.allow_gaps,
         )
         for file in site.weather
     ]
@@ -99,6 +109,7 @@ def run_study(
     out: str | Path | None = None,
     *,
     workers: int = 1,
+    cluster: str | None = None,
     fresh: bool = False,
     progress: run.Progress | None = None,
 ) -> StudyResult:
@@ -109,6 +120,7 @@ def run_study(
     plan : StudyPlan, from `load_study`
     out : folder of the results; ``outputs/<study>`` under the current folder unless given
     workers : int, processes that share the sites
+    cluster : str or None, ``tcp://HOST:PORT`` of a Dask scheduler whose workers share the sites instead
     fresh : compute again what an earlier run into the same folder finished
     progress : called with (what, steps finished, steps in all)
 
@@ -129,19 +141,9 @@ def run_study(
         folder.mkdir(parents=True, exist_ok=True)
     except OSError as error:
         raise PlaceError(f"cannot make the folder {folder}: {error.strerror}") from error
-    pieces, seconds = run.site_pieces(plan, load_weather, folder, workers=workers, fresh=fresh, progress=progress)
-    standard = standard_table(plan)
-    rated = dict(zip(standard["absorber"], Ratings.of(plan.absorbers).terminals, strict=True))
-    kept = store.open_hourly(folder, [site.name for site in plan.sites] if "hourly" in plan.keep else [])
-    by_hour = [by_hour_table({name: hours}, rated) for name, hours in kept]
-    swept = run.rows(pieces, "gap_sweep")
-    if plan.gap_sweep is not None:
-        swept += sweep.standard_rows(plan.gap_sweep)
-    paired = run.rows(pieces, "gap_pairs")
-    if plan.gap_pairs is not None:
-        paired += pairs.standard_rows(plan.gap_pairs)
-    standing = pairs.material_rows(paired, paired_materials(plan))
-    films = generation.rows(plan.absorbers, plan.films)
+    seconds = run.site_pieces(
+        plan, load_weather, folder, workers=workers, cluster=cluster, fresh=fresh, progress=progress
+    )
     details: dict[str, Any] = {
         "study": plan.name,
         "yieldsim": yieldsim.__version__,
@@ -155,30 +157,53 @@ def run_study(
         "folder": plan.folder,
         "config": dict(plan.resolved),
     }
-    result = StudyResult(
-        study=plan.name,
-        resolved=plan.resolved,
-        annual=pd.DataFrame(run.rows(pieces, "annual")),
-        yearly=pd.DataFrame(yearly) if (yearly := run.rows(pieces, "yearly")) else None,
-        monthly=pd.DataFrame(run.rows(pieces, "monthly")),
-        gap_sweep=pd.DataFrame(swept) if swept else None,
-        weather_quality=pd.DataFrame(run.rows(pieces, "weather_quality")),
-        standard=standard,
-        gap_pairs=pd.DataFrame(paired) if paired else None,
-        gap_pair_materials=pd.DataFrame(standing) if standing else None,
-        generation=pd.DataFrame(films) if films else None,
-        ledger=pd.DataFrame(run.rows(pieces, "ledger")).fillna(0.0),
-        responses=responses_table(plan.absorbers),
-        by_hour=pd.concat(by_hour, ignore_index=True) if by_hour else None,
-        spectra=store.open_spectra(folder, [site.name for site in plan.sites]),
-        run=details,
-    )
+    result = _gathered(plan, folder, details)
     if progress is not None:
         progress("report", len(plan.sites), len(plan.sites))
     report.write(result, folder, plan.keep)
     details |= {"seconds_in_all": round(time.perf_counter() - clock, 3), "peak_memory_mb": peak_memory_mb()}
     store.write_json(folder / "run.json", details)
     return replace(result, run=details)
+
+
+def _gathered(plan: StudyPlan, folder: Path, details: dict[str, Any]) -> StudyResult:
+    """Return the result of a study whose sites are all finished."""
+    found = run.tables(plan, folder)
+
+    def frame(name: str, more: Sequence[dict[str, Any]] = ()) -> pd.DataFrame | None:
+        parts = [pd.DataFrame(each) for each in (found.get(name), more) if each]
+        return pd.concat(parts, ignore_index=True) if parts else None
+
+    standard = standard_table(plan)
+    rated = dict(zip(standard["absorber"], Ratings.of(plan.absorbers).terminals, strict=True))
+    names = [site.name for site in plan.sites]
+    kept = store.open_hourly(folder, names if "hourly" in plan.keep else [])
+    by_hour = [by_hour_table({name: hours}, rated) for name, hours in kept]
+    paired = frame("gap_pairs", [] if plan.gap_pairs is None else pairs.standard_rows(plan.gap_pairs))
+    standing = [] if paired is None else pairs.material_rows(records(paired), paired_materials(plan))
+    films = generation.rows(plan.absorbers, plan.films)
+    annual, quality, ledger = frame("annual"), frame("weather_quality"), frame("ledger")
+    assert annual is not None  # every site has rows of both
+    assert quality is not None
+    return StudyResult(
+        study=plan.name,
+        resolved=plan.resolved,
+        annual=annual,
+        yearly=frame("yearly"),
+        monthly=frame("monthly"),
+        gap_sweep=frame("gap_sweep", [] if plan.gap_sweep is None else sweep.standard_rows(plan.gap_sweep)),
+        weather_quality=quality,
+        standard=standard,
+        gap_pairs=paired,
+        gap_pair_materials=pd.DataFrame(standing) if standing else None,
+        generation=pd.DataFrame(films) if films else None,
+        ledger=None if ledger is None else ledger.fillna(0.0),
+        region=region.dataset(plan, found["annual"], found.get("gap_sweep")) if region.is_region(plan) else None,
+        responses=responses_table(plan.absorbers),
+        by_hour=pd.concat(by_hour, ignore_index=True) if by_hour else None,
+        spectra=store.open_spectra(folder, names),
+        run=details,
+    )
 
 
 def paired_materials(plan: StudyPlan) -> list[tuple[str, float, float]]:

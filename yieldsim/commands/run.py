@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import argparse
 import platform
+import re
 import sys
 from collections.abc import Mapping, Sequence
 from pathlib import Path
@@ -23,6 +24,7 @@ EXAMPLE = """example:
 """
 
 Row = Mapping[str, Any]
+MOST_SITES = 20  # in the summary of a terminal; the tables hold all
 
 
 def arguments(parser: argparse.ArgumentParser) -> None:
@@ -37,6 +39,9 @@ def arguments(parser: argparse.ArgumentParser) -> None:
     )
     parser.add_argument("--out", metavar="DIR", type=Path, help="folder of the results (default: outputs/STUDY)")
     parser.add_argument("--workers", metavar="N", type=workers, default=1, help="processes that share the sites")
+    parser.add_argument(
+        "--cluster", metavar="tcp://HOST:PORT", type=cluster, help="Dask scheduler whose workers share the sites"
+    )
     parser.add_argument("--fresh", action="store_true", help="compute again what an earlier run finished")
     parser.add_argument("--quiet", action="store_true", help="no progress and no summary")
 
@@ -46,6 +51,13 @@ def workers(text: str) -> int:
     if not text.isascii() or not text.isdigit() or not 1 <= int(text) <= 1024:
         raise argparse.ArgumentTypeError(f"found {text!r}; allowed: a whole number from 1 to 1024")
     return int(text)
+
+
+def cluster(text: str) -> str:
+    """Return the address of a scheduler from the command line."""
+    if not re.fullmatch(r"(tcp|tls)://[\w.\-\[\]:]+:\d{1,5}", text):
+        raise argparse.ArgumentTypeError(f"found {text!r}; allowed: tcp://HOST:PORT or tls://HOST:PORT")
+    return text
 
 
 def run(options: argparse.Namespace) -> int:
@@ -60,15 +72,20 @@ def run(options: argparse.Namespace) -> int:
     out = options.out if options.out is not None else Path("outputs", file_stem(plan.name))
     progress = Progress(options.quiet)
     try:
-        result = api.run_study(plan, out, workers=options.workers, fresh=options.fresh, progress=progress)
+        result = api.run_study(
+            plan, out, workers=options.workers, cluster=options.cluster, fresh=options.fresh, progress=progress
+        )
     finally:
         progress.close()
     if not options.quiet:
         from yieldsim.report.answer import answer
 
-        rows = cast("list[Row]", result.annual.to_dict("records"))
+        few = result.annual[result.annual["site"].isin(result.annual["site"].unique()[:MOST_SITES])]
+        rows = cast("list[Row]", few.to_dict("records"))
         said = answer(result)
         print(f"{wrapped(said.winner)}\n{wrapped(said.ranking)}\n\n{summary(rows, plan.reference, out)}")
+        if len(plan.sites) > MOST_SITES:
+            print(f"Shown above: the first {MOST_SITES} of {len(plan.sites)} sites; the tables hold all.")
     return 0
 
 

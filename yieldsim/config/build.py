@@ -46,6 +46,7 @@ class Builder:
         self.document = document
         self.folder = folder
         self.problems: list[Problem] = []
+        self.hashes: dict[Path, str] = {}
         self.around = Surroundings(folder)
 
     def plan(self, study: schema.Study) -> StudyPlan:
@@ -122,12 +123,13 @@ class Builder:
     def _weather(self, site: site_schema.Site, shown: str, path: KeyPath) -> WeatherFile:
         where = locate(shown, self.folder)
         try:
-            digest = sha256(where)
+            digest = self.hashes.get(where) or self.hashes.setdefault(where, sha256(where))
         except OSError as error:
             digest = ""
             self.problems.append(self.document.problem(path, f"{shown}: {error.strerror}", "a file that can be read"))
         kept = shown if shown.startswith(PVLIB) else str(where.absolute())
-        return WeatherFile(kept, shown, digest, site.format, site.timestamps)
+        cell = None if site.cell is None else (site.cell[0], site.cell[1])
+        return WeatherFile(kept, shown, digest, site.format, site.timestamps, cell)
 
 
 def _twelve(value: Any) -> Monthly:

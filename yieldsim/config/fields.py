@@ -105,6 +105,29 @@ class Number(Kind):
 
 
 @dataclass(frozen=True)
+class Whole(Kind):
+    """A whole number in a range; both ends allowed."""
+
+    low: int
+    high: int
+
+    @property
+    def allowed(self) -> str:
+        """What is allowed, in words."""
+        return f"a whole number from {self.low} to {self.high}"
+
+    def take(self, value: Any) -> int:
+        """Return a whole number; text, true/false and fractions are refused."""
+        if isinstance(value, bool) or not isinstance(value, int) or not self.low <= value <= self.high:
+            raise refusal(show(value), self.allowed)
+        return value
+
+    def json(self) -> dict[str, Any]:
+        """Return type and range."""
+        return {"type": "integer", "minimum": self.low, "maximum": self.high}
+
+
+@dataclass(frozen=True)
 class Choice(Kind):
     """One of a few words or whole numbers."""
 

@@ -42,7 +42,12 @@ def locate(shown: str, folder: Path) -> Path:
 
 
 def sha256(path: Path) -> str:
-    """Return the SHA-256 of a file's content, in hexadecimal."""
+    """Return the SHA-256 of a file's content, or of all names and contents in a folder, in hexadecimal."""
+    if path.is_dir():
+        digest = hashlib.sha256()
+        for file in sorted(each for each in path.rglob("*") if each.is_file()):
+            digest.update(f"{file.relative_to(path).as_posix()} {sha256(file)};".encode())
+        return digest.hexdigest()
     digest = hashlib.sha256()
     with path.open("rb") as stream:
         while chunk := stream.read(CHUNK_BYTES):
@@ -135,7 +140,7 @@ class InputFile(Text):
             missing, regular = True, False
         if missing:
             raise refusal(f"no such file {show(shown)}", f"a file that exists; looked for {path.absolute()}")
-        if not regular:
+        if not regular and not (self.shipped and path.is_dir() and path.suffix == ".zarr"):
             raise refusal(f"{show(shown)}, which is not a file", "a file")
         return shown
 

@@ -10,6 +10,7 @@ from yieldsim.config import crosscheck, tree
 from yieldsim.config.build import Builder
 from yieldsim.config.explain import validate
 from yieldsim.config.inputs import read_text
+from yieldsim.config.many import Cells, written_out
 from yieldsim.config.schema import NOT_YET, Study
 from yieldsim.errors import InputError, Problem
 from yieldsim.study.plan import StudyPlan
@@ -17,19 +18,21 @@ from yieldsim.study.plan import StudyPlan
 MAX_RUN_BYTES = 20_000_000
 
 
-def load(path: str | Path) -> StudyPlan:
+def load(path: str | Path, cells: Cells | None = None) -> StudyPlan:
     """Return the plan of a study file.
 
     Parameters
     ----------
     path : str or Path of a YAML file; paths in it are relative to its folder
+    cells : what reads the cells of a grid of weather; without it a study of a grid is refused
 
     Raises
     ------
     InputError
         With every problem of the file: its line, key path, what was found, what is allowed.
     """
-    return plan_of(tree.read(Path(path), str(path)), Path(path).absolute().parent)
+    folder = Path(path).absolute().parent
+    return plan_of(written_out(tree.read(Path(path), str(path)), folder, cells), folder)
 
 
 def load_run(path: str | Path) -> tuple[StudyPlan, dict[str, Any]]:

@@ -7,20 +7,20 @@ from __future__ import annotations
 
 from typing import Annotated, Any
 
-from pydantic import Field, Tag, model_validator
+from pydantic import Field, GetJsonSchemaHandler, Tag, model_validator
+from pydantic_core import CoreSchema
 
-from yieldsim.config import grid
+from yieldsim.config import grid, many
 from yieldsim.config.absorber_schema import GAP, Absorber, SweepQuality
 from yieldsim.config.fields import Choice, Length, Monthly, Name, Number, Section, Text, by, one_or_list, refusal
 from yieldsim.config.site_schema import Mounting, Site
 
 PARTS = ("annual", "monthly", "hourly", "spectra", "plots")
-MAX_SITES = 1000
 MAX_ABSORBERS = 100
 
 #: Keys that a later version will take: named in the message, so that nobody looks for a slip of typing.
 NOT_YET = (
-    "chance", "portfolio", "worth", "climate", "table", "grid",
+    "chance", "portfolio", "worth", "climate",
 )  # fmt: skip
 
 # The study's name is a folder: what every file system can hold, and nothing that leads elsewhere.
@@ -147,6 +147,29 @@ class Losses(Section):
     )
 
 
+class SitesOf(Length):
+    """A list of sites, or in its place a table or a grid that `many.written_out` has written out before."""
+
+    def __get_pydantic_json_schema__(self, schema: CoreSchema, handler: GetJsonSchemaHandler) -> dict[str, Any]:
+        """Offer the list, a table and a grid."""
+        one_by_one = super().__get_pydantic_json_schema__(schema, handler)
+        files = {
+            "table": {"type": "string", "description": f"CSV with a row a site; columns: {', '.join(many.COLUMNS)}"},
+            "grid": {"type": "string", "description": "weather as NetCDF or Zarr, time x latitude x longitude"},
+        }
+        shared: dict[str, Any] = {
+            name: {"description": "for all that say nothing of their own"} for name in many.SHARED
+        }
+        either = [{"required": [name]} for name in files]
+        by_the_hundred = {
+            "type": "object",
+            "properties": files | shared,
+            "additionalProperties": False,
+            "anyOf": either,
+        }
+        return {"anyOf": [one_by_one, by_the_hundred]}
+
+
 class Study(Section):
     """A study: sites, absorbers, and what to find out about them."""
 
@@ -154,7 +177,7 @@ class Study(Section):
     mounting: Mounting | None = Field(
         default=None, description="one plane, or several by name, computed for every site"
     )
-    sites: Annotated[list[Site], Length(1, MAX_SITES, "sites")]
+    sites: Annotated[list[Site], SitesOf(1, many.MAX_SITES, "sites")]
     absorbers: Annotated[list[Absorber], Length(1, MAX_ABSORBERS, "absorbers")]
     reference: Name | None = Field(
         default=None, description="absorber the others are set against; the first if left out"

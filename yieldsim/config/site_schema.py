@@ -15,6 +15,7 @@ from yieldsim.config.fields import (
     Name,
     Number,
     Section,
+    Whole,
     by,
     one_or_list,
     refusal,
@@ -103,6 +104,9 @@ class Site(Section):
     format: Annotated[str, Choice(FORMATS)] | None = Field(default=None, description="over what the content tells")
     timestamps: Annotated[str, Stamp()] | None = Field(
         default=None, description="where the file's time labels sit in their interval, over what the file says"
+    )
+    cell: Annotated[list[Annotated[int, Whole(0, 1_000_000)]], Length(2, 2, "numbers: row and column")] | None = Field(
+        default=None, description="row and column in a grid of weather, latitude first, from 0"
     )
     allow_gaps: Annotated[bool, Flag()] = Field(default=False, description="accept fewer than 8760 hours")
     latitude_deg: Annotated[float, Number(-90, 90, "deg north")] | None = None

@@ -8,7 +8,7 @@ from __future__ import annotations
 
 import re
 from collections.abc import Mapping
-from dataclasses import dataclass
+from dataclasses import dataclass, field
 from pathlib import Path
 from typing import Any
 
@@ -32,6 +32,7 @@ class Document:
     data : mapping, list or scalar
     keys : key path -> Mark of the key (of the value, for an item of a list)
     values : key path -> Mark of the value
+    elsewhere : number of a site -> file and line it was read from, where that is not this file
     """
 
     file: str
@@ -39,6 +40,7 @@ class Document:
     data: Any
     keys: Mapping[KeyPath, Mark]
     values: Mapping[KeyPath, Mark]
+    elsewhere: Mapping[int, tuple[str, int]] = field(default_factory=dict)
 
     def mark(self, path: KeyPath, of_key: bool = False) -> Mark:
         """Return the place of a key path, or of the nearest thing above it that the file holds."""
@@ -49,6 +51,9 @@ class Document:
 
     def problem(self, path: KeyPath, found: str, allowed: str, of_key: bool = False) -> Problem:
         """Return a Problem at a key path, with its line."""
+        number = path[1] if len(path) > 1 and path[0] == "sites" else None
+        if isinstance(number, int) and number in self.elsewhere:
+            return Problem(*self.elsewhere[number], spell(path[2:]), found, allowed)
         mark = self.mark(path, of_key)
         return Problem(self.file, mark.line, spell(path), found, allowed, excerpt(self.lines, mark))
 

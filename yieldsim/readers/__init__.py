@@ -50,6 +50,7 @@ def read(
     longitude_deg: float | None = None,
     elevation_m: float | None = None,
     utc_offset_h: float | None = None,
+    cell: tuple[int, int] | None = None,
 ) -> Weather:
     """Read one weather file.
 
@@ -60,6 +61,7 @@ def read(
     timestamps : str or None, where the time labels sit, see `weather.parse_stamp`; None = as the format documents
     shown : str or None, how messages and results name the file; None = its path
     latitude_deg, longitude_deg, elevation_m, utc_offset_h : over what the file says
+    cell : (row, column) or None, of a grid of weather
 
     Raises
     ------
@@ -68,14 +70,19 @@ def read(
     PlaceError
         If it cannot be read on this machine.
     """
-    source = open_source(path, shown)
+    shown = shown or path
     stamp = None
     if timestamps is not None:
         try:
             stamp = parse_stamp(timestamps)
         except ValueError:
-            raise InputError(Problem(source.shown, 0, "timestamps", repr(timestamps), STAMP_FORM)) from None
+            raise InputError(Problem(shown, 0, "timestamps", repr(timestamps), STAMP_FORM)) from None
     wanted = Wanted(stamp, latitude_deg, longitude_deg, elevation_m, utc_offset_h)
+    if cell is not None:
+        from yieldsim.readers import grid
+
+        return grid.read(path, shown, cell, wanted)
+    source = open_source(path, shown)
     raws = list(_reader(source, format).read(source))
     if not raws:
         raise source.refuse(0, "", "a header without rows", "at least one row")

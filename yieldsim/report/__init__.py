@@ -5,6 +5,7 @@ from __future__ import annotations
 from collections.abc import Collection
 from pathlib import Path
 
+from yieldsim.study import store
 from yieldsim.study.result import StudyResult
 
 ALL = frozenset({"annual", "monthly", "hourly", "spectra", "plots"})
@@ -32,7 +33,11 @@ def write(result: StudyResult, folder: str | Path, keep: Collection[str] = ALL) 
 
     folder = Path(folder)
     skipped = set() if "monthly" in keep else {"monthly.csv"}
-    return tables.write_tables(result, folder, skipped) + _pictures_and_page(result, folder, "plots" in keep)
+    files = tables.write_tables(result, folder, skipped)
+    if result.region is not None:
+        store.write_netcdf(folder / store.REGION, result.region)
+        files.append(folder / store.REGION)
+    return files + _pictures_and_page(result, folder, "plots" in keep)
 
 
 def rebuild(folder: str | Path) -> list[Path]:
@@ -60,4 +65,8 @@ def _pictures_and_page(result: StudyResult, folder: Path, plots: bool) -> list[P
         from yieldsim.report.plots import write_plots
 
         files += write_plots(result, folder / "plots")
+    elif result.region is not None:  # a grid has its maps, whatever else is kept
+        from yieldsim.report.plots import write_plots
+
+        files += write_plots(result, folder / "plots", ("region",))
     return [*files, write_page(result, folder)]

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Callable, Mapping
+from collections.abc import Callable, Collection, Mapping
 from pathlib import Path
 
 import numpy as np
@@ -12,7 +12,7 @@ from matplotlib.axes import Axes
 from matplotlib.figure import Figure
 from matplotlib.ticker import MaxNLocator
 
-from yieldsim.report import gap_pair_plot, generation_plot, ledger_plot
+from yieldsim.report import gap_pair_plot, generation_plot, ledger_plot, region_plot
 from yieldsim.report.canvas import (
     GREY,
     LABEL_IN,
@@ -35,8 +35,14 @@ _RED_END_NM = 1800.0  # beyond it there is little light and no common absorber's
 _STANDARD = Mark(GREY, (4.0, 2.0), "D")
 
 
-def write_plots(result: StudyResult, folder: Path) -> list[Path]:
+def write_plots(result: StudyResult, folder: Path, only: Collection[str] | None = None) -> list[Path]:
     """Draw every picture a result has the numbers for, as SVG and PNG, and return the files.
+
+    Parameters
+    ----------
+    result : StudyResult
+    folder : Path of the pictures
+    only : names of `PICTURES` to draw, all if left out
 
     Raises
     ------
@@ -45,6 +51,8 @@ def write_plots(result: StudyResult, folder: Path) -> list[Path]:
     """
     files = []
     for name, draw in PICTURES.items():
+        if only is not None and name not in only:
+            continue
         with style():
             figure = draw(result)
             if figure is None:
@@ -282,4 +290,5 @@ PICTURES: Mapping[str, Callable[[StudyResult], Figure | None]] = {
     "ledger": ledger,
     "gap_pairs": gap_pairs,
     "generation": generation_plot.draw,
+    "region": region_plot.draw,
 }

@@ -53,6 +53,7 @@ def read_result(folder: Path) -> StudyResult:
         resolved=dict(run.get("config", {})),
         run=run,
         spectra=store.open_spectra(folder, sites),
+        region=store.open_region(folder),
         **found,  # type: ignore[arg-type]  # the four that must be there are, or we would not be here
     )
 

@@ -25,6 +25,7 @@ class WeatherFile:
     sha256 : str, of its content
     format : str or None, the reader to use; None = recognise it by content
     timestamps : str or None, where its time labels sit, over what the file says
+    cell : (row, column) or None, the place in a grid of weather, along latitude and longitude
     """
 
     path: str
@@ -32,6 +33,7 @@ class WeatherFile:
     sha256: str
     format: str | None = None
     timestamps: str | None = None
+    cell: tuple[int, int] | None = None
 
 
 @dataclass(frozen=True, slots=True)

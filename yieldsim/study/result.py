@@ -75,6 +75,7 @@ class StudyResult:
         `pairs.material_rows`
     generation : ``absorber, junction, depth_um, generation_ma_cm2_um, share_above``, where junctions made from a
         material make their pairs under the standard spectrum, see `generation.rows`
+    region : of a grid of sites, dims (mounting, absorber, latitude, longitude), see `region.dataset`
     chance : ``site, mounting, absorber, measure, p90, p50, p10``; P90 is exceeded with 90 % probability
     head_to_head : ``site, mounting, absorber, other, probability, margin_p90, margin_p50, margin_p10``; probability
         that ``absorber`` yields more than ``other``, margins as shares of the other's yield
@@ -97,6 +98,7 @@ class StudyResult:
     gap_pairs: pd.DataFrame | None = None
     gap_pair_materials: pd.DataFrame | None = None
     generation: pd.DataFrame | None = None
+    region: xr.Dataset | None = None
     chance: pd.DataFrame | None = None
     head_to_head: pd.DataFrame | None = None
     worth: pd.DataFrame | None = None

@@ -19,6 +19,7 @@ import xarray as xr
 from yieldsim.errors import PlaceError
 
 PIECES = ".pieces"
+REGION = "region.nc"
 _STEM_LENGTH = 80  # with a suffix and a folder well below what file systems take (255 bytes)
 _UNSAFE = re.compile(r'[\x00-\x1f\x7f<>:"/\\|?*]')
 _DEVICE_NAMES = re.compile(r"(con|prn|aux|nul|com\d|lpt\d)(\..*)?$", re.IGNORECASE)
@@ -139,6 +140,15 @@ def write_piece(folder: Path, stem: str, key: str, piece: Mapping[str, Any], fil
 def open_spectra(folder: Path, sites: Sequence[str]) -> dict[str, xr.Dataset]:
     """Return the kept spectra of each site that has any, read into memory."""
     return dict(_opened(folder / "spectra", sites))
+
+
+def open_region(folder: Path) -> xr.Dataset | None:
+    """Return the kept results of a grid, read into memory; None where there are none."""
+    path = folder / REGION
+    if not path.is_file():
+        return None
+    with xr.open_dataset(path, engine="h5netcdf") as dataset:
+        return dataset.load()
 
 
 def open_hourly(folder: Path, sites: Sequence[str]) -> Iterator[tuple[str, xr.Dataset]]:
