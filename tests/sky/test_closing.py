@@ -4,6 +4,7 @@ import numpy as np
 import pytest
 
 from yieldsim.sky import closing, column
+from yieldsim.sky.atmosphere import AOD_RANGE
 
 
 def some_air(n, seed=3, **changes):
@@ -128,6 +129,33 @@ def test_steady_dust_is_believed():
     air = some_air(24, cos_zenith=np.full(24, 0.6))
     sky = close(air, *light_of(air.with_aod500(np.full(24, 1.2)), np.zeros(24), np.ones(24)))
     np.testing.assert_allclose(sky.aod500[1:-1], 1.2, rtol=1e-6)
+
+
+def test_few_bands_stand_for_all():
+    """Sums over the few bands are those over all: what the header of the table says, on skies it was not fitted to."""
+    rng = np.random.default_rng(21)
+    air = some_air(400, albedo=np.repeat(rng.uniform(0.05, 0.8, (400, 1)), 122, axis=1))
+    few, cloud = closing.few_bands(column.optics()), rng.choice([0.0, 1.0, 10.0, 60.0], 400)
+    part = column.transmit(closing.on_few_bands(air), cloud, few).total @ (few.extraterrestrial * few.factor)
+    whole = column.transmit(air, cloud).total @ (column.optics().extraterrestrial * column.optics().factor)
+    assert np.sqrt(np.mean((part / whole - 1) ** 2)) < 1e-3
+    assert np.max(np.abs(part / whole - 1)) < 0.01
+
+
+def test_haze_by_plain_newton():
+    """The compiled search against Newton's steps in plain numpy: the same haze to 1e-9, within its bounds."""
+    air = some_air(200)
+    dni = np.random.default_rng(3).uniform(1.0, 1000.0, 200)
+    passed, slope = column.beam_transmittance(air)
+    passed *= column.optics().extraterrestrial * column.optics().factor
+    haze = air.aod500.copy()
+    for _ in range(50):
+        light = passed * np.exp(-haze[:, None] * slope)
+        total = np.maximum(light.sum(axis=1), 1e-300)
+        steep = np.maximum((light * slope).sum(axis=1) / total, 1e-6)
+        haze = np.clip(haze + np.log(total / dni) / steep, *AOD_RANGE)
+    assert np.mean((haze > AOD_RANGE[0]) & (haze < AOD_RANGE[1])) > 0.5
+    np.testing.assert_allclose(closing.beam_haze(air, np.ones(200), dni, column.optics()), haze, rtol=1e-9)
 
 
 class TestMonthlyHaze:

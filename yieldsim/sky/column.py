@@ -258,19 +258,26 @@ def transmit(air: Air, cloud_depth: Array, constants: Optics | None = None) -> T
     (1.2 times that inside the cloud) where a cloud has scattered it.
     """
     constants = optics() if constants is None else constants
-    cloud = np.asarray(cloud_depth, dtype=np.float64)
+    hours, bands, tables, laws, fixed = kernel_inputs(air, np.asarray(cloud_depth, dtype=np.float64), constants)
+    albedo = air.albedo[:, None] if air.albedo.ndim == 1 else np.ascontiguousarray(air.albedo)
+    shape = (len(hours), len(constants.factor))
+    beam, total = np.empty(shape), np.empty(shape)
+    kernel.transmit(hours, albedo, bands, tables, laws, fixed, beam, total)
+    return Transmittance(beam, total)
+
+
+def kernel_inputs(
+    air: Air, cloud_depth: Array, constants: Optics
+) -> tuple[Array, Array, tuple[Array, Array], Array, Array]:
+    """Return hours, band constants, tables and laws of gas, and the column's constants as the kernel takes them."""
     masses = (relative_air_mass(air.cos_zenith), ozone_air_mass(air.cos_zenith))
-    content = (air.pressure / BIRD_PRESSURE, air.water_cm, air.ozone_atm_cm, air.aod500, air.angstrom_exponent, cloud)
-    hours = np.stack([*masses, *content], axis=1)
-    albedo = air.albedo[:, None] if air.albedo.ndim == 1 else air.albedo
-    n_band = len(constants.factor)
-    beam, total = np.empty((len(cloud), n_band)), np.empty((len(cloud), n_band))
+    content = (air.pressure / BIRD_PRESSURE, air.water_cm, air.ozone_atm_cm, air.aod500, air.angstrom_exponent)
+    hours = np.stack([*masses, *content, cloud_depth], axis=1)
     bands = np.concatenate([growth.padded(getattr(constants, name)) for name in kernel.BAND_ROWS])
     shares = (*AIR_SHARE, *WATER_SHARE, *HAZE_SHARE)
     fixed = np.array([*shares, CLOUD_ASYMMETRY, RAYLEIGH_MOMENT, _OPEN_SKY, DIFFUSIVITY, CLOUD_PATH])
-    tables, laws = growth.tables(constants.water, constants.mixed_gas), np.array([growth.WATER_LAW, growth.MIXED_LAW])
-    kernel.transmit(hours, np.ascontiguousarray(albedo), bands, tables, laws, fixed, beam, total)
-    return Transmittance(beam, total)
+    laws = np.array([growth.WATER_LAW, growth.MIXED_LAW])
+    return hours, bands, growth.tables(constants.water, constants.mixed_gas), laws, fixed
 
 
 def transmit_plain(air: Air, cloud_depth: Array, constants: Optics | None = None) -> Transmittance:

@@ -47,21 +47,22 @@ _LOWEST = -700.0  # exp of less is below the smallest number that keeps all digi
 _ROUNDER = 6755399441055744.0  # 1.5 x 2**52: added to a number it leaves the nearest integer in the lowest bits
 _PI = math.pi
 _RESONANCE = RESONANCE
+_HAZE_STEPS, _HAZE_SETTLED = 12, 1e-5  # the third power of the last step is left
 _SERIES = 0.02  # below it tanh(x)/x by its series, whose next term is 5e-16
 
 # Distance of rows in flat scratch memory. It is a constant, so that the compiler can see that rows do not overlap.
 STRIDE = 128
 LANES = 4  # loops over bands run to a multiple of it; bands beyond the last are copies of it
 (
-    _SHAPE, _HAZE, _OZONE, _GAS_PATH, _GAS, _DEPTH, _TAU, _W0, _W1, _W2, _W3, _P11, _P12, _P22, _N11, _N12, _N22,
+    _SHAPE, _HAZE, _OZONE, _GAS, _DEPTH, _TAU, _W0, _W1, _W2, _W3, _P11, _P12, _P22, _N11, _N12, _N22,
     _LARGE, _SMALL, _ROOT_L, _ROOT_S, _FADE_L, _FADE_S, _PASSED, _R11, _R12, _R22, _Q11, _Q12, _Q22, _DOWN1, _DOWN2,
-    _UP1, _UP2,
-) = (STRIDE * row for row in range(34))  # fmt: skip
+    _UP1, _UP2, _AT_SMALL, _SLOPE, _APART,
+) = (STRIDE * row for row in range(36))  # fmt: skip
 # What the layers joined so far do to light, then what arrives.
 (
     _SUM_PATH, _SUM_DEPTH, _BEAM, _D1, _D2, _S11, _S12, _S22, _GROUND, _STRAIGHT, _TOTAL,
-) = (STRIDE * row for row in range(34, 45))  # fmt: skip
-_N_SCRATCH = 45
+) = (STRIDE * row for row in range(36, 47))  # fmt: skip
+_N_SCRATCH = 47
 # Rows of band constants.
 BAND_ROWS = (
     "rayleigh", "ozone", "gas_scale", "haze_shape", "haze_albedo", "haze_asymmetry", "cloud_albedo", "water",
@@ -75,7 +76,7 @@ _RAYLEIGH, _OZONE_K, _GAS_SCALE, _HAZE_SHAPE, _HAZE_ALBEDO, _HAZE_G, _CLOUD_ALBE
 NODE_STEP = 0.05
 WATER_NODES = math.log(0.003) + NODE_STEP * np.arange(250)  # ln cm, up to 800 cm
 MIXED_NODES = math.log(0.05) + NODE_STEP * np.arange(146)  # up to 74
-_FIRST_WATER, _N_WATER, _FIRST_MIXED, _N_MIXED = WATER_NODES[0], len(WATER_NODES), MIXED_NODES[0], len(MIXED_NODES)
+_FIRST_WATER, _FIRST_MIXED = float(WATER_NODES[0]), float(MIXED_NODES[0])
 # Columns of an hour, places of the column's constants.
 _AIR_MASS, _OZONE_MASS, _PRESSURE, _WATER, _OZONE_CM, _AOD, _EXPONENT, _CLOUD = range(8)
 _AIR_SHARE, _WATER_SHARE, _HAZE_SHARE = 0, 3, 6
@@ -84,18 +85,20 @@ _CLOUD_G, _RAYLEIGH_MOMENT, _OPEN_SKY, _DIFFUSIVITY, _CLOUD_PATH = range(9, 14)
 
 @_compiled
 def _exp(x: float) -> float:
-    """Return exp(x) for x <= 700 to 1e-14 of its value; 2**k is made by setting the exponent's bits."""
+    """Return exp(x) for x <= 700 to 1e-13 of its value; 2**k is made by setting the exponent's bits."""
     x = max(x, _LOWEST)
     shifted = x * _LOG2E + _ROUNDER
     k = shifted - _ROUNDER
     r = (x - k * _LN2_HIGH) - k * _LN2_LOW
     r2 = r * r
-    low = (1.0 + r) + r2 * (0.5 + r * (1 / 6))
-    middle = ((1 / 24) + r * (1 / 120)) + r2 * ((1 / 720) + r * (1 / 5040))
-    high = ((1 / 40320) + r * (1 / 362880)) + r2 * ((1 / 3628800) + r * (1 / 39916800))
     r4 = r2 * r2
+    # exp(r) = 1 + r + r**2 q(r), q through Chebyshev points of +-ln(2)/2.
+    low = (0.4999999999995507 + r * 0.16666666666662833) + r2 * (0.04166666678634886 + r * 0.008333333344064293)
+    high = (0.0013888839088043719 + r * 0.0001984122477939008) + r2 * (
+        2.4867885070502583e-05 + r * 2.761750255097688e-06
+    )
     power = (np.float64(shifted).view(np.int64) + np.int64(1023)) << np.int64(52)
-    return (low + r4 * (middle + r4 * high)) * np.int64(power).view(np.float64)
+    return ((1.0 + r) + r2 * (low + r4 * high)) * np.int64(power).view(np.float64)
 
 
 @_compiled
@@ -114,59 +117,46 @@ def _start(s: Array, n: int, bands: Array, hour: Array, known_exponent: float) -
 
 
 @_compiled
-def _nodes(first_node: float, n_node: int, path: float, weights: Array) -> int:
-    """Set the weights of six nodes around a path; return where the first one's row starts, -1 beyond the table."""
-    if not path > 0:
-        return -1
-    place = (math.log(path) - first_node) / NODE_STEP
+def _around(
+    table: Array, first: float, path: float, weights: Array, spare: Array, bands: Array, row: int, law: Array
+) -> Array:
+    """Return the rows of the six nodes around a path and set their weights; beyond the table the curve itself."""
+    place = (math.log(path) - first) / NODE_STEP if path > 0 else -1.0
     node = math.floor(place)
-    if node < 2 or node > n_node - 4:
-        return -1
-    x = place - node
-    a, b, c, d, e, f = x + 2, x + 1, x, x - 1, x - 2, x - 3
-    weights[0], weights[1] = -b * c * d * e * f / 120, a * c * d * e * f / 24
-    weights[2], weights[3] = -a * b * d * e * f / 12, a * b * c * e * f / 12
-    weights[4], weights[5] = -a * b * c * d * f / 24, a * b * c * d * e / 120
-    return (int(node) - 2) * STRIDE
-
-
-@_compiled
-def _curve(
-    s: Array, n: int, table: Array, start_row: int, w: Array, bands: Array, row: int, path: float, law: Array
-) -> None:
-    """Add a gas's depth along a path to the row of the path's depth."""
-    if start_row >= 0:
-        w0, w1, w2, w3, w4, w5 = w[0], w[1], w[2], w[3], w[4], w[5]
-        for b in range(n):
-            t = start_row + b
-            s[_GAS_PATH + b] += (
-                (w0 * table[t] + w1 * table[t + STRIDE])
-                + (w2 * table[t + 2 * STRIDE] + w3 * table[t + 3 * STRIDE])
-                + (w4 * table[t + 4 * STRIDE] + w5 * table[t + 5 * STRIDE])
-            )
-    else:  # rare: air drier or longer than the table
-        for b in range(n):
-            y = bands[row + b] * path
-            s[_GAS_PATH + b] += law[0] * y / (1.0 + law[1] * y) ** 0.45
+    if 2 <= node <= len(table) // STRIDE - 4:
+        x = place - node
+        a, b, c, d, e, f = x + 2, x + 1, x, x - 1, x - 2, x - 3
+        weights[0], weights[1] = -b * c * d * e * f / 120, a * c * d * e * f / 24
+        weights[2], weights[3] = -a * b * d * e * f / 12, a * b * c * e * f / 12
+        weights[4], weights[5] = -a * b * c * d * f / 24, a * b * c * d * e / 120
+        return table[(node - 2) * STRIDE : (node + 4) * STRIDE]
+    weights[:] = 0.0
+    weights[0] = 1.0
+    for i in range(STRIDE):
+        y = bands[row + i] * path
+        spare[i] = law[0] * y / (1.0 + law[1] * y) ** 0.45
+    return spare
 
 
 @_compiled
 def _gas(
     s: Array, n: int, bands: Array, tables: tuple[Array, Array], laws: Array, water_path: float, air_path: float,
-    slant: float,
+    slant: float, room: tuple[Array, Array, Array, Array],
 ) -> None:  # fmt: skip
     """Set the vertical depth of gas in the next layer from its paths down to the layer's foot."""
-    weights = np.empty(6)
-    for b in range(n):
-        s[_GAS_PATH + b] = 0.0
-    at = _nodes(_FIRST_WATER, _N_WATER, water_path, weights)
-    _curve(s, n, tables[0], at, weights, bands, _WATER_K, water_path, laws[0])
-    at = _nodes(_FIRST_MIXED, _N_MIXED, air_path, weights)
-    _curve(s, n, tables[1], at, weights, bands, _MIXED_K, air_path, laws[1])
+    v, w = room[0], room[1]
+    x = _around(tables[0], _FIRST_WATER, water_path, v, room[2], bands, _WATER_K, laws[0])
+    y = _around(tables[1], _FIRST_MIXED, air_path, w, room[3], bands, _MIXED_K, laws[1])
+    v0, v1, v2, v3, v4, v5 = v[0], v[1], v[2], v[3], v[4], v[5]
+    w0, w1, w2, w3, w4, w5 = w[0], w[1], w[2], w[3], w[4], w[5]
     inverse = 1.0 / slant
     for b in range(n):
-        s[_GAS + b] = (s[_GAS_PATH + b] - s[_SUM_PATH + b]) * (bands[_GAS_SCALE + b] * inverse)
-        s[_SUM_PATH + b] = s[_GAS_PATH + b]
+        c, d, e, f, g = STRIDE + b, 2 * STRIDE + b, 3 * STRIDE + b, 4 * STRIDE + b, 5 * STRIDE + b
+        wet = (v0 * x[b] + v1 * x[c]) + (v2 * x[d] + v3 * x[e]) + (v4 * x[f] + v5 * x[g])
+        even = (w0 * y[b] + w1 * y[c]) + (w2 * y[d] + w3 * y[e]) + (w4 * y[f] + w5 * y[g])
+        path = wet + even
+        s[_GAS + b] = (path - s[_SUM_PATH + b]) * (bands[_GAS_SCALE + b] * inverse)
+        s[_SUM_PATH + b] = path
 
 
 @_compiled
@@ -193,8 +183,8 @@ def _mix(s: Array, n: int, bands: Array, air_depth: float, haze_share: float, cl
 
 
 @_compiled
-def _modes(s: Array, n: int) -> None:
-    """Set the layer's matrices for sum (P) and difference (N) of both hemispheres and the roots of N P."""
+def _modes(s: Array, n: int, into: float) -> None:
+    """Set the layer's matrices for sum (P) and difference (N) of both hemispheres, the roots of N P, what fades."""
     for b in range(n):
         w0, w1, w2, w3 = s[_W0 + b], s[_W1 + b], s[_W2 + b], s[_W3 + b]
         p11, p12, p22 = (w0 + w2 * _AA2 - 1.0) * _I1, (w0 + w2 * _AB2) * _I12, (w0 + w2 * _BB2 - 1.0) * _I2
@@ -208,15 +198,13 @@ def _modes(s: Array, n: int) -> None:
         s[_ROOT_L + b], s[_ROOT_S + b] = math.sqrt(large), math.sqrt(small)
         s[_P11 + b], s[_P12 + b], s[_P22 + b] = p11, p12, p22
         s[_N11 + b], s[_N12 + b], s[_N22 + b] = n11, n12, n22
-
-
-@_compiled
-def _fade(s: Array, n: int, into: float) -> None:
+    # Short loops on purpose: a long one leaves the processor nothing to do while it waits for a division.
     for b in range(n):
-        tau = s[_TAU + b]
-        s[_FADE_L + b] = _exp(-s[_ROOT_L + b] * tau)
-        s[_FADE_S + b] = _exp(-s[_ROOT_S + b] * tau)
-        s[_PASSED + b] = _exp(-into * tau)
+        s[_FADE_L + b] = _exp(-s[_ROOT_L + b] * s[_TAU + b])
+    for b in range(n):
+        s[_FADE_S + b] = _exp(-s[_ROOT_S + b] * s[_TAU + b])
+    for b in range(n):
+        s[_PASSED + b] = _exp(-into * s[_TAU + b])
 
 
 @_compiled
@@ -228,7 +216,6 @@ def _solve(s: Array, n: int, mu: float) -> None:
     oa1, oa3, ob1, ob3 = l1 * _M1, l3 * _A3, l1 * _M2, l3 * _B3
     least = _RESONANCE * square
     for b in range(n):
-        p11, p12, p22, n11, n12, n22 = s[_P11 + b], s[_P12 + b], s[_P22 + b], s[_N11 + b], s[_N12 + b], s[_N22 + b]
         large, small, root_l, root_s = s[_LARGE + b], s[_SMALL + b], s[_ROOT_L + b], s[_ROOT_S + b]
         fade_l, fade_s, half = s[_FADE_L + b], s[_FADE_S + b], 0.5 * s[_TAU + b]
         # tanh(k tau/2)/k at both roots; divisions are shared throughout, since they are slow.
@@ -240,7 +227,11 @@ def _solve(s: Array, n: int, mu: float) -> None:
         series = (1.0 - x * (1 / 3) * (1.0 - x * 0.4 * (1.0 - x * (17.0 / 42.0)))) * half
         at_large = (1.0 - fade_l) * below_s * inverse
         at_small = (1.0 - fade_s) * below_l * inverse if x > _SERIES * _SERIES else series
-        slope = (at_large - at_small) * (shared * below_l * below_s)
+        s[_AT_SMALL + b], s[_SLOPE + b] = at_small, (at_large - at_small) * (shared * below_l * below_s)
+    for b in range(n):
+        p11, p12, p22, n11, n12, n22 = s[_P11 + b], s[_P12 + b], s[_P22 + b], s[_N11 + b], s[_N12 + b], s[_N22 + b]
+        large, small = s[_LARGE + b], s[_SMALL + b]
+        at_small, slope = s[_AT_SMALL + b], s[_SLOPE + b]
         g11, g12, g21, g22 = n11 * p11 + n12 * p12, n11 * p12 + n12 * p22, n12 * p11 + n22 * p12, n12 * p12 + n22 * p22
         t11, t12, t21, t22 = (
             at_small + slope * (g11 - small),
@@ -262,7 +253,15 @@ def _solve(s: Array, n: int, mu: float) -> None:
         e11, e12, e22, o11, o12, o22 = x22 * even, x12 * even, x11 * even, y22 * odd, y12 * odd, y11 * odd
         r11, r12, r22 = e11 - o11, e12 - o12, e22 - o22
         q11, q12, q22 = e11 + o11 - 1.0, e12 + o12, e22 + o22 - 1.0
-        # The beam's source and the particular solution that goes with it.
+        s[_R11 + b], s[_R12 + b], s[_R22 + b] = r11, r12, r22
+        s[_Q11 + b], s[_Q12 + b], s[_Q22 + b] = q11, q12, q22
+        s[_APART + b] = apart
+    # The beam's source and the particular solution that goes with it.
+    for b in range(n):
+        p11, p12, p22, n11, n12, n22 = s[_P11 + b], s[_P12 + b], s[_P22 + b], s[_N11 + b], s[_N12 + b], s[_N22 + b]
+        r11, r12, r22, q11, q12, q22 = s[_R11 + b], s[_R12 + b], s[_R22 + b], s[_Q11 + b], s[_Q12 + b], s[_Q22 + b]
+        g11, g12, g21, g22 = n11 * p11 + n12 * p12, n11 * p12 + n12 * p22, n12 * p11 + n22 * p12, n12 * p12 + n22 * p22
+        apart = s[_APART + b]
         w0, w1, w2, w3 = s[_W0 + b], s[_W1 + b], s[_W2 + b], s[_W3 + b]
         sum_a, sum_b = ka * (w0 + w2 * ea), kb * (w0 + w2 * eb)
         right_a = n11 * sum_a + n12 * sum_b + ka * (w1 * oa1 + w3 * oa3) * into
@@ -278,8 +277,6 @@ def _solve(s: Array, n: int, mu: float) -> None:
         s[_DOWN2 + b] = low_b * passed - (q12 * low_a + q22 * low_b) - (r12 * lit_a + r22 * lit_b)
         s[_UP1 + b] = high_a - (r11 * low_a + r12 * low_b) - (q11 * lit_a + q12 * lit_b)
         s[_UP2 + b] = high_b - (r12 * low_a + r22 * low_b) - (q12 * lit_a + q22 * lit_b)
-        s[_R11 + b], s[_R12 + b], s[_R22 + b] = r11, r12, r22
-        s[_Q11 + b], s[_Q12 + b], s[_Q22 + b] = q11, q12, q22
 
 
 @_compiled
@@ -310,16 +307,6 @@ def _add(s: Array, n: int) -> None:
         s[_S11 + b], s[_S12 + b] = r11 + q11 * i11 + q12 * i21, r12 + q11 * i12 + q12 * i22
         s[_S22 + b] = r22 + q12 * i12 + q22 * i22
         s[_BEAM + b] = beam * s[_PASSED + b]
-
-
-@_compiled
-def _slant(fixed: Array, air_mass: float, cloud: float, layer: int) -> float:
-    """`column._slants`: slant of light's way through the gas of a layer."""
-    if layer == 0:
-        return air_mass
-    straight = math.exp(-(1.0 - fixed[_CLOUD_G] * fixed[_CLOUD_G]) * cloud * air_mass)
-    path = fixed[_DIFFUSIVITY] * fixed[_CLOUD_PATH] if layer == 1 else fixed[_DIFFUSIVITY]
-    return float(straight * air_mass + (1.0 - straight) * path)
 
 
 @_compiled
@@ -354,6 +341,7 @@ def transmit(
     beam, total : (n, n_band) arrays to fill [1]
     """
     s = np.zeros(_N_SCRATCH * STRIDE)
+    room = np.empty(6), np.empty(6), np.zeros(6 * STRIDE), np.zeros(6 * STRIDE)
     n_band = beam.shape[1]
     n = (n_band + LANES - 1) // LANES * LANES
     known_exponent = math.nan
@@ -362,16 +350,20 @@ def transmit(
         air_mass, cloud = hour[_AIR_MASS], hour[_CLOUD]
         _start(s, n, bands, hour, known_exponent)
         known_exponent = hour[_EXPONENT]
+        # `column._slants`
+        straight = math.exp(-(1.0 - fixed[_CLOUD_G] * fixed[_CLOUD_G]) * cloud * air_mass)
+        turned = (1.0 - straight) * fixed[_DIFFUSIVITY]
         water_path, air_path = 0.0, 0.0
         for i in range(3):
-            slant = _slant(fixed, air_mass, cloud, i)
+            slant = air_mass
+            if i > 0:
+                slant = straight * air_mass + (turned * fixed[_CLOUD_PATH] if i == 1 else turned)
             air = hour[_PRESSURE] * fixed[_AIR_SHARE + i]
             water_path += hour[_WATER] * fixed[_WATER_SHARE + i] * slant
             air_path += air * slant
-            _gas(s, n, bands, tables, laws, water_path, air_path, slant)
+            _gas(s, n, bands, tables, laws, water_path, air_path, slant, room)
             _mix(s, n, bands, air, fixed[_HAZE_SHARE + i], cloud if i == 1 else 0.0, fixed)
-            _modes(s, n)
-            _fade(s, n, air_mass)
+            _modes(s, n, air_mass)
             _solve(s, n, 1.0 / air_mass)
             if i > 0:
                 _add(s, n)
@@ -380,3 +372,48 @@ def transmit(
         _on_ground(s, n, albedo[h], air_mass)
         for b in range(n_band):
             beam[h, b], total[h, b] = s[_STRAIGHT + b], s[_TOTAL + b]
+
+
+@_compiled
+def beam_haze(
+    hours: Array, bands: Array, tables: tuple[Array, Array], laws: Array, log_top: Array, wanted: Array,
+    bounds: tuple[float, float], haze: Array,
+) -> None:  # fmt: skip
+    """Set the haze with which each hour's beam has the wanted sum; Halley's steps on the logarithm of the beam.
+
+    Parameters
+    ----------
+    hours, bands, tables, laws : as in `transmit`; the AOD of the hours is where the search starts
+    log_top : (STRIDE,) array [ln(W m-2)], light above the air; -inf beyond the last band
+    wanted : (n,) array [ln(W m-2)], over the earth-sun distance
+    bounds : two floats [1], of the haze
+    haze : (n,) array [1] to fill
+    """
+    s = np.zeros(_N_SCRATCH * STRIDE)
+    room = np.empty(6), np.empty(6), np.zeros(6 * STRIDE), np.zeros(6 * STRIDE)
+    n = STRIDE
+    for h in range(hours.shape[0]):
+        hour = hours[h]
+        air_mass, aod = hour[_AIR_MASS], hour[_AOD]
+        _start(s, n, bands, hour, math.nan)
+        _gas(s, n, bands, tables, laws, hour[_WATER] * air_mass, hour[_PRESSURE] * air_mass, 1.0, room)
+        for b in range(n):
+            air = bands[_RAYLEIGH + b] * (hour[_PRESSURE] * air_mass)
+            s[_DEPTH + b] = log_top[b] - (s[_GAS + b] + air + s[_OZONE + b])
+            s[_SHAPE + b] = s[_SHAPE + b] * air_mass
+        for _ in range(_HAZE_STEPS):
+            for b in range(n):
+                s[_TOTAL + b] = _exp(s[_DEPTH + b] - aod * s[_SHAPE + b])
+            light, fall, bend = 0.0, 0.0, 0.0
+            for b in range(n):
+                light += s[_TOTAL + b]
+                fall += s[_TOTAL + b] * s[_SHAPE + b]
+                bend += s[_TOTAL + b] * s[_SHAPE + b] * s[_SHAPE + b]
+            excess, fall = math.log(light) - wanted[h], max(fall / light, 1e-6)
+            curvature = fall * fall - 0.5 * excess * (bend / light - fall * fall)
+            step = excess * fall / max(curvature, 0.5 * fall * fall)
+            moved = aod
+            aod = min(max(aod + step, bounds[0]), bounds[1])
+            if abs(aod - moved) < _HAZE_SETTLED:
+                break
+        haze[h] = aod
