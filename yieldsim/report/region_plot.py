@@ -94,5 +94,5 @@ def _shades(figure: Figure, axes: Axes, here: Any, values: Array, label: str) ->
     x, y, w, h = axes.get_position().bounds
     width = figure.get_figwidth()
     bar = figure.colorbar(mesh, figure.add_axes((x + w + 0.1 / width, y, 0.1 / width, h)), format="%.3g")
-    bar.set_label(label, fontsize=SMALL)
+    bar.ax.set_title(label, fontsize=SMALL, fontweight="normal", loc="left", pad=4)
     bar.ax.tick_params(labelsize=SMALL)

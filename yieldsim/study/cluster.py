@@ -48,7 +48,7 @@ def each(
     except (OSError, TimeoutError, ValueError) as error:
         raise PlaceError(f"no Dask scheduler answers at {address} ({error}); what is finished is kept") from None
     with client:
-        threads = sum(worker["nthreads"] for worker in client.scheduler_info(n_workers=-1)["workers"].values())
+        threads = sum(client.nthreads().values())
         if threads == 0:
             raise PlaceError(f"the Dask scheduler at {address} has no workers; start some and run again")
         shared = client.scatter(plan, broadcast=True, hash=False)
@@ -61,7 +61,7 @@ def each(
             return client.submit(work, shared, site, load_weather, folder, pure=False, retries=_RETRIES)
 
         first = [future for _ in range(_AHEAD * threads) if (future := send()) is not None]
-        running = as_completed(first)
+        running = as_completed(first, loop=client.loop)
         for future in running:
             yield _result(future, address)
             if (following := send()) is not None:
