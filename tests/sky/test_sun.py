@@ -29,6 +29,31 @@ def test_sub_steps_follow_the_accurate_position(latitude, longitude):
         assert np.max(np.abs(off) * np.cos(np.radians(elevation))) < 0.02
 
 
+@pytest.mark.parametrize("elevation_m", [0.0, 4000.0])
+def test_middle_of_the_interval_by_the_full_series(elevation_m):
+    """Reference: pvlib's algorithm at every moment, where ours sums its series once a day: 1e-6 deg."""
+    minute = YEAR[5::37] + 1234
+    course = sun.course(minute, 60, 48.0, 11.0, elevation_m, 1013.25)
+    moments = pd.to_datetime(minute + 30, unit="s", utc=True)
+    expected = solarposition.spa_python(
+        moments, 48.0, 11.0, elevation_m, 101325.0, 12.0, delta_t=69.0, atmos_refract=0.5667
+    )
+    up = expected["apparent_elevation"].to_numpy() > 1.0
+    elevation, azimuth = (np.radians(expected[name].to_numpy()[up]) for name in ("apparent_elevation", "azimuth"))
+    level = np.cos(elevation)
+    direction = np.stack([level * np.sin(azimuth), level * np.cos(azimuth), np.sin(elevation)], axis=-1)
+    assert np.max(np.abs(course.direction[up, 0] - direction)) < np.radians(1e-6)
+
+
+def test_moments_far_apart():
+    """Hours of many years, none next to another, are each what they are alone."""
+    scattered = YEAR[0] + np.arange(-30, 30, dtype=np.int64) * 86400 * 211 + 43200
+    whole = sun.course(scattered, 3600, 40.0, 0.0)
+    for i in (0, 17, 59):
+        alone = sun.course(scattered[i : i + 1], 3600, 40.0, 0.0)
+        np.testing.assert_allclose(alone.direction[0], whole.direction[i], atol=1e-12)
+
+
 def test_directions_have_unit_length():
     course = sun.course(YEAR[:48], 3600, 45.0, 7.0)
     np.testing.assert_allclose(np.linalg.norm(course.direction, axis=-1), 1.0, rtol=1e-9)  # rounding of the refraction
