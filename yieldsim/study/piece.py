@@ -67,16 +67,30 @@ def compute(plan: StudyPlan, site: SitePlan, years: Iterable[Weather], folder: P
         calendar.append(_calendar_year(weather))
         skies: list[_Told] = []
         for part in parts(weather):
-            sky = site_sky(site, part)
-            found = [_enter(books[mounting.name], plan, site, mounting, sky, not skies) for mounting in site.mountings]
-            if len(calendar) == 1:
-                datasets_of.add(sky, found)
-            skies.append(_Told.of(sky))
+            kept = datasets_of if len(calendar) == 1 else None
+            skies.append(_entered(books, plan, site, part, kept, new_year=not skies))
         quality += quality_rows(site.name, weather, skies)
     piece = {"weather_quality": quality} | _tables(plan, site, books, calendar)
     files = datasets_of.write(folder)
     store.write_piece(folder, store.file_stem(site.name), key(plan, site), piece, files)
     return piece
+
+
+def _entered(
+    books: Mapping[str, Book],
+    plan: StudyPlan,
+    site: SitePlan,
+    weather: Weather,
+    kept: _Datasets | None,
+    *,
+    new_year: bool,
+) -> _Told:
+    """Enter a stretch of time into all books of a site; its light is let go of on the way out."""
+    sky = site_sky(site, weather)
+    found = [_enter(books[mounting.name], plan, site, mounting, sky, new_year) for mounting in site.mountings]
+    if kept is not None:
+        kept.add(sky, found)
+    return _Told.of(sky)
 
 
 def _enter(
