@@ -8,26 +8,14 @@ import pytest
 from hypothesis import given, settings
 from hypothesis import strategies as st
 
-from tests.strategies import diodes, stacks
+from tests.strategies import stacks
 from yieldsim.device import diode, kernel, series
-
-SAME = 1e-12  # same equations and steps; rounding only
 
 
 def constants(one):
     return np.array(
         [one.series_resistance, one.shunt_conductance, one.recombination_voltage, one.built_in_voltage], dtype=float
     )
-
-
-@given(diodes())
-@settings(max_examples=60, deadline=None)
-def test_single_power_is_that_of_the_plain_form(one):
-    light = one.photocurrent * np.array([1.0, 0.3, 1e-3])
-    row = np.ones(3)
-    power = kernel.single_power(light, one.saturation_current * row, one.thermal_voltage * row, constants(one))
-    plain = diode.maximum_power(diode.Diode(light, *astuple(one)[1:]))[0]
-    assert power == pytest.approx(plain, rel=SAME)
 
 
 @given(stacks(), st.booleans())
@@ -65,10 +53,6 @@ def test_dark_is_zero_and_nan_stays_nan():
     light = np.array([0.0, np.nan, 200.0, 200.0])
     saturation = np.array([1e-12, 1e-12, np.nan, 1e-12])
     thermal, plain = np.full(4, 0.0257), np.array([0.0, 0.0, 0.0, math.inf])
-    power = kernel.single_power(light, saturation, thermal, plain)
-    assert power[0] == 0.0
-    assert np.isnan(power[1:3]).all()
-    assert power[3] > 0
     for in_series in (True, False):
         power = kernel.stack_power(
             np.array([light, light]),

@@ -10,7 +10,7 @@ from numpy.polynomial import chebyshev
 from numpy.typing import NDArray
 
 from yieldsim.constants import STANDARD_CELL_TEMPERATURE, STANDARD_IRRADIANCE, THERMAL_EV_PER_K
-from yieldsim.device import kernel, series
+from yieldsim.device import kernel, points, series
 from yieldsim.device.fold import folded
 from yieldsim.device.junction import (
     Junction,
@@ -208,7 +208,7 @@ class Bank:
 
     def _own_power(self, j: int, currents: Array, temperature: Array) -> Array:
         heat, junction = temperature[self.absorber_of[j]], self.junctions[j]
-        return kernel.single_power(
+        return points.single_power(
             np.ascontiguousarray(generated(junction, currents)),
             self._saturation(j, heat),
             junction.ideality * THERMAL_EV_PER_K * heat,

@@ -1,4 +1,4 @@
-"""Power points compiled: the equations of `diode` and `series`, hour by hour.
+"""Power points of stacks compiled: the equations of `diode` and `series`, hour by hour.
 
 Same equations, same steps as the plain numpy forms, which the tests hold this to; ten times their speed, because each
 hour takes only the steps it needs and nothing is written to memory in between. What is compiled is kept on disk until
@@ -16,6 +16,7 @@ from numba import njit
 from numpy.typing import NDArray
 
 from yieldsim.device import diode, series
+from yieldsim.device.points import single_power as single_power
 
 Array = NDArray[np.float64]
 
@@ -115,37 +116,6 @@ def _point(
         if moved <= _SETTLED * a:
             break
     return vj
-
-
-@_compiled
-def _single(jl: float, j0: float, a: float, constants: Array) -> tuple[float, float]:
-    """`diode.maximum_power` of one junction in the light: power and voltage over the junction."""
-    vj = _point(jl, j0, a, constants, _start(jl, j0, a), 0.0, 0.0, 1.0)
-    current = _derivatives(jl, j0, a, constants, vj)[0]
-    return current * (vj - current * constants[_RS]), vj
-
-
-@_compiled
-def single_power(photocurrent: Array, saturation: Array, thermal: Array, constants: Array) -> Array:
-    """Return the power of a junction in each hour; 0 in the dark, NaN where an input is NaN.
-
-    Parameters
-    ----------
-    photocurrent, saturation, thermal : (n,) arrays [A m-2], [A m-2], [V]; what `diode.Diode` holds
-    constants : (4,) array, series resistance [ohm m2], shunt conductance [ohm-1 m-2], recombination and built-in
-        voltage [V]
-
-    Returns
-    -------
-    (n,) array [W m-2]
-    """
-    power = np.full(len(photocurrent), np.nan)
-    for i in range(len(photocurrent)):
-        if photocurrent[i] > 0 and saturation[i] > 0:
-            power[i] = _single(photocurrent[i], saturation[i], thermal[i], constants)[0]
-        elif photocurrent[i] == 0:
-            power[i] = 0.0
-    return power
 
 
 @_compiled
@@ -314,7 +284,7 @@ def stack_power(
     Parameters
     ----------
     photocurrent, saturation, thermal : (n_junction, n) arrays [A m-2], [A m-2], [V]; what `diode.Diode` holds
-    constants : (n_junction, 4) array, as in `single_power`
+    constants : (n_junction, 4) array, as in `points.single_power`
     emission : (n_junction, n) array [A m-2], as in `series.Link`
     kt : (n,) array [V], kT/q
     in_series : bool; else each junction is at its own power point
