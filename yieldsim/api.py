@@ -26,7 +26,7 @@ from __future__ import annotations
 import platform
 import sys
 import time
-from collections.abc import Iterator, Sequence
+from collections.abc import Iterator, Mapping, Sequence
 from dataclasses import replace
 from datetime import UTC, datetime
 from difflib import get_close_matches
@@ -45,9 +45,9 @@ from yieldsim.config import library
 from yieldsim.config.many import Cell
 from yieldsim.device.stack import gap_label
 from yieldsim.errors import InputError, PlaceError, Problem
-from yieldsim.study import compare, datasets, generation, hourly, pairs, region, run, store, sweep
+from yieldsim.study import compare, datasets, generation, hourly, pairs, portfolio, region, run, store, sweep, worth
 from yieldsim.study.annual import Ratings
-from yieldsim.study.plan import SitePlan, StudyPlan
+from yieldsim.study.plan import Row, SitePlan, StudyPlan
 from yieldsim.study.result import StudyResult, by_hour_table, records, responses_table
 from yieldsim.weather import Weather
 
@@ -183,6 +183,7 @@ def _gathered(plan: StudyPlan, folder: Path, details: dict[str, Any]) -> StudyRe
     standing = [] if paired is None else pairs.material_rows(records(paired), paired_materials(plan))
     films = generation.rows(plan.absorbers, plan.films)
     annual, quality, ledger = frame("annual"), frame("weather_quality"), frame("ledger")
+    more = _decision(plan, found)
     assert annual is not None  # every site has rows of both
     assert quality is not None
     return StudyResult(
@@ -201,9 +202,26 @@ def _gathered(plan: StudyPlan, folder: Path, details: dict[str, Any]) -> StudyRe
         region=region.dataset(plan, found["annual"], found.get("gap_sweep")) if region.is_region(plan) else None,
         responses=responses_table(plan.absorbers),
         by_hour=pd.concat(by_hour, ignore_index=True) if by_hour else None,
+        **more,
         spectra=store.open_spectra(folder, names),
         run=details,
     )
+
+
+def _decision(plan: StudyPlan, found: Mapping[str, Mapping[str, Sequence[Any]]]) -> dict[str, pd.DataFrame]:
+    """Return the tables that several sites, and money, add to a study's."""
+    weights = portfolio.weights_of([site.name for site in plan.sites], plan.portfolio)
+    regrets = portfolio.regret_rows(found["annual"], weights)
+    made: dict[str, list[Row]] = {"regret": regrets}
+    if len(plan.sites) > 1:
+        made["portfolio"] = portfolio.portfolio_rows(regrets)
+    if len(plan.sites) > 1 and found.get("gap_sweep"):
+        made["portfolio_gap"] = portfolio.gap_rows(found["gap_sweep"], weights)
+    if plan.worth is not None:
+        sold = [dict(zip(found["sold"], row, strict=True)) for row in zip(*found["sold"].values(), strict=True)]
+        ratings = Ratings.of(plan.absorbers)
+        made["worth"] = worth.rows(plan.worth, plan.absorbers, ratings, plan.reference, sold)
+    return {name: pd.DataFrame(rows) for name, rows in made.items()}
 
 
 def paired_materials(plan: StudyPlan) -> list[tuple[str, float, float]]:

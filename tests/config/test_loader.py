@@ -286,7 +286,7 @@ absorbers:
   - {name: X, like: c-si}
 reference: z
 losses: {soiling: 20}
-worth: {}
+climate: {}
 """
     with pytest.raises(InputError) as caught:
         loaded(text)
@@ -300,7 +300,7 @@ worth: {}
         (8, "absorbers[1].name"),
         (9, "reference"),
         (10, "losses.soiling"),
-        (11, "worth"),
+        (11, "climate"),
     ]
     assert all(problem.file.endswith("study.yaml") for problem in caught.value.problems)
 

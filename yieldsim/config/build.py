@@ -13,6 +13,8 @@ from yieldsim.config.inputs import PVLIB, locate, sha256
 from yieldsim.config.mounting_schema import AnyMounting
 from yieldsim.config.surroundings import Surroundings, mounting_plan
 from yieldsim.config.tree import Document, KeyPath
+from yieldsim.config.worth import worth_plan
+from yieldsim.config.worth_schema import Worth
 from yieldsim.device.stack import Absorber
 from yieldsim.errors import InputError, Problem
 from yieldsim.study.plan import (
@@ -52,6 +54,7 @@ class Builder:
     def plan(self, study: schema.Study) -> StudyPlan:
         """Return the plan of a valid study; raises InputError with everything that could not be built."""
         shared = _mountings(study.mounting)
+        prices: dict[str, str] = {}
         sites = [self._site(site, shared, ("sites", i)) for i, site in enumerate(study.sites)]
         maker = absorbers.Maker(self.folder)
         built = [
@@ -64,6 +67,10 @@ class Builder:
         pairs = None
         if study.gap_pairs is not None:
             pairs = self._attempt(("gap_pairs",), lambda: _pairs(cast(schema.GapPairs, study.gap_pairs)))
+        worth = None
+        if study.worth is not None:
+            names = [each.name for each in study.absorbers]
+            worth = self._attempt(("worth",), lambda: worth_plan(cast(Worth, study.worth), names, self.folder, prices))
         if self.problems:
             raise InputError(self.problems)
         made = tuple(absorber for absorber in built if absorber is not None)
@@ -78,9 +85,11 @@ class Builder:
             keep=frozenset(study.keep),
             resolved={},
             folder=str(self.folder),
-            inputs={**self.around.inputs, **maker.inputs},
+            inputs={**self.around.inputs, **maker.inputs, **prices},
             findings=tuple(maker.findings),
             films=tuple(maker.films),
+            worth=worth,
+            portfolio=study.portfolio,
         )
         return replace(plan, resolved=resolved(study, plan))
 
@@ -225,6 +234,10 @@ def resolved(study: schema.Study, plan: StudyPlan) -> dict[str, Any]:
         "losses": study.losses.model_dump(exclude_none=True),
         "keep": [part for part in schema.PARTS if part in plan.keep],
     }
+    if study.portfolio is not None:
+        content["portfolio"] = dict(study.portfolio)
+    if study.worth is not None:
+        content["worth"] = study.worth.model_dump(exclude_none=True)
     if study.gap_pairs is not None:
         content["gap_pairs"] = study.gap_pairs.model_dump(exclude={"quality"}) | {
             "quality": [

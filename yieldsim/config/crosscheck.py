@@ -31,6 +31,8 @@ def problems(document: Document) -> list[Problem]:
         *_reference(document, study),
         *_mountings(document, study),
         *_weather_twice(document, study),
+        *_portfolio(document, study),
+        *_worth(document, study),
     ]
 
 
@@ -124,3 +126,41 @@ def _weather_twice(document: Document, study: dict[str, Any]) -> Iterator[Proble
                 if file in seen:
                     yield document.problem((*path, "weather", i), f"{show(file)} again", "each weather file once")
                 seen.add(file)
+
+
+def _portfolio(document: Document, study: dict[str, Any]) -> Iterator[Problem]:
+    weights = study.get("portfolio")
+    sites = [name for _, name in _names(study, "sites")]
+    if not isinstance(weights, dict) or not sites:
+        return
+    for name in weights:
+        if name not in sites:
+            allowed = f"the name of a site{nearest(name, sites)}"
+            yield document.problem(("portfolio", str(name)), show(name), allowed, of_key=True)
+    numbers = [weight for weight in weights.values() if isinstance(weight, int | float)]
+    if weights and len(numbers) == len(weights) and not any(weight > 0 for weight in numbers):
+        yield document.problem(("portfolio",), "no weight above 0", "at least one site that counts")
+
+
+def _worth(document: Document, study: dict[str, Any]) -> Iterator[Problem]:
+    worth = study.get("worth")
+    names = [name for _, name in _names(study, "absorbers")]
+    if not isinstance(worth, dict) or not names:
+        return
+    for key in _BY_ABSORBER:
+        given = worth.get(key)
+        for name in given if isinstance(given, dict) else ():
+            if name not in names:
+                allowed = f"the name of an absorber{nearest(name, names)}"
+                yield document.problem(("worth", key, str(name)), show(name), allowed, of_key=True)
+    prices: list[dict[str, Any]] = [worth[key] for key in _BY_ABSORBER[:2] if isinstance(worth.get(key), dict)]
+    if len(prices) < sum(worth.get(key) is not None for key in _BY_ABSORBER[:2]):
+        return  # one price for all
+    missing = [name for name in names if prices and not any(name in each for each in prices)]
+    if missing:
+        yield document.problem(("worth",), f"no module price for {', '.join(missing)}", "a price for each absorber")
+    for name in set(prices[0]) & set(prices[1]) if len(prices) == 2 else ():
+        yield document.problem(("worth", _BY_ABSORBER[1], str(name)), f"two prices for {name}", "one of the two")
+
+
+_BY_ABSORBER = ("module_price_per_w", "module_price_per_m2", "degradation_per_year")

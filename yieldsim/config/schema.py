@@ -14,13 +14,14 @@ from yieldsim.config import grid, many
 from yieldsim.config.absorber_schema import GAP, Absorber, SweepQuality
 from yieldsim.config.fields import Choice, Length, Monthly, Name, Number, Section, Text, by, one_or_list, refusal
 from yieldsim.config.site_schema import Mounting, Site
+from yieldsim.config.worth_schema import Portfolio, Worth
 
 PARTS = ("annual", "monthly", "hourly", "spectra", "plots")
 MAX_ABSORBERS = 100
 
 #: Keys that a later version will take: named in the message, so that nobody looks for a slip of typing.
 NOT_YET = (
-    "chance", "portfolio", "worth", "climate",
+    "chance", "climate",
 )  # fmt: skip
 
 # The study's name is a folder: what every file system can hold, and nothing that leads elsewhere.
@@ -185,6 +186,10 @@ class Study(Section):
     losses: Losses = Field(default_factory=Losses)
     gap_sweep: GapSweep | None = None
     gap_pairs: GapPairs | None = None
+    portfolio: Portfolio | None = Field(
+        default=None, description="weight of each site where several are served by one choice; left out: all alike"
+    )
+    worth: Worth | None = None
     keep: Annotated[list[Annotated[str, Choice(PARTS)]], Length(1, len(PARTS), "parts of the result")] = Field(
         default_factory=lambda: list(PARTS), description="parts of the result to write"
     )

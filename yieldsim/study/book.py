@@ -52,8 +52,8 @@ class Book:
 
 
 def _measures(table: str, rows: Sequence[Row]) -> list[str]:
-    """Return the columns that are energies: all fates of a ledger, light and yield of a sweep."""
-    if table == "ledger":
+    """Return the columns that are energies: all of a ledger and of what is sold, light and yield of a sweep."""
+    if table in ("ledger", "sold"):
         return [name for name in rows[0] if name not in _NAMES] if rows else []
     return list(_SWEPT)
 

@@ -12,7 +12,7 @@ import numpy as np
 
 import yieldsim
 from yieldsim.device.stack import Absorber
-from yieldsim.study import annual, compare, datasets, light, pairs, store, sweep
+from yieldsim.study import annual, compare, datasets, light, pairs, store, sweep, worth
 from yieldsim.study.annual import Ratings
 from yieldsim.study.book import Book
 from yieldsim.study.hourly import (
@@ -37,7 +37,8 @@ def key(plan: StudyPlan, site: SitePlan) -> str:
     """Return the hash of all that a site's share is made from: inputs, absorbers, sweeps, losses, this version."""
     version: str = yieldsim.__version__
     kept = frozenset(plan.keep & {"hourly", "spectra"})
-    parts = (site, plan.absorbers, plan.gap_sweep, plan.gap_pairs, plan.losses)
+    sold = None if plan.worth is None else (plan.worth.energy_price, plan.worth.limited_by, plan.worth.dc_to_grid)
+    parts = (site, plan.absorbers, plan.gap_sweep, plan.gap_pairs, plan.losses, sold)
     return store.fingerprint(version, *parts, kept)
 
 
@@ -111,6 +112,9 @@ def _enter(
         rear = light.rear_parts(sky, mounting, _first_pairs(plan.gap_pairs))
         faces = FacesOfYear(sky, parts_of_light, rear, dust)
         book.add_rows("gap_pairs", pairs.pair_rows(site.name, sky, mounting, faces, plan.gap_pairs, losses))
+    if plan.worth is not None:
+        ratings = Ratings.of(plan.absorbers)
+        book.add_rows("sold", worth.sold_rows(site.name, sky, year, plan.absorbers, ratings, losses, plan.worth))
     paid = light_paid(year, plan.absorbers, sky.month)
     entries = ledger_rows(site.name, mounting.name, plan.absorbers, paid, losses, sky.weather.interval_s)
     book.add_rows("ledger", entries)
@@ -133,7 +137,7 @@ def _tables(plan: StudyPlan, site: SitePlan, books: Mapping[str, Book], calendar
     return found
 
 
-_SUMMED = ("gap_sweep", "gap_pairs", "ledger")
+_SUMMED = ("gap_sweep", "gap_pairs", "ledger", "sold")
 
 
 def _first_pairs(plan: GapPairsPlan) -> list[Absorber]:

@@ -203,6 +203,53 @@ class LossesPlan:
 
 
 @dataclass(frozen=True, slots=True)
+class WorthPlan:
+    """Prices and terms of a plant, all given by the user; amounts in one currency.
+
+    Parameters
+    ----------
+    currency : str
+    limited_by : ``area``, ``dc_power`` or ``grid_power``, what every absorber's plant has the same of
+    size : float, [m2], [kW] rated or [kW] to the grid, as that says
+    energy_price : 1, 12 or 8760 prices [currency/kWh]
+    discount_rate : float [1/year]
+    life_years : int
+    per_w, per_m2 : absorber -> module price [currency/W], [currency/m2]; every absorber is in one of the two
+    fading : absorber -> loss of output from year to year [1/year]
+    area_cost_per_m2, power_cost_per_w, fixed_cost : capital besides modules
+    yearly_cost_per_w, yearly_cost_per_m2, yearly_cost : every year
+    dc_to_grid : float [1], rated power over grid power
+    """
+
+    currency: str
+    limited_by: Literal["area", "dc_power", "grid_power"]
+    size: float
+    energy_price: tuple[float, ...]
+    discount_rate: float
+    life_years: int
+    per_w: Mapping[str, float] = field(default_factory=dict)
+    per_m2: Mapping[str, float] = field(default_factory=dict)
+    fading: Mapping[str, float] = field(default_factory=dict)
+    area_cost_per_m2: float = 0.0
+    power_cost_per_w: float = 0.0
+    fixed_cost: float = 0.0
+    yearly_cost_per_w: float = 0.0
+    yearly_cost_per_m2: float = 0.0
+    yearly_cost: float = 0.0
+    dc_to_grid: float = 1.0
+
+    def module_price_per_m2(self, absorber: str, efficiency: float) -> float:
+        """Return the price of an absorber's modules per area, from its price per watt where that is given."""
+        if absorber in self.per_w:
+            return self.per_w[absorber] * efficiency * 1000.0
+        return self.per_m2[absorber]
+
+    def degradation(self, absorber: str) -> float:
+        """Return the loss of output from year to year [1/year]."""
+        return self.fading.get(absorber, 0.0)
+
+
+@dataclass(frozen=True, slots=True)
 class StudyPlan:
     """A whole study.
 
@@ -217,6 +264,8 @@ class StudyPlan:
     inputs : file as the study names it -> SHA-256, of the files that absorbers are made from
     findings : (absorber, plain words), what was found and done while they were made
     films : junctions made from a material
+    worth : WorthPlan or None
+    portfolio : site -> weight; None = all sites alike
     """
 
     name: str
@@ -232,3 +281,5 @@ class StudyPlan:
     inputs: Mapping[str, str] = field(default_factory=dict)
     findings: tuple[tuple[str, str], ...] = ()
     films: tuple[FilmPlan, ...] = ()
+    worth: WorthPlan | None = None
+    portfolio: Mapping[str, float] | None = None

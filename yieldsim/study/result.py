@@ -33,13 +33,16 @@ TABLES: Mapping[str, str] = {
     "chance": "chance.csv",
     "head_to_head": "head_to_head.csv",
     "worth": "worth.csv",
+    "regret": "regret.csv",
+    "portfolio": "portfolio.csv",
+    "portfolio_gap": "portfolio_gap.csv",
 }
 
 #: Columns that hold text, whatever their cells look like ("1.12" as a gap, "NA" as a name).
 TEXT_COLUMNS = frozenset(
     {
         "site", "mounting", "absorber", "other", "kind", "first", "last", "found", "done", "quality", "measure",
-        "currency", "material",
+        "currency", "material", "worst_site",
     }
 )  # fmt: skip
 
@@ -79,7 +82,10 @@ class StudyResult:
     chance : ``site, mounting, absorber, measure, p90, p50, p10``; P90 is exceeded with 90 % probability
     head_to_head : ``site, mounting, absorber, other, probability, margin_p90, margin_p50, margin_p10``; probability
         that ``absorber`` yields more than ``other``, margins as shares of the other's yield
-    worth : ``site, mounting, absorber, currency, break_even_per_m2, cost_of_energy_per_kwh``
+    worth : ``site, mounting, absorber, currency`` and amounts of a plant with it, see `worth.rows`
+    regret : how far each absorber stays behind the best at each site, see `portfolio.regret_rows`
+    portfolio : what each absorber does over all sites, see `portfolio.portfolio_rows`
+    portfolio_gap : the best single gap for all sites and what it costs each, see `portfolio.gap_rows`
     """
 
     study: str
@@ -102,6 +108,9 @@ class StudyResult:
     chance: pd.DataFrame | None = None
     head_to_head: pd.DataFrame | None = None
     worth: pd.DataFrame | None = None
+    regret: pd.DataFrame | None = None
+    portfolio: pd.DataFrame | None = None
+    portfolio_gap: pd.DataFrame | None = None
 
     def tables(self) -> Iterator[tuple[str, pd.DataFrame]]:
         """Return (file name, table) of every table this result holds."""
