@@ -3,7 +3,8 @@
 import numpy as np
 import pytest
 
-from yieldsim.sky import closing, column
+from yieldsim import reference
+from yieldsim.sky import closing, column, kernel
 from yieldsim.sky.atmosphere import AOD_RANGE
 
 
@@ -64,6 +65,17 @@ def test_cloud_depth_comes_back():
     sky = close(air, *light_of(air, cloud, np.zeros(300)))
     np.testing.assert_allclose(sky.cloud_depth, cloud, rtol=0.01)
     assert np.all(sky.open_share == 0)
+
+
+def test_cloud_over_snow_comes_back():
+    """A bright ground under thin cloud receives more than under none; the search still finds the thicker cloud that
+    gives what was measured, not the thickest of all."""
+    rng = np.random.default_rng(17)
+    cloud = rng.uniform(3.0, 40.0, 200)
+    snow = np.repeat(reference.table("ground_albedo")["fresh_snow"][None], 200, axis=0)
+    air = some_air(200, cos_zenith=rng.uniform(0.4, 0.9, 200), albedo=snow)
+    sky = close(air, *light_of(air, cloud, np.zeros(200)))
+    np.testing.assert_allclose(sky.cloud_depth, cloud, rtol=0.03)
 
 
 def test_broken_cloud_is_split_into_open_and_hidden():
@@ -140,6 +152,55 @@ def test_few_bands_stand_for_all():
     whole = column.transmit(air, cloud).total @ (column.optics().extraterrestrial * column.optics().factor)
     assert np.sqrt(np.mean((part / whole - 1) ** 2)) < 1e-3
     assert np.max(np.abs(part / whole - 1)) < 0.01
+
+
+def plainly_closed(air, dni, dhi):
+    """Beam, diffuse light and cloud depth by plain numpy, halving instead of chords, haze as given."""
+    optics, n = column.optics(), len(dni)
+    top, level = optics.extraterrestrial * optics.factor, air.cos_zenith
+    clear = column.transmit_plain(air, np.zeros(n))
+    direct, light = clear.beam * top, clear.total * top
+    share = np.minimum(1.0, dni / direct.sum(axis=1))
+    few, few_air = closing.few_bands(optics), closing.on_few_bands(air)
+
+    def bright(cloud):
+        return column.transmit_plain(few_air, cloud, few).total @ (few.extraterrestrial * few.factor)
+
+    whole = bright(np.zeros(n))
+    wanted = (dni + dhi / level - share * whole) / np.maximum((1 - share) * whole, 1e-12)
+    low, high = np.zeros(n), np.full(n, kernel.CLOUD_DEPTH_MAX)
+    for _ in range(60):
+        middle = (low + high) / 2
+        dark = bright(middle) / whole < np.maximum(wanted, 1e-3)
+        low, high = np.where(dark, low, middle), np.where(dark, middle, high)
+    depth = np.where((wanted < 1 - kernel.CLOUD_TOLERANCE) & (1 - share > 1e-3) & (dhi > 0), high, 0.0)
+    return share, depth, direct / direct.sum(axis=1, keepdims=True) * dni[:, None], (light - direct) * level[:, None]
+
+
+def test_split_by_plain_numpy():
+    """The compiled search and split against halving and plain numpy: the same cloud to its tolerance, and with that
+    cloud the same light to 1e-9 of the sun."""
+    rng = np.random.default_rng(15)
+    air = some_air(300, cos_zenith=rng.uniform(0.1, 1.0, 300))
+    dni = rng.uniform(0, 900, 300) * rng.choice([0.0, 1.0], 300)
+    dhi = rng.uniform(0, 500, 300)
+    sky = close(air, dni, dhi, haze_hourly=False)
+    share, depth, beam, clear_diffuse = plainly_closed(air, dni, dhi)
+    np.testing.assert_allclose(sky.open_share, share, rtol=1e-9)
+    np.testing.assert_allclose(sky.beam, beam, atol=1e-6)
+    assert np.array_equal(sky.cloud_depth > 0, depth > 0)
+    few, few_air = closing.few_bands(column.optics()), closing.on_few_bands(air)
+    weight = few.extraterrestrial * few.factor
+    found, halved = (column.transmit_plain(few_air, each, few).total @ weight for each in (sky.cloud_depth, depth))
+    np.testing.assert_allclose(found, halved, rtol=kernel.CLOUD_TOLERANCE)
+    assert (depth > 0).sum() > 100
+    top = column.optics().extraterrestrial * column.optics().factor
+    clouded = column.transmit_plain(air, sky.cloud_depth).total * top
+    given = clear_diffuse * share[:, None]
+    rest = np.where(1 - share > 1e-3, np.maximum(dhi - given.sum(axis=1), 0.0), 0.0) / clouded.sum(axis=1)
+    expected = given + clouded * rest[:, None]
+    expected *= (dhi / expected.sum(axis=1))[:, None]
+    np.testing.assert_allclose(sky.diffuse, expected, atol=1e-6)
 
 
 def test_haze_by_plain_newton():

@@ -3,7 +3,6 @@ ones."""
 
 from __future__ import annotations
 
-from collections.abc import Iterator
 from dataclasses import dataclass, replace
 from functools import lru_cache
 
@@ -11,7 +10,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from yieldsim import reference, spectrum
-from yieldsim.sky import cloud, column, kernel
+from yieldsim.sky import column, kernel
 from yieldsim.sky.atmosphere import AOD_RANGE
 from yieldsim.sky.column import Air, Optics
 
@@ -141,10 +140,6 @@ def on_few_bands(air: Air) -> Air:
     return replace(air, albedo=air.albedo[:, _chosen_bands()[0]])
 
 
-def _blocks(hours: NDArray[np.intp]) -> Iterator[NDArray[np.intp]]:
-    return (hours[start : start + BLOCK] for start in range(0, len(hours), BLOCK))
-
-
 def beam_haze(air: Air, earth_sun: Array, dni: Array, constants: Optics) -> Array:
     """Return the haze that lets the measured beam through.
 
@@ -162,13 +157,18 @@ def beam_haze(air: Air, earth_sun: Array, dni: Array, constants: Optics) -> Arra
     -----
     Halley's steps on the logarithm of the beam, which falls and is convex in the haze.
     """
-    top = np.full(kernel.STRIDE, -np.inf)
-    top[: len(constants.factor)] = np.log(constants.extraterrestrial * constants.factor)
     haze = np.empty(len(dni))
     wanted = np.log(np.maximum(dni, 1e-3) / earth_sun)
-    hours, bands, tables, laws, _ = column.kernel_inputs(air, np.zeros(len(dni)), constants)
-    kernel.beam_haze(hours, bands, tables, laws, top, wanted, AOD_RANGE, haze)
+    hours, _ = column.kernel_hours(air, np.zeros(len(dni)))
+    kernel.beam_haze(hours, column.kernel_model(constants), _top(constants), wanted, AOD_RANGE, haze)
     return haze
+
+
+def _top(constants: Optics) -> Array:
+    """Return light above the air as the kernel takes it, 0 beyond the last band, (STRIDE,) [W m-2]."""
+    top = np.zeros(kernel.STRIDE)
+    top[: len(constants.factor)] = constants.extraterrestrial * constants.factor
+    return top
 
 
 def _solve_haze(
@@ -262,36 +262,24 @@ def _split(
     air: Air, earth_sun: Array, dni: Array, dhi: Array, constants: Optics, few: Optics
 ) -> tuple[Array, Array, Array, Array]:
     """Return beam, diffuse, cloud depth and share of open sun of hours whose haze is known."""
-    n, n_band = len(dni), len(constants.factor)
-    beam, diffuse = np.zeros((n, n_band)), np.zeros((n, n_band))
-    open_share, cloud_depth, whole = np.zeros(n), np.zeros(n), np.zeros(n)
-    top = constants.extraterrestrial * constants.factor
-    for part in _blocks(np.flatnonzero(dni > 0)):
-        passed = column.transmit(air.only(part), np.zeros(len(part)), constants)
-        level = earth_sun[part] * air.cos_zenith[part]
-        direct, light = passed.beam * top, passed.total * top
-        clear = direct.sum(axis=1)
-        beam[part] = direct * (dni[part] / clear)[:, None]
-        open_share[part] = np.minimum(1.0, dni[part] / (clear * earth_sun[part]))
-        diffuse[part] = (light - direct) * (level * open_share[part])[:, None]
-        whole[part] = light.sum(axis=1) * level
+    n, model, top = len(dni), column.kernel_model(constants), _top(constants)
+    hours, albedo = column.kernel_hours(air, np.zeros(n))
+    clear_beam = np.empty(n)
+    kernel.beam_sum(hours, model, top, clear_beam)
+    open_share = np.minimum(1.0, dni / (clear_beam * earth_sun))
 
     hidden = np.flatnonzero((1.0 - open_share > _OPEN) & (dhi > 0))
+    depth = np.full(n, np.nan)
     if hidden.size:
-        level = earth_sun[hidden] * air.cos_zenith[hidden]
-        search = cloud.Search(on_few_bands(air.only(hidden)), few)
-        whole[hidden] = np.where(dni[hidden] > 0, whole[hidden], search.clear * level)
-        share, all_light = open_share[hidden], whole[hidden]
-        received = dni[hidden] * air.cos_zenith[hidden] + dhi[hidden] - share * all_light
-        wanted = received / ((1.0 - share) * all_light)
-        depth = search.depth(wanted)
-        for place in _blocks(np.arange(len(hidden))):
-            part = hidden[place]
-            found = column.transmit(air.only(part), depth[place], constants).total * top
-            cloud_depth[part] = depth[place]
-            rest = np.maximum(dhi[part] - diffuse[part].sum(axis=1), 0.0)
-            diffuse[part] += found * (rest / found.sum(axis=1))[:, None]
-    for part in _blocks(np.arange(n)):
-        total = diffuse[part].sum(axis=1)
-        diffuse[part] *= np.divide(dhi[part], total, out=np.zeros(len(part)), where=total > 0)[:, None]
-    return beam, diffuse, cloud_depth, open_share
+        part = air.only(hidden)
+        found = np.empty(len(hidden))
+        received = (dni[hidden] * part.cos_zenith + dhi[hidden]) / (earth_sun[hidden] * part.cos_zenith)
+        inputs = column.kernel_hours(on_few_bands(part), np.zeros(len(hidden)))
+        few_model = column.kernel_model(few)
+        kernel.cloud_depth(*inputs, few_model, len(few.factor), _top(few), received, open_share[hidden], found)
+        depth[hidden] = found
+
+    beam, diffuse = np.zeros((n, len(constants.factor))), np.zeros((n, len(constants.factor)))
+    level = earth_sun * air.cos_zenith
+    kernel.split(hours, albedo, model, top, level, dni, dhi, open_share, depth, beam, diffuse)
+    return beam, diffuse, np.nan_to_num(depth), open_share

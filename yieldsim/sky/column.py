@@ -11,6 +11,7 @@ from numpy.typing import NDArray
 from yieldsim import reference, spectrum
 from yieldsim.sky import growth, kernel
 from yieldsim.sky.growth import mixed_gas_depth, water_depth
+from yieldsim.sky.kernel_layer import Model
 from yieldsim.sky.layer import MOMENTS, Layer, add_layers, four_stream
 from yieldsim.sky.sun import ozone_air_mass, relative_air_mass
 
@@ -258,26 +259,28 @@ def transmit(air: Air, cloud_depth: Array, constants: Optics | None = None) -> T
     (1.2 times that inside the cloud) where a cloud has scattered it.
     """
     constants = optics() if constants is None else constants
-    hours, bands, tables, laws, fixed = kernel_inputs(air, np.asarray(cloud_depth, dtype=np.float64), constants)
-    albedo = air.albedo[:, None] if air.albedo.ndim == 1 else np.ascontiguousarray(air.albedo)
+    hours, albedo = kernel_hours(air, np.asarray(cloud_depth, dtype=np.float64))
     shape = (len(hours), len(constants.factor))
     beam, total = np.empty(shape), np.empty(shape)
-    kernel.transmit(hours, albedo, bands, tables, laws, fixed, beam, total)
+    kernel.transmit(hours, albedo, kernel_model(constants), beam, total)
     return Transmittance(beam, total)
 
 
-def kernel_inputs(
-    air: Air, cloud_depth: Array, constants: Optics
-) -> tuple[Array, Array, tuple[Array, Array], Array, Array]:
-    """Return hours, band constants, tables and laws of gas, and the column's constants as the kernel takes them."""
+def kernel_hours(air: Air, cloud_depth: Array) -> tuple[Array, Array]:
+    """Return hours and ground as the kernel takes them."""
     masses = (relative_air_mass(air.cos_zenith), ozone_air_mass(air.cos_zenith))
     content = (air.pressure / BIRD_PRESSURE, air.water_cm, air.ozone_atm_cm, air.aod500, air.angstrom_exponent)
-    hours = np.stack([*masses, *content, cloud_depth], axis=1)
+    albedo = air.albedo[:, None] if air.albedo.ndim == 1 else air.albedo
+    return np.stack([*masses, *content, cloud_depth], axis=1), np.ascontiguousarray(albedo)
+
+
+def kernel_model(constants: Optics) -> Model:
+    """Return the column's constants as the kernel takes them."""
     bands = np.concatenate([growth.padded(getattr(constants, name)) for name in kernel.BAND_ROWS])
     shares = (*AIR_SHARE, *WATER_SHARE, *HAZE_SHARE)
     fixed = np.array([*shares, CLOUD_ASYMMETRY, RAYLEIGH_MOMENT, _OPEN_SKY, DIFFUSIVITY, CLOUD_PATH])
     laws = np.array([growth.WATER_LAW, growth.MIXED_LAW])
-    return hours, bands, growth.tables(constants.water, constants.mixed_gas), laws, fixed
+    return (bands, *growth.tables(constants.water, constants.mixed_gas), laws, fixed)
 
 
 def transmit_plain(air: Air, cloud_depth: Array, constants: Optics | None = None) -> Transmittance:

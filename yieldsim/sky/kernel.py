@@ -1,414 +1,153 @@
-"""The column's equations compiled: hours outside, bands inside, no library call in the inner loops.
+"""The compiled column over hours: transmittances, haze from the beam, cloud depth, light split onto the bands.
 
-Same equations as `column.transmit_plain` with `layer.four_stream`, which the tests hold this to. Rows of scratch memory
-hold one value a band; each loop over bands is plain arithmetic on such rows, so that the compiler takes four bands at
-once. Intensities are scaled by the roots of their streams' slants, which makes every matrix of a layer symmetric.
+`column` and `closing` say what is computed and call these; the tests hold them to plain numpy.
 """
 
 from __future__ import annotations
 
 import math
-from collections.abc import Callable
-from typing import Any, TypeVar, cast
 
 import numpy as np
-from numba import njit
 from numpy.typing import NDArray
 
-from yieldsim.sky.layer import RESONANCE, STREAMS
+from yieldsim.sky.kernel_layer import (
+    AIR_MASS,
+    AOD,
+    BAND_ROWS,
+    CLOUD,
+    DEPTH,
+    EXPONENT,
+    GAS,
+    LANES,
+    MIXED_NODES,
+    OZONE,
+    PRESSURE,
+    RAYLEIGH,
+    SHAPE,
+    SLOPE,
+    STRAIGHT,
+    STRIDE,
+    TOTAL,
+    WATER,
+    WATER_NODES,
+    Model,
+    Room,
+    back_to_top,
+    compiled,
+    exp,
+    gas,
+    on_ground,
+    start,
+    summed,
+    through,
+    workspace,
+)
+
+__all__ = [
+    "BAND_ROWS",
+    "MIXED_NODES",
+    "STRIDE",
+    "WATER_NODES",
+    "beam_haze",
+    "beam_sum",
+    "cloud_depth",
+    "split",
+    "transmit",
+]
 
 Array = NDArray[np.float64]
 
-_Function = TypeVar("_Function", bound=Callable[..., Any])
+# numba keeps compiled code until the function's own file changes and does not look at the files it calls. So this file
+# must change whenever kernel_layer.py does: a test compares the hash.
+LAYER_SHA256 = "bbf00ef74f9ca49e5c98db9cd75d8e52b3e5543b80065e0504d27d43b88b0af9"
 
-
-def _compiled(function: _Function) -> _Function:
-    """Compile a function when it is first called; kept on disk for the next process until this file changes.
-
-    No fast-math flags: with them, code just compiled and code read from the cache gave other last digits, and two runs
-    other bytes. The loops are vectorised all the same.
-    """
-    return cast(_Function, njit(error_model="numpy", cache=True, nogil=True)(function))
-
-
-_M1, _M2 = STREAMS
-_S1, _S2 = math.sqrt(_M1), math.sqrt(_M2)
-# Division is slow: reciprocals of the streams' slants and of their roots.
-_I1, _I2, _I12, _IS1, _IS2 = 1 / _M1, 1 / _M2, 1 / (_S1 * _S2), 1 / _S1, 1 / _S2
-# Legendre polynomials of order 2 and 3 at the two streams, and products of orders 1 to 3.
-_A2, _B2 = (3 * _M1**2 - 1) / 2, (3 * _M2**2 - 1) / 2
-_A3, _B3 = (5 * _M1**3 - 3 * _M1) / 2, (5 * _M2**3 - 3 * _M2) / 2
-_AA1, _AB1, _BB1 = _M1 * _M1, _M1 * _M2, _M2 * _M2
-_AA2, _AB2, _BB2 = _A2 * _A2, _A2 * _B2, _B2 * _B2
-_AA3, _AB3, _BB3 = _A3 * _A3, _A3 * _B3, _B3 * _B3
-_LOG2E = 1.4426950408889634
-_LN2_HIGH, _LN2_LOW = 0.6931471803691238, 1.9082149292705877e-10  # ln 2 in two parts (Cody & Waite 1980)
-_LOWEST = -700.0  # exp of less is below the smallest number that keeps all digits
-_ROUNDER = 6755399441055744.0  # 1.5 x 2**52: added to a number it leaves the nearest integer in the lowest bits
-_PI = math.pi
-_RESONANCE = RESONANCE
+CLOUD_DEPTH_MAX = 300.0  # the thickest clouds pass about 2 %; beyond it nothing measurable changes
+CLOUD_TOLERANCE = 2e-4  # of transmittance: moves no band over broadband by more than 0.01 %
+_CLOUD_STEPS = 60
+_CHORD = 0.003  # of 1/K: the chord from there ends within the tolerance
 _HAZE_STEPS, _HAZE_SETTLED = 12, 1e-5  # the third power of the last step is left
-_SERIES = 0.02  # below it tanh(x)/x by its series, whose next term is 5e-16
-
-# Distance of rows in flat scratch memory. It is a constant, so that the compiler can see that rows do not overlap.
-STRIDE = 128
-LANES = 4  # loops over bands run to a multiple of it; bands beyond the last are copies of it
-(
-    _SHAPE, _HAZE, _OZONE, _GAS, _DEPTH, _TAU, _W0, _W1, _W2, _W3, _P11, _P12, _P22, _N11, _N12, _N22,
-    _LARGE, _SMALL, _ROOT_L, _ROOT_S, _FADE_L, _FADE_S, _PASSED, _R11, _R12, _R22, _Q11, _Q12, _Q22, _DOWN1, _DOWN2,
-    _UP1, _UP2, _AT_SMALL, _SLOPE, _APART,
-) = (STRIDE * row for row in range(36))  # fmt: skip
-# What the layers joined so far do to light, then what arrives.
-(
-    _SUM_PATH, _SUM_DEPTH, _BEAM, _D1, _D2, _S11, _S12, _S22, _GROUND, _STRAIGHT, _TOTAL,
-) = (STRIDE * row for row in range(36, 47))  # fmt: skip
-_N_SCRATCH = 47
-# Rows of band constants.
-BAND_ROWS = (
-    "rayleigh", "ozone", "gas_scale", "haze_shape", "haze_albedo", "haze_asymmetry", "cloud_albedo", "water",
-    "mixed_gas",
-)  # fmt: skip
-_RAYLEIGH, _OZONE_K, _GAS_SCALE, _HAZE_SHAPE, _HAZE_ALBEDO, _HAZE_G, _CLOUD_ALBEDO, _WATER_K, _MIXED_K = (
-    STRIDE * row for row in range(9)
-)
-# Curves of growth are tabled over the logarithm of the path, alike for all bands, so that an hour's six weights serve
-# every band: 6-point Lagrange, 8e-11 of the depth off at most.
-NODE_STEP = 0.05
-WATER_NODES = math.log(0.003) + NODE_STEP * np.arange(250)  # ln cm, up to 800 cm
-MIXED_NODES = math.log(0.05) + NODE_STEP * np.arange(146)  # up to 74
-_FIRST_WATER, _FIRST_MIXED = float(WATER_NODES[0]), float(MIXED_NODES[0])
-# Columns of an hour, places of the column's constants.
-_AIR_MASS, _OZONE_MASS, _PRESSURE, _WATER, _OZONE_CM, _AOD, _EXPONENT, _CLOUD = range(8)
-_AIR_SHARE, _WATER_SHARE, _HAZE_SHARE = 0, 3, 6
-_CLOUD_G, _RAYLEIGH_MOMENT, _OPEN_SKY, _DIFFUSIVITY, _CLOUD_PATH = range(9, 14)
 
 
-@_compiled
-def _exp(x: float) -> float:
-    """Return exp(x) for x <= 700 to 1e-13 of its value; 2**k is made by setting the exponent's bits."""
-    x = max(x, _LOWEST)
-    shifted = x * _LOG2E + _ROUNDER
-    k = shifted - _ROUNDER
-    r = (x - k * _LN2_HIGH) - k * _LN2_LOW
-    r2 = r * r
-    r4 = r2 * r2
-    # exp(r) = 1 + r + r**2 q(r), q through Chebyshev points of +-ln(2)/2.
-    low = (0.4999999999995507 + r * 0.16666666666662833) + r2 * (0.04166666678634886 + r * 0.008333333344064293)
-    high = (0.0013888839088043719 + r * 0.0001984122477939008) + r2 * (
-        2.4867885070502583e-05 + r * 2.761750255097688e-06
-    )
-    power = (np.float64(shifted).view(np.int64) + np.int64(1023)) << np.int64(52)
-    return ((1.0 + r) + r2 * (low + r4 * high)) * np.int64(power).view(np.float64)
+@compiled
+def _lanes(n_band: int) -> int:
+    return (n_band + LANES - 1) // LANES * LANES
 
 
-@_compiled
-def _start(s: Array, n: int, bands: Array, hour: Array, known_exponent: float) -> None:
-    """Begin a column: haze and the depth of ozone along the beam; nothing above yet."""
-    exponent, aod = hour[_EXPONENT], hour[_AOD]
-    ozone = hour[_OZONE_CM] * hour[_OZONE_MASS]
-    if exponent != known_exponent:
-        for b in range(n):
-            s[_SHAPE + b] = _exp(-exponent * bands[_HAZE_SHAPE + b])
-    for b in range(n):
-        s[_HAZE + b] = aod * s[_SHAPE + b]
-        s[_OZONE + b] = bands[_GAS_SCALE + b] * bands[_OZONE_K + b] * ozone
-        s[_SUM_PATH + b] = 0.0
-        s[_SUM_DEPTH + b] = 0.0
-
-
-@_compiled
-def _around(
-    table: Array, first: float, path: float, weights: Array, spare: Array, bands: Array, row: int, law: Array
-) -> Array:
-    """Return the rows of the six nodes around a path and set their weights; beyond the table the curve itself."""
-    place = (math.log(path) - first) / NODE_STEP if path > 0 else -1.0
-    node = math.floor(place)
-    if 2 <= node <= len(table) // STRIDE - 4:
-        x = place - node
-        a, b, c, d, e, f = x + 2, x + 1, x, x - 1, x - 2, x - 3
-        weights[0], weights[1] = -b * c * d * e * f / 120, a * c * d * e * f / 24
-        weights[2], weights[3] = -a * b * d * e * f / 12, a * b * c * e * f / 12
-        weights[4], weights[5] = -a * b * c * d * f / 24, a * b * c * d * e / 120
-        return table[(node - 2) * STRIDE : (node + 4) * STRIDE]
-    weights[:] = 0.0
-    weights[0] = 1.0
-    for i in range(STRIDE):
-        y = bands[row + i] * path
-        spare[i] = law[0] * y / (1.0 + law[1] * y) ** 0.45
-    return spare
-
-
-@_compiled
-def _gas(
-    s: Array, n: int, bands: Array, tables: tuple[Array, Array], laws: Array, water_path: float, air_path: float,
-    slant: float, room: tuple[Array, Array, Array, Array],
-) -> None:  # fmt: skip
-    """Set the vertical depth of gas in the next layer from its paths down to the layer's foot."""
-    v, w = room[0], room[1]
-    x = _around(tables[0], _FIRST_WATER, water_path, v, room[2], bands, _WATER_K, laws[0])
-    y = _around(tables[1], _FIRST_MIXED, air_path, w, room[3], bands, _MIXED_K, laws[1])
-    v0, v1, v2, v3, v4, v5 = v[0], v[1], v[2], v[3], v[4], v[5]
-    w0, w1, w2, w3, w4, w5 = w[0], w[1], w[2], w[3], w[4], w[5]
-    inverse = 1.0 / slant
-    for b in range(n):
-        c, d, e, f, g = STRIDE + b, 2 * STRIDE + b, 3 * STRIDE + b, 4 * STRIDE + b, 5 * STRIDE + b
-        wet = (v0 * x[b] + v1 * x[c]) + (v2 * x[d] + v3 * x[e]) + (v4 * x[f] + v5 * x[g])
-        even = (w0 * y[b] + w1 * y[c]) + (w2 * y[d] + w3 * y[e]) + (w4 * y[f] + w5 * y[g])
-        path = wet + even
-        s[_GAS + b] = (path - s[_SUM_PATH + b]) * (bands[_GAS_SCALE + b] * inverse)
-        s[_SUM_PATH + b] = path
-
-
-@_compiled
-def _mix(s: Array, n: int, bands: Array, air_depth: float, haze_share: float, cloud: float, fixed: Array) -> None:
-    """Mix a layer, cut its phase function by delta-M: depth, and half the albedo times each moment."""
-    cg, moment, open_sky = fixed[_CLOUD_G], fixed[_RAYLEIGH_MOMENT], fixed[_OPEN_SKY]
-    cg2, cg3, cg4 = cg * cg, cg * cg * cg, cg * cg * cg * cg
-    for b in range(n):
-        air, haze = bands[_RAYLEIGH + b] * air_depth, s[_HAZE + b] * haze_share
-        depth = air + haze + s[_GAS + b] + cloud
-        s[_SUM_DEPTH + b] += depth
-        h, c, g = haze * bands[_HAZE_ALBEDO + b], cloud * bands[_CLOUD_ALBEDO + b], bands[_HAZE_G + b]
-        h1 = h * g
-        h2 = h1 * g
-        h3 = h2 * g
-        peak = h3 * g + c * cg4
-        tau = depth + open_sky - peak
-        inverse = 0.5 / tau
-        s[_TAU + b] = tau
-        s[_W0 + b] = (air + h + open_sky + c - peak) * inverse
-        s[_W1 + b] = 3.0 * (h1 + c * cg - peak) * inverse
-        s[_W2 + b] = 5.0 * (h2 + c * cg2 + air * moment - peak) * inverse
-        s[_W3 + b] = 7.0 * (h3 + c * cg3 - peak) * inverse
-
-
-@_compiled
-def _modes(s: Array, n: int, into: float) -> None:
-    """Set the layer's matrices for sum (P) and difference (N) of both hemispheres, the roots of N P, what fades."""
-    for b in range(n):
-        w0, w1, w2, w3 = s[_W0 + b], s[_W1 + b], s[_W2 + b], s[_W3 + b]
-        p11, p12, p22 = (w0 + w2 * _AA2 - 1.0) * _I1, (w0 + w2 * _AB2) * _I12, (w0 + w2 * _BB2 - 1.0) * _I2
-        n11, n22 = (w1 * _AA1 + w3 * _AA3 - 1.0) * _I1, (w1 * _BB1 + w3 * _BB3 - 1.0) * _I2
-        n12 = (w1 * _AB1 + w3 * _AB3) * _I12
-        half = ((n11 * p11 + n12 * p12) + (n12 * p12 + n22 * p22)) * 0.5
-        determinant = (n11 * n22 - n12 * n12) * (p11 * p22 - p12 * p12)
-        large = half + math.sqrt(max(half * half - determinant, 1e-30))
-        small = max(determinant / large, 0.0)
-        s[_LARGE + b], s[_SMALL + b] = large, small
-        s[_ROOT_L + b], s[_ROOT_S + b] = math.sqrt(large), math.sqrt(small)
-        s[_P11 + b], s[_P12 + b], s[_P22 + b] = p11, p12, p22
-        s[_N11 + b], s[_N12 + b], s[_N22 + b] = n11, n12, n22
-    # Short loops on purpose: a long one leaves the processor nothing to do while it waits for a division.
-    for b in range(n):
-        s[_FADE_L + b] = _exp(-s[_ROOT_L + b] * s[_TAU + b])
-    for b in range(n):
-        s[_FADE_S + b] = _exp(-s[_ROOT_S + b] * s[_TAU + b])
-    for b in range(n):
-        s[_PASSED + b] = _exp(-into * s[_TAU + b])
-
-
-@_compiled
-def _solve(s: Array, n: int, mu: float) -> None:
-    """Set what the layer throws back (R) and lets through (Q) of diffuse light, and makes of the beam."""
-    into, square = 1.0 / mu, 1.0 / (mu * mu)
-    l1, l2, l3 = -mu, (3 * mu * mu - 1) / 2, -(5 * mu * mu * mu - 3 * mu) / 2
-    ka, kb, ea, eb = into / _PI * _IS1, into / _PI * _IS2, l2 * _A2, l2 * _B2
-    oa1, oa3, ob1, ob3 = l1 * _M1, l3 * _A3, l1 * _M2, l3 * _B3
-    least = _RESONANCE * square
-    for b in range(n):
-        large, small, root_l, root_s = s[_LARGE + b], s[_SMALL + b], s[_ROOT_L + b], s[_ROOT_S + b]
-        fade_l, fade_s, half = s[_FADE_L + b], s[_FADE_S + b], 0.5 * s[_TAU + b]
-        # tanh(k tau/2)/k at both roots; divisions are shared throughout, since they are slow.
-        below_l, below_s, between = (1.0 + fade_l) * root_l, (1.0 + fade_s) * max(root_s, 1e-30), large - small
-        shared = 1.0 / (below_l * below_s * between)
-        inverse = shared * between
-        x = root_s * half
-        x = x * x
-        series = (1.0 - x * (1 / 3) * (1.0 - x * 0.4 * (1.0 - x * (17.0 / 42.0)))) * half
-        at_large = (1.0 - fade_l) * below_s * inverse
-        at_small = (1.0 - fade_s) * below_l * inverse if x > _SERIES * _SERIES else series
-        s[_AT_SMALL + b], s[_SLOPE + b] = at_small, (at_large - at_small) * (shared * below_l * below_s)
-    for b in range(n):
-        p11, p12, p22, n11, n12, n22 = s[_P11 + b], s[_P12 + b], s[_P22 + b], s[_N11 + b], s[_N12 + b], s[_N22 + b]
-        large, small = s[_LARGE + b], s[_SMALL + b]
-        at_small, slope = s[_AT_SMALL + b], s[_SLOPE + b]
-        g11, g12, g21, g22 = n11 * p11 + n12 * p12, n11 * p12 + n12 * p22, n12 * p11 + n22 * p12, n12 * p12 + n22 * p22
-        t11, t12, t21, t22 = (
-            at_small + slope * (g11 - small),
-            slope * g12,
-            slope * g21,
-            at_small + slope * (g22 - small),
-        )
-        x11, x12, x22 = 1.0 - (p11 * t11 + p12 * t21), p11 * t12 + p12 * t22, 1.0 - (p12 * t12 + p22 * t22)
-        y11, y12, y22 = 1.0 - (n11 * t11 + n12 * t12), n11 * t21 + n12 * t22, 1.0 - (n12 * t21 + n22 * t22)
-        even, odd = x11 * x22 - x12 * x12, y11 * y22 - y12 * y12
-        apart_l, apart_s = square - large, square - small
-        apart_l = least if abs(apart_l) < least else apart_l
-        apart_s = least if abs(apart_s) < least else apart_s
-        apart, both = apart_l * apart_s, even * odd
-        shared = 1.0 / (both * apart)
-        apart, inverse = shared * both, shared * apart
-        even, odd = inverse * odd, inverse * even
-        # (1 + X)(1 - X)^-1 = 2 (1 - X)^-1 - 1
-        e11, e12, e22, o11, o12, o22 = x22 * even, x12 * even, x11 * even, y22 * odd, y12 * odd, y11 * odd
-        r11, r12, r22 = e11 - o11, e12 - o12, e22 - o22
-        q11, q12, q22 = e11 + o11 - 1.0, e12 + o12, e22 + o22 - 1.0
-        s[_R11 + b], s[_R12 + b], s[_R22 + b] = r11, r12, r22
-        s[_Q11 + b], s[_Q12 + b], s[_Q22 + b] = q11, q12, q22
-        s[_APART + b] = apart
-    # The beam's source and the particular solution that goes with it.
-    for b in range(n):
-        p11, p12, p22, n11, n12, n22 = s[_P11 + b], s[_P12 + b], s[_P22 + b], s[_N11 + b], s[_N12 + b], s[_N22 + b]
-        r11, r12, r22, q11, q12, q22 = s[_R11 + b], s[_R12 + b], s[_R22 + b], s[_Q11 + b], s[_Q12 + b], s[_Q22 + b]
-        g11, g12, g21, g22 = n11 * p11 + n12 * p12, n11 * p12 + n12 * p22, n12 * p11 + n22 * p12, n12 * p12 + n22 * p22
-        apart = s[_APART + b]
-        w0, w1, w2, w3 = s[_W0 + b], s[_W1 + b], s[_W2 + b], s[_W3 + b]
-        sum_a, sum_b = ka * (w0 + w2 * ea), kb * (w0 + w2 * eb)
-        right_a = n11 * sum_a + n12 * sum_b + ka * (w1 * oa1 + w3 * oa3) * into
-        right_b = n12 * sum_a + n22 * sum_b + kb * (w1 * ob1 + w3 * ob3) * into
-        both_a = ((square - g22) * right_a + g12 * right_b) * apart
-        both_b = (g21 * right_a + (square - g11) * right_b) * apart
-        gap_a, gap_b = (p11 * both_a + p12 * both_b + sum_a) * mu, (p12 * both_a + p22 * both_b + sum_b) * mu
-        high_a, high_b, low_a, low_b = both_a + gap_a, both_b + gap_b, both_a - gap_a, both_b - gap_b
-        high_a, high_b, low_a, low_b = high_a * 0.5, high_b * 0.5, low_a * 0.5, low_b * 0.5
-        passed = s[_PASSED + b]
-        lit_a, lit_b = high_a * passed, high_b * passed
-        s[_DOWN1 + b] = low_a * passed - (q11 * low_a + q12 * low_b) - (r11 * lit_a + r12 * lit_b)
-        s[_DOWN2 + b] = low_b * passed - (q12 * low_a + q22 * low_b) - (r12 * lit_a + r22 * lit_b)
-        s[_UP1 + b] = high_a - (r11 * low_a + r12 * low_b) - (q11 * lit_a + q12 * lit_b)
-        s[_UP2 + b] = high_b - (r12 * low_a + r22 * low_b) - (q12 * lit_a + q22 * lit_b)
-
-
-@_compiled
-def _first(s: Array, n: int) -> None:
-    for b in range(n):
-        s[_D1 + b], s[_D2 + b], s[_BEAM + b] = s[_DOWN1 + b], s[_DOWN2 + b], s[_PASSED + b]
-        s[_S11 + b], s[_S12 + b], s[_S22 + b] = s[_R11 + b], s[_R12 + b], s[_R22 + b]
-
-
-@_compiled
-def _add(s: Array, n: int) -> None:
-    """Add the layer below those joined so far."""
-    for b in range(n):
-        r11, r12, r22, q11, q12, q22 = s[_R11 + b], s[_R12 + b], s[_R22 + b], s[_Q11 + b], s[_Q12 + b], s[_Q22 + b]
-        s11, s12, s22, beam = s[_S11 + b], s[_S12 + b], s[_S22 + b], s[_BEAM + b]
-        up_a, up_b = s[_UP1 + b], s[_UP2 + b]
-        z11, z12, z21, z22 = s11 * r11 + s12 * r12, s11 * r12 + s12 * r22, s12 * r11 + s22 * r12, s12 * r12 + s22 * r22
-        d = 1.0 / ((1.0 - z11) * (1.0 - z22) - z12 * z21)
-        n11, n12, n21, n22 = (1.0 - z22) * d, z12 * d, z21 * d, (1.0 - z11) * d
-        in_a = s[_D1 + b] + beam * (s11 * up_a + s12 * up_b)
-        in_b = s[_D2 + b] + beam * (s12 * up_a + s22 * up_b)
-        met_a, met_b = n11 * in_a + n12 * in_b, n21 * in_a + n22 * in_b
-        s[_D1 + b] = q11 * met_a + q12 * met_b + beam * s[_DOWN1 + b]
-        s[_D2 + b] = q12 * met_a + q22 * met_b + beam * s[_DOWN2 + b]
-        # R' = R + Q (1 - S R)^-1 S Q
-        j11, j12, j22 = n11 * s11 + n12 * s12, n11 * s12 + n12 * s22, n21 * s12 + n22 * s22
-        i11, i12, i21, i22 = j11 * q11 + j12 * q12, j11 * q12 + j12 * q22, j12 * q11 + j22 * q12, j12 * q12 + j22 * q22
-        s[_S11 + b], s[_S12 + b] = r11 + q11 * i11 + q12 * i21, r12 + q11 * i12 + q12 * i22
-        s[_S22 + b] = r22 + q12 * i12 + q22 * i22
-        s[_BEAM + b] = beam * s[_PASSED + b]
-
-
-@_compiled
-def _on_ground(s: Array, n: int, albedo: Array, air_mass: float) -> None:
-    """Set the transmittance of all light and of the beam, the ground's throw to and fro in it."""
-    for b in range(n):
-        s[_GROUND + b] = albedo[min(b, len(albedo) - 1)]
-    for b in range(n):
-        back = _M1 * s[_S11 + b] + 2.0 * _S1 * _S2 * s[_S12 + b] + _M2 * s[_S22 + b]
-        down = s[_BEAM + b] + _PI * (_S1 * s[_D1 + b] + _S2 * s[_D2 + b])
-        straight = _exp(-(s[_SUM_DEPTH + b] * air_mass + s[_OZONE + b]))
-        s[_STRAIGHT + b] = straight
-        s[_TOTAL + b] = max(down * _exp(-s[_OZONE + b]) / (1.0 - s[_GROUND + b] * back), straight)
-
-
-@_compiled
-def transmit(
-    hours: Array, albedo: Array, bands: Array, tables: tuple[Array, Array], laws: Array, fixed: Array,
-    beam: Array, total: Array,
-) -> None:  # fmt: skip
+@compiled
+def transmit(hours: Array, albedo: Array, model: Model, beam: Array, total: Array) -> None:
     """Fill the transmittances of each hour.
 
     Parameters
     ----------
-    hours : (n, 8) array, the `HOUR` columns: air mass, ozone air mass, pressure ratio, water [cm], ozone [atm-cm], AOD
-        at 500 nm, Angstrom exponent, cloud depth
+    hours : (n, 8) array, air mass, ozone air mass, pressure ratio, water [cm], ozone [atm-cm], AOD at 500 nm, Angstrom
+        exponent, cloud depth
     albedo : (n, n_band) or (n, 1) array [1]
-    bands : (9 x STRIDE,) array, the `BAND_ROWS` one after the other, each padded to STRIDE with its last value
-    tables : two flat arrays, depth of vapour and of mixed gas in each band at the nodes' paths, a row of STRIDE a node
-    laws : (2, 2) array, the factors in their curves of growth
-    fixed : (14,) array, shares of air, water and haze by layer, then the column's other constants
+    model : `Model`
     beam, total : (n, n_band) arrays to fill [1]
     """
-    s = np.zeros(_N_SCRATCH * STRIDE)
-    room = np.empty(6), np.empty(6), np.zeros(6 * STRIDE), np.zeros(6 * STRIDE)
+    s, room = workspace()
     n_band = beam.shape[1]
-    n = (n_band + LANES - 1) // LANES * LANES
-    known_exponent = math.nan
+    n, known_exponent = _lanes(n_band), math.nan
     for h in range(hours.shape[0]):
         hour = hours[h]
-        air_mass, cloud = hour[_AIR_MASS], hour[_CLOUD]
-        _start(s, n, bands, hour, known_exponent)
-        known_exponent = hour[_EXPONENT]
-        # `column._slants`
-        straight = math.exp(-(1.0 - fixed[_CLOUD_G] * fixed[_CLOUD_G]) * cloud * air_mass)
-        turned = (1.0 - straight) * fixed[_DIFFUSIVITY]
-        water_path, air_path = 0.0, 0.0
-        for i in range(3):
-            slant = air_mass
-            if i > 0:
-                slant = straight * air_mass + (turned * fixed[_CLOUD_PATH] if i == 1 else turned)
-            air = hour[_PRESSURE] * fixed[_AIR_SHARE + i]
-            water_path += hour[_WATER] * fixed[_WATER_SHARE + i] * slant
-            air_path += air * slant
-            _gas(s, n, bands, tables, laws, water_path, air_path, slant, room)
-            _mix(s, n, bands, air, fixed[_HAZE_SHARE + i], cloud if i == 1 else 0.0, fixed)
-            _modes(s, n, air_mass)
-            _solve(s, n, 1.0 / air_mass)
-            if i > 0:
-                _add(s, n)
-            else:
-                _first(s, n)
-        _on_ground(s, n, albedo[h], air_mass)
+        start(s, n, model, hour, known_exponent)
+        known_exponent = hour[EXPONENT]
+        through(s, n, model, hour, hour[CLOUD], 0, room)
+        on_ground(s, n, albedo[h], hour[AIR_MASS])
         for b in range(n_band):
-            beam[h, b], total[h, b] = s[_STRAIGHT + b], s[_TOTAL + b]
+            beam[h, b], total[h, b] = s[STRAIGHT + b], s[TOTAL + b]
 
 
-@_compiled
-def beam_haze(
-    hours: Array, bands: Array, tables: tuple[Array, Array], laws: Array, log_top: Array, wanted: Array,
-    bounds: tuple[float, float], haze: Array,
-) -> None:  # fmt: skip
-    """Set the haze with which each hour's beam has the wanted sum; Halley's steps on the logarithm of the beam.
+@compiled
+def _beam(s: Array, n: int, model: Model, log_top: Array, hour: Array, room: Room) -> None:
+    """Set the logarithm of the hazeless beam and haze's depth along it per AOD."""
+    bands, air_mass = model[0], hour[AIR_MASS]
+    start(s, n, model, hour, math.nan)
+    gas(s, n, model, hour[WATER] * air_mass, hour[PRESSURE] * air_mass, 1.0, room)
+    for b in range(n):
+        air = bands[RAYLEIGH + b] * (hour[PRESSURE] * air_mass)
+        s[DEPTH + b] = log_top[b] - (s[GAS + b] + air + s[OZONE + b])
+        s[SLOPE + b] = s[SHAPE + b] * air_mass
+
+
+@compiled
+def beam_sum(hours: Array, model: Model, top: Array, found: Array) -> None:
+    """Fill the sum of each hour's clear beam (n,) [W m-2], at the mean earth-sun distance; top as in `split`."""
+    s, room = workspace()
+    log_top = np.log(top)
+    ones = np.ones(STRIDE)
+    for h in range(hours.shape[0]):
+        _beam(s, STRIDE, model, log_top, hours[h], room)
+        for b in range(STRIDE):
+            s[TOTAL + b] = exp(s[DEPTH + b] - hours[h, AOD] * s[SLOPE + b])
+        found[h] = summed(s, STRIDE, TOTAL, ones)
+
+
+@compiled
+def beam_haze(hours: Array, model: Model, top: Array, wanted: Array, bounds: tuple[float, float], haze: Array) -> None:
+    """Fill the haze with which each hour's beam has the wanted sum; Halley's steps on the logarithm of the beam.
 
     Parameters
     ----------
-    hours, bands, tables, laws : as in `transmit`; the AOD of the hours is where the search starts
-    log_top : (STRIDE,) array [ln(W m-2)], light above the air; -inf beyond the last band
-    wanted : (n,) array [ln(W m-2)], over the earth-sun distance
+    hours, model : as in `transmit`; the AOD of the hours is where the search starts
+    top : as in `split`
+    wanted : (n,) array [ln(W m-2)], at the mean earth-sun distance
     bounds : two floats [1], of the haze
     haze : (n,) array [1] to fill
     """
-    s = np.zeros(_N_SCRATCH * STRIDE)
-    room = np.empty(6), np.empty(6), np.zeros(6 * STRIDE), np.zeros(6 * STRIDE)
-    n = STRIDE
+    s, room = workspace()
+    log_top = np.log(top)
     for h in range(hours.shape[0]):
-        hour = hours[h]
-        air_mass, aod = hour[_AIR_MASS], hour[_AOD]
-        _start(s, n, bands, hour, math.nan)
-        _gas(s, n, bands, tables, laws, hour[_WATER] * air_mass, hour[_PRESSURE] * air_mass, 1.0, room)
-        for b in range(n):
-            air = bands[_RAYLEIGH + b] * (hour[_PRESSURE] * air_mass)
-            s[_DEPTH + b] = log_top[b] - (s[_GAS + b] + air + s[_OZONE + b])
-            s[_SHAPE + b] = s[_SHAPE + b] * air_mass
+        aod = hours[h, AOD]
+        _beam(s, STRIDE, model, log_top, hours[h], room)
         for _ in range(_HAZE_STEPS):
-            for b in range(n):
-                s[_TOTAL + b] = _exp(s[_DEPTH + b] - aod * s[_SHAPE + b])
+            for b in range(STRIDE):
+                s[TOTAL + b] = exp(s[DEPTH + b] - aod * s[SLOPE + b])
             light, fall, bend = 0.0, 0.0, 0.0
-            for b in range(n):
-                light += s[_TOTAL + b]
-                fall += s[_TOTAL + b] * s[_SHAPE + b]
-                bend += s[_TOTAL + b] * s[_SHAPE + b] * s[_SHAPE + b]
+            for b in range(STRIDE):
+                light += s[TOTAL + b]
+                fall += s[TOTAL + b] * s[SLOPE + b]
+                bend += s[TOTAL + b] * s[SLOPE + b] * s[SLOPE + b]
             excess, fall = math.log(light) - wanted[h], max(fall / light, 1e-6)
             curvature = fall * fall - 0.5 * excess * (bend / light - fall * fall)
             step = excess * fall / max(curvature, 0.5 * fall * fall)
@@ -417,3 +156,130 @@ def beam_haze(
             if abs(aod - moved) < _HAZE_SETTLED:
                 break
         haze[h] = aod
+
+
+@compiled
+def cloud_depth(
+    hours: Array, albedo: Array, model: Model, n_band: int, top: Array, received: Array, open_share: Array,
+    depth: Array,
+) -> None:  # fmt: skip
+    """Fill the cloud depth over the hidden part of each hour.
+
+    Parameters
+    ----------
+    hours, albedo, model : as in `transmit`, of bands that stand for all
+    n_band : int, how many
+    top : as in `split`, the bands' weights in it
+    received : (n,) array [W m-2], all light on the horizontal over the sine of the sun's height, at the mean distance
+    open_share : (n,) array [1], below 1
+    depth : (n,) array [1] to fill; 0 where no cloud is needed
+
+    Notes
+    -----
+    With K the cloud's transmittance, 1/K - 1 is nearly linear in the depth: steps follow the chord through the last two
+    points inside a bracket that always holds the root, halved where a step leaves it, so the search cannot fail.
+    """
+    s, room = workspace()
+    n, known_exponent = _lanes(n_band), math.nan
+    for h in range(hours.shape[0]):
+        hour = hours[h]
+        start(s, n, model, hour, known_exponent)
+        known_exponent = hour[EXPONENT]
+        through(s, n, model, hour, 0.0, 0, room)
+        on_ground(s, n, albedo[h], hour[AIR_MASS])
+        clear, share = summed(s, n, TOTAL, top), open_share[h]
+        passed = (received[h] - share * clear) / ((1.0 - share) * clear)
+        target = 1.0 / max(passed, 1e-3) - 1.0
+        depth[h] = 0.0
+        if passed >= 1.0 - CLOUD_TOLERANCE:
+            continue
+        ground = 0.0
+        for b in range(albedo.shape[1]):
+            ground += albedo[h, b] / albedo.shape[1]
+        low, high, before, miss_before = 0.0, CLOUD_DEPTH_MAX, 0.0, -target
+        # First guess: a line through skies of all kinds, 30 % off where the sun is low.
+        now = target / max(0.2 - 0.12 / hour[AIR_MASS] - ground * (0.2 - 0.1 / hour[AIR_MASS]), 0.01)
+        now = min(now, CLOUD_DEPTH_MAX)
+        for step in range(_CLOUD_STEPS):
+            back_to_top(s, n)
+            through(s, n, model, hour, now, 1, room)
+            on_ground(s, n, albedo[h], hour[AIR_MASS])
+            miss = clear / summed(s, n, TOTAL, top) - 1.0 - target
+            if miss > 0:
+                high = now
+            else:
+                low = now
+            trial = now - miss * (now - before) / (miss - miss_before) if miss != miss_before else math.nan
+            trial = min(trial, CLOUD_DEPTH_MAX)
+            if not low <= trial <= high:
+                trial = 0.5 * (low + high)
+            settled = abs(miss) <= (_CHORD if step > 0 else CLOUD_TOLERANCE) * (1.0 + target)
+            at_end = now >= CLOUD_DEPTH_MAX and miss <= 0
+            before, miss_before, now = now, miss, trial
+            if settled or at_end:
+                break
+        depth[h] = now
+
+
+@compiled
+def _sunny(s: Array, n: int, top: Array, dni: float, share: float, beam: Array, diffuse: Array) -> float:
+    """Set the light of the open part of an hour from the clear column in s; return its diffuse sum."""
+    direct_sum = summed(s, n, STRAIGHT, top)
+    scale = dni / direct_sum
+    for b in range(len(beam)):
+        direct = s[STRAIGHT + b] * top[b]
+        beam[b], diffuse[b] = direct * scale, (s[TOTAL + b] * top[b] - direct) * share
+    return float((summed(s, n, TOTAL, top) - direct_sum) * share)
+
+
+@compiled
+def _scaled_to(diffuse: Array, dhi: float) -> None:
+    total = 0.0
+    for b in range(len(diffuse)):
+        total += diffuse[b]
+    scale = dhi / total if total > 0 else 0.0
+    for b in range(len(diffuse)):
+        diffuse[b] *= scale
+
+
+@compiled
+def split(
+    hours: Array, albedo: Array, model: Model, top: Array, level: Array, dni: Array, dhi: Array, open_share: Array,
+    depth: Array, beam: Array, diffuse: Array,
+) -> None:  # fmt: skip
+    """Fill beam and diffuse light of each band, their sums the measured ones.
+
+    Parameters
+    ----------
+    hours, albedo, model : as in `transmit`
+    top : (STRIDE,) array [W m-2], light above the air, 0 beyond the last band
+    level : (n,) array [1], what turns transmittance times top into light on the horizontal
+    dni, dhi : (n,) array [W m-2]
+    open_share : (n,) array [1]
+    depth : (n,) array [1], of the cloud over the rest; NaN = none
+    beam, diffuse : (n, n_band) arrays of zeros to fill [W m-2], on a plane facing the sun and on the horizontal
+    """
+    s, room = workspace()
+    n, known_exponent = _lanes(beam.shape[1]), math.nan
+    for h in range(hours.shape[0]):
+        if not (dni[h] > 0 or dhi[h] > 0):
+            continue
+        hour = hours[h]
+        start(s, n, model, hour, known_exponent)
+        known_exponent = hour[EXPONENT]
+        given, first, cloud = 0.0, 0, depth[h]
+        if dni[h] > 0 or not cloud > 0:
+            through(s, n, model, hour, 0.0, 0, room)
+            on_ground(s, n, albedo[h], hour[AIR_MASS])
+            given = _sunny(s, n, top, dni[h], level[h] * open_share[h], beam[h], diffuse[h])
+            first = 1
+        if cloud > 0:
+            if first == 1:
+                back_to_top(s, n)
+            through(s, n, model, hour, cloud, first, room)
+            on_ground(s, n, albedo[h], hour[AIR_MASS])
+        if not math.isnan(cloud):
+            scale = max(dhi[h] - given, 0.0) / summed(s, n, TOTAL, top)
+            for b in range(beam.shape[1]):
+                diffuse[h, b] += s[TOTAL + b] * top[b] * scale
+        _scaled_to(diffuse[h], dhi[h])
