@@ -13,6 +13,7 @@ from yieldsim import reference, spectrum
 from yieldsim.sky import column, kernel
 from yieldsim.sky.atmosphere import AOD_RANGE
 from yieldsim.sky.column import Air, Optics
+from yieldsim.sky.kernel_layer import STRIDE
 
 Array = NDArray[np.float64]
 Mask = NDArray[np.bool_]
@@ -166,7 +167,7 @@ def beam_haze(air: Air, earth_sun: Array, dni: Array, constants: Optics) -> Arra
 
 def _top(constants: Optics) -> Array:
     """Return light above the air as the kernel takes it, 0 beyond the last band, (STRIDE,) [W m-2]."""
-    top = np.zeros(kernel.STRIDE)
+    top = np.zeros(STRIDE)
     top[: len(constants.factor)] = constants.extraterrestrial * constants.factor
     return top
 
@@ -262,24 +263,11 @@ def _split(
     air: Air, earth_sun: Array, dni: Array, dhi: Array, constants: Optics, few: Optics
 ) -> tuple[Array, Array, Array, Array]:
     """Return beam, diffuse, cloud depth and share of open sun of hours whose haze is known."""
-    n, model, top = len(dni), column.kernel_model(constants), _top(constants)
+    n, n_band = len(dni), len(constants.factor)
     hours, albedo = column.kernel_hours(air, np.zeros(n))
-    clear_beam = np.empty(n)
-    kernel.beam_sum(hours, model, top, clear_beam)
-    open_share = np.minimum(1.0, dni / (clear_beam * earth_sun))
-
-    hidden = np.flatnonzero((1.0 - open_share > _OPEN) & (dhi > 0))
-    depth = np.full(n, np.nan)
-    if hidden.size:
-        part = air.only(hidden)
-        found = np.empty(len(hidden))
-        received = (dni[hidden] * part.cos_zenith + dhi[hidden]) / (earth_sun[hidden] * part.cos_zenith)
-        inputs = column.kernel_hours(on_few_bands(part), np.zeros(len(hidden)))
-        few_model = column.kernel_model(few)
-        kernel.cloud_depth(*inputs, few_model, len(few.factor), _top(few), received, open_share[hidden], found)
-        depth[hidden] = found
-
-    beam, diffuse = np.zeros((n, len(constants.factor))), np.zeros((n, len(constants.factor)))
-    level = earth_sun * air.cos_zenith
-    kernel.split(hours, albedo, model, top, level, dni, dhi, open_share, depth, beam, diffuse)
-    return beam, diffuse, np.nan_to_num(depth), open_share
+    models = column.kernel_model(constants), column.kernel_model(few)
+    light = np.stack([dni, dhi, earth_sun, air.cos_zenith], axis=1)
+    found, beam, diffuse = np.zeros((n, 2)), np.zeros((n, n_band)), np.zeros((n, n_band))
+    tops, chosen = (_top(constants), _top(few)), _chosen_bands()[0]
+    kernel.split(hours, albedo, models, tops, chosen, light, _OPEN, found, beam, diffuse)
+    return beam, diffuse, found[:, 1], found[:, 0]

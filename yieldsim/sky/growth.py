@@ -7,7 +7,7 @@ from functools import lru_cache
 import numpy as np
 from numpy.typing import NDArray
 
-from yieldsim.sky import kernel
+from yieldsim.sky import kernel_layer
 
 Array = NDArray[np.float64]
 
@@ -31,7 +31,7 @@ def _depth(law: tuple[float, float], product: Array) -> Array:
 
 def padded(values: Array) -> Array:
     """Return the constants of all bands on a row of the kernel's, its end filled with the last, (STRIDE,)."""
-    row = np.full(kernel.STRIDE, values[-1])
+    row = np.full(kernel_layer.STRIDE, values[-1])
     row[: len(values)] = values
     return row
 
@@ -50,6 +50,6 @@ def tables(water: Array, mixed_gas: Array) -> tuple[Array, Array]:
 def _tables(water: bytes, mixed_gas: bytes) -> tuple[Array, Array]:
     wet, mixed = padded(np.frombuffer(water)), padded(np.frombuffer(mixed_gas))
     return (
-        water_depth(wet, np.exp(kernel.WATER_NODES)[:, None]).ravel(),
-        mixed_gas_depth(mixed, np.exp(kernel.MIXED_NODES)[:, None]).ravel(),
+        water_depth(wet, np.exp(kernel_layer.WATER_NODES)[:, None]).ravel(),
+        mixed_gas_depth(mixed, np.exp(kernel_layer.MIXED_NODES)[:, None]).ravel(),
     )

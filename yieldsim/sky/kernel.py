@@ -13,13 +13,11 @@ from numpy.typing import NDArray
 from yieldsim.sky.kernel_layer import (
     AIR_MASS,
     AOD,
-    BAND_ROWS,
     CLOUD,
     DEPTH,
     EXPONENT,
     GAS,
     LANES,
-    MIXED_NODES,
     OZONE,
     PRESSURE,
     RAYLEIGH,
@@ -29,7 +27,6 @@ from yieldsim.sky.kernel_layer import (
     STRIDE,
     TOTAL,
     WATER,
-    WATER_NODES,
     Model,
     Room,
     back_to_top,
@@ -40,26 +37,15 @@ from yieldsim.sky.kernel_layer import (
     start,
     summed,
     through,
+    top_of_few,
     workspace,
 )
-
-__all__ = [
-    "BAND_ROWS",
-    "MIXED_NODES",
-    "STRIDE",
-    "WATER_NODES",
-    "beam_haze",
-    "beam_sum",
-    "cloud_depth",
-    "split",
-    "transmit",
-]
 
 Array = NDArray[np.float64]
 
 # numba keeps compiled code until the function's own file changes and does not look at the files it calls. So this file
 # must change whenever kernel_layer.py does: a test compares the hash.
-LAYER_SHA256 = "bbf00ef74f9ca49e5c98db9cd75d8e52b3e5543b80065e0504d27d43b88b0af9"
+LAYER_SHA256 = "6671207546866fa80334f62d4cb0b38e4902ccfa9a811bf80fdab143582d9987"
 
 CLOUD_DEPTH_MAX = 300.0  # the thickest clouds pass about 2 %; beyond it nothing measurable changes
 CLOUD_TOLERANCE = 2e-4  # of transmittance: moves no band over broadband by more than 0.01 %
@@ -111,19 +97,6 @@ def _beam(s: Array, n: int, model: Model, log_top: Array, hour: Array, room: Roo
 
 
 @compiled
-def beam_sum(hours: Array, model: Model, top: Array, found: Array) -> None:
-    """Fill the sum of each hour's clear beam (n,) [W m-2], at the mean earth-sun distance; top as in `split`."""
-    s, room = workspace()
-    log_top = np.log(top)
-    ones = np.ones(STRIDE)
-    for h in range(hours.shape[0]):
-        _beam(s, STRIDE, model, log_top, hours[h], room)
-        for b in range(STRIDE):
-            s[TOTAL + b] = exp(s[DEPTH + b] - hours[h, AOD] * s[SLOPE + b])
-        found[h] = summed(s, STRIDE, TOTAL, ones)
-
-
-@compiled
 def beam_haze(hours: Array, model: Model, top: Array, wanted: Array, bounds: tuple[float, float], haze: Array) -> None:
     """Fill the haze with which each hour's beam has the wanted sum; Halley's steps on the logarithm of the beam.
 
@@ -159,77 +132,40 @@ def beam_haze(hours: Array, model: Model, top: Array, wanted: Array, bounds: tup
 
 
 @compiled
-def cloud_depth(
-    hours: Array, albedo: Array, model: Model, n_band: int, top: Array, received: Array, open_share: Array,
-    depth: Array,
-) -> None:  # fmt: skip
-    """Fill the cloud depth over the hidden part of each hour.
+def _cloud_depth(
+    s: Array, n: int, model: Model, top: Array, hour: Array, albedo: Array, clear: float, passed: float, room: Room
+) -> float:
+    """Return the depth of the cloud that passes a share of the clear light, from the top layer kept in s.
 
-    Parameters
-    ----------
-    hours, albedo, model : as in `transmit`, of bands that stand for all
-    n_band : int, how many
-    top : as in `split`, the bands' weights in it
-    received : (n,) array [W m-2], all light on the horizontal over the sine of the sun's height, at the mean distance
-    open_share : (n,) array [1], below 1
-    depth : (n,) array [1] to fill; 0 where no cloud is needed
-
-    Notes
-    -----
     With K the cloud's transmittance, 1/K - 1 is nearly linear in the depth: steps follow the chord through the last two
-    points inside a bracket that always holds the root, halved where a step leaves it, so the search cannot fail.
+    points inside a bracket that always holds the root, halved where a step leaves it, so the search cannot fail. Over
+    bright ground K may first rise above 1.
     """
-    s, room = workspace()
-    n, known_exponent = _lanes(n_band), math.nan
-    for h in range(hours.shape[0]):
-        hour = hours[h]
-        start(s, n, model, hour, known_exponent)
-        known_exponent = hour[EXPONENT]
-        through(s, n, model, hour, 0.0, 0, room)
-        on_ground(s, n, albedo[h], hour[AIR_MASS])
-        clear, share = summed(s, n, TOTAL, top), open_share[h]
-        passed = (received[h] - share * clear) / ((1.0 - share) * clear)
-        target = 1.0 / max(passed, 1e-3) - 1.0
-        depth[h] = 0.0
-        if passed >= 1.0 - CLOUD_TOLERANCE:
-            continue
-        ground = 0.0
-        for b in range(albedo.shape[1]):
-            ground += albedo[h, b] / albedo.shape[1]
-        low, high, before, miss_before = 0.0, CLOUD_DEPTH_MAX, 0.0, -target
-        # First guess: a line through skies of all kinds, 30 % off where the sun is low.
-        now = target / max(0.2 - 0.12 / hour[AIR_MASS] - ground * (0.2 - 0.1 / hour[AIR_MASS]), 0.01)
-        now = min(now, CLOUD_DEPTH_MAX)
-        for step in range(_CLOUD_STEPS):
-            back_to_top(s, n)
-            through(s, n, model, hour, now, 1, room)
-            on_ground(s, n, albedo[h], hour[AIR_MASS])
-            miss = clear / summed(s, n, TOTAL, top) - 1.0 - target
-            if miss > 0:
-                high = now
-            else:
-                low = now
-            trial = now - miss * (now - before) / (miss - miss_before) if miss != miss_before else math.nan
-            trial = min(trial, CLOUD_DEPTH_MAX)
-            if not low <= trial <= high:
-                trial = 0.5 * (low + high)
-            settled = abs(miss) <= (_CHORD if step > 0 else CLOUD_TOLERANCE) * (1.0 + target)
-            at_end = now >= CLOUD_DEPTH_MAX and miss <= 0
-            before, miss_before, now = now, miss, trial
-            if settled or at_end:
-                break
-        depth[h] = now
-
-
-@compiled
-def _sunny(s: Array, n: int, top: Array, dni: float, share: float, beam: Array, diffuse: Array) -> float:
-    """Set the light of the open part of an hour from the clear column in s; return its diffuse sum."""
-    direct_sum = summed(s, n, STRAIGHT, top)
-    scale = dni / direct_sum
-    for b in range(len(beam)):
-        direct = s[STRAIGHT + b] * top[b]
-        beam[b], diffuse[b] = direct * scale, (s[TOTAL + b] * top[b] - direct) * share
-    return float((summed(s, n, TOTAL, top) - direct_sum) * share)
+    if passed >= 1.0 - CLOUD_TOLERANCE:
+        return 0.0
+    target, ground, into = 1.0 / max(passed, 1e-3) - 1.0, np.mean(albedo), 1.0 / hour[AIR_MASS]
+    low, high, before, miss_before = 0.0, CLOUD_DEPTH_MAX, 0.0, -target
+    # First guess: a line through skies of all kinds, 12 % off at the median.
+    now = min(target / max((0.2 - 0.12 * into) - ground * (0.2 - 0.1 * into), 0.01), CLOUD_DEPTH_MAX)
+    for step in range(_CLOUD_STEPS):
+        back_to_top(s, n)
+        through(s, n, model, hour, now, 1, room)
+        on_ground(s, n, albedo, hour[AIR_MASS])
+        miss = clear / summed(s, n, TOTAL, top) - 1.0 - target
+        if miss > 0:
+            high = now
+        else:
+            low = now
+        trial = now - miss * (now - before) / (miss - miss_before) if miss != miss_before else math.nan
+        trial = min(trial, CLOUD_DEPTH_MAX)
+        if not low <= trial <= high:
+            trial = 0.5 * (low + high)
+        settled = abs(miss) <= (_CHORD if step > 0 else CLOUD_TOLERANCE) * (1.0 + target)
+        at_end = now >= CLOUD_DEPTH_MAX and miss <= 0
+        before, miss_before, now = now, miss, trial
+        if settled or at_end:
+            break
+    return float(now)
 
 
 @compiled
@@ -244,42 +180,67 @@ def _scaled_to(diffuse: Array, dhi: float) -> None:
 
 @compiled
 def split(
-    hours: Array, albedo: Array, model: Model, top: Array, level: Array, dni: Array, dhi: Array, open_share: Array,
-    depth: Array, beam: Array, diffuse: Array,
+    hours: Array, albedo: Array, models: tuple[Model, Model], tops: tuple[Array, Array], chosen: NDArray[np.intp],
+    light: Array, least_hidden: float, found: Array, beam: Array, diffuse: Array,
 ) -> None:  # fmt: skip
-    """Fill beam and diffuse light of each band, their sums the measured ones.
+    """Fill beam and diffuse light of each band, their sums the measured ones, and the cloud that explains them.
 
     Parameters
     ----------
-    hours, albedo, model : as in `transmit`
-    top : (STRIDE,) array [W m-2], light above the air, 0 beyond the last band
-    level : (n,) array [1], what turns transmittance times top into light on the horizontal
-    dni, dhi : (n,) array [W m-2]
-    open_share : (n,) array [1]
-    depth : (n,) array [1], of the cloud over the rest; NaN = none
+    hours, albedo : as in `transmit`
+    models : two `Model`, of all bands and of the few that stand for them while the cloud is sought
+    tops : two (STRIDE,) arrays [W m-2], light above the air at the mean distance, 0 beyond the last band; for the few
+        times their weights
+    chosen : (n_few,) int array, the few bands, a multiple of `LANES`
+    light : (n, 4) array, dni, dhi [W m-2], extraterrestrial irradiance over its mean, cosine of the zenith
+    least_hidden : float [1], hidden share of the hour from which a cloud is sought
+    found : (n, 2) array of zeros to fill [1], share of open sun and depth of the cloud over the rest
     beam, diffuse : (n, n_band) arrays of zeros to fill [W m-2], on a plane facing the sun and on the horizontal
     """
     s, room = workspace()
-    n, known_exponent = _lanes(beam.shape[1]), math.nan
+    few, few_room = workspace()
+    n_band, n_few = beam.shape[1], _lanes(len(chosen))
+    n, top, few_top, known_exponent = _lanes(n_band), tops[0], tops[1], math.nan
+    few_albedo = np.empty(len(chosen) if albedo.shape[1] > 1 else 1)
     for h in range(hours.shape[0]):
-        if not (dni[h] > 0 or dhi[h] > 0):
-            continue
-        hour = hours[h]
-        start(s, n, model, hour, known_exponent)
-        known_exponent = hour[EXPONENT]
-        given, first, cloud = 0.0, 0, depth[h]
-        if dni[h] > 0 or not cloud > 0:
-            through(s, n, model, hour, 0.0, 0, room)
-            on_ground(s, n, albedo[h], hour[AIR_MASS])
-            given = _sunny(s, n, top, dni[h], level[h] * open_share[h], beam[h], diffuse[h])
-            first = 1
-        if cloud > 0:
-            if first == 1:
+        dni, dhi, level = light[h, 0], light[h, 1], light[h, 2] * light[h, 3]
+        hour, air_mass = hours[h], hours[h, AIR_MASS]
+        if dni > 0:
+            start(s, n, models[0], hour, known_exponent)
+            known_exponent = hour[EXPONENT]
+            through(s, n, models[0], hour, 0.0, 0, room)
+            on_ground(s, n, albedo[h], air_mass)
+            straight, clear = summed(s, n, STRAIGHT, top), summed(s, n, TOTAL, top)
+            share, scale = min(1.0, dni / (straight * light[h, 2])), dni / straight
+            for b in range(n_band):
+                direct = s[STRAIGHT + b] * top[b]
+                beam[h, b], diffuse[h, b] = direct * scale, (s[TOTAL + b] * top[b] - direct) * (level * share)
+            given = (clear - straight) * level * share
+            found[h, 0] = share
+        else:
+            share, given = 0.0, 0.0
+        if dhi > 0 and 1.0 - share > least_hidden:
+            for i in range(len(few_albedo)):
+                few_albedo[i] = albedo[h, chosen[i]] if albedo.shape[1] > 1 else albedo[h, 0]
+            if dni > 0:
+                top_of_few(s, few, chosen)
+            else:
+                start(few, n_few, models[1], hour, math.nan)
+                through(few, n_few, models[1], hour, 0.0, 0, few_room)
+                on_ground(few, n_few, few_albedo, air_mass)
+            clear = summed(few, n_few, TOTAL, few_top)
+            passed = ((dni * light[h, 3] + dhi) / level - share * clear) / ((1.0 - share) * clear)
+            cloud = _cloud_depth(few, n_few, models[1], few_top, hour, few_albedo, clear, passed, few_room)
+            if dni > 0:
                 back_to_top(s, n)
-            through(s, n, model, hour, cloud, first, room)
-            on_ground(s, n, albedo[h], hour[AIR_MASS])
-        if not math.isnan(cloud):
-            scale = max(dhi[h] - given, 0.0) / summed(s, n, TOTAL, top)
-            for b in range(beam.shape[1]):
+            else:
+                start(s, n, models[0], hour, known_exponent)
+                known_exponent = hour[EXPONENT]
+            if cloud > 0 or dni <= 0:
+                through(s, n, models[0], hour, cloud, 1 if dni > 0 else 0, room)
+                on_ground(s, n, albedo[h], air_mass)
+            scale = max(dhi - given, 0.0) / summed(s, n, TOTAL, top)
+            for b in range(n_band):
                 diffuse[h, b] += s[TOTAL + b] * top[b] * scale
-        _scaled_to(diffuse[h], dhi[h])
+            found[h, 1] = cloud
+        _scaled_to(diffuse[h], dhi)

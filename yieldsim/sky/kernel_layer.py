@@ -81,7 +81,7 @@ NODE_STEP = 0.05
 WATER_NODES = math.log(0.003) + NODE_STEP * np.arange(250)  # ln cm, up to 800 cm
 MIXED_NODES = math.log(0.05) + NODE_STEP * np.arange(146)  # up to 74
 _FIRST_WATER, _FIRST_MIXED = float(WATER_NODES[0]), float(MIXED_NODES[0])
-# Columns of an hour, places of the column's constants.
+# Columns of an hour; places of the column's constants.
 AIR_MASS, OZONE_MASS, PRESSURE, WATER, OZONE_CM, AOD, EXPONENT, CLOUD = range(8)
 _AIR_SHARE, _WATER_SHARE, _HAZE_SHARE = 0, 3, 6
 _CLOUD_G, _RAYLEIGH_MOMENT, _OPEN_SKY, _DIFFUSIVITY, _CLOUD_PATH = range(9, 14)
@@ -370,6 +370,16 @@ def back_to_top(s: Array, n: int) -> None:
     for b in range(n):
         s[_SUM_PATH + b], s[_SUM_DEPTH + b], s[_BEAM + b], s[_D1 + b] = s[_K1 + b], s[_K2 + b], s[_K3 + b], s[_K4 + b]
         s[_D2 + b], s[_S11 + b], s[_S12 + b], s[_S22 + b] = s[_K5 + b], s[_K6 + b], s[_K7 + b], s[_K8 + b]
+
+
+@compiled
+def top_of_few(s: Array, few: Array, chosen: NDArray[np.intp]) -> None:
+    """Copy the top layer and what the air holds from all bands to a few."""
+    for i, b in enumerate(chosen):
+        few[SHAPE + i], few[_HAZE + i], few[OZONE + i] = s[SHAPE + b], s[_HAZE + b], s[OZONE + b]
+        few[_K1 + i], few[_K2 + i], few[_K3 + i], few[_K4 + i] = s[_K1 + b], s[_K2 + b], s[_K3 + b], s[_K4 + b]
+        few[_K5 + i], few[_K6 + i], few[_K7 + i], few[_K8 + i] = s[_K5 + b], s[_K6 + b], s[_K7 + b], s[_K8 + b]
+        few[TOTAL + i] = s[TOTAL + b]
 
 
 @compiled
