@@ -47,7 +47,7 @@ from yieldsim.device.stack import gap_label
 from yieldsim.errors import InputError, PlaceError, Problem
 from yieldsim.study import compare, datasets, generation, hourly, pairs, portfolio, region, run, store, sweep, worth
 from yieldsim.study.annual import Ratings
-from yieldsim.study.plan import Row, SitePlan, StudyPlan
+from yieldsim.study.plan import ColumnsPlan, Row, SitePlan, StudyPlan
 from yieldsim.study.result import StudyResult, by_hour_table, records, responses_table
 from yieldsim.weather import Weather
 
@@ -92,16 +92,22 @@ def grid_cells(path: Path, shown: str) -> list[Cell]:
     return [Cell(each.row, each.column, each.latitude_deg, each.longitude_deg, each.elevation_m) for each in found]
 
 
-def load_weather(site: SitePlan) -> Sequence[Weather]:
-    """Read and screen the weather of a site, one Weather a year."""
+def load_weather(site: SitePlan) -> Iterator[Weather]:
+    """Read and screen the weather of a site, one Weather a year, one year in memory."""
     overrides = {name: getattr(site, name) for name in ("latitude_deg", "longitude_deg", "elevation_m")}
-    return [
-        screen.screen(
-            readers.read(file.path, file.format, file.timestamps, shown=file.shown, cell=file.cell, **overrides),
-            site.allow_gaps,
-        )
+    files = [
+        readers.File(file.path, file.shown, file.format, file.timestamps, file.cell, _column_map(file.columns))
         for file in site.weather
     ]
+    for weather in readers.years(files, **overrides):
+        yield screen.screen(weather, site.allow_gaps)
+
+
+def _column_map(columns: ColumnsPlan | None) -> readers.ColumnMap | None:
+    if columns is None:
+        return None
+    named = {name: readers.Column(column, unit) for name, column, unit in columns.columns}
+    return readers.ColumnMap(columns.time, named, columns.time_format)
 
 
 def run_study(

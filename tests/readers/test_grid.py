@@ -115,7 +115,7 @@ def test_zarr_is_read_alike(tmp_path):
     [
         (lambda d: d.drop_vars("dni"), "dni"),
         (lambda d: d.rename(latitude="y").drop_vars("y"), "latitude"),
-        (lambda d: d.assign(t2m=d["t2m"].assign_attrs(units="degF")), "degF"),
+        (lambda d: d.assign(t2m=d["t2m"].assign_attrs(units="furlong")), "furlong"),
     ],
 )
 def test_what_is_no_grid_of_weather_is_refused(file, change, told):

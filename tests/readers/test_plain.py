@@ -88,7 +88,6 @@ def test_the_study_may_say_where_it_is(read):
         (HEAD.replace(": 50", ": fifty") + NAMES + ROWS, 0, "latitude_deg"),
         (HEAD.replace(": 50", ": 95") + NAMES + ROWS, 0, "latitude_deg"),
         (HEAD + NAMES, 0, ""),
-        (HEAD + NAMES + ROWS + ROWS, 0, "time"),
         (HEAD + NAMES + ROWS.replace("510", "5100"), 0, "ghi"),
     ],
 )
@@ -111,3 +110,10 @@ def test_wrong_options(read):
     for text in ("noon", "", "end UTC+15", "end +2000 min", "+5"):
         with pytest.raises(InputError, match="timestamps"):
             read(HEAD + NAMES + ROWS, timestamps=text)
+
+
+def test_labels_that_come_again_are_told_of(read):
+    """A block pasted twice: the first of each label stays, rows are put in order, and both are said."""
+    weather = read(HEAD + NAMES + ROWS + ROWS)
+    assert len(weather) == len(read(HEAD + NAMES + ROWS))
+    assert {finding.kind for finding in weather.findings} == {"out_of_order", "duplicate"}

@@ -19,6 +19,7 @@ from yieldsim.device.stack import Absorber
 from yieldsim.errors import InputError, Problem
 from yieldsim.study.plan import (
     AtmospherePlan,
+    ColumnsPlan,
     GapPairsPlan,
     GapSweepPlan,
     GroundPlan,
@@ -138,7 +139,19 @@ class Builder:
             self.problems.append(self.document.problem(path, f"{shown}: {error.strerror}", "a file that can be read"))
         kept = shown if shown.startswith(PVLIB) else str(where.absolute())
         cell = None if site.cell is None else (site.cell[0], site.cell[1])
-        return WeatherFile(kept, shown, digest, site.format, site.timestamps, cell)
+        return WeatherFile(kept, shown, digest, site.format, site.timestamps, cell, _columns_plan(site.columns))
+
+
+def _columns_plan(columns: site_schema.Columns | None) -> ColumnsPlan | None:
+    if columns is None:
+        return None
+    given = columns.model_dump(exclude_none=True)
+    time, time_format = given.pop("time"), given.pop("time_format", None)
+    named = tuple(
+        (name, column, None) if isinstance(column, str) else (name, column["column"], column["unit"])
+        for name, column in given.items()
+    )
+    return ColumnsPlan(tuple(time) if isinstance(time, list) else (time,), named, time_format)
 
 
 def _twelve(value: Any) -> Monthly:

@@ -15,6 +15,7 @@ from yieldsim.config.fields import (
     Name,
     Number,
     Section,
+    Text,
     Whole,
     by,
     one_or_list,
@@ -25,7 +26,17 @@ from yieldsim.config.inputs import InputFile
 from yieldsim.config.mounting_schema import AnyGround, Ground, OneMounting
 from yieldsim.weather import STAMP_FORM, parse_stamp
 
-FORMATS = ("tmy3", "plain")  # the readers' names; a test holds them to yieldsim.readers
+FORMATS = (
+    "tmy3",
+    "epw",
+    "tmy2",
+    "bsrn",
+    "surfrad",
+    "pvgis",
+    "psm",
+    "netcdf",
+    "plain",
+)  # the readers' names; a test holds them to yieldsim.readers
 MAX_YEARS = 50
 
 
@@ -92,6 +103,48 @@ class Stamp(Kind):
         return {"type": "string"}
 
 
+class ColumnUnit(Section):
+    """A column whose unit is not ours."""
+
+    column: Annotated[str, Text(200, "the name of a column")]
+    unit: Annotated[str, Text(20, "a unit")]
+
+
+_Column = Annotated[
+    Annotated[Annotated[str, Text(200, "the name of a column")], Tag("<one>")]
+    | Annotated[ColumnUnit, Tag("<with_unit>")],
+    by(lambda value: "with_unit" if isinstance(value, dict) else "one"),
+]
+_TimeColumns = Annotated[
+    Annotated[Annotated[str, Text(200, "the name of a column")], Tag("<one>")]
+    | Annotated[list[Annotated[str, Text(200, "the name of a column")]], Length(1, 6, "names"), Tag("<list>")],
+    by(one_or_list),
+]
+
+
+class Columns(Section):
+    """Which columns of a table are what; each in our unit unless it says otherwise."""
+
+    time: _TimeColumns = Field(description="column of the time, or several that are joined by a blank")
+    time_format: Annotated[str, Text(60, "a form such as %d.%m.%Y %H:%M")] | None = Field(
+        default=None, description="how the time is written, as strptime has it; ISO 8601 if left out"
+    )
+    ghi: _Column | None = None
+    dni: _Column | None = None
+    dhi: _Column | None = None
+    temp_air: _Column | None = None
+    relative_humidity: _Column | None = None
+    temp_dew: _Column | None = None
+    wind_speed: _Column | None = None
+    pressure: _Column | None = None
+    precipitable_water: _Column | None = None
+    aod500: _Column | None = None
+    aod_broadband: _Column | None = None
+    albedo: _Column | None = None
+    snow_depth: _Column | None = None
+    rain: _Column | None = None
+
+
 class Site(Section):
     """One place with its weather."""
 
@@ -104,6 +157,10 @@ class Site(Section):
     format: Annotated[str, Choice(FORMATS)] | None = Field(default=None, description="over what the content tells")
     timestamps: Annotated[str, Stamp()] | None = Field(
         default=None, description="where the file's time labels sit in their interval, over what the file says"
+    )
+    columns: Columns | None = Field(
+        default=None,
+        description="names of the columns of any other table: {time: Date, ghi: G, temp_air: {column: T, unit: K}}",
     )
     cell: Annotated[list[Annotated[int, Whole(0, 1_000_000)]], Length(2, 2, "numbers: row and column")] | None = Field(
         default=None, description="row and column in a grid of weather, latitude first, from 0"

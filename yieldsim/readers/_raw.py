@@ -17,6 +17,8 @@ Times = NDArray[np.int64]
 # The year a typical year is dated to: no leap year, and mid-way between two, where the calendar is closest to the sun.
 TYPICAL_YEAR = 2002
 
+STILL_WIND = 2.0  # m/s, where a file has no wind at all
+
 
 @dataclass(frozen=True, slots=True)
 class Wanted:
@@ -46,7 +48,7 @@ class Raw:
     shown : str, the file as the user named it
     name : str, of the place
     latitude_deg, longitude_deg, elevation_m, utc_offset_h : as in Weather; None where the file does not say
-    clock_offset_s : int [s], the clock of the labels less UTC
+    clock_offset_s : int [s], the clock of the labels less UTC; None = local standard time, by the longitude
     label : ``start``, ``middle`` or ``end``: where in the interval the format documents its labels
     clock : str, plain words for the clock (``local standard time``)
     time : (n,) int64 array [s], the labels as unix seconds of the file's clock
@@ -62,7 +64,7 @@ class Raw:
     longitude_deg: float | None
     elevation_m: float | None
     utc_offset_h: float | None
-    clock_offset_s: int
+    clock_offset_s: int | None
     label: str
     clock: str
     time: Times
@@ -89,18 +91,27 @@ def weather_from(raw: Raw, wanted: Wanted) -> Weather:
     interval_s = raw.interval_s or _interval(raw)
     label = stamp.label or raw.label
     before_label = {"start": 0, "middle": interval_s // 2, "end": interval_s}[label]
-    clock_offset_s = raw.clock_offset_s if stamp.utc_offset_s is None else stamp.utc_offset_s
+    raw = _in_order(raw)
+    longitude = float(_first(wanted.longitude_deg, raw.longitude_deg))
+    clock_offset_s = _first(stamp.utc_offset_s, raw.clock_offset_s, 3600 * round(longitude / 15))
     start = raw.time + stamp.shift_s - before_label
     notes = list(raw.notes)
     if raw.typical:
         start, raw = _dated_to_one_year(start, raw)
         notes.append(f"typical year: months of several years set together, dated to {TYPICAL_YEAR}")
-    time = start - clock_offset_s
+    time = start - round(clock_offset_s)
     columns, findings = _without_placeholders(raw, time)
+    if "wind_speed" not in columns:
+        columns["wind_speed"] = np.full(len(time), STILL_WIND)
+        what = "no wind in the file"
+        done = f"{STILL_WIND:g} m/s taken throughout (common practice, no source)"
+        findings.append(Finding("no_wind", len(time), int(time[0]), int(time[-1]), what, done))
+    if raw.clock_offset_s is None and stamp.utc_offset_s is None:
+        notes.append(f"the file does not tell its clock: taken for {_clock(round(clock_offset_s))}, by its longitude")
     words = f"{label} of interval, {raw.clock if stamp.utc_offset_s is None else _clock(stamp.utc_offset_s)}"
     return Weather(
         latitude_deg=float(_first(wanted.latitude_deg, raw.latitude_deg)),
-        longitude_deg=float(_first(wanted.longitude_deg, raw.longitude_deg)),
+        longitude_deg=longitude,
         elevation_m=float(_first(wanted.elevation_m, raw.elevation_m)),
         utc_offset_h=float(_first(wanted.utc_offset_h, raw.utc_offset_h, clock_offset_s / 3600)),
         time=time,
@@ -146,15 +157,55 @@ def _column_problems(raw: Raw) -> list[Problem]:
             f"a column for {name}; the file has {', '.join(raw.columns) or 'none'}",
         )
         for name in REQUIRED
-        if name not in raw.columns and not (name in ("ghi", "dni", "dhi") and len(light) >= 2)
+        if name not in (*raw.columns, "wind_speed") and not (name in ("ghi", "dni", "dhi") and len(light) >= 2)
     ]
+
+
+def found_missing(name: str, coded: NDArray[np.bool_], time: Times) -> Finding:
+    """Return the finding of values that are codes for "missing".
+
+    Parameters
+    ----------
+    name : str, of the column
+    coded : (n,) bool array
+    time : (n,) int64 array [s]
+    """
+    at = np.flatnonzero(coded)
+    what = f"{name} is missing by the format's code in {'every row' if coded.all() else f'{at.size} rows'}"
+    return Finding("missing_code", int(at.size), int(time[at[0]]), int(time[at[-1]]), what, "taken as missing")
+
+
+def _in_order(raw: Raw) -> Raw:
+    """Return rows in the order of time, each label once; a typical year is put in order when it is dated."""
+    if raw.typical or len(raw.time) < 2 or np.all(np.diff(raw.time) > 0):
+        return raw
+    findings = list(raw.findings)
+    order = np.argsort(raw.time, kind="stable")
+    time = raw.time[order]
+    back = int(np.count_nonzero(np.diff(raw.time) < 0))
+    if back:
+        at = int(np.argmax(np.diff(raw.time) < 0)) + 1
+        what = f"time goes back {back} times, first in row {raw.row[at]}"
+        findings.append(Finding("out_of_order", back, int(raw.time[at]), int(raw.time[at]), what, "put in order"))
+    again = np.concatenate([[False], np.diff(time) == 0])
+    if again.any():
+        twice = time[again]
+        what = f"{int(again.sum())} labels appear again, first in row {raw.row[order][again][0]}"
+        done = "the first of each kept"
+        findings.append(Finding("duplicate", int(again.sum()), int(twice[0]), int(twice[-1]), what, done))
+    kept = order[~again]
+    columns = {name: values[kept] for name, values in raw.columns.items()}
+    return replace(raw, time=raw.time[kept], row=raw.row[kept], columns=columns, findings=tuple(findings))
 
 
 def _interval(raw: Raw) -> int:
     """Return the most frequent step between labels [s]."""
     if len(raw.time) < 2:
         raise InputError(Problem(raw.shown, 0, "time", f"{len(raw.time)} rows", "at least two, to tell the interval"))
-    steps, counts = np.unique(np.diff(raw.time), return_counts=True)
+    steps, counts = np.unique(np.diff(np.sort(raw.time)), return_counts=True)
+    steps, counts = steps[steps > 0], counts[steps > 0]
+    if not steps.size:
+        raise InputError(Problem(raw.shown, 0, "time", "one label for all rows", "rising times"))
     return int(steps[np.argmax(counts)])
 
 

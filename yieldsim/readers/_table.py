@@ -104,6 +104,51 @@ def whole(
     )
 
 
+def numbers_of(source: Source, rows: Sequence[int], name: str, texts: Sequence[str]) -> Array:
+    """Return texts cut out of lines as numbers; raises InputError with the row of every one that is none."""
+    try:
+        return np.asarray([float(text) for text in texts], dtype=np.float64)
+    except ValueError:
+        wrong = [(row, text) for row, text in zip(rows, texts, strict=True) if not _NUMBER.fullmatch(text.strip())]
+    problems = [source.problem(row, name, repr(text[:40]), "a number") for row, text in wrong[:MOST_PROBLEMS]]
+    raise InputError(problems + _more(source, len(wrong) - len(problems), "such cells"))
+
+
+def calendar_seconds(
+    source: Source, row: NDArray[np.int64], year: Array, month: Array, day: Array, seconds: Array, most: int
+) -> NDArray[np.int64]:
+    """Return dates and seconds of the day as unix seconds of the file's clock.
+
+    Parameters
+    ----------
+    source : Source, for messages
+    row : (n,) int array, lines of the file
+    year, month, day : (n,) arrays
+    seconds : (n,) array [s], since midnight
+    most : int [s], largest value of it; 24:00 is the next day's midnight
+
+    Raises
+    ------
+    InputError
+        For what is no date or time of day.
+    """
+    fields = (year, month, day, seconds)
+    whole = np.all([np.isfinite(field) & (field == np.round(field)) for field in fields], axis=0)
+    year, month, day, seconds = (np.where(whole, field, 0) for field in fields)
+    within = (year >= 1900) & (year <= 2200) & (month >= 1) & (month <= 12) & (day >= 1) & (day <= 31)
+    good = whole & within & (seconds >= 0) & (seconds <= most)
+    months = np.where(good, (year - 1970) * 12 + month - 1, 0).astype(np.int64)
+    first = months.astype("datetime64[M]").astype("datetime64[D]").astype(np.int64)
+    length = (months + 1).astype("datetime64[M]").astype("datetime64[D]").astype(np.int64) - first
+    good &= day <= length
+    if not good.all():
+        i = int(np.argmin(good))
+        shown = ", ".join(f"{field[i]:g}" for field in fields)
+        found = f"year, month, day, seconds {shown} ({int((~good).sum())} such rows)"
+        raise source.refuse(int(row[i]), "time", found, "a date and a time of day")
+    return np.asarray((first + day.astype(np.int64) - 1) * 86_400 + seconds.astype(np.int64), dtype=np.int64)
+
+
 def _parse(
     source: Source,
     lines: list[str],

@@ -16,10 +16,23 @@ import xarray as xr
 from numpy.typing import NDArray
 
 from yieldsim.errors import InputError, Problem
+from yieldsim.readers import _units
 from yieldsim.readers._raw import Raw, Wanted, weather_from
 from yieldsim.weather import COLUMNS, REQUIRED, Weather
 
 FORMAT = "grid"
+#: What libraries raise on bytes that are no such file; a damaged one can trip them anywhere.
+BROKEN = (
+    OSError,
+    ValueError,
+    KeyError,
+    IndexError,
+    TypeError,
+    AttributeError,
+    RuntimeError,
+    OverflowError,
+    MemoryError,
+)
 BLOCK_BYTES = 64_000_000  # of weather held at once by a process
 MOST_CELLS = 1_000_000
 _LOOKED_AT = 48  # intervals at the start that tell whether a cell holds weather
@@ -41,26 +54,6 @@ STANDARD_NAMES = {
     "surface_snow_thickness": "snow_depth",
 }
 ELEVATIONS = ("elevation", "elevation_m", "surface_altitude", "altitude", "orography", "height")
-
-#: Unit as files write it -> (factor, offset) to ours, by our unit.
-UNITS: dict[str, dict[str, tuple[float, float]]] = {
-    "degC": {"K": (1.0, -273.15), "kelvin": (1.0, -273.15)},
-    "%": {"1": (100.0, 0.0)},
-    "Pa": {"hPa": (100.0, 0.0), "mbar": (100.0, 0.0), "kPa": (1000.0, 0.0)},
-    "cm": {"mm": (0.1, 0.0), "m": (100.0, 0.0), "kg m-2": (0.1, 0.0), "kg/m2": (0.1, 0.0)},
-    "W m-2": {"kW m-2": (1000.0, 0.0)},
-    "1": {"%": (0.01, 0.0)},
-    "mm": {"m": (1000.0, 0.0), "cm": (10.0, 0.0)},
-    "m s-1": {"km h-1": (1 / 3.6, 0.0)},
-}
-_SAME = {
-    "W m-2": {"W/m2", "W/m^2", "W m**-2", "watt m-2"},
-    "degC": {"C", "celsius", "degrees_celsius", "degree_Celsius", "deg_C"},
-    "m s-1": {"m/s", "m s**-1"},
-    "1": {"", "-", "none", "dimensionless"},
-    "%": {"percent"},
-    "Pa": {"pascal"},
-}
 
 
 @dataclass(frozen=True, slots=True)
@@ -91,7 +84,7 @@ def cells(path: Path, shown: str) -> list[GridCell]:
     if about.latitude.size * about.longitude.size > MOST_CELLS:
         found = f"{about.latitude.size} x {about.longitude.size} cells"
         raise InputError(Problem(shown, 0, "", found, f"at most {MOST_CELLS}"))
-    with _opened(str(path), shown) as dataset:
+    with opened(str(path), shown) as dataset:
         names = about.names
         first = dataset[names.columns["ghi"]].isel({names.time: slice(0, _LOOKED_AT)})
         filled = np.isfinite(first.transpose(names.time, names.lat, names.lon).values).any(axis=0)
@@ -186,23 +179,26 @@ class _Block:
     columns: dict[str, NDArray[np.float64]]
 
 
-def _opened(path: str, shown: str) -> xr.Dataset:
+def opened(path: str, shown: str) -> xr.Dataset:
+    """Open a NetCDF file or a Zarr folder, times as they are written; raises InputError for anything else."""
     try:
         if Path(path).is_dir():
             folder: xr.Dataset = xr.open_zarr(path, chunks=None, decode_times=False)
             return folder
-        return xr.open_dataset(path, engine="h5netcdf", decode_times=False)
+        with Path(path).open("rb") as stream:
+            classic = stream.read(3) == b"CDF"
+        return xr.open_dataset(path, engine="scipy" if classic else "h5netcdf", decode_times=False)
     except ImportError:
         allowed = 'NetCDF, or Zarr with pip install "yieldsim[cluster]"'
         raise InputError(Problem(shown, 0, "", "a Zarr folder, and zarr is not installed", allowed)) from None
-    except (OSError, ValueError, KeyError) as error:
+    except BROKEN as error:
         reason = str(error).splitlines()[0][:120] if str(error) else type(error).__name__
         raise InputError(Problem(shown, 0, "", f"it cannot be read ({reason})", "CF NetCDF 4 or Zarr")) from None
 
 
 @lru_cache(maxsize=2)
 def _about(path: str, shown: str) -> _About:
-    with _opened(path, shown) as dataset:
+    with opened(path, shown) as dataset:
         names = _names(dataset, shown)
         latitude, longitude = (np.asarray(dataset[name].values, dtype=np.float64) for name in (names.lat, names.lon))
         height = None
@@ -247,31 +243,23 @@ def _corner(about: _About, cell: tuple[int, int]) -> tuple[int, int, int, int]:
 @lru_cache(maxsize=1)
 def _block(path: str, shown: str, row: int, column: int, rows: int, columns: int) -> _Block:
     names = _about(path, shown).names
-    with _opened(path, shown) as dataset:
+    with opened(path, shown) as dataset:
         part = {names.lat: slice(row, row + rows), names.lon: slice(column, column + columns)}
         values = {
             name: _in_our_unit(dataset[key].isel(part).transpose(names.time, names.lat, names.lon), name, shown)
             for name, key in names.columns.items()
         }
-        time = _seconds(dataset[names.time].values, dataset[names.time].attrs, shown)
-        label, interval_s = _label(dataset, names.time, time, shown)
+        time = seconds(dataset[names.time].values, dataset[names.time].attrs, shown)
+        label, interval_s = label_of(dataset, names.time, time, shown)
     return _Block(row, column, time, interval_s, label, values)
 
 
 def _in_our_unit(variable: xr.DataArray, column: str, shown: str) -> NDArray[np.float64]:
-    ours = COLUMNS[column][0]
-    written = str(variable.attrs.get("units", ours)).strip()
-    values = np.asarray(variable.values, dtype=np.float64)
-    if written == ours or written in _SAME.get(ours, ()):
-        return values
-    if written in UNITS.get(ours, {}):
-        factor, offset = UNITS[ours][written]
-        return values * factor + offset
-    allowed = ", ".join([ours, *UNITS.get(ours, {})])
-    raise InputError(Problem(shown, 0, str(variable.name), f"unit {written!r}", allowed))
+    factor, offset = _units.conversion(column, variable.attrs.get("units"), shown, str(variable.name))
+    return np.asarray(variable.values, dtype=np.float64) * factor + offset
 
 
-def _seconds(values: Any, attributes: Any, shown: str) -> NDArray[np.int64]:
+def seconds(values: Any, attributes: Any, shown: str) -> NDArray[np.int64]:
     """Return CF times as UTC unix seconds."""
     told = {name: attributes[name] for name in ("units", "calendar") if name in attributes}
     try:
@@ -282,12 +270,12 @@ def _seconds(values: Any, attributes: Any, shown: str) -> NDArray[np.int64]:
         raise InputError(Problem(shown, 0, "time", f"it cannot be read ({reason})", "CF time, UTC")) from None
 
 
-def _label(dataset: xr.Dataset, name: str, time: NDArray[np.int64], shown: str) -> tuple[str, int | None]:
+def label_of(dataset: xr.Dataset, name: str, time: NDArray[np.int64], shown: str) -> tuple[str, int | None]:
     """Return where labels sit and the interval [s], from the file's bounds; without bounds labels start it."""
     attributes = dataset[name].attrs
     bounds = attributes.get("bounds")
     if not isinstance(bounds, str) or bounds not in dataset.variables or dataset[bounds].ndim != 2:
         return "start", None
-    first, last = (_seconds(dataset[bounds].values[:, k], attributes, shown) for k in (0, 1))
+    first, last = (seconds(dataset[bounds].values[:, k], attributes, shown) for k in (0, 1))
     interval = int(np.median(last - first))
     return {0: "start", interval: "end"}.get(int(np.median(time - first)), "middle"), interval

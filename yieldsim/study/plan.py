@@ -15,6 +15,22 @@ Monthly = tuple[float, ...]  # 12 values, January first
 
 
 @dataclass(frozen=True, slots=True)
+class ColumnsPlan:
+    """Which columns of a table of weather are what.
+
+    Parameters
+    ----------
+    time : names of the columns that together are the time
+    columns : (our column, its name in the file, its unit there or None for ours) each
+    time_format : str or None, as strptime has it; None = ISO 8601
+    """
+
+    time: tuple[str, ...]
+    columns: tuple[tuple[str, str, str | None], ...]
+    time_format: str | None = None
+
+
+@dataclass(frozen=True, slots=True)
 class WeatherFile:
     """One weather file of a site.
 
@@ -26,6 +42,7 @@ class WeatherFile:
     format : str or None, the reader to use; None = recognise it by content
     timestamps : str or None, where its time labels sit, over what the file says
     cell : (row, column) or None, the place in a grid of weather, along latitude and longitude
+    columns : ColumnsPlan or None, which columns of any table are what
     """
 
     path: str
@@ -34,6 +51,7 @@ class WeatherFile:
     format: str | None = None
     timestamps: str | None = None
     cell: tuple[int, int] | None = None
+    columns: ColumnsPlan | None = None
 
 
 @dataclass(frozen=True, slots=True)
@@ -250,6 +268,29 @@ class WorthPlan:
 
 
 @dataclass(frozen=True, slots=True)
+class ChancePlan:
+    """What is drawn to tell how sure a ranking is; inputs and their defaults stand in `chance_inputs`.
+
+    Parameters
+    ----------
+    draws : int
+    seed : int
+    margin : float [1], lead that the study asks about, as a share of the other's yield
+    spreads : input -> standard deviation, over the default
+    correlation : input of a site -> correlation between sites [1]; 0 where it is left out
+    sites, absorbers : name -> input -> standard deviation, for that site or absorber alone
+    """
+
+    draws: int = 400
+    seed: int = 0
+    margin: float = 0.01
+    spreads: Mapping[str, float] = field(default_factory=dict)
+    correlation: Mapping[str, float] = field(default_factory=dict)
+    sites: Mapping[str, Mapping[str, float]] = field(default_factory=dict)
+    absorbers: Mapping[str, Mapping[str, float]] = field(default_factory=dict)
+
+
+@dataclass(frozen=True, slots=True)
 class StudyPlan:
     """A whole study.
 
@@ -266,6 +307,7 @@ class StudyPlan:
     films : junctions made from a material
     worth : WorthPlan or None
     portfolio : site -> weight; None = all sites alike
+    chance : ChancePlan or None
     """
 
     name: str
@@ -283,3 +325,4 @@ class StudyPlan:
     films: tuple[FilmPlan, ...] = ()
     worth: WorthPlan | None = None
     portfolio: Mapping[str, float] | None = None
+    chance: ChancePlan | None = None
