@@ -74,3 +74,20 @@ def test_exponential_and_logarithm():
     np.testing.assert_allclose([points._log(value) for value in y], np.log(y), rtol=3e-9, atol=3e-9)
     near = 1 + np.linspace(-1e-3, 1e-3, 1000)  # where steps end
     np.testing.assert_allclose([points._log(value) for value in near], np.log(near), rtol=1e-12)
+
+
+@pytest.mark.parametrize("each", [(0.0, 0.0, 0.0, math.inf), (3e-4, 20.0, 0.02, 1.0)])
+def test_power_from_a_table_of_saturation_currents(each):
+    """The same as with the currents interpolated in numpy; also beyond the table's ends, and NaN where no temperature."""
+    hot, cold, steps = 1 / 398.15, 1 / 218.15, 256
+    inverse = np.linspace(hot, cold, steps + 1)
+    table = 40.0 - 1.3 / 8.617e-5 * inverse
+    heat = np.random.default_rng(4).uniform(210.0, 400.0, 700)
+    light = many(700)[0]
+    thermal = 1.2 * 8.617e-5
+    saturation = np.exp(40.0 - 1.3 / 8.617e-5 / heat)  # a straight table: interpolated without error
+    expected = points.single_power(light, saturation, thermal * heat, np.array(each))
+    heat[3] = np.nan
+    found = points.junction_power(light, heat, table, hot, (cold - hot) / steps, thermal, np.array(each))
+    assert np.isnan(found[3])
+    np.testing.assert_allclose(np.delete(found, 3), np.delete(expected, 3), rtol=1e-9)

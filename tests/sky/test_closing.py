@@ -154,6 +154,17 @@ def test_few_bands_stand_for_all():
     assert np.max(np.abs(part / whole - 1)) < 0.01
 
 
+def test_other_bands_than_usual_are_all_used():
+    """A grid of other bands has no table of few: the search takes them all, however many."""
+    optics, air = column.optics(), some_air(40)
+    dni, dhi = light_of(air, np.full(40, 9.0), np.full(40, 0.3))
+    for n_band in (121, 100):
+        part = optics.replace(**{name: getattr(optics, name)[:n_band] for name in column.Optics.__slots__})
+        sky = close(air, dni, dhi, haze_hourly=False, constants=part)
+        np.testing.assert_allclose(sky.diffuse.sum(axis=1), dhi, rtol=1e-9)
+        assert np.all(sky.cloud_depth > 0)
+
+
 def plainly_closed(air, dni, dhi):
     """Beam, diffuse light and cloud depth by plain numpy, halving instead of chords, haze as given."""
     optics, n = column.optics(), len(dni)

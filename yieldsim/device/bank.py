@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Iterable
 from dataclasses import dataclass
+from functools import lru_cache
 
 import numpy as np
 from numpy.polynomial import chebyshev
@@ -166,14 +167,20 @@ class Bank:
         out = np.empty((len(self.absorbers), currents.shape[1]))
         for a, absorber in enumerate(self.absorbers):
             first = int(self.first_of[a])
-            if len(absorber.junctions) > 1:
+            members = range(first, first + len(absorber.junctions))
+            if len(members) > 1 and (absorber.terminals == 2 or absorber.coupling > 0):
                 out[a] = self._stack_power(a, currents, temperature[a])
+            elif own is None:
+                out[a] = sum(self._own_power(j, currents[j], temperature) for j in members)
             else:
-                out[a] = self._own_power(first, currents[first], temperature) if own is None else own[first]
+                out[a] = own[first : first + len(members)].sum(axis=0)
         return out
 
     def standard(self) -> Standard:
-        """Return what the absorbers do at standard conditions, by the code that computes the hours."""
+        """Return what the absorbers do at standard conditions, by the code that computes the hours; computed once."""
+        return _standard(self)
+
+    def _at_standard(self) -> Standard:
         bands = reference_bands()
         light = (bands * (STANDARD_IRRADIANCE / bands.sum()))[None]
         temperature = np.array(
@@ -207,11 +214,14 @@ class Bank:
         return np.asarray(np.exp(table[at] + (place - at) * (table[at + 1] - table[at])))
 
     def _own_power(self, j: int, currents: Array, temperature: Array) -> Array:
-        heat, junction = temperature[self.absorber_of[j]], self.junctions[j]
-        return points.single_power(
+        junction = self.junctions[j]
+        return points.junction_power(
             np.ascontiguousarray(generated(junction, currents)),
-            self._saturation(j, heat),
-            junction.ideality * THERMAL_EV_PER_K * heat,
+            np.ascontiguousarray(temperature[self.absorber_of[j]]),
+            self.log_saturation[j],
+            _INVERSE_HOT,
+            (_INVERSE_COLD - _INVERSE_HOT) / _INVERSE_STEPS,
+            junction.ideality * THERMAL_EV_PER_K,
             np.array(constants(junction)),
         )
 
@@ -295,6 +305,11 @@ class Bank:
                 high = nodes[rows, at[a, block] + 1, column]
                 out[j, block] = low + weight[a, block] * (high - low)
         return out
+
+
+@lru_cache(maxsize=64)  # every site and mounting asks for the same
+def _standard(bank: Bank) -> Standard:
+    return bank._at_standard()
 
 
 def _fold(absorber: Absorber) -> tuple[Array, Array]:

@@ -28,7 +28,8 @@ _MOST = 700.0  # exp of more is beyond the largest number
 # Rows of scratch memory, a chunk of hours long; a constant distance, so that the compiler sees they do not overlap.
 _CHUNK = 128
 _JL, _J0, _A, _INVERSE_A, _TARGET, _W, _LOW, _HIGH, _VJ, _ACTIVE, _CURRENT = (_CHUNK * row for row in range(11))
-_N_ROW = 11
+_LIT, _BLANK = _CHUNK * 11, _CHUNK * 12
+_N_ROW = 13
 
 # What is compiled calls nothing compiled elsewhere: numba's cache looks at this file only. No fast-math flags: fresh
 # and cached code would give other last digits.
@@ -125,6 +126,39 @@ def _step(s: Array, n: int, constants: Array) -> int:
 
 
 @njit(error_model="numpy", cache=True, nogil=True)
+def _exp(x: float) -> float:
+    """Return exp(x) for |x| <= 700 to 1e-13 of its value."""
+    x = min(max(x, -_MOST), _MOST)
+    half = _expm1(x * 0.5) + 1.0
+    return half * half
+
+
+@njit(error_model="numpy", cache=True, nogil=True)
+def _chunk(s: Array, n: int, constants: Array, power: Array) -> None:
+    """Set the power of a chunk of hours from its rows of generated and saturation current and thermal voltage."""
+    for h in range(n):
+        lit = s[_JL + h] > 0 and s[_J0 + h] > 0 and s[_A + h] > 0
+        s[_BLANK + h] = 0.0 if s[_JL + h] == 0 else math.nan
+        s[_JL + h], s[_J0 + h] = (s[_JL + h] if lit else 1.0), (s[_J0 + h] if lit else 1.0)
+        s[_A + h], s[_ACTIVE + h], s[_LIT + h] = (
+            (s[_A + h] if lit else 1.0),
+            (1.0 if lit else 0.0),
+            (1.0 if lit else 0.0),
+        )
+    _begin(s, n, constants)
+    for _ in range(_STEPS):
+        if _step(s, n, constants) == 0:
+            break
+    for h in range(n):
+        vj = s[_VJ + h]
+        lost = s[_JL + h] * constants[2] / (constants[3] - vj)
+        s[_CURRENT + h] = s[_JL + h] - s[_J0 + h] * _expm1(vj * s[_INVERSE_A + h]) - vj * constants[1] - lost
+    for h in range(n):
+        found = s[_CURRENT + h] * (s[_VJ + h] - s[_CURRENT + h] * constants[0])
+        power[h] = found if s[_LIT + h] > 0 else s[_BLANK + h]
+
+
+@njit(error_model="numpy", cache=True, nogil=True)
 def single_power(photocurrent: Array, saturation: Array, thermal: Array, constants: Array) -> Array:
     """Return the power of a junction in each hour; 0 in the dark, NaN where an input is NaN.
 
@@ -142,21 +176,44 @@ def single_power(photocurrent: Array, saturation: Array, thermal: Array, constan
     s = np.ones(_N_ROW * _CHUNK)
     for first in range(0, len(power), _CHUNK):
         n = min(_CHUNK, len(power) - first)
-        jl, j0, a = photocurrent[first : first + n], saturation[first : first + n], thermal[first : first + n]
         for h in range(n):
-            lit = jl[h] > 0 and j0[h] > 0 and a[h] > 0
-            s[_JL + h], s[_J0 + h] = (jl[h] if lit else 1.0), (j0[h] if lit else 1.0)
-            s[_A + h], s[_ACTIVE + h] = (a[h] if lit else 1.0), (1.0 if lit else 0.0)
-        _begin(s, n, constants)
-        for _ in range(_STEPS):
-            if _step(s, n, constants) == 0:
-                break
+            s[_JL + h], s[_J0 + h], s[_A + h] = photocurrent[first + h], saturation[first + h], thermal[first + h]
+        _chunk(s, n, constants, power[first : first + n])
+    return power
+
+
+@njit(error_model="numpy", cache=True, nogil=True)
+def junction_power(
+    photocurrent: Array, temperature: Array, log_saturation: Array, hot: float, per_step: float, thermal: float,
+    constants: Array,
+) -> Array:  # fmt: skip
+    """Return the power of a junction in each hour from its table of saturation currents; else as `single_power`.
+
+    Parameters
+    ----------
+    photocurrent, temperature : (n,) arrays [A m-2], [K]
+    log_saturation : (n_step + 1,) array [ln(A m-2)], over evenly spaced inverse temperature
+    hot, per_step : float [K-1], inverse temperature of the first entry, and from one to the next
+    thermal : float [V K-1], ideality times k/q
+    constants : (4,) array, as in `single_power`
+
+    Returns
+    -------
+    (n,) array [W m-2]
+    """
+    power = np.empty(len(photocurrent))
+    s = np.ones(_N_ROW * _CHUNK)
+    last = len(log_saturation) - 2
+    for first in range(0, len(power), _CHUNK):
+        n = min(_CHUNK, len(power) - first)
         for h in range(n):
-            vj = s[_VJ + h]
-            lost = s[_JL + h] * constants[2] / (constants[3] - vj)
-            s[_CURRENT + h] = s[_JL + h] - s[_J0 + h] * _expm1(vj * s[_INVERSE_A + h]) - vj * constants[1] - lost
+            heat = temperature[first + h]
+            place = (1.0 / heat - hot) / per_step
+            at = int(min(max(place, 0.0), float(last))) if place == place else 0  # NaN stays NaN in what follows
+            low = log_saturation[at]
+            s[_JL + h], s[_A + h] = photocurrent[first + h], thermal * heat
+            s[_J0 + h] = low + (place - at) * (log_saturation[at + 1] - low)
         for h in range(n):
-            found = s[_CURRENT + h] * (s[_VJ + h] - s[_CURRENT + h] * constants[0])
-            lit = jl[h] > 0 and j0[h] > 0 and a[h] > 0
-            power[first + h] = found if lit else (0.0 if jl[h] == 0 else math.nan)
+            s[_J0 + h] = _exp(s[_J0 + h]) if s[_A + h] == s[_A + h] else math.nan
+        _chunk(s, n, constants, power[first : first + n])
     return power

@@ -13,7 +13,7 @@ from yieldsim import reference, spectrum
 from yieldsim.sky import column, kernel
 from yieldsim.sky.atmosphere import AOD_RANGE
 from yieldsim.sky.column import Air, Optics
-from yieldsim.sky.kernel_layer import STRIDE
+from yieldsim.sky.kernel_layer import LANES, STRIDE
 
 Array = NDArray[np.float64]
 Mask = NDArray[np.bool_]
@@ -117,11 +117,14 @@ def close(
     return ClosedSky(beam, diffuse, haze, cloud_depth, open_share, clear, monthly, clear_days)
 
 
-@lru_cache(maxsize=1)
-def _chosen_bands() -> tuple[NDArray[np.intp], Array]:
-    table = reference.table("closing_bands")
-    wavelength = spectrum.band_wavelengths()
-    return np.searchsorted(wavelength, table["wavelength_nm"]), table["weight"]
+@lru_cache(maxsize=4)
+def chosen_bands(n_band: int) -> tuple[NDArray[np.intp], Array]:
+    """Return the few bands that stand for all and their weights; all of them where the bands are other than usual."""
+    wavelength, table = spectrum.band_wavelengths(), reference.table("closing_bands")
+    if n_band == len(wavelength):
+        return np.searchsorted(wavelength, table["wavelength_nm"]), table["weight"]
+    spare = -n_band % LANES
+    return np.pad(np.arange(n_band), (0, spare), mode="edge"), np.pad(np.ones(n_band), (0, spare))
 
 
 def few_bands(constants: Optics) -> Optics:
@@ -129,7 +132,7 @@ def few_bands(constants: Optics) -> Optics:
 
     Sums over them are those over all bands within 0.03 % rms, 1 % at worst (`reference` table closing_bands).
     """
-    chosen, weight = _chosen_bands()
+    chosen, weight = chosen_bands(len(constants.factor))
     few = Optics(**{name: getattr(constants, name)[chosen] for name in Optics.__slots__})
     return few.replace(factor=few.factor * weight)
 
@@ -138,7 +141,7 @@ def on_few_bands(air: Air) -> Air:
     """Return the air with the ground's albedo in the few bands only."""
     if air.albedo.ndim == 1:
         return air
-    return replace(air, albedo=air.albedo[:, _chosen_bands()[0]])
+    return replace(air, albedo=air.albedo[:, chosen_bands(air.albedo.shape[1])[0]])
 
 
 def beam_haze(air: Air, earth_sun: Array, dni: Array, constants: Optics) -> Array:
@@ -268,6 +271,6 @@ def _split(
     models = column.kernel_model(constants), column.kernel_model(few)
     light = np.stack([dni, dhi, earth_sun, air.cos_zenith], axis=1)
     found, beam, diffuse = np.zeros((n, 2)), np.zeros((n, n_band)), np.zeros((n, n_band))
-    tops, chosen = (_top(constants), _top(few)), _chosen_bands()[0]
+    tops, chosen = (_top(constants), _top(few)), chosen_bands(n_band)[0]
     kernel.split(hours, albedo, models, tops, chosen, light, _OPEN, found, beam, diffuse)
     return beam, diffuse, found[:, 1], found[:, 0]
