@@ -207,11 +207,7 @@ class Bank:
         return np.array([self._saturation(j, temperature[self.absorber_of[j]]) for j in range(len(self.junctions))])
 
     def _saturation(self, j: int, temperature: Array) -> Array:
-        """Interpolate ln J0 linearly in 1/T, in which it is nearly straight: 3e-6 off at most over -55 to 125 degC."""
-        place = (1 / temperature - _INVERSE_HOT) * (_INVERSE_STEPS / (_INVERSE_COLD - _INVERSE_HOT))
-        at = np.clip(np.nan_to_num(place), 0, _INVERSE_STEPS - 1).astype(np.intp)
-        table = self.log_saturation[j]
-        return np.asarray(np.exp(table[at] + (place - at) * (table[at + 1] - table[at])))
+        return np.asarray(np.exp(over_inverse_temperature(self.log_saturation[j], temperature)))
 
     def _own_power(self, j: int, currents: Array, temperature: Array) -> Array:
         junction = self.junctions[j]
@@ -305,6 +301,17 @@ class Bank:
                 high = nodes[rows, at[a, block] + 1, column]
                 out[j, block] = low + weight[a, block] * (high - low)
         return out
+
+
+def over_inverse_temperature(table: Array, temperature: Array) -> Array:
+    """Return a table of ln J0 (n_steps + 1,) at cell temperatures (...) [K].
+
+    Linear in 1/T, in which ln J0 is nearly straight: 3e-6 off at most over -55 to 125 degC.
+    """
+    place = (1 / temperature - _INVERSE_HOT) * (_INVERSE_STEPS / (_INVERSE_COLD - _INVERSE_HOT))
+    at = np.clip(np.nan_to_num(place), 0, _INVERSE_STEPS - 1).astype(np.intp)
+    low = table[at]
+    return np.asarray(low + (place - at) * (table[at + 1] - low))
 
 
 @lru_cache(maxsize=64)  # every site and mounting asks for the same

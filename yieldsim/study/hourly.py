@@ -42,6 +42,7 @@ class SiteSky:
     optics : Optics of the air, the site's own haze in it
     sources : (input, where it came from) for each atmospheric input
     horizon : Horizon or None, the skyline around the site
+    calendar : (day, month) of the lit intervals where their expected haze is a climatology that the beam may correct
     """
 
     weather: Weather
@@ -53,6 +54,7 @@ class SiteSky:
     optics: column.Optics
     sources: tuple[tuple[str, str], ...]
     horizon: Horizon | None = None
+    calendar: tuple[NDArray[np.intp], NDArray[np.intp]] | None = None
 
 
 @dataclass(frozen=True, slots=True)
@@ -130,26 +132,45 @@ def site_sky(site: SitePlan, weather: Weather) -> SiteSky:
     course = course.only(course.lit > 0)
     gathered, sources = air_of_site.gather(site, weather, lit, month[lit], day[lit], course.cos_zenith)
     optics = column.with_haze(column.optics(), site.atmosphere.single_scattering_albedo, site.atmosphere.asymmetry)
-    # Light is closed over the lit part of an interval, then spread over the whole of it.
-    dni, dhi = weather["dni"][lit], weather["dhi"][lit]
-    consecutive = np.diff(weather.time[lit], prepend=weather.time[0] - 1) == weather.interval_s
-    closed = closing.close(
-        gathered,
-        course.earth_sun,
-        dni / course.lit,
-        dhi / course.lit,
-        consecutive,
-        haze_hourly=site.atmosphere.haze == "hourly",
-        constants=optics,
-        calendar=air_of_site.calendar(weather, lit, month, sources),
-    )
-    share = course.lit[:, None]
-    closed = replace(closed, beam=closed.beam * share, diffuse=closed.diffuse * share)
+    calendar = air_of_site.calendar(weather, lit, month, sources)
+    closed = closed_on(weather, lit, course, gathered, optics, calendar, haze_hourly=site.atmosphere.haze == "hourly")
     if closed.clear_days.any():
         days = ", ".join(str(count) for count in closed.clear_days)
         note = f"monthly medians of clear days from their beam (days a month: {days}), prior "
         sources = (("aod500", note + sources[0][1]), *sources[1:])
-    return SiteSky(weather, lit, month[lit], course, gathered, closed, optics, sources, site.horizon)
+    return SiteSky(weather, lit, month[lit], course, gathered, closed, optics, sources, site.horizon, calendar)
+
+
+def closed_on(
+    weather: Weather,
+    lit: NDArray[np.intp],
+    course: sun.SunCourse,
+    air: column.Air,
+    optics: column.Optics,
+    calendar: tuple[NDArray[np.intp], NDArray[np.intp]] | None,
+    *,
+    haze_hourly: bool,
+    level: float = 1.0,
+) -> closing.ClosedSky:
+    """Return the light of lit intervals closed on a file's beam and diffuse light, averages over the whole interval.
+
+    Light is closed over the lit part of an interval, then spread over the whole of it. ``level`` [1] is what the
+    file's light is multiplied by; all else as in `SiteSky`.
+    """
+    dni, dhi = weather["dni"][lit] * level, weather["dhi"][lit] * level
+    consecutive = np.diff(weather.time[lit], prepend=weather.time[0] - 1) == weather.interval_s
+    closed = closing.close(
+        air,
+        course.earth_sun,
+        dni / course.lit,
+        dhi / course.lit,
+        consecutive,
+        haze_hourly=haze_hourly,
+        constants=optics,
+        calendar=calendar,
+    )
+    share = course.lit[:, None]
+    return replace(closed, beam=closed.beam * share, diffuse=closed.diffuse * share)
 
 
 @lru_cache(maxsize=64)

@@ -67,7 +67,7 @@ def classes(front: Array, rear: Array | None, temperature: Array, kept: Array) -
     # Power bends most over weak light: levels are shared out by the root of the light, colours and warmths by light.
     kinds = ((blue, light, SHAPES), (light, np.sqrt(light), LEVELS), (temperature[lit], light, WARMTHS))
     for values, share, count in kinds:
-        number = number * count + _shared_out(np.asarray(values), share, count)
+        number = number * count + shared_out(np.asarray(values), share, count)
     _, number = np.unique(number, return_inverse=True)
     n_class = int(number.max(initial=-1)) + 1
     weight = np.asarray(np.bincount(number, kept[lit], minlength=n_class), dtype=np.float64)
@@ -81,7 +81,7 @@ def classes(front: Array, rear: Array | None, temperature: Array, kept: Array) -
     return Classes(mean(front), None if rear is None else mean(rear), np.asarray(heat / whole), weight)
 
 
-def _shared_out(values: Array, weight: Array, count: int) -> NDArray[np.intp]:
+def shared_out(values: Array, weight: Array, count: int) -> NDArray[np.intp]:
     """Return the class (n,) of each value, classes in rising order holding a like share of the weight."""
     order = np.argsort(values, kind="stable")
     share = np.cumsum(weight[order]) / weight.sum()

@@ -12,9 +12,10 @@ import numpy as np
 
 import yieldsim
 from yieldsim.device.stack import Absorber
-from yieldsim.study import annual, compare, datasets, light, pairs, store, sweep, worth
+from yieldsim.study import annual, chance_store, compare, datasets, light, pairs, store, sweep, worth
 from yieldsim.study.annual import Ratings
 from yieldsim.study.book import Book
+from yieldsim.study.chance import Gathered
 from yieldsim.study.hourly import (
     FacesOfYear,
     PlaneYear,
@@ -38,7 +39,7 @@ def key(plan: StudyPlan, site: SitePlan) -> str:
     version: str = yieldsim.__version__
     kept = frozenset(plan.keep & {"hourly", "spectra"})
     sold = None if plan.worth is None else (plan.worth.energy_price, plan.worth.limited_by, plan.worth.dc_to_grid)
-    parts = (site, plan.absorbers, plan.gap_sweep, plan.gap_pairs, plan.losses, sold)
+    parts = (site, plan.absorbers, plan.gap_sweep, plan.gap_pairs, plan.losses, sold, plan.chance)
     return store.fingerprint(version, *parts, kept)
 
 
@@ -58,7 +59,7 @@ def compute(plan: StudyPlan, site: SitePlan, years: Iterable[Weather], folder: P
 
     Notes
     -----
-    The first year gives the datasets of hours and spectra.
+    The first year gives the datasets of hours and spectra, and how yields answer to what is drawn.
     """
     books = {mounting.name: Book() for mounting in site.mountings}
     quality: list[Row] = []
@@ -69,10 +70,14 @@ def compute(plan: StudyPlan, site: SitePlan, years: Iterable[Weather], folder: P
         skies: list[_Told] = []
         for part in parts(weather):
             kept = datasets_of if len(calendar) == 1 else None
-            skies.append(_entered(books, plan, site, part, kept, new_year=not skies))
+            skies.append(_entered(books, plan, site, part, kept, new_year=not skies, share=len(part) / len(weather)))
         quality += quality_rows(site.name, weather, skies)
     piece = {"weather_quality": quality} | _tables(plan, site, books, calendar)
     files = datasets_of.write(folder)
+    if datasets_of.chance is not None:
+        found, draws = datasets_of.chance.told(piece["annual"], piece["yearly"])
+        piece |= found
+        files.append(chance_store.write_draws(folder, site.name, draws))
     store.write_piece(folder, store.file_stem(site.name), key(plan, site), piece, files)
     return piece
 
@@ -85,12 +90,13 @@ def _entered(
     kept: _Datasets | None,
     *,
     new_year: bool,
+    share: float,
 ) -> _Told:
-    """Enter a stretch of time into all books of a site; its light is let go of on the way out."""
+    """Enter a stretch of time, a share of its year, into all books of a site; its light is let go of on the way out."""
     sky = site_sky(site, weather)
     found = [_enter(books[mounting.name], plan, site, mounting, sky, new_year) for mounting in site.mountings]
     if kept is not None:
-        kept.add(sky, found)
+        kept.add(sky, found, share)
     return _Told.of(sky)
 
 
@@ -147,15 +153,23 @@ def _first_pairs(plan: GapPairsPlan) -> list[Absorber]:
 
 @dataclass(slots=True)
 class _Datasets:
-    """The datasets of a site's first year, gathered part by part."""
+    """What is kept of a site's first year, gathered part by part."""
 
     plan: StudyPlan
     site: SitePlan
     hourly: list[xr.Dataset] = field(default_factory=list)
     spectra: list[xr.Dataset] = field(default_factory=list)
+    chance: Gathered | None = None
 
-    def add(self, sky: SiteSky, years: Sequence[PlaneYear]) -> None:
-        """Take what is kept of a part."""
+    def __post_init__(self) -> None:
+        """Keep how yields answer to what is drawn where the study asks for it."""
+        if self.plan.chance is not None:
+            self.chance = Gathered(self.plan.chance, self.site, self.plan.absorbers, self.plan.losses)
+
+    def add(self, sky: SiteSky, years: Sequence[PlaneYear], share: float) -> None:
+        """Take what is kept of a part that is this share of the year."""
+        if self.chance is not None:
+            self.chance.add(sky, share)
         if "hourly" in self.plan.keep:
             self.hourly.append(datasets.hourly_dataset(self.site.name, sky, years, self.plan.absorbers))
         if "spectra" in self.plan.keep:
