@@ -78,7 +78,7 @@ def test_exponential_and_logarithm():
 
 @pytest.mark.parametrize("each", [(0.0, 0.0, 0.0, math.inf), (3e-4, 20.0, 0.02, 1.0)])
 def test_power_from_a_table_of_saturation_currents(each):
-    """The same as with the currents interpolated in numpy; also beyond the table's ends, and NaN where no temperature."""
+    """The same as with the currents interpolated in numpy; beyond its ends too, NaN without temperature."""
     hot, cold, steps = 1 / 398.15, 1 / 218.15, 256
     inverse = np.linspace(hot, cold, steps + 1)
     table = 40.0 - 1.3 / 8.617e-5 * inverse
