@@ -291,29 +291,6 @@ class ChancePlan:
 
 
 @dataclass(frozen=True, slots=True)
-class ChancePlan:
-    """What is drawn to tell how sure a ranking is; inputs and their defaults stand in `chance_inputs`.
-
-    Parameters
-    ----------
-    draws : int
-    seed : int
-    margin : float [1], lead that the study asks about, as a share of the other's yield
-    spreads : input -> standard deviation, over the default
-    correlation : input of a site -> correlation between sites [1]; 0 where it is left out
-    sites, absorbers : name -> input -> standard deviation, for that site or absorber alone
-    """
-
-    draws: int = 400
-    seed: int = 0
-    margin: float = 0.01
-    spreads: Mapping[str, float] = field(default_factory=dict)
-    correlation: Mapping[str, float] = field(default_factory=dict)
-    sites: Mapping[str, Mapping[str, float]] = field(default_factory=dict)
-    absorbers: Mapping[str, Mapping[str, float]] = field(default_factory=dict)
-
-
-@dataclass(frozen=True, slots=True)
 class StudyPlan:
     """A whole study.
 
@@ -348,5 +325,4 @@ class StudyPlan:
     films: tuple[FilmPlan, ...] = ()
     worth: WorthPlan | None = None
     portfolio: Mapping[str, float] | None = None
-    chance: ChancePlan | None = None
     chance: ChancePlan | None = None
