@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from functools import lru_cache
 from importlib import resources
 
 import numpy as np
@@ -83,6 +84,11 @@ def turbidity_climatology(latitude_deg: float, longitude_deg: float) -> Array:
     ----------
     J. Remund, L. Wald, M. Lefevre, T. Ranchin, J. Page, Worldwide Linke turbidity information, ISES 2003.
     """
+    return _turbidity_at(latitude_deg, longitude_deg).copy()
+
+
+@lru_cache(maxsize=256)  # asked for again for every year of a site, and every part of a year
+def _turbidity_at(latitude_deg: float, longitude_deg: float) -> Array:
     import h5py
 
     path = resources.files("pvlib") / "data" / "LinkeTurbidities.h5"

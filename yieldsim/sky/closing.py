@@ -221,16 +221,16 @@ def monthly_haze(
     Notes
     -----
     A day's haze is the median of its clear hours, of which it needs two; a month's the median of its days. The prior
-    counts
-    as `PRIOR_DAYS` days, in logarithms, since haze scatters by factors.
+    counts as `PRIOR_DAYS` days, in logarithms, since haze scatters by factors.
     """
     expected, days = np.full(12, np.nan), np.zeros(12, dtype=np.intp)
     for m in np.unique(month):
         inside = month == m
         expected[m] = np.exp(np.mean(np.log(prior[inside])))
         chosen = inside & clear
-        numbers, count = np.unique(day[chosen], return_counts=True)
-        hazes = [np.median(solved[chosen & (day == number)]) for number in numbers[count >= _DAY_HOURS]]
+        own_day, own_haze = day[chosen], solved[chosen]
+        numbers, count = np.unique(own_day, return_counts=True)
+        hazes = [np.median(own_haze[own_day == number]) for number in numbers[count >= _DAY_HOURS]]
         days[m] = len(hazes)
         if hazes:
             found = np.log(np.median(hazes))

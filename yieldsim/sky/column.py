@@ -316,9 +316,15 @@ def transmit_plain(air: Air, cloud_depth: Array, constants: Optics | None = None
 def forward_share(air: Air, constants: Optics | None = None) -> Array:
     """Return haze's share of all scattering by clear air, (n, n_band) [1]: the part that keeps near the sun."""
     constants = optics() if constants is None else constants
-    haze = air.aod500[:, None] * np.exp(-air.angstrom_exponent[:, None] * constants.haze_shape)
-    haze = haze * constants.haze_albedo
-    return np.asarray(haze / (haze + air.pressure[:, None] / BIRD_PRESSURE * constants.rayleigh))
+    exponents, of_hour = np.unique(air.angstrom_exponent, return_inverse=True)  # few: most often one for all hours
+    shape = np.exp(-exponents[:, None] * constants.haze_shape) * (constants.haze_albedo / constants.rayleigh)
+    # haze/(haze + air) as 1 - 1/(1 + haze/air)
+    share = shape[of_hour]
+    share *= (air.aod500 * BIRD_PRESSURE / air.pressure)[:, None]
+    share += 1.0
+    np.divide(-1.0, share, out=share)
+    share += 1.0
+    return share
 
 
 def beam_transmittance(air: Air, constants: Optics | None = None) -> tuple[Array, Array]:

@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Sequence
-from dataclasses import dataclass, replace
+from dataclasses import dataclass
 from functools import lru_cache
 
 import numpy as np
@@ -169,8 +169,9 @@ def closed_on(
         constants=optics,
         calendar=calendar,
     )
-    share = course.lit[:, None]
-    return replace(closed, beam=closed.beam * share, diffuse=closed.diffuse * share)
+    for light in (closed.beam, closed.diffuse):
+        light *= course.lit[:, None]
+    return closed
 
 
 @lru_cache(maxsize=64)
