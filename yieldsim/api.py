@@ -45,7 +45,21 @@ from yieldsim.config import library
 from yieldsim.config.many import Cell
 from yieldsim.device.stack import gap_label
 from yieldsim.errors import InputError, PlaceError, Problem
-from yieldsim.study import compare, datasets, generation, hourly, pairs, portfolio, region, run, store, sweep, worth
+from yieldsim.study import (
+    chance,
+    chance_store,
+    compare,
+    datasets,
+    generation,
+    hourly,
+    pairs,
+    portfolio,
+    region,
+    run,
+    store,
+    sweep,
+    worth,
+)
 from yieldsim.study.annual import Ratings
 from yieldsim.study.plan import ColumnsPlan, Row, SitePlan, StudyPlan
 from yieldsim.study.result import StudyResult, by_hour_table, records, responses_table
@@ -189,7 +203,7 @@ def _gathered(plan: StudyPlan, folder: Path, details: dict[str, Any]) -> StudyRe
     standing = [] if paired is None else pairs.material_rows(records(paired), paired_materials(plan))
     films = generation.rows(plan.absorbers, plan.films)
     annual, quality, ledger = frame("annual"), frame("weather_quality"), frame("ledger")
-    more = _decision(plan, found)
+    more = _decision(plan, folder, found) | {name: frame(name) for name in chance.TABLES}
     assert annual is not None  # every site has rows of both
     assert quality is not None
     return StudyResult(
@@ -214,7 +228,9 @@ def _gathered(plan: StudyPlan, folder: Path, details: dict[str, Any]) -> StudyRe
     )
 
 
-def _decision(plan: StudyPlan, found: Mapping[str, Mapping[str, Sequence[Any]]]) -> dict[str, pd.DataFrame]:
+def _decision(
+    plan: StudyPlan, folder: Path, found: Mapping[str, Mapping[str, Sequence[Any]]]
+) -> dict[str, pd.DataFrame | None]:
     """Return the tables that several sites, and money, add to a study's."""
     weights = portfolio.weights_of([site.name for site in plan.sites], plan.portfolio)
     regrets = portfolio.regret_rows(found["annual"], weights)
@@ -226,8 +242,24 @@ def _decision(plan: StudyPlan, found: Mapping[str, Mapping[str, Sequence[Any]]])
     if plan.worth is not None:
         sold = [dict(zip(found["sold"], row, strict=True)) for row in zip(*found["sold"].values(), strict=True)]
         ratings = Ratings.of(plan.absorbers)
-        made["worth"] = worth.rows(plan.worth, plan.absorbers, ratings, plan.reference, sold)
+        drawn = None if plan.chance is None else _drawn(plan, folder, found["annual"])
+        made["worth"] = worth.rows(plan.worth, plan.absorbers, ratings, plan.reference, sold, drawn)
     return {name: pd.DataFrame(rows) for name, rows in made.items()}
+
+
+def _drawn(plan: StudyPlan, folder: Path, annual: Mapping[str, Sequence[Any]]) -> worth.Draws:
+    """Return each draw's yield over the study's: per area where area limits the plant, else per rated power."""
+    measure = (
+        "energy_kwh_m2" if plan.worth is not None and plan.worth.limited_by == "area" else "specific_yield_kwh_kwp"
+    )
+    keys = zip(annual["site"], annual["mounting"], annual["absorber"], strict=True)
+    base = dict(zip(keys, annual[measure], strict=True))
+    return {
+        (site, mounting, absorber): getattr(draws, measure)[:, m, a] / base[site, mounting, absorber]
+        for site, draws in chance_store.open_draws(folder, [site.name for site in plan.sites]).items()
+        for m, mounting in enumerate(draws.mountings)
+        for a, absorber in enumerate(draws.absorbers)
+    }
 
 
 def paired_materials(plan: StudyPlan) -> list[tuple[str, float, float]]:

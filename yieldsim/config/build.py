@@ -7,7 +7,7 @@ from dataclasses import replace
 from pathlib import Path
 from typing import Any, Literal, TypeVar, cast
 
-from yieldsim.config import absorber_schema, absorbers, grid, schema, site_schema
+from yieldsim.config import absorber_schema, absorbers, chance_schema, grid, schema, site_schema
 from yieldsim.config.fields import MONTHS
 from yieldsim.config.inputs import PVLIB, locate, sha256
 from yieldsim.config.mounting_schema import AnyMounting
@@ -91,6 +91,7 @@ class Builder:
             films=tuple(maker.films),
             worth=worth,
             portfolio=study.portfolio,
+            chance=None if study.chance is None else chance_schema.chance_plan(study.chance),
         )
         return replace(plan, resolved=resolved(study, plan))
 
@@ -247,6 +248,8 @@ def resolved(study: schema.Study, plan: StudyPlan) -> dict[str, Any]:
         "losses": study.losses.model_dump(exclude_none=True),
         "keep": [part for part in schema.PARTS if part in plan.keep],
     }
+    if plan.chance is not None:
+        content["chance"] = chance_schema.resolved(plan.chance)
     if study.portfolio is not None:
         content["portfolio"] = dict(study.portfolio)
     if study.worth is not None:

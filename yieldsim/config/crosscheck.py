@@ -33,6 +33,7 @@ def problems(document: Document) -> list[Problem]:
         *_weather_twice(document, study),
         *_portfolio(document, study),
         *_worth(document, study),
+        *_chance(document, study),
     ]
 
 
@@ -164,3 +165,18 @@ def _worth(document: Document, study: dict[str, Any]) -> Iterator[Problem]:
 
 
 _BY_ABSORBER = ("module_price_per_w", "module_price_per_m2", "degradation_per_year")
+
+
+def _chance(document: Document, study: dict[str, Any]) -> Iterator[Problem]:
+    """Find spreads of sites and absorbers that the study does not have."""
+    chance = study.get("chance")
+    for section in ("sites", "absorbers") if isinstance(chance, dict) else ():
+        given = chance.get(section) if isinstance(chance, dict) else None
+        items = study.get(section)
+        names = [name for _, name in _names(study, section)]
+        if not isinstance(given, dict) or not isinstance(items, list) or len(names) < len(items):
+            continue
+        for name in given:
+            if name not in names:
+                allowed = f"the name of one of the {section}{nearest(name, names)}"
+                yield document.problem(("chance", section, str(name)), show(name), allowed, of_key=True)

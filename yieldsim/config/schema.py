@@ -12,6 +12,7 @@ from pydantic_core import CoreSchema
 
 from yieldsim.config import grid, many
 from yieldsim.config.absorber_schema import GAP, Absorber, SweepQuality
+from yieldsim.config.chance_schema import Chance
 from yieldsim.config.fields import Choice, Length, Monthly, Name, Number, Section, Text, by, one_or_list, refusal
 from yieldsim.config.site_schema import Mounting, Site
 from yieldsim.config.worth_schema import Portfolio, Worth
@@ -20,9 +21,7 @@ PARTS = ("annual", "monthly", "hourly", "spectra", "plots")
 MAX_ABSORBERS = 100
 
 #: Keys that a later version will take: named in the message, so that nobody looks for a slip of typing.
-NOT_YET = (
-    "chance", "climate",
-)  # fmt: skip
+NOT_YET = ("climate",)
 
 # The study's name is a folder: what every file system can hold, and nothing that leads elsewhere.
 FolderName = Annotated[
@@ -186,6 +185,7 @@ class Study(Section):
     losses: Losses = Field(default_factory=Losses)
     gap_sweep: GapSweep | None = None
     gap_pairs: GapPairs | None = None
+    chance: Chance | None = None
     portfolio: Portfolio | None = Field(
         default=None, description="weight of each site where several are served by one choice; left out: all alike"
     )

@@ -187,6 +187,8 @@ def _certainty(all_places: Sequence[Place], duels: pd.DataFrame | None) -> str:
 def _chances(all_places: Sequence[Place], duels: pd.DataFrame) -> str:
     """Return how probable it is that the best beats the next, from the head-to-head table read either way round."""
     found: dict[str, float] = {}
+    if "measure" in duels:
+        duels = duels[duels["measure"] == "energy_kwh_m2"]
     for place in all_places:
         best, second = place.best, str(place.rows[1]["absorber"])
         here = duels[(duels["site"] == place.site) & (duels["mounting"] == place.mounting)]

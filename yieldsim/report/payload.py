@@ -35,6 +35,7 @@ MEASURES: Mapping[str, tuple[str, str, int]] = {
 MOST_SPECTRA = 6000
 #: Places a page shows; the answer and the files hold all. 60 with 12 absorbers stay below 5 MB.
 MOST_PLACES = 60
+MOST_IN_DUELS = 8  # absorbers of which every pair is shown
 
 
 def payload(result: StudyResult) -> Tree:
@@ -58,7 +59,7 @@ def payload(result: StudyResult) -> Tree:
         ("gap_pairs", result.gap_pairs, lambda table: _pairs(table, result.gap_pair_materials, found)),
         ("generation", result.generation, lambda table: _films(table, absorbers)),
         ("chance", result.chance, lambda table: _listed(table, found, absorbers)),
-        ("head_to_head", result.head_to_head, lambda table: _listed(table, found, absorbers)),
+        ("head_to_head", result.head_to_head, lambda table: _listed(_duels(table, result), found, absorbers)),
         ("worth", result.worth, lambda table: _listed(table, found, absorbers)),
     ]
     tree |= {name: shape(table) for name, table, shape in parts if table is not None and not table.empty}
@@ -214,6 +215,15 @@ def _listed(table: pd.DataFrame, found: Sequence[Place], absorbers: Sequence[str
                 row[key] = value if isinstance(value, str) else _number(value)
         rows.append(row)
     return rows
+
+
+def _duels(table: pd.DataFrame, result: StudyResult) -> pd.DataFrame:
+    """Return the pairs a page shows: by energy per area, all of few absorbers, else those with the reference."""
+    if "measure" in table:
+        table = table[table["measure"] == "energy_kwh_m2"]
+    if len(result.standard) > MOST_IN_DUELS:
+        table = table[(table["absorber"] == result.reference) | (table["other"] == result.reference)]
+    return table
 
 
 def _responses(table: pd.DataFrame, absorbers: Sequence[str]) -> list[list[list[float | int | None]]]:

@@ -89,8 +89,8 @@ def rows(
 
     Yields
     ------
-    rows of ``measure, absorber, other, input, first, first_low, first_high, total, total_low, total_high, note``;
-    ``other`` empty = of the absorber's measure, else of its lead over the other
+    rows of ``measure, absorber, other, input, first_order, first_order_low, first_order_high, total, total_low,
+    total_high, note``; ``other`` empty = of the absorber's measure, else of its lead over the other
     """
     design = _Design.of(year, first, second, core)
     for k, measure in enumerate(MEASURES):
@@ -106,9 +106,9 @@ def rows(
 def _row(name: str, index: Index) -> Row:
     return {
         "input": name,
-        "first": index.first,
-        "first_low": index.first_low,
-        "first_high": index.first_high,
+        "first_order": index.first,
+        "first_order_low": index.first_low,
+        "first_order_high": index.first_high,
         "total": index.total,
         "total_low": index.total_low,
         "total_high": index.total_high,

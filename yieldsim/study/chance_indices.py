@@ -84,13 +84,14 @@ def indices(samples: Samples) -> dict[str, Index]:
     rows = np.concatenate([np.arange(n)[None], (bits % np.uint64(n)).astype(np.intp).reshape(RESAMPLES, n)])
     middle = (samples.a.mean() + samples.b.mean()) / 2
     a, b = samples.a - middle, samples.b - middle
-    straight = samples.straight_a, samples.straight_b
+    of_line = (samples.straight_a.mean() + samples.straight_b.mean()) / 2
+    straight = samples.straight_a - of_line, samples.straight_b - of_line
     variance = sum(samples.straight_variance.values()) + _both(a, b, rows) - _both(*straight, rows)
     if not variance[0] > 0:
         return {}
     found = {}
     for name, values in samples.mixed.items():
-        mixed, line, own = values - middle, samples.straight_mixed[name], samples.straight_variance[name]
+        mixed, line, own = values - middle, samples.straight_mixed[name] - of_line, samples.straight_variance[name]
         first = own + _mean(b * (mixed - a) - straight[1] * (line - straight[0]), rows)
         total = own + _mean(((a - mixed) ** 2 - (straight[0] - line) ** 2) / 2, rows)
         found[name] = Index(*_with_interval(first / variance), *_with_interval(total / variance))

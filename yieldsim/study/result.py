@@ -32,6 +32,9 @@ TABLES: Mapping[str, str] = {
     "generation": "generation.csv",
     "chance": "chance.csv",
     "head_to_head": "head_to_head.csv",
+    "rank_chance": "rank_chance.csv",
+    "causes": "causes.csv",
+    "flips": "flips.csv",
     "worth": "worth.csv",
     "regret": "regret.csv",
     "portfolio": "portfolio.csv",
@@ -42,7 +45,7 @@ TABLES: Mapping[str, str] = {
 TEXT_COLUMNS = frozenset(
     {
         "site", "mounting", "absorber", "other", "kind", "first", "last", "found", "done", "quality", "measure",
-        "currency", "material", "worst_site",
+        "currency", "material", "worst_site", "verdict", "input", "of", "unit", "note",
     }
 )  # fmt: skip
 
@@ -79,9 +82,19 @@ class StudyResult:
     generation : ``absorber, junction, depth_um, generation_ma_cm2_um, share_above``, where junctions made from a
         material make their pairs under the standard spectrum, see `generation.rows`
     region : of a grid of sites, dims (mounting, absorber, latitude, longitude), see `region.dataset`
-    chance : ``site, mounting, absorber, measure, p90, p50, p10``; P90 is exceeded with 90 % probability
-    head_to_head : ``site, mounting, absorber, other, probability, margin_p90, margin_p50, margin_p10``; probability
-        that ``absorber`` yields more than ``other``, margins as shares of the other's yield
+    chance : ``site, mounting, absorber, measure, base, p90, p50, p10, mean, sd, p90_half, p50_half, p90_error,
+        p50_error``; P90 is exceeded with 90 % probability; ``base`` is the study's own, ``_half`` from the first half
+        of the draws, ``_error`` a standard error
+    head_to_head : ``site, mounting, measure, absorber, other, probability, probability_error, above,
+        probability_above, margin_p90, margin_p50, margin_p10, verdict``; probability that ``absorber``, the one with
+        the higher median, yields more than ``other``, and that it does so by more than ``above``; margins as shares of
+        the other's yield
+    rank_chance : ``site, mounting, measure, absorber, rank, probability``
+    causes : ``site, mounting, measure, absorber, other, input`` and the input's share of the variance of the measure,
+        or of the lead over ``other``, alone (``first_order``) and with others (``total``), with 90 % intervals; see
+        `chance_causes.rows`
+    flips : ``site, mounting, measure, absorber, other, input, of, unit, value, spreads, found``, where the best and the
+        second tie; see `chance_flips.rows`
     worth : ``site, mounting, absorber, currency`` and amounts of a plant with it, see `worth.rows`
     regret : how far each absorber stays behind the best at each site, see `portfolio.regret_rows`
     portfolio : what each absorber does over all sites, see `portfolio.portfolio_rows`
@@ -107,6 +120,9 @@ class StudyResult:
     region: xr.Dataset | None = None
     chance: pd.DataFrame | None = None
     head_to_head: pd.DataFrame | None = None
+    rank_chance: pd.DataFrame | None = None
+    causes: pd.DataFrame | None = None
+    flips: pd.DataFrame | None = None
     worth: pd.DataFrame | None = None
     regret: pd.DataFrame | None = None
     portfolio: pd.DataFrame | None = None
