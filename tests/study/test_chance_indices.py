@@ -51,7 +51,7 @@ def test_ishigami_function():
 
 
 def test_published_values_are_those_of_the_closed_form():
-    """Variances of the function: 1/2 (1 + b pi^4/5)^2, a^2/8, and b^2 pi^8 (1/18 - 1/50) of first and third together."""
+    """Variances: 1/2 (1 + b pi^4/5)^2, a^2/8, and b^2 pi^8 (1/18 - 1/50) of first and third together."""
     a, b = 7.0, 0.1
     one, two, both = (1 + b * np.pi**4 / 5) ** 2 / 2, a**2 / 8, b**2 * np.pi**8 * (1 / 18 - 1 / 50)
     whole = one + two + both

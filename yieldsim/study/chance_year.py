@@ -9,7 +9,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from yieldsim.device.stack import Absorber
-from yieldsim.study import chance_draws
+from yieldsim.study import chance_draws, head_to_head
 from yieldsim.study.chance_inputs import (
     BY_NAME,
     FARTHEST,
@@ -142,12 +142,14 @@ class YearOfChance:
     def best_two(self, k: int) -> tuple[int, int]:
         """Return the absorbers that give most and next most of a measure in the study itself.
 
-        Limits stand aside where there are two that can be made: nobody buys a limit.
+        Limits stand aside where there are two that can be made: nobody buys a limit. One that ties with the best is no
+        second while there is another.
         """
         real = [i for i, absorber in enumerate(self.shortcut.absorbers) if not is_limit(absorber)]
         among = np.array(real if len(real) > 1 else range(len(self.shortcut.absorbers)))
-        order = among[np.argsort(-self.base[k, among], kind="stable")]
-        return int(order[0]), int(order[1])
+        first, *rest = among[np.argsort(-self.base[k, among], kind="stable")].tolist()
+        apart = [i for i in rest if head_to_head.leads(self.base[k, [first]], self.base[k, [i]])[0] != 0]
+        return first, (apart or rest)[0]
 
     def active(self) -> list[str]:
         """Return the inputs with any spread, in their order."""
