@@ -101,6 +101,8 @@ def weather_from(raw: Raw, wanted: Wanted) -> Weather:
         notes.append(f"typical year: months of several years set together, dated to {TYPICAL_YEAR}")
     time = start - round(clock_offset_s)
     columns, findings = _without_placeholders(raw, time)
+    for name in ("ghi", "dni", "dhi"):
+        columns.setdefault(name, np.full(len(time), np.nan))  # for the screen to work out
     if "wind_speed" not in columns:
         columns["wind_speed"] = np.full(len(time), STILL_WIND)
         what = "no wind in the file"
@@ -147,6 +149,7 @@ def _position_problems(raw: Raw, wanted: Wanted) -> list[Problem]:
 
 
 def _column_problems(raw: Raw) -> list[Problem]:
+    """Return what is missing: of light, global alone or any two of the three will do; wind may be absent."""
     light = [name for name in ("ghi", "dni", "dhi") if name in raw.columns]
     return [
         Problem(
@@ -157,7 +160,7 @@ def _column_problems(raw: Raw) -> list[Problem]:
             f"a column for {name}; the file has {', '.join(raw.columns) or 'none'}",
         )
         for name in REQUIRED
-        if name not in (*raw.columns, "wind_speed") and not (name in ("ghi", "dni", "dhi") and len(light) >= 2)
+        if name not in (*raw.columns, "wind_speed") and not (name in ("ghi", "dni", "dhi") and (len(light) >= 2 or "ghi" in light))
     ]
 
 

@@ -1,16 +1,44 @@
-"""Whether a weather file can be believed: findings, limits and mending."""
+"""Whether a weather file can be believed: what is odd is found, mended in the open, or refused.
+
+good = screen.screen(weather)      # mended, or InputError
+screen.review(good).verdict        # usable | usable with care
+"""
 
 from __future__ import annotations
 
+from dataclasses import dataclass, replace
+
 import numpy as np
+from numpy.typing import NDArray
 
 from yieldsim.errors import InputError, Problem
-from yieldsim.screen import limits
+from yieldsim.screen import ceiling, limits, mend, sensors, timestamps
+from yieldsim.screen.marked import flagged, noted
 from yieldsim.sky import sun
-from yieldsim.weather import REQUIRED, Weather
+from yieldsim.weather import REQUIRED, Flag, Weather
 
 YEAR_H = 8760
 LEAST_H = 24  # with allow_gaps: hours with light below which a year says nothing
+
+#: Findings that are told of but cast no doubt on what is computed.
+HARMLESS = frozenset(
+    {"unfilled", "missing_code", "night_light", "negative", "unit", "tenfold_water", "leap_day", "from_two", "air_gap"}
+)
+USABLE, WITH_CARE, NOT_USABLE = "usable", "usable with care", "not usable"
+
+
+@dataclass(frozen=True, slots=True)
+class Review:
+    """What to think of a weather file: a verdict and the reasons for it, in plain words."""
+
+    verdict: str
+    reasons: tuple[str, ...]
+
+
+def review(weather: Weather) -> Review:
+    """Return the verdict on a weather that `screen` let pass."""
+    reasons = tuple(f"{each.found}; {each.done}" for each in weather.findings if each.kind not in HARMLESS)
+    return Review(WITH_CARE if reasons else USABLE, reasons)
 
 
 def screen(weather: Weather, allow_gaps: bool = False) -> Weather:
@@ -19,23 +47,63 @@ def screen(weather: Weather, allow_gaps: bool = False) -> Weather:
     Parameters
     ----------
     weather : Weather, as a reader made it
-    allow_gaps : bool, take less than a year
+    allow_gaps : bool, take less than a year, and leave out what cannot be mended
 
     Raises
     ------
     InputError
-        If it is not fit: too few hours, values missing, light at night beyond what is slight.
+        If it is not fit: too few hours, values missing that cannot be mended.
     """
-    course = sun.course(
-        weather.time, weather.interval_s, weather.latitude_deg, weather.longitude_deg, weather.elevation_m
-    )
+    weather = mend.without_missing_columns(weather)
+    weather = timestamps.corrected(weather)
+    weather = mend.on_a_grid(weather)
+    course = _course(weather)
+    dark = _dark_share(weather, course)
     weather = limits.without_night_light(weather, course)
     weather = limits.without_negative_light(weather)
     weather = limits.with_limited_beam(weather, course)
+    before = _missing_light(weather, course)
+    weather = limits.possible(weather, course)
+    weather = sensors.without_stuck(weather, course)
+    taken_out = _missing_light(weather, course) & ~before
+    weather = sensors.closed(weather, course)
+    weather = sensors.unshaded(weather, course)
+    weather = mend.mended(weather, course, taken_out)
+    weather = limits.with_limited_beam(weather, course)
+    if allow_gaps:
+        weather, course = _without_gaps(weather, course)
     problems = [*_length_problems(weather, course.lit, allow_gaps), *_missing_problems(weather)]
     if problems:
         raise InputError(problems)
-    return weather
+    return ceiling.looked_at(weather, course, dark)
+
+
+def _course(weather: Weather) -> sun.SunCourse:
+    return sun.course(
+        weather.time, weather.interval_s, weather.latitude_deg, weather.longitude_deg, weather.elevation_m
+    )
+
+
+def _dark_share(weather: Weather, course: sun.SunCourse) -> float:
+    """Return the share of global light that falls while the sun is down."""
+    light = np.maximum(np.nan_to_num(weather["ghi"]), 0.0)
+    return float(light[course.lit == 0].sum() / light.sum()) if light.sum() > 0 else 0.0
+
+
+def _missing_light(weather: Weather, course: sun.SunCourse) -> NDArray[np.bool_]:
+    return np.asarray(~np.isfinite(weather["ghi"] + weather["dni"] + weather["dhi"]) & (course.lit > 0))
+
+
+def _without_gaps(weather: Weather, course: sun.SunCourse) -> tuple[Weather, sun.SunCourse]:
+    """Return the weather without the intervals that lack a value, and the sun of the others."""
+    whole = np.all([np.isfinite(weather[name]) for name in REQUIRED], axis=0)
+    if whole.all() or not whole.any():
+        return weather, course
+    flags = weather.flags | flagged(~whole, Flag.GAP)
+    weather = noted(replace(weather, flags=flags), "left_out", ~whole, "no values that could be mended", "left out")
+    columns = {name: values[whole] for name, values in weather.columns.items()}
+    arrays = {name: getattr(weather, name)[whole] for name in ("time", "flags", "row")}
+    return replace(weather, columns=columns, **arrays), course.only(whole)
 
 
 def _length_problems(weather: Weather, lit: np.ndarray, allow_gaps: bool) -> list[Problem]:
@@ -57,6 +125,10 @@ def _missing_problems(weather: Weather) -> list[Problem]:
         missing = ~np.isfinite(weather[name])
         if missing.any():
             at = int(np.argmax(missing))
-            found = f"no value in {int(missing.sum())} rows, first in row {weather.row[at]}"
-            problems.append(Problem(weather.source, int(weather.row[at]), name, found, "a value in every row"))
+            row = int(weather.row[at])
+            when = str(np.datetime64(int(weather.time[at]), "s"))
+            place = f"row {row}" if row else f"the interval of {when} UTC, which the file does not have"
+            found = f"no value in {int(missing.sum())} rows, first in {place}; gaps too long to mend"
+            allowed = "values, gaps of light up to 3 h, or `allow_gaps: true` to leave them out"
+            problems.append(Problem(weather.source, row, name, found, allowed))
     return problems

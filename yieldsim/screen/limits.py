@@ -7,13 +7,50 @@ from dataclasses import replace
 import numpy as np
 from numpy.typing import NDArray
 
+from yieldsim.screen.clear import SOLAR_CONSTANT
 from yieldsim.sky import sun
 from yieldsim.weather import Finding, Flag, Weather
 
 Array = NDArray[np.float64]
 
-SOLAR_CONSTANT = 1361.0  # W m-2, total solar irradiance at 1 AU, Kopp & Lean (2011), doi:10.1029/2010GL045777
 LIGHT = ("ghi", "dni", "dhi")
+
+
+def possible(weather: Weather, course: sun.SunCourse) -> Weather:
+    """Return the weather with light beyond what is physically possible taken out, rare light told of.
+
+    Notes
+    -----
+    Physically possible, with S the sun's irradiance at its distance and mu its cosine: global up to 1.5 S mu^1.2 + 100,
+    diffuse up to 0.95 S mu^1.2 + 50 W m-2. Extremely rare: 1.2 S mu^1.2 + 50 and 0.75 S mu^1.2 + 30 W m-2. (Beam has a
+    limit of its own.)
+
+    References
+    ----------
+    C. N. Long, Y. Shi, An automated quality assessment and control algorithm for surface radiation measurements, Open
+    Atmos. Sci. J. 2 (2008) 23, table 1; limits as recommended for BSRN.
+    """
+    top = SOLAR_CONSTANT * course.earth_sun * course.cos_zenith**1.2
+    columns = dict(weather.columns)
+    for name, (most, plus, rare, rare_plus) in {"ghi": (1.5, 100, 1.2, 50), "dhi": (0.95, 50, 0.75, 30)}.items():
+        values = columns[name]
+        beyond = (course.lit > 0) & (values > most * top + plus)
+        if beyond.any():
+            worst = float(np.nanmax(np.where(beyond, values, -np.inf)))
+            columns[name] = np.where(beyond, np.nan, values)
+            weather = replace(weather, columns=columns)
+            what = f"{name} up to {worst:.0f} W/m2, more than is physically possible"
+            note = finding("beyond_possible", weather, beyond, what, "taken out, then mended")
+            weather = replace(weather, findings=(*weather.findings, note))
+        seldom = (course.lit > 0) & (values > rare * top + rare_plus) & ~beyond
+        if seldom.sum() > _RARE_SHARE * np.count_nonzero(course.lit > 0):
+            what = f"{name} is extremely high in {int(seldom.sum())} rows"
+            note = finding("rare", weather, seldom, what, "kept")
+            weather = replace(weather, findings=(*weather.findings, note))
+    return weather
+
+
+_RARE_SHARE = 0.005  # of daylight rows: single ones are clouds' edges
 
 
 def finding(kind: str, weather: Weather, where: NDArray[np.bool_], found: str, done: str) -> Finding:
