@@ -16,7 +16,6 @@ from numba import njit
 from numpy.typing import NDArray
 
 from yieldsim.device import diode, series
-from yieldsim.device.points import single_power as single_power
 
 Array = NDArray[np.float64]
 

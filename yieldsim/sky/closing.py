@@ -18,7 +18,6 @@ from yieldsim.sky.kernel_layer import LANES, STRIDE
 Array = NDArray[np.float64]
 Mask = NDArray[np.bool_]
 
-BLOCK = 256  # hours at once: band arrays of a block stay in a core's cache
 DIFFUSE_TOLERANCE = 0.15  # a clear hour's haze explains its diffuse light within this share (found on real files)
 DIFFUSE_FLOOR = 8.0  # W m-2, on top: what pyranometers leave at low sun (common practice, no source)
 NEIGHBOUR_RATIO = 1.5  # haze of neighbouring clear hours agrees within this factor ...

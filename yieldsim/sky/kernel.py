@@ -45,7 +45,7 @@ Array = NDArray[np.float64]
 
 # numba keeps compiled code until the function's own file changes and does not look at the files it calls. So this file
 # must change whenever kernel_layer.py does: a test compares the hash.
-LAYER_SHA256 = "6671207546866fa80334f62d4cb0b38e4902ccfa9a811bf80fdab143582d9987"
+LAYER_SHA256 = "d4b7b2b79e0f9d836b4be91e27a5f20c43d6a51e83694898daec0edca09053a2"
 
 CLOUD_DEPTH_MAX = 300.0  # the thickest clouds pass about 2 %; beyond it nothing measurable changes
 CLOUD_TOLERANCE = 2e-4  # of transmittance: moves no band over broadband by more than 0.01 %

@@ -48,7 +48,7 @@ _AA2, _AB2, _BB2 = _A2 * _A2, _A2 * _B2, _B2 * _B2
 _AA3, _AB3, _BB3 = _A3 * _A3, _A3 * _B3, _B3 * _B3
 _LOG2E = 1.4426950408889634
 _LN2_HIGH, _LN2_LOW = 0.6931471803691238, 1.9082149292705877e-10  # ln 2 in two parts (Cody & Waite 1980)
-_LOWEST = -700.0  # exp of less is below the smallest number that keeps all digits
+_LOWEST = -200.0  # exp of less counts for nothing, and products of three stay clear of slow subnormal numbers
 _ROUNDER = 6755399441055744.0  # 1.5 x 2**52: added to a number it leaves the nearest integer in the lowest bits
 _PI = math.pi
 _RESONANCE = RESONANCE
@@ -89,7 +89,7 @@ _CLOUD_G, _RAYLEIGH_MOMENT, _OPEN_SKY, _DIFFUSIVITY, _CLOUD_PATH = range(9, 14)
 
 @compiled
 def exp(x: float) -> float:
-    """Return exp(x) for x <= 700 to 1e-13 of its value; 2**k is made by setting the exponent's bits."""
+    """Return exp(x) for -200 <= x <= 700 to 1e-13 of its value; 2**k is made by setting the exponent's bits."""
     x = max(x, _LOWEST)
     shifted = x * _LOG2E + _ROUNDER
     k = shifted - _ROUNDER

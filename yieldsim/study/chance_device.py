@@ -5,13 +5,20 @@ from __future__ import annotations
 from collections.abc import Sequence
 from dataclasses import dataclass, replace
 from functools import lru_cache
+from typing import Any
 
 import numpy as np
 from numpy.typing import NDArray
 
 from yieldsim.constants import STANDARD_CELL_TEMPERATURE, THERMAL_EV_PER_K
 from yieldsim.device import kernel
-from yieldsim.device.bank import FOLD_TEMPERATURES, Bank, over_inverse_temperature
+from yieldsim.device.bank import (
+    FOLD_TEMPERATURES,
+    TABLE_TEMPERATURES,
+    Bank,
+    over_inverse_temperature,
+    own_power,
+)
 from yieldsim.device.junction import LIMITS, constants, generated, moved_to_gap
 from yieldsim.device.stack import Absorber
 from yieldsim.study.chance_inputs import FARTHEST
@@ -32,7 +39,9 @@ class Device:
     front, rear : per junction whose edge moves: (n_node, n_temperature, m, n_band) arrays [A W-1] of all junctions
     log_saturation : (m, n_node, n_step + 1) array [ln(A m-2)]
     collected_alone : (m, n_node) array [A m-2]
-    steps : (m,) array [eV], spread of each junction's edge; 0 = it does not move
+    gain : (m,) array [1], current generated over current collected
+    numbers : (m, 4) array, as `junction.constants` gives them
+    drifts : bool, edges drift with temperature
     """
 
     bank: Bank
@@ -40,7 +49,9 @@ class Device:
     rear: tuple[Array, ...]
     log_saturation: Array
     collected_alone: Array
-    steps: Array
+    gain: Array
+    numbers: Array
+    drifts: bool
 
     @classmethod
     def of(cls, absorber: Absorber, steps: tuple[float, ...]) -> Device:
@@ -57,7 +68,16 @@ class Device:
             count = len(_NODES)
             saturation.append(np.broadcast_to(banks.log_saturation[own], (count, banks.log_saturation.shape[1])))
             alone.append(np.broadcast_to(banks.collected_alone[own], count))
-        return cls(bank, tuple(front), tuple(rear), np.array(saturation), np.array(alone), np.array(steps))
+        return cls(
+            bank,
+            tuple(front),
+            tuple(rear),
+            np.array(saturation),
+            np.array(alone),
+            np.array([generated(junction, 1.0) for junction in absorber.junctions]),
+            np.array([constants(junction) for junction in absorber.junctions]),
+            any(junction.gap_shift_ev_per_k != 0 for junction in absorber.junctions),
+        )
 
 
 def _by_node(yields: Array, m: int) -> Array:
@@ -83,7 +103,7 @@ def device(absorber: Absorber, steps: tuple[float, ...]) -> Device:
 
 @dataclass(frozen=True, slots=True)
 class Offsets:
-    """How far an absorber's properties are off in one draw; arrays are per junction (m,).
+    """How far an absorber's properties are off: arrays (m,) per junction, or (n, m) of many draws.
 
     Parameters
     ----------
@@ -91,14 +111,19 @@ class Offsets:
     response : [1], factor on the response
     radiative : [1], factor on the external radiative efficiency
     resistance : [1], factor on the series resistance and on the shunt conductance
-    temperature_coefficient : float [K-1], added to that of power
+    temperature_coefficient : float or (n,) array [K-1], added to that of power
     """
 
     edge: Array
     response: Array
     radiative: Array
     resistance: Array
-    temperature_coefficient: float
+    temperature_coefficient: Any
+
+    def of(self, k: int) -> Offsets:
+        """Return those of one draw."""
+        coefficient = float(self.temperature_coefficient[k])
+        return Offsets(self.edge[k], self.response[k], self.radiative[k], self.resistance[k], coefficient)
 
 
 def power(found: Device, off: Offsets, front: Array, rear: Array | None, temperature: Array) -> Array:
@@ -122,31 +147,25 @@ def power(found: Device, off: Offsets, front: Array, rear: Array | None, tempera
     (`balance.saturation_current`) and falls with the external radiative efficiency to the power 1/ideality.
     """
     absorber = found.bank.absorbers[0]
-    m = len(absorber.junctions)
     at, share = _places(off.edge)
-    current = _collected(_yields(found.front, at, share), front, temperature)
+    current = _collected(_yields(found.front, at, share), front, temperature, found.drifts)
     if rear is not None and absorber.bifaciality > 0:
-        current = current + absorber.bifaciality * _collected(_yields(found.rear, at, share), rear, temperature)
-    current = current * off.response[:, None]
-    saturation, radiative = _saturations(found, off, at, share, temperature)
-    thermal = THERMAL_EV_PER_K * temperature
-    numbers = np.array([constants(junction) for junction in absorber.junctions])
-    numbers[:, 0] *= off.resistance
-    numbers[:, 1] *= off.resistance
-    made = np.array([generated(junction, current[j]) for j, junction in enumerate(absorber.junctions)])
-    diode = np.array([junction.ideality * thermal for junction in absorber.junctions])
-    if m == 1:
-        gives = kernel.single_power(made[0], saturation[0], diode[0], numbers[0])
+        behind = _collected(_yields(found.rear, at, share), rear, temperature, found.drifts)
+        current = current + absorber.bifaciality * behind
+    made = current * (off.response * found.gain)[:, None]
+    numbers = found.numbers.copy()
+    numbers[:, :2] *= off.resistance[:, None]
+    tables = [_saturation_table(found, off, at, share, j) for j in range(len(at))]
+    if len(tables) == 1:
+        gives = own_power(made[0], temperature, tables[0], absorber.junctions[0].ideality, numbers[0])
     else:
-        emission = np.zeros_like(saturation)
-        emission[:-1] = absorber.coupling * radiative[:-1]  # the lowest emits into nothing that collects
-        gives = kernel.stack_power(made, saturation, diode, numbers, emission, thermal, absorber.terminals == 2)
+        gives = _stack_power(found, off, (at, share), made, temperature, tables, numbers)
     return np.asarray(gives * (1 + off.temperature_coefficient * (temperature - STANDARD_CELL_TEMPERATURE)))
 
 
 def _places(edge: Array) -> tuple[NDArray[np.intp], Array]:
     """Return the node below each edge (m,) and the share of the next one."""
-    place = (np.clip(edge, -FARTHEST, FARTHEST) + FARTHEST) * _NODES_PER_SPREAD
+    place = (np.minimum(np.maximum(edge, -FARTHEST), FARTHEST) + FARTHEST) * _NODES_PER_SPREAD
     at = np.minimum(place.astype(np.intp), len(_NODES) - 2)
     return at, place - at
 
@@ -166,34 +185,56 @@ def _yields(tables: Sequence[Array], at: NDArray[np.intp], share: Array) -> Arra
     return total
 
 
-def _collected(yields: Array, light: Array, temperature: Array) -> Array:
+def _collected(yields: Array, light: Array, temperature: Array, drifts: bool) -> Array:
     """Return currents (m, n) [A m-2], linear between the fold's temperatures as in `Bank.currents`."""
-    middle = len(FOLD_TEMPERATURES) // 2
     n_temperature, m, n_band = yields.shape
-    if np.array_equal(yields[0], yields[middle]):
-        return np.ascontiguousarray((light @ yields[middle].T).T)
+    if not drifts:
+        return np.ascontiguousarray((light @ yields[n_temperature // 2].T).T)
     place = (temperature - FOLD_TEMPERATURES[0]) / (FOLD_TEMPERATURES[1] - FOLD_TEMPERATURES[0])
-    at = np.clip(place, 0, n_temperature - 2).astype(np.intp)
+    at = np.minimum(np.maximum(place, 0), n_temperature - 2).astype(np.intp)
     nodes = (light @ yields.reshape(-1, n_band).T).reshape(-1, n_temperature, m)
     rows = np.arange(len(light))
     low = nodes[rows, at]
     return np.ascontiguousarray((low + (place - at)[:, None] * (nodes[rows, at + 1] - low)).T)
 
 
-def _saturations(
-    found: Device, off: Offsets, at: NDArray[np.intp], share: Array, temperature: Array
-) -> tuple[Array, Array]:
-    """Return saturation currents and their radiative parts, (m, n) [A m-2]."""
-    absorber = found.bank.absorbers[0]
-    saturation, radiative = np.empty((2, len(at), len(temperature)))
-    for j, junction in enumerate(absorber.junctions):
-        table, alone = found.log_saturation[j], found.collected_alone[j]
-        here = table[at[j]] + share[j] * (table[at[j] + 1] - table[at[j]])
-        collected = (alone[at[j]] + share[j] * (alone[at[j] + 1] - alone[at[j]])) * off.response[j]
-        growth = np.exp(junction.nonradiative_drift_per_k * (temperature - STANDARD_CELL_TEMPERATURE))
-        loss = 1 / junction.external_radiative_efficiency - 1
-        lost = 1 / min(junction.external_radiative_efficiency * float(off.radiative[j]), 1.0) - 1
-        worse = ((1 + lost * growth) / (1 + loss * growth)) ** (1 / junction.ideality)
-        saturation[j] = np.exp(over_inverse_temperature(here, temperature)) * (off.response[j] * worse)
-        radiative[j] = collected * (saturation[j] / collected) ** junction.ideality / (1 + lost * growth)
-    return saturation, radiative
+def _saturation_table(found: Device, off: Offsets, at: NDArray[np.intp], share: Array, j: int) -> Array:
+    """Return the logarithm of a junction's saturation current at `TABLE_TEMPERATURES`."""
+    low = found.log_saturation[j][at[j]]
+    here = low + share[j] * (found.log_saturation[j][at[j] + 1] - low)
+    ideality = found.bank.junctions[j].ideality
+    growth, loss, lost = _losses(found, off, j, TABLE_TEMPERATURES)
+    return np.asarray(here + (np.log(off.response[j]) + np.log((1 + lost * growth) / (1 + loss * growth)) / ideality))
+
+
+def _losses(found: Device, off: Offsets, j: int, temperature: Array) -> tuple[Array | float, float, float]:
+    """Return the growth of what is lost besides light with temperature, and the share lost before and after."""
+    junction = found.bank.junctions[j]
+    drift = junction.nonradiative_drift_per_k
+    growth = np.exp(drift * (temperature - STANDARD_CELL_TEMPERATURE)) if drift else 1.0
+    better = min(junction.external_radiative_efficiency * float(off.radiative[j]), 1.0)
+    return growth, 1 / junction.external_radiative_efficiency - 1, 1 / better - 1
+
+
+def _stack_power(
+    found: Device,
+    off: Offsets,
+    place: tuple[NDArray[np.intp], Array],
+    made: Array,
+    temperature: Array,
+    tables: Sequence[Array],
+    numbers: Array,
+) -> Array:
+    """Return the power of a stack, its junctions coupled as in `Bank.terminal_power`."""
+    absorber, thermal = found.bank.absorbers[0], THERMAL_EV_PER_K * temperature
+    saturation = np.array([np.exp(over_inverse_temperature(table, temperature)) for table in tables])
+    emission = np.zeros_like(saturation)
+    for j, junction in enumerate(absorber.junctions[:-1]):  # the lowest emits into nothing that collects
+        alone, at, share = found.collected_alone[j], place[0][j], place[1][j]
+        collected = (alone[at] + share * (alone[at + 1] - alone[at])) * off.response[j]
+        growth, _, lost = _losses(found, off, j, temperature)
+        radiative = collected * (saturation[j] / collected) ** junction.ideality / (1 + lost * growth)
+        emission[j] = absorber.coupling * radiative
+    diode = np.array([junction.ideality * thermal for junction in absorber.junctions])
+    in_series = absorber.terminals == 2
+    return np.asarray(kernel.stack_power(made, saturation, diode, numbers, emission, thermal, in_series))
