@@ -32,6 +32,8 @@ Array = NDArray[np.float64]
 FOLD_TEMPERATURES = STANDARD_CELL_TEMPERATURE + 20.0 * np.arange(-4, 5)
 #: Inverse temperatures [K-1] at which saturation currents are tabulated, evenly spaced, -55 to 125 degC.
 _INVERSE_HOT, _INVERSE_COLD, _INVERSE_STEPS = 1 / 398.15, 1 / 218.15, 256
+#: Temperatures [K] at which saturation currents are tabulated, the hottest first.
+TABLE_TEMPERATURES = 1 / np.linspace(_INVERSE_HOT, _INVERSE_COLD, _INVERSE_STEPS + 1)
 _BLOCK = 2048  # hours at once: intermediate arrays stay in the processor's cache
 
 
@@ -211,15 +213,8 @@ class Bank:
 
     def _own_power(self, j: int, currents: Array, temperature: Array) -> Array:
         junction = self.junctions[j]
-        return points.junction_power(
-            np.ascontiguousarray(generated(junction, currents)),
-            np.ascontiguousarray(temperature[self.absorber_of[j]]),
-            self.log_saturation[j],
-            _INVERSE_HOT,
-            (_INVERSE_COLD - _INVERSE_HOT) / _INVERSE_STEPS,
-            junction.ideality * THERMAL_EV_PER_K,
-            np.array(constants(junction)),
-        )
+        made, heat = generated(junction, currents), temperature[self.absorber_of[j]]
+        return own_power(made, heat, self.log_saturation[j], junction.ideality, np.array(constants(junction)))
 
     def _stack_power(self, a: int, currents: Array, temperature: Array) -> Array:
         absorber, thermal = self.absorbers[a], THERMAL_EV_PER_K * temperature
@@ -301,6 +296,28 @@ class Bank:
                 high = nodes[rows, at[a, block] + 1, column]
                 out[j, block] = low + weight[a, block] * (high - low)
         return out
+
+
+def own_power(made: Array, temperature: Array, log_saturation: Array, ideality: float, numbers: Array) -> Array:
+    """Return the power of one junction at its own power point, (n_time,) [W m-2].
+
+    Parameters
+    ----------
+    made : (n_time,) array [A m-2], current generated
+    temperature : (n_time,) array [K]
+    log_saturation : (n_step + 1,) array [ln(A m-2)], at `TABLE_TEMPERATURES`
+    ideality : float [1]
+    numbers : (4,) array, as `junction.constants` gives them
+    """
+    return points.junction_power(
+        np.ascontiguousarray(made),
+        np.ascontiguousarray(temperature),
+        log_saturation,
+        _INVERSE_HOT,
+        (_INVERSE_COLD - _INVERSE_HOT) / _INVERSE_STEPS,
+        ideality * THERMAL_EV_PER_K,
+        numbers,
+    )
 
 
 def over_inverse_temperature(table: Array, temperature: Array) -> Array:

@@ -17,8 +17,8 @@ from yieldsim.study.plan import Row
 Array = NDArray[np.float64]
 
 TOO_FEW = "too few draws"
-LEAST_ROWS = 64  # of the design that tells causes
-DRAWS_PER_ROW = 4
+LEAST_ROWS = 50  # of the design that tells causes
+DRAWS_PER_ROW = 8
 
 
 @dataclass(frozen=True, slots=True, eq=False)

@@ -145,36 +145,38 @@ class Shortcut:
         return cls(light, absorbers, devices, glass, spreads, places, air, model, by_name["heat_loss"])
 
     def energies(self, drawn: Array) -> tuple[Array, Array]:
-        """Return what each absorber gives in one draw.
+        """Return what each absorber gives in each draw.
 
         Parameters
         ----------
-        drawn : (n_dimension,) array [1], in spreads; zeros for the middle
+        drawn : (n, n_dimension) array [1], in spreads; zeros for the middle
 
         Returns
         -------
-        (n_absorber,) arrays: power summed over the intervals [W m-2], power at standard conditions [W m-2]
+        (n, n_absorber) arrays: power summed over the intervals [W m-2], power at standard conditions [W m-2]
         """
-        drawn = np.append(drawn, 0.0)
-        front, rear = self._light(drawn)
-        sums, before = front.sum(axis=2), self.light.front.sum(axis=2)
-        rear_sums = None if rear is None else rear.sum(axis=2)
-        rear_before = None if self.light.rear is None else self.light.rear.sum(axis=2)
-        shed = float(BY_NAME["heat_loss"].value(self.spreads.site["heat_loss"] * drawn[self.heat]))
-        energy, rating = np.empty((2, len(self.absorbers)))
-        for a, absorber in enumerate(self.absorbers):
-            g = self.glass[a]
-            warms, warmed = sums[g], before[g]
-            if rear_sums is not None and rear_before is not None:
-                warms, warmed = (
-                    warms + absorber.bifaciality * rear_sums[g],
-                    warmed + absorber.bifaciality * rear_before[g],
-                )
-            temperature = self.light.temp_air + self.light.rise[a] * (warms / warmed) / shed
-            behind = None if rear is None else rear[g]
-            gives = power(self.devices[a], self._offsets(a, drawn), front[g], behind, temperature)
-            energy[a], rating[a] = self.light.weight @ gives, gives[-1]
+        drawn = np.concatenate([drawn, np.zeros((len(drawn), 1))], axis=1)
+        before = self.light.front.sum(axis=2), None if self.light.rear is None else self.light.rear.sum(axis=2)
+        shed = BY_NAME["heat_loss"].value(self.spreads.site["heat_loss"] * drawn[:, self.heat])
+        offsets = [self._offsets(a, drawn) for a in range(len(self.absorbers))]
+        energy, rating = np.empty((2, len(drawn), len(self.absorbers)))
+        for k, numbers in enumerate(drawn):
+            front, rear = self._light(numbers)
+            now = front.sum(axis=2), None if rear is None else rear.sum(axis=2)
+            for a, device_of in enumerate(self.devices):
+                g = self.glass[a]
+                temperature = self.light.temp_air + self.light.rise[a] * self._warmth(a, now, before) / shed[k]
+                behind = None if rear is None else rear[g]
+                gives = power(device_of, offsets[a].of(k), front[g], behind, temperature)
+                energy[k, a], rating[k, a] = self.light.weight @ gives, gives[-1]
         return energy, rating
+
+    def _warmth(self, a: int, now: tuple[Array, Array | None], before: tuple[Array, Array | None]) -> Array:
+        """Return the light that warms an absorber over that in the middle, (n_class,) [1]; sums by glass and class."""
+        g, gain = self.glass[a], self.absorbers[a].bifaciality
+        if now[1] is None or before[1] is None or gain == 0:
+            return np.asarray(now[0][g] / before[0][g])
+        return np.asarray((now[0][g] + gain * now[1][g]) / (before[0][g] + gain * before[1][g]))
 
     def _light(self, drawn: Array) -> tuple[Array, Array | None]:
         """Return the light of each class behind each glass in one draw."""
@@ -192,11 +194,11 @@ class Shortcut:
     def _offsets(self, a: int, drawn: Array) -> Offsets:
         spread, places = self.spreads.absorbers[a], self.places[a]
         response, radiative, resistance = (
-            BY_NAME[name].value(spread[name] * drawn[places.of_junctions[name]])
+            BY_NAME[name].value(spread[name] * drawn[:, places.of_junctions[name]])
             for name in ("response", "external_radiative_efficiency", "resistances")
         )
-        coefficient = spread["temperature_coefficient"] * float(drawn[places.coefficient])
-        return Offsets(drawn[places.of_junctions["edge_ev"]], response, radiative, resistance, coefficient)
+        coefficient = spread["temperature_coefficient"] * drawn[:, places.coefficient]
+        return Offsets(drawn[:, places.of_junctions["edge_ev"]], response, radiative, resistance, coefficient)
 
 
 def _places(absorber: Absorber, column: Mapping[Dimension, int]) -> _Places:

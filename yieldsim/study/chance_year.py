@@ -89,7 +89,7 @@ class YearOfChance:
     ) -> YearOfChance:
         """Make it; ``years`` as above, None = the year's spread is a number."""
         shortcut = Shortcut.of(light, absorbers, spreads, drawn)
-        middle = np.array(shortcut.energies(np.zeros(len(drawn))))
+        middle = np.array(shortcut.energies(np.zeros((1, len(drawn)))))[:, 0]
         column = {(name, owner): place for place, (name, owner, number) in enumerate(drawn) if number == 0}
         nowhere = len(drawn)
         year = next(place for (name, _), place in column.items() if name == "year")
@@ -100,8 +100,7 @@ class YearOfChance:
 
     def core(self, numbers: Array) -> Array:
         """Return energy and standard power over those in the middle, (2, n, n_absorber) [1], of draws (n, n_dim)."""
-        found = np.array([self.shortcut.energies(row) for row in numbers]).reshape(len(numbers), 2, -1)
-        return np.asarray(found.swapaxes(0, 1) / self.middle[:, None])
+        return np.asarray(np.array(self.shortcut.energies(numbers)) / self.middle[:, None])
 
     def values(self, numbers: Array, core: Array | None = None) -> Array:
         """Return both measures of each absorber in each draw.
