@@ -1,6 +1,6 @@
 """How fast, how lean: ratios of this package to what it is set against, side by side in one process.
 
-    python tests/benchmarks/bench.py [--pairs 7] [--site saltmarsh_point] [--only a b c d e f]
+    python tests/benchmarks/bench.py [--pairs 7] [--site saltmarsh_point] [--only a b draws c d e f]
 
 Each pair runs ours, then theirs, right after each other on one core; the first two pairs warm up code and arrays and
 are dropped. Printed is the median ratio of the pairs with the lowest and the highest. No test asserts any of it.
@@ -158,6 +158,19 @@ def part_b(folder: Path, pairs: int, site: str) -> None:
         told(f"{what}, {site}", *paired(ours, lambda: full_chain(case), pairs))
 
 
+def part_draws(folder: Path, pairs: int, site: str) -> None:
+    """A study of one site with 400 draws over the same without; both write their files."""
+    case = case_of(site, folder)
+    path = folder / "benchmark.yaml"
+    path.write_text(path.read_text() + "chance: {draws: 400, seed: 7}\n")
+    drawn = api.load_study(path)
+
+    def whole(plan: StudyPlan) -> Callable[[], object]:
+        return lambda: run.site_pieces(plan, lambda _site: [case.weather], folder / "pieces", fresh=True)
+
+    told(f"(b) a site with 400 draws / without, {site}", *paired(whole(drawn), whole(case.plan), min(pairs, 5)))
+
+
 def part_c(folder: Path, pairs: int, site: str) -> None:
     """The straightforward version for the same result."""
     case = case_of(site, folder)
@@ -235,7 +248,7 @@ def elapsed(work: Callable[[], object]) -> float:
     return time.perf_counter() - start
 
 
-PARTS = {"a": part_a, "b": part_b, "c": part_c, "d": part_d, "e": part_e, "f": part_f}
+PARTS = {"a": part_a, "b": part_b, "draws": part_draws, "c": part_c, "d": part_d, "e": part_e, "f": part_f}
 
 
 def main() -> None:
