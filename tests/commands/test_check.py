@@ -5,8 +5,6 @@ from pathlib import Path
 import pytest
 
 from yieldsim.cli import main
-from yieldsim.commands.check import _stance
-from yieldsim.study.plan import MountingPlan
 
 STUDY = """\
 study: look
@@ -52,7 +50,7 @@ def test_a_real_station(checked):
         "12 from 0.9 to 2 eV; quality: ideal, realistic",
         "soiling 1 to 2 %",
         "wiring 1.5 %",
-        "Greensboro: usable with care",
+        "Greensboro: usable",
         "36.10 N, 79.95 W",
         "UTC-5",
         "8760 h",
@@ -90,22 +88,6 @@ def test_the_other_sites_are_still_looked_at(checked, tmp_path):
     assert code == 1
     assert "Broken: not usable" in out
     assert "Greensboro: usable" in out
-
-
-@pytest.mark.parametrize(
-    ("mounting", "said"),
-    [
-        (MountingPlan("a", "fixed", 30, 180), "fixed, 30 deg tilt, azimuth 180 deg"),
-        (MountingPlan("a", "tracker"), "tracker, axis 180 deg, turning 60 deg to either side"),
-        (
-            MountingPlan("a", "tracker", row_pitch_m=6),
-            "tracker, axis 180 deg, turning 60 deg to either side, back from the shade of its rows; "
-            "rows of 2 m every 6 m",
-        ),
-    ],
-)
-def test_how_modules_stand_in_words(mounting, said):
-    assert _stance(mounting) == said
 
 
 def test_a_file_of_twenty_rows(checked, tmp_path):

@@ -12,7 +12,7 @@ from yieldsim.commands._terminal import Progress, bold, plain, wrapped
 if TYPE_CHECKING:
     from yieldsim.errors import InputError, Problem
     from yieldsim.study.hourly import SiteSky
-    from yieldsim.study.plan import MountingPlan, SitePlan, StudyPlan
+    from yieldsim.study.plan import SitePlan, StudyPlan
 
 EXAMPLE = """example:
   yieldsim check mine.yaml
@@ -103,8 +103,13 @@ def intent(plan: StudyPlan) -> str:
 
 def describe(site: SitePlan, skies: Sequence[SiteSky]) -> str:
     """Return what is known of a site: place, weather, air, what was found, and a verdict."""
+    from yieldsim.screen import NOT_USABLE, USABLE, WITH_CARE, review
+
     found = [finding for sky in skies for finding in sky.weather.findings]
-    verdict = "usable" if not found else "usable with care: see what was found"
+    reviews = [review(sky.weather) for sky in skies]
+    order = (USABLE, WITH_CARE, NOT_USABLE)
+    verdict = max((each.verdict for each in reviews), key=order.index)
+    reasons = list(dict.fromkeys(reason for each in reviews for reason in each.reasons))
     first = skies[0].weather
     lines = [f"{bold(plain(site.name))}: {verdict}", _line("place", _place(first))]
     for sky in skies:
@@ -115,29 +120,15 @@ def describe(site: SitePlan, skies: Sequence[SiteSky]) -> str:
         lines.append(
             _line("", f"global {ghi:.0f} and beam {dni:.0f} kWh/m2, mean {weather['temp_air'].mean():.1f} degC")
         )
+    lines += [_line("why", plain(reason)) for reason in reasons]
     lines += [_line("note", plain(note)) for note in dict.fromkeys(note for sky in skies for note in sky.weather.notes)]
     lines += [_line("air", f"{name}: {plain(source)}") for name, source in skies[0].sources]
-    lines += [_line("plane", f"{plain(each.name)}: {_stance(each)}") for each in site.mountings]
+    lines += [_line("plane", f"{plain(each.name)}: {plain(each.words())}") for each in site.mountings]
     lines += [
         _line("found", f"{finding.kind}, {finding.rows} rows: {plain(finding.found)}; {plain(finding.done)}")
         for finding in found
     ]
     return "\n".join(lines)
-
-
-def _stance(mounting: MountingPlan) -> str:
-    """Return how modules stand, in words."""
-    if mounting.kind == "tracker":
-        words = (
-            f"tracker, axis {mounting.axis_azimuth_deg:g} deg, turning {mounting.max_angle_deg:g} deg to either side"
-        )
-        if mounting.backtrack and mounting.row_pitch_m is not None:
-            words += ", back from the shade of its rows"
-    else:
-        words = f"{mounting.kind}, {mounting.tilt_deg:g} deg tilt, azimuth {mounting.azimuth_deg:g} deg"
-    if mounting.row_pitch_m is None:
-        return words
-    return f"{words}; rows of {mounting.row_width_m:g} m every {mounting.row_pitch_m:g} m"
 
 
 def _place(weather: Any) -> str:

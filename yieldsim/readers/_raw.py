@@ -160,7 +160,8 @@ def _column_problems(raw: Raw) -> list[Problem]:
             f"a column for {name}; the file has {', '.join(raw.columns) or 'none'}",
         )
         for name in REQUIRED
-        if name not in (*raw.columns, "wind_speed") and not (name in ("ghi", "dni", "dhi") and (len(light) >= 2 or "ghi" in light))
+        if name not in (*raw.columns, "wind_speed")
+        and not (name in ("ghi", "dni", "dhi") and (len(light) >= 2 or "ghi" in light))
     ]
 
 

@@ -6,12 +6,15 @@ from pathlib import Path
 
 import numpy as np
 from matplotlib.axes import Axes
-from matplotlib.colors import LinearSegmentedColormap
+from matplotlib.colors import Colormap, LinearSegmentedColormap
 from matplotlib.figure import Figure
+from matplotlib.image import AxesImage
 from numpy.typing import NDArray
 
 from yieldsim.report.canvas import GREY, SMALL, head, panels, style, to_bytes
 from yieldsim.report.marks import COLOURS, position, shorten
+from yieldsim.screen.clear import clear_global
+from yieldsim.sky import sun
 from yieldsim.study import store
 from yieldsim.weather import Flag, Weather
 
@@ -59,8 +62,9 @@ def weather_picture(site: str, weather: Weather) -> Figure:
     stamps = middle.astype("datetime64[s]")
     day = (stamps.astype("datetime64[D]") - stamps.astype("datetime64[Y]")).astype(np.int64)
     hour = (middle % 86400) / 3600.0
-    figure, (carpet, months) = panels(2, 1, (8.6, 2.5), (0.75, 0.9, 0.55, 0.4))
+    figure, (carpet, clearness, months) = panels(3, 1, (8.6, 2.3), (0.75, 0.9, 0.55, 0.4))
     _carpet(figure, carpet, weather, day, hour)
+    _clearness(figure, clearness, weather, day, hour)
     _months(months, weather, stamps.astype("datetime64[M]").astype(np.int64) % 12)
     years = np.unique(stamps.astype("datetime64[Y]")).astype(str)
     span = "a typical year" if weather.typical else f"{years[0]}–{years[-1]}" if len(years) > 1 else years[0]
@@ -69,22 +73,21 @@ def weather_picture(site: str, weather: Weather) -> Figure:
     return figure
 
 
-def _carpet(figure: Figure, axes: Axes, weather: Weather, day: NDArray[np.int64], hour: NDArray[np.float64]) -> None:
-    step_h = weather.interval_s / 3600.0
-    rows = round(24 / step_h)
-    grid = np.full((rows, 366), np.nan)
-    grid[np.minimum((hour / step_h).astype(np.int64), rows - 1), day] = weather["ghi"]
-    drawn = axes.imshow(
-        grid,
-        aspect="auto",
-        origin="lower",
-        extent=(0, 366, 0, 24),
-        cmap=_LIGHT,
-        vmin=0,
-        vmax=1100,
-        interpolation="nearest",
+def _clearness(figure: Figure, axes: Axes, weather: Weather, day: NDArray[np.int64], hour: NDArray[np.float64]) -> None:
+    """Draw global light over that of a clear sky: a clock that is off tilts it, shade and levels cut into it."""
+    course = sun.course(
+        weather.time, weather.interval_s, weather.latitude_deg, weather.longitude_deg, weather.elevation_m
     )
-    axes.grid(False)
+    clear = clear_global(weather, course)
+    with np.errstate(divide="ignore", invalid="ignore"):
+        index = np.where(clear > 20.0, weather["ghi"] / clear, np.nan)
+    drawn = _grid(axes, weather, day, hour, index, ("cividis", 0.0, 1.2))
+    axes.set_title("Clear-sky index: global light over that of a clear sky at the place", color=GREY)
+    _frame(figure, axes, drawn, "clear-sky index [1]")
+
+
+def _carpet(figure: Figure, axes: Axes, weather: Weather, day: NDArray[np.int64], hour: NDArray[np.float64]) -> None:
+    drawn = _grid(axes, weather, day, hour, weather["ghi"], (_LIGHT, 0.0, 1100.0))
     for i, (flag, words) in enumerate(_WORDS.items()):
         at = (weather.flags & int(flag)) > 0
         if at.any():
@@ -93,6 +96,31 @@ def _carpet(figure: Figure, axes: Axes, weather: Weather, day: NDArray[np.int64]
             axes.plot(day[at] + 0.5, hour[at], "s", color=colour, markersize=2.5, markeredgewidth=0, label=label)
     if axes.get_legend_handles_labels()[0]:
         axes.legend(loc="lower left", bbox_to_anchor=(0, 1.0), ncols=3, frameon=False, fontsize=SMALL, markerscale=2)
+    _frame(figure, axes, drawn, "global light [W/m²]")
+
+
+def _grid(
+    axes: Axes,
+    weather: Weather,
+    day: NDArray[np.int64],
+    hour: NDArray[np.float64],
+    values: NDArray[np.float64],
+    shades: tuple[Colormap | str, float, float],
+) -> AxesImage:
+    """Draw values over the day of the year and the hour of the day."""
+    step_h = weather.interval_s / 3600.0
+    rows = round(24 / step_h)
+    grid = np.full((rows, 366), np.nan)
+    grid[np.minimum((hour / step_h).astype(np.int64), rows - 1), day] = values
+    colours, low, high = shades
+    axes.grid(False)
+    return axes.imshow(
+        grid, aspect="auto", origin="lower", extent=(0, 366, 0, 24), cmap=colours, vmin=low, vmax=high,
+        interpolation="nearest",
+    )  # fmt: skip
+
+
+def _frame(figure: Figure, axes: Axes, drawn: AxesImage, label: str) -> None:
     axes.set_xlim(0, 365)
     axes.set_xticks(_MONTH_STARTS + 15, _MONTHS)
     axes.set_yticks(range(0, 25, 6))
@@ -100,7 +128,7 @@ def _carpet(figure: Figure, axes: Axes, weather: Weather, day: NDArray[np.int64]
     axes.set_xlabel("month")
     box = axes.get_position()
     bar = figure.colorbar(drawn, cax=figure.add_axes((box.x1 + 0.012, box.y0, 0.012, box.height)))
-    bar.set_label("global light [W/m²]")
+    bar.set_label(label)
     bar.outline.set_visible(False)
 
 

@@ -64,6 +64,7 @@ def screen(weather: Weather, allow_gaps: bool = False) -> Weather:
     weather = limits.with_limited_beam(weather, course)
     before = _missing_light(weather, course)
     weather = limits.possible(weather, course)
+    _refuse_another_place(weather, course, dark)
     weather = sensors.without_stuck(weather, course)
     taken_out = _missing_light(weather, course) & ~before
     weather = sensors.closed(weather, course)
@@ -82,6 +83,24 @@ def _course(weather: Weather) -> sun.SunCourse:
     return sun.course(
         weather.time, weather.interval_s, weather.latitude_deg, weather.longitude_deg, weather.elevation_m
     )
+
+
+MOST_BEYOND = 0.01  # of daylight rows beyond what is possible, above which place or clock are another
+MOST_DARK = 0.03  # of the light while the sun is down, likewise
+
+
+def _refuse_another_place(weather: Weather, course: sun.SunCourse, dark: float) -> None:
+    """Raise InputError for light that cannot be that of this place and clock."""
+    beyond = sum(each.rows for each in weather.findings if each.kind == "beyond_possible")
+    share = beyond / max(1, int(np.count_nonzero(course.lit > 0)))
+    if share <= MOST_BEYOND and dark <= MOST_DARK:
+        return
+    place = f"{weather.latitude_deg:g} deg north, {weather.longitude_deg:g} deg east"
+    found = (
+        f"{100 * dark:.1f} % of the light while the sun is down, {100 * share:.1f} % of daylight rows beyond possible"
+    )
+    allowed = f"light of {place}, labels at the {weather.label}; is the place or the clock another? See `timestamps:`"
+    raise InputError(Problem(weather.source, 0, "ghi", found, allowed))
 
 
 def _dark_share(weather: Weather, course: sun.SunCourse) -> float:

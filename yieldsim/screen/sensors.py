@@ -91,7 +91,13 @@ def closed(weather: Weather, course: sun.SunCourse) -> Weather:
         what = (
             f"global light is not beam and diffuse together in {100 * far.sum() / usable.sum():.1f} % of daylight rows"
         )
-        weather = noted(weather, "closure", far, what, "kept: beam and diffuse light are used")
+        weather = noted(
+            weather,
+            "closure",
+            far,
+            what,
+            "kept, beam and diffuse light are used; is the place, the clock or a sensor another?",
+        )
     return weather
 
 
