@@ -70,22 +70,24 @@ def test_exponential_and_logarithm():
     """numpy's own, which are good to the last place: what the steps need."""
     x = np.concatenate([-np.geomspace(1e-12, 600.0, 2000), np.geomspace(1e-12, 600.0, 2000)])
     np.testing.assert_allclose([points._expm1(value) for value in x], np.expm1(x), rtol=2e-12)
+    np.testing.assert_allclose([points._exp(value) for value in x], np.exp(x), rtol=1e-12)
     y = np.geomspace(1e-300, 1e300, 2000)
     np.testing.assert_allclose([points._log(value) for value in y], np.log(y), rtol=3e-9, atol=3e-9)
     near = 1 + np.linspace(-1e-3, 1e-3, 1000)  # where steps end
     np.testing.assert_allclose([points._log(value) for value in near], np.log(near), rtol=1e-12)
 
 
-@pytest.mark.parametrize("each", [(0.0, 0.0, 0.0, math.inf), (3e-4, 20.0, 0.02, 1.0)])
-def test_power_from_a_table_of_saturation_currents(each):
+@pytest.mark.parametrize("gap_ev", [0.4, 1.3, 2.0, 3.0])
+@pytest.mark.parametrize("each", [(0.0, 0.0, 0.0, math.inf), (3e-4, 20.0, 0.02, 4.0)])
+def test_power_from_a_table_of_saturation_currents(each, gap_ev):
     """The same as with the currents interpolated in numpy; beyond its ends too, NaN without temperature."""
     hot, cold, steps = 1 / 398.15, 1 / 218.15, 256
     inverse = np.linspace(hot, cold, steps + 1)
-    table = 40.0 - 1.3 / 8.617e-5 * inverse
+    table = 20.0 - gap_ev / 8.617e-5 * inverse
     heat = np.random.default_rng(4).uniform(210.0, 400.0, 700)
     light = many(700)[0]
     thermal = 1.2 * 8.617e-5
-    saturation = np.exp(40.0 - 1.3 / 8.617e-5 / heat)  # a straight table: interpolated without error
+    saturation = np.exp(20.0 - gap_ev / 8.617e-5 / heat)  # a straight table: interpolated without error
     expected = points.single_power(light, saturation, thermal * heat, np.array(each))
     heat[3] = np.nan
     found = points.junction_power(light, heat, table, hot, (cold - hot) / steps, thermal, np.array(each))

@@ -127,10 +127,12 @@ def _step(s: Array, n: int, constants: Array) -> int:
 
 @njit(error_model="numpy", cache=True, nogil=True)
 def _exp(x: float) -> float:
-    """Return exp(x) for |x| <= 700 to 1e-13 of its value."""
+    """Return exp(x) for |x| <= 700 to 1e-13 of its value: the whole power times what is left within +-ln(2)/2."""
     x = min(max(x, -_MOST), _MOST)
-    half = _expm1(x * 0.5) + 1.0
-    return half * half
+    shifted = x * _LOG2E + _ROUNDER
+    k = shifted - _ROUNDER
+    power = np.int64((np.float64(shifted).view(np.int64) + np.int64(1023)) << np.int64(52)).view(np.float64)
+    return (_expm1((x - k * _LN2_HIGH) - k * _LN2_LOW) + 1.0) * power
 
 
 @njit(error_model="numpy", cache=True, nogil=True)
