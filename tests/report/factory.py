@@ -254,21 +254,54 @@ def _rest(annual: pd.DataFrame, gaps: dict[str, float]) -> dict[str, Any]:
     lost = annual["poa_kwh_m2"] - energy
     ledger = key.assign(**{name: lost * part for name, part in LOST.items()}, delivered=energy)
     chance = [
-        key.assign(measure=name, p90=annual[name] * 0.94, p50=annual[name], p10=annual[name] * 1.06)
+        key.assign(measure=name, base=annual[name], p90=annual[name] * 0.94, p50=annual[name], p10=annual[name] * 1.06)
         for name in ("specific_yield_kwh_kwp", "energy_kwh_m2")
     ]
     first = next(iter(gaps))
     others = key[key["absorber"] != first]
-    duel = others.assign(
-        other=first,
-        probability=np.linspace(0.05, 0.98, len(others)),
-        margin_p90=-0.01,
-        margin_p50=0.01,
-        margin_p10=0.03,
-    )
-    worth = others.assign(
-        currency="EUR", break_even_per_m2=np.linspace(-8, 12, len(others)), cost_of_energy_per_kwh=0.041
-    )
+    duels, ranks, causes, flips = [], [], [], []
+    for measure in ("specific_yield_kwh_kwp", "energy_kwh_m2"):
+        low = 0.03 if measure == "energy_kwh_m2" else 0.01
+        duel = others.assign(measure=measure, other=first, probability=np.linspace(0.05, 0.98, len(others)))
+        duels.append(
+            duel.assign(
+                probability_error=0.02, above=0.01, probability_above=np.linspace(0.01, 0.9, len(others)),
+                margin_p90=-low, margin_p50=0.01, margin_p10=0.05, verdict="likely",
+            )
+        )  # fmt: skip
+        share = 1 / len(gaps)
+        ranks += [key.assign(measure=measure, rank=rank, probability=share) for rank in range(1, len(gaps) + 1)]
+        pair = others.groupby(["site", "mounting"], sort=False).head(1).assign(measure=measure, other=first)
+        for i, name in enumerate(("degradation", "external_radiative_efficiency", "aod500", "model_clear")):
+            total = 0.5 / (i + 1)
+            causes.append(
+                pair.assign(
+                    input=name, first_order=total, first_order_low=total - 0.02, first_order_high=total + 0.02,
+                    total=total, total_low=total - 0.02, total_high=total + 0.02,
+                    note="too few draws" if i == 3 else "",
+                )
+            )  # fmt: skip
+            found = pair.assign(input=name, of="all", unit="times", value=1.2 if i == 0 else np.nan, spreads=1.0)
+            flips.append(found.assign(found="tie" if i == 0 else "none within 4 spreads"))
+    worth = key.assign(currency="EUR", cost_of_energy_per_kwh=0.041, net_present_value=1e5)
+    worth = worth.assign(module_price_per_m2=25.0, break_even_price_per_m2=25.0 + np.linspace(-8, 12, len(worth)))
+    worth = worth.assign(break_even_per_m2=np.where(key["absorber"] == first, 0.0, np.linspace(-8, 12, len(worth))))
+    for name in ("cost_of_energy_per_kwh", "net_present_value", "break_even_price_per_m2", "break_even_per_m2"):
+        worth = worth.assign(
+            **{f"{name}_p90": worth[name] - 3, f"{name}_p50": worth[name], f"{name}_p10": worth[name] + 3}
+        )
+    best = annual.groupby(["site", "mounting"])["energy_kwh_m2"].transform("max")
+    regret = key.assign(measure="energy_kwh_m2", value=energy, best=best, regret=1 - energy / best, weight=0.2)
+    names = list(gaps)
+    portfolio = pd.DataFrame(
+        {
+            "mounting": annual["mounting"].iloc[0], "measure": "energy_kwh_m2", "absorber": names,
+            "mean_value": np.linspace(400, 300, len(names)), "mean_regret": np.linspace(0, 0.2, len(names)),
+            "worst_regret": np.linspace(0.01, 0.3, len(names)), "worst_site": annual["site"].iloc[0],
+            "wins": [2, *[0] * (len(names) - 1)], "best_on_average": [1, *[0] * (len(names) - 1)],
+            "smallest_worst_regret": [1, *[0] * (len(names) - 1)], "wins_nowhere": [0, *[1] * (len(names) - 1)],
+        }
+    )  # fmt: skip
     sites = [*dict.fromkeys(zip(annual["site"], annual["mounting"], strict=True)), (STANDARD_SITE, "")]
     pairs = [
         (site, mounting, quality, terminals, float(top), float(bottom), _pair_energy(top, bottom, terminals))
@@ -306,7 +339,12 @@ def _rest(annual: pd.DataFrame, gaps: dict[str, float]) -> dict[str, Any]:
     return {
         "ledger": ledger,
         "chance": pd.concat(chance, ignore_index=True),
-        "head_to_head": duel,
+        "head_to_head": pd.concat(duels, ignore_index=True),
+        "rank_chance": pd.concat(ranks, ignore_index=True),
+        "causes": pd.concat(causes, ignore_index=True),
+        "flips": pd.concat(flips, ignore_index=True),
+        "regret": regret,
+        "portfolio": portfolio,
         "worth": worth,
         "gap_pairs": pd.DataFrame(pairs, columns=columns),
         "gap_pair_materials": pd.DataFrame(

@@ -40,6 +40,9 @@ def _boxes(figure):
 def test_no_label_lies_over_another_or_outside(name, crowded):
     with canvas.style():
         figure = plots.PICTURES[name](crowded)
+        if name == "region":  # needs a grid; see test_region_plot
+            assert figure is None
+            return
         boxes = _boxes(figure)
     width, height = figure.get_size_inches() * figure.dpi
     for text, box, _ in boxes:
@@ -74,18 +77,26 @@ def test_slanted_names_of_edges_keep_a_line_apart(crowded):
 def test_every_axis_names_what_it_shows_with_its_unit(name, full):
     with canvas.style():
         figure = plots.PICTURES[name](full)
+    if figure is None:
+        assert name == "region"
+        return
     for axes in figure.axes:
         if not axes.axison:  # a helper for labels
             continue
         assert "[" in axes.get_xlabel() or axes.get_xlabel() == "month"
-        rows_are_names = name in ("annual_yield", "ledger") or "behind" in axes.get_xlabel()
+        rows_are_names = (
+            name in ("annual_yield", "ledger", "margins", "regret", "break_even", "causes")
+            or "behind" in axes.get_xlabel()
+        )
         assert "[" in axes.get_ylabel() or rows_are_names
 
 
 def test_the_same_result_gives_the_same_bytes(tmp_path, factory):
     small = factory.make(["One", "Two"], {"silicon": 1.12, "wide": 1.68}, full=True)
     one, two = (plots.write_plots(small, tmp_path / name) for name in ("a", "b"))
-    assert {file.name for file in one} == {f"{name}.{kind}" for name in plots.PICTURES for kind in ("svg", "png")}
+    assert {file.name for file in one} == {
+        f"{name}.{kind}" for name in plots.PICTURES for kind in ("svg", "png") if name != "region"
+    }
     for first, second in zip(one, two, strict=True):
         assert first.read_bytes() == second.read_bytes(), first.name
 

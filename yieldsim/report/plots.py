@@ -12,7 +12,7 @@ from matplotlib.axes import Axes
 from matplotlib.figure import Figure
 from matplotlib.ticker import MaxNLocator
 
-from yieldsim.report import gap_pair_plot, generation_plot, ledger_plot, region_plot
+from yieldsim.report import decision_plots, gap_pair_plot, generation_plot, ledger_plot, region_plot
 from yieldsim.report.canvas import (
     GREY,
     LABEL_IN,
@@ -281,6 +281,16 @@ def gap_pairs(result: StudyResult) -> Figure | None:
     return gap_pair_plot.draw(result, chosen, place_names(chosen), more)
 
 
+def _of_decision(draw: Callable[..., Figure | None]) -> Callable[[StudyResult], Figure | None]:
+    """Return what draws a picture of the decision, a panel for each place."""
+
+    def drawn(result: StudyResult) -> Figure | None:
+        chosen, more = _first(result.annual)
+        return draw(result, chosen, place_names(chosen), more)
+
+    return drawn
+
+
 #: Picture -> what draws it; a picture without numbers is left out.
 PICTURES: Mapping[str, Callable[[StudyResult], Figure | None]] = {
     "annual_yield": annual_yield,
@@ -291,4 +301,8 @@ PICTURES: Mapping[str, Callable[[StudyResult], Figure | None]] = {
     "gap_pairs": gap_pairs,
     "generation": generation_plot.draw,
     "region": region_plot.draw,
+    "margins": _of_decision(decision_plots.margins),
+    "regret": _of_decision(decision_plots.regret),
+    "break_even": _of_decision(decision_plots.break_even),
+    "causes": _of_decision(decision_plots.causes),
 }
