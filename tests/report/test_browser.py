@@ -15,7 +15,7 @@ CHROMIUM = os.environ.get("CHROMIUM") or shutil.which("chromium") or shutil.whic
 pytestmark = pytest.mark.skipif(CHROMIUM is None, reason="no chromium here: apt-get install chromium")
 
 AXE = Path(__file__).with_name("axe.min.js")  # axe-core 4.14.1, MPL-2.0, unchanged: a checker of accessibility
-PLACE_CHARTS = ["monthly", "factors", "ledger", "hours", "spectrum", "chance-range", "duel", "worth-chart"]
+PLACE_CHARTS = ["monthly", "factors", "ledger", "hours", "spectrum", "chance-range", "duel", "ranks", "causes", "worth-chart"]
 HOSTILE = ["<script>alert(1)</script>", "\"'><img src=x onerror=alert(1)>", "🌞 مرحبا &amp;", "x" * 200]
 
 
@@ -89,7 +89,7 @@ def test_it_asks_for_nothing_but_itself_and_says_nothing(opened):
 def test_every_chart_is_drawn_and_named(shown, full):
     tab = shown
     charts = tab.locator("figure.chart")
-    assert charts.count() == 12
+    assert charts.count() == 15
     for chart in charts.all():
         svg = chart.locator(".stage svg")
         assert svg.get_attribute("role") == "img"

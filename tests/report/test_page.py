@@ -79,7 +79,7 @@ def test_parts_that_a_result_lacks_do_not_appear(study):
 
 def test_every_chart_has_a_table_and_a_file_beside_it(html, full):
     figures = re.findall(r'<figure class="chart".*?</figure>', html, re.DOTALL)
-    assert len(figures) == 12
+    assert len(figures) == 15
     files = {name for name, _ in full.tables()} | {"spectra/"}
     for figure in figures:
         assert "<summary>" in figure

@@ -1,5 +1,5 @@
 "use strict";
-// Charts of gaps, chance and worth; the list of all charts; and the start of the page.
+// Charts of gaps and films; the list of all charts; and the start of the page.
 
 const STANDARD = "standard spectrum";
 const placeName = (p) => (p < 0 ? STANDARD : study.places[p].name);
@@ -132,60 +132,7 @@ function rowsChart(width, rows, texts, label, marks, more = {}) {
   });
 }
 
-function chanceRange(width) {
-  const measure = chanceMeasures()[choice.chance];
-  const { name, unit } = study.measures[measure] ?? { name: measure, unit: "1" };
-  const rows = study.chance.filter((row) => row.place === choice.place && row.measure === measure).sort((a, b) => b.p50 - a.p50).map((row, i) => ({ ...row, i }));
-  const text = (d) => `${names()[d.absorber]}: P90 ${figures(d.p90, 1)}, P50 ${figures(d.p50, 1)}, P10 ${figures(d.p10, 1)} ${unit}`;
-  const svg = rowsChart(width, rows, rows.map((row) => names()[row.absorber]), `${name} [${unit}], P90 to P10`, [
-    ...rows.map((row) => Plot.link([row], { x1: "p90", x2: "p10", y1: "i", y2: "i", stroke: look(row.absorber).colour, strokeWidth: 5, strokeOpacity: 0.5 })),
-    ...rows.map((row) => signs([row], row.absorber, { x: "p50", y: "i", r: 5 })),
-    Plot.tip(rows, Plot.pointer({ x: "p50", y: "i", title: text, maxRadius: 60 })),
-  ]);
-  return {
-    svg,
-    alt: `${name} of each absorber at ${here().name}: the range from P90, exceeded with 90 % probability, to P10.`,
-    points: rows.map((row) => ({ x: row.p50, y: row.i, text: text(row) })),
-    table: () => ({ columns: ["absorber", ...["P90", "P50", "P10"].map((p) => `${p} [${unit}]`)], rows: rows.map((row) => [names()[row.absorber], ...[row.p90, row.p50, row.p10].map((v) => figures(v, 1))]) }),
-  };
-}
-
-function duel(width) {
-  const rows = study.head_to_head.filter((row) => row.place === choice.place).sort((a, b) => b.probability - a.probability).map((row, i) => ({ ...row, i }));
-  const title = (d) => `${names()[d.absorber]} over ${names()[d.other]}`;
-  const share = (v) => `${signed(100 * v, 2)} %`;
-  const text = (d) => `${title(d)}: ${figures(100 * d.probability, 1)} %; margin P50 ${share(d.margin_p50)} (P90 ${share(d.margin_p90)}, P10 ${share(d.margin_p10)})`;
-  const svg = rowsChart(width, rows, rows.map(title), "probability of the higher yield [%]", [
-    Plot.ruleX([50], { stroke: "currentColor", strokeOpacity: 0.6 }),
-    Plot.barX(rows, { x1: 50, x2: (d) => 100 * d.probability, y: "i", inset: 6, fill: (d) => (d.probability >= 0.5 ? "var(--s0)" : "var(--s1)"), fillOpacity: 0.75 }),
-    Plot.tip(rows, Plot.pointer({ x: (d) => 100 * d.probability, y: "i", title: text, maxRadius: 80 })),
-  ], { domain: [0, 100] });
-  return {
-    svg,
-    alt: `Probability that one absorber yields more than another at ${here().name}.`,
-    points: rows.map((row) => ({ x: 100 * row.probability, y: row.i, text: text(row) })),
-    table: () => ({ columns: ["pair", "probability [%]", "margin P90 [%]", "margin P50 [%]", "margin P10 [%]"], rows: rows.map((row) => [title(row), figures(100 * row.probability, 1), ...[row.margin_p90, row.margin_p50, row.margin_p10].map((v) => signed(100 * v, 2))]) }),
-  };
-}
-
-function worth(width) {
-  const rows = study.worth.filter((row) => row.place === choice.place).sort((a, b) => b.break_even_per_m2 - a.break_even_per_m2).map((row, i) => ({ ...row, i }));
-  const currency = rows[0]?.currency ?? "";
-  const text = (d) => `${names()[d.absorber]}: ${signed(d.break_even_per_m2, 2)} ${currency}/m²; cost of energy ${figures(d.cost_of_energy_per_kwh, 4)} ${currency}/kWh`;
-  const svg = rowsChart(width, rows, rows.map((row) => names()[row.absorber]), `break-even price difference [${currency}/m²]`, [
-    Plot.ruleX([0], { stroke: "currentColor", strokeOpacity: 0.6 }),
-    Plot.barX(rows, { x: "break_even_per_m2", y: "i", inset: 6, fill: (d) => (d.break_even_per_m2 >= 0 ? "var(--s0)" : "var(--s1)"), fillOpacity: 0.75 }),
-    Plot.tip(rows, Plot.pointer({ x: "break_even_per_m2", y: "i", title: text, maxRadius: 80 })),
-  ]);
-  return {
-    svg,
-    alt: `Break-even price difference of each absorber against ${names()[study.reference]} at ${here().name}.`,
-    points: rows.map((row) => ({ x: row.break_even_per_m2, y: row.i, text: text(row) })),
-    table: () => ({ columns: ["absorber", `break-even [${currency}/m²]`, `cost of energy [${currency}/kWh]`], rows: rows.map((row) => [names()[row.absorber], signed(row.break_even_per_m2, 2), figures(row.cost_of_energy_per_kwh, 4)]) }),
-  };
-}
-
-const CHARTS = { overview, monthly, factors, ledger, hours, spectrum, gap_sweep, gap_pairs, generation, "chance-range": chanceRange, duel, "worth-chart": worth };
+const CHARTS = { overview, monthly, factors, ledger, hours, spectrum, gap_sweep, gap_pairs, generation, "chance-range": chanceRange, duel, ranks, causes, regret, "worth-chart": worth };
 
 // ---------------------------------------------------------------------------------------------------------- start
 

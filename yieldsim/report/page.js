@@ -137,7 +137,7 @@ function select(label, key, options, ids) {
   return element("label", {}, element("span", { text: label }), box);
 }
 
-const OF_PLACE = ["monthly", "factors", "ledger", "hours", "spectrum", "gap_sweep", "gap_pairs", "chance-range", "duel", "worth-chart"];
+const OF_PLACE = ["monthly", "factors", "ledger", "hours", "spectrum", "gap_sweep", "gap_pairs", "chance-range", "duel", "ranks", "causes", "worth-chart"];
 const BY_ABSORBER = ["monthly", "factors", "ledger"];
 const bidi = (text) => element("bdi", { text });
 

@@ -19,6 +19,7 @@ from yieldsim.study import store
 from yieldsim.study.result import TABLES, StudyResult, records
 
 PAGE = "report.html"
+MOST_FLIPS = 40  # rows of what would turn a ranking; flips.csv holds all
 MOST_COLUMNS = 12  # places side by side in the table at a glance; annual.csv holds all
 _SOURCE = "source:"
 _TIMES = "values are means over it."
@@ -30,7 +31,7 @@ _INPUTS_OF_AIR = {
 }
 #: Ours by hand; the two libraries (both under the ISC licence, its text at their head) draw the charts: they make SVG,
 #: which takes the page's own colours in dark and light, prints sharply and can be read by assistive software.
-_SCRIPTS = ("d3.min.js", "plot.min.js", "page.js", "charts.js", "gaps.js")
+_SCRIPTS = ("d3.min.js", "plot.min.js", "page.js", "charts.js", "decision.js", "gaps.js")
 
 
 def write_page(result: StudyResult, folder: Path) -> Path:
@@ -70,6 +71,8 @@ def render(result: StudyResult) -> str:
         standard=records(result.standard),
         reference=result.reference,
         has=has | {"spectra": bool(result.spectra)},
+        flips=_flips(result),
+        portfolio=_portfolio(result),
         files=[file for name, file in TABLES.items() if has[name]],
         sources=_by_site(result.weather_quality, sources=True),
         findings=_by_site(result.weather_quality, sources=False),
@@ -104,6 +107,26 @@ def _cell(row: Mapping[str, Any] | None, reference: Mapping[str, Any]) -> dict[s
         "rank": row["rank_by_energy"],
         "moved": row["rank_at_stc"] - row["rank_by_energy"],
     }
+
+
+def _flips(result: StudyResult) -> list[dict[str, Any]]:
+    """Return the inputs at whose value the first and the second absorber tie, nearest first in spreads, per place."""
+    if result.flips is None or result.flips.empty:
+        return []
+    table = result.flips
+    if "measure" in table:
+        table = table[table["measure"] == "energy_kwh_m2"]
+    rows = [row for row in records(table) if row["found"] == "tie"]
+    rows.sort(key=lambda row: abs(float(row["spreads"])))
+    return rows[:MOST_FLIPS]
+
+
+def _portfolio(result: StudyResult) -> list[dict[str, Any]]:
+    """Return what each absorber does over all sites by energy per area, the best on average first."""
+    if result.portfolio is None or result.portfolio.empty:
+        return []
+    rows = [row for row in records(result.portfolio) if row["measure"] == "energy_kwh_m2"]
+    return sorted(rows, key=lambda row: (str(row["mounting"]), -float(row["mean_value"])))
 
 
 def _about(attributes: Mapping[Any, Any]) -> dict[str, str]:

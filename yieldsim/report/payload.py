@@ -60,7 +60,14 @@ def payload(result: StudyResult) -> Tree:
         ("generation", result.generation, lambda table: _films(table, absorbers)),
         ("chance", result.chance, lambda table: _listed(table, found, absorbers)),
         ("head_to_head", result.head_to_head, lambda table: _listed(_duels(table, result), found, absorbers)),
-        ("worth", result.worth, lambda table: _listed(table, found, absorbers)),
+        ("rank_chance", result.rank_chance, lambda table: _listed(_by_energy(table), found, absorbers)),
+        ("causes", result.causes, lambda table: _listed(_of_margins(table), found, absorbers)),
+        (
+            "regret",
+            result.regret if len(found) > 1 else None,
+            lambda table: _listed(_by_energy(table), found, absorbers),
+        ),
+        ("worth", result.worth, lambda table: _listed(_shown(table), found, absorbers)),
     ]
     tree |= {name: shape(table) for name, table, shape in parts if table is not None and not table.empty}
     spectra = _spectra(result.spectra, found)
@@ -215,6 +222,24 @@ def _listed(table: pd.DataFrame, found: Sequence[Place], absorbers: Sequence[str
                 row[key] = value if isinstance(value, str) else _number(value)
         rows.append(row)
     return rows
+
+
+def _by_energy(table: pd.DataFrame) -> pd.DataFrame:
+    """Return rows by energy per area, the measure the page's decision stands on."""
+    return table[table["measure"] == "energy_kwh_m2"] if "measure" in table else table
+
+
+def _of_margins(table: pd.DataFrame) -> pd.DataFrame:
+    """Return the causes of a margin between two absorbers, not those of one absorber's yield."""
+    margins = _by_energy(table)
+    return margins[margins["other"].fillna("").astype(str) != ""]
+
+
+def _shown(table: pd.DataFrame) -> pd.DataFrame:
+    """Return the columns of a plant's worth that the page draws."""
+    kept = ("break_even_per_m2", "cost_of_energy_per_kwh")
+    names = [name for name in table if str(name) in (*KEYS, "currency") or str(name).startswith(kept)]
+    return table[names]
 
 
 def _duels(table: pd.DataFrame, result: StudyResult) -> pd.DataFrame:
