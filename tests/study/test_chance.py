@@ -134,6 +134,29 @@ def test_one_normal_input_has_the_closed_form_s_p90(place):
     assert (lead["input"], lead["first_order"], lead["note"]) == ("nameplate", pytest.approx(1.0, abs=1e-9), "")
 
 
+def test_response_level_moves_energy_per_area_alone(place):
+    """Rated with the same response, a module gives per rated power what it gave: 0.1 % where energy moves by 1.5 %."""
+    _, draws = place.told(ChancePlan(draws=50, spreads=NOTHING | {"response": 0.015}))
+    for a in range(3):
+        energy, specific = (getattr(draws, name)[:, 0, a] for name in ("energy_kwh_m2", "specific_yield_kwh_kwp"))
+        assert energy.std() / energy.mean() == pytest.approx(0.015, rel=0.1)
+        assert specific.std() / specific.mean() < 1e-3
+
+
+def test_an_error_by_band_flips_a_lead_the_shortest_way(place):
+    """Of all shapes of an error the one that moves the lead most: no single shape ties the two with fewer spreads, and
+    a straight line from the middle finds the tie within a fifth."""
+    plan = ChancePlan(draws=50, spreads=NOTHING | {"model_clear": 0.05})
+    tables, _ = place.told(plan)
+    (row,) = of(tables["flips"], measure="specific_yield_kwh_kwp", input="model_clear")
+    assert row["found"] == "tie"
+    told = of(tables["head_to_head"], measure="specific_yield_kwh_kwp", absorber=row["absorber"], other="silicon")
+    scatter = (told[0]["margin_p10"] - told[0]["margin_p90"]) / (2 * Z90)
+    base = {each["absorber"]: each["specific_yield_kwh_kwp"] for each in place.annual}
+    lead = base[row["absorber"]] / base[row["other"]] - 1
+    assert abs(row["spreads"]) == pytest.approx(lead / scatter, rel=0.2)
+
+
 def test_level_and_year_do_not_tell_absorbers_apart(place):
     """Common to all absorbers of a site: yields scatter by 4 %, the lead not at all."""
     tables, draws = place.told(ChancePlan(draws=100, spreads=NOTHING | {"year": 0.04}))
