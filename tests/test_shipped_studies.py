@@ -54,6 +54,25 @@ def test_annual_table(five):
         assert sorted(place["rank_by_yield"]) == list(range(1, 9))
 
 
+def test_worth_and_portfolio_tables(five):
+    """Each site has a plant an absorber, the reference breaks even with itself; one absorber is best on average and one
+    regrets least; the best single gap costs no site less than nothing."""
+    _, folder = five
+    worth, portfolio = pd.read_csv(folder / "worth.csv"), pd.read_csv(folder / "portfolio.csv")
+    assert len(worth) == 5 * 8
+    assert (worth["currency"] == "EUR").all()
+    reference = worth[worth["absorber"] == "silicon"]
+    assert reference["break_even_per_m2"].abs().max() < 1e-9
+    assert worth["cost_of_energy_per_kwh"].between(0.02, 0.6).all()
+    for _, kind in portfolio.groupby("measure"):
+        assert kind["best_on_average"].sum() == 1
+        assert kind["smallest_worst_regret"].sum() == 1
+        assert kind["wins"].sum() >= 5
+    gaps = pd.read_csv(folder / "portfolio_gap.csv")
+    assert (gaps["cost"] >= 0).all()
+    assert gaps.groupby("quality")["gap_ev"].nunique().max() == 1
+
+
 def test_gap_sweep_table(five):
     """56 gaps of two qualities at five places and under the standard spectrum; under the latter the best ideal gap
     is 1.34 eV (detailed balance, from memory: 33.7 % at 1.34 eV)."""
