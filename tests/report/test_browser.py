@@ -15,7 +15,18 @@ CHROMIUM = os.environ.get("CHROMIUM") or shutil.which("chromium") or shutil.whic
 pytestmark = pytest.mark.skipif(CHROMIUM is None, reason="no chromium here: apt-get install chromium")
 
 AXE = Path(__file__).with_name("axe.min.js")  # axe-core 4.14.1, MPL-2.0, unchanged: a checker of accessibility
-PLACE_CHARTS = ["monthly", "factors", "ledger", "hours", "spectrum", "chance-range", "duel", "ranks", "causes", "worth-chart"]
+PLACE_CHARTS = [
+    "monthly",
+    "factors",
+    "ledger",
+    "hours",
+    "spectrum",
+    "chance-range",
+    "duel",
+    "ranks",
+    "causes",
+    "worth-chart",
+]
 HOSTILE = ["<script>alert(1)</script>", "\"'><img src=x onerror=alert(1)>", "🌞 مرحبا &amp;", "x" * 200]
 
 
