@@ -143,7 +143,9 @@ def test_second_run_gives_the_same_bytes(five, tmp_path):
         assert (folder / name).read_bytes() == (tmp_path / name).read_bytes(), name
 
 
-@pytest.mark.parametrize("study", ["how-sure", "measured-film", "snow-and-rear-light", "tandem-wet-coast", "tracker-or-fixed"])
+@pytest.mark.parametrize(
+    "study", ["how-sure", "measured-film", "snow-and-rear-light", "tandem-wet-coast", "tracker-or-fixed"]
+)
 def test_every_shipped_study_runs(study, tmp_path):
     """Each is a question of its own; here: it runs, nothing is NaN, the ledger is exhaustive, the page is written."""
     result = yieldsim.run_study(yieldsim.load_study(ROOT / "configs" / f"{study}.yaml"), tmp_path)
