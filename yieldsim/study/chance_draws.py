@@ -78,4 +78,4 @@ def tied(own: Array, common: Array, correlation: float) -> Array:
 
 def picked(values: Array, count: int) -> NDArray[np.intp]:
     """Return which of ``count`` equally likely things normal values (n,) stand for, (n,) 0 to count - 1."""
-    return np.minimum((ndtr(values) * count).astype(np.intp), count - 1)
+    return np.asarray(np.minimum((np.asarray(ndtr(values)) * count).astype(np.intp), count - 1), dtype=np.intp)
