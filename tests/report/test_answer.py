@@ -93,6 +93,23 @@ def test_the_probability_is_read_either_way_round(study, turned):
     assert "probability of 80.0 %" in said.certainty
 
 
+def test_the_least_sure_lead_is_told_in_words(study):
+    """Of two measures energy per area counts, as everywhere in the answer."""
+    columns = ["site", "mounting", "measure", "absorber", "other", "probability", "above", "probability_above",
+               "margin_p90", "margin_p50", "margin_p10", "verdict"]  # fmt: skip
+    duels = pd.DataFrame(
+        [
+            ("Dry", "fixed", "specific_yield_kwh_kwp", "red", "blue", 0.55, 0.01, 0.2, -0.02, 0.01, 0.03, "no word"),
+            ("Dry", "fixed", "energy_kwh_m2", "red", "blue", 0.93, 0.01, 0.81, 0.002, 0.015, 0.029, "very likely"),
+        ],
+        columns=columns,
+    )
+    said = _answer(study, TWO_PLACES[:3], head_to_head=duels).certainty
+    assert "probability of 93.0 %." in said
+    assert "red ahead of blue is very likely: by 1.5 %, with a probability of 80 % between 0.2 % and 2.9 %" in said
+    assert "by more than 1.0 % with 81.0 %" in said
+
+
 def test_long_lists_are_counted():
     assert answers.listed(["a"]) == "a"
     assert answers.listed(["a", "b"]) == "a and b"

@@ -143,7 +143,7 @@ def test_shortcut_is_the_full_rerun(reruns, station):
     base, rating = rerun.energies(zero)
     middle, middle_rating = rerun.told(zero)
     moved = []
-    for numbers in draws(rerun, 5):
+    for numbers in draws(rerun, 3):
         there, there_rating = rerun.energies(numbers)
         ours, ours_rating = rerun.told(numbers)
         moved.append(there / base)

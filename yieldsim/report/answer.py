@@ -203,12 +203,26 @@ def _chances(all_places: Sequence[Place], duels: pd.DataFrame) -> str:
             "How sure each lead over the reference is stands under Chance; the two leaders were not set head to head."
         )
     low, high = min(found, key=lambda name: found[name]), max(found, key=lambda name: found[name])
-    if found[low] == found[high]:
-        return f"The best beats the next best with a probability of {percent(found[low])}."
-    return (
-        f"The best beats the next best with a probability of {percent(found[low])} ({low}) "
-        f"to {percent(found[high])} ({high})."
-    )
+    said = f"The best beats the next best with a probability of {percent(found[low])}"
+    if found[low] != found[high]:
+        said += f" ({low}) to {percent(found[high])} ({high})"
+    return f"{said}.{_least_sure(next(place for place in all_places if place.name == low), duels)}"
+
+
+def _least_sure(place: Place, duels: pd.DataFrame) -> str:
+    """Return in words how far and how surely the best leads at the place where that is least sure."""
+    if "verdict" not in duels:
+        return ""
+    best, second = place.best, str(place.rows[1]["absorber"])
+    at = (duels["site"] == place.site) & (duels["mounting"] == place.mounting)
+    for row in records(duels[at & duels["absorber"].isin([best, second]) & duels["other"].isin([best, second])]):
+        return (
+            f" At {place.name}, where it is least sure, {row['absorber']} ahead of {row['other']} is {row['verdict']}: "
+            f"by {percent(row['margin_p50'])}, with a probability of 80 % between {percent(row['margin_p90'])} and "
+            f"{percent(row['margin_p10'])}; by more than {percent(row['above'])} with "
+            f"{percent(row['probability_above'])}."
+        )
+    return ""
 
 
 def _ranking(all_places: Sequence[Place]) -> str:

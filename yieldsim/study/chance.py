@@ -59,7 +59,9 @@ class Gathered:
     lights: list[list[ClassLight]] = field(default_factory=list)
 
     def add(self, sky: SiteSky, share: float) -> None:
-        """Take a stretch of time that is this share of the year [1]."""
+        """Take a stretch of time that is this share of the year [1]; one without light tells nothing."""
+        if not sky.sky.diffuse.any():
+            return
         spreads = spreads_of(self.plan, self.site.name, self.absorbers).site
         losses = [
             light.with_snow(self.losses, sky, mounting, light.plane_parts(sky, mounting))

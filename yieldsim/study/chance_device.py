@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Sequence
-from dataclasses import dataclass, replace
+from dataclasses import dataclass, field, replace
 from functools import lru_cache
 from typing import Any
 
@@ -21,6 +21,7 @@ from yieldsim.device.bank import (
 )
 from yieldsim.device.junction import LIMITS, constants, generated, moved_to_gap
 from yieldsim.device.stack import Absorber
+from yieldsim.study import store
 from yieldsim.study.chance_inputs import FARTHEST
 
 Array = NDArray[np.float64]
@@ -95,10 +96,23 @@ def _with_edge(absorber: Absorber, i: int, shift_ev: float) -> Absorber:
     return replace(absorber, junctions=tuple(junctions))
 
 
-@lru_cache(maxsize=256)
+@dataclass(frozen=True, slots=True)
+class _Known:
+    """An absorber told from others by what it is made of: each site's work brings records of its own."""
+
+    made_of: str
+    absorber: Absorber = field(compare=False)
+
+
 def device(absorber: Absorber, steps: tuple[float, ...]) -> Device:
-    """Return a Device, made once for all sites and mountings of a run."""
-    return Device.of(absorber, steps)
+    """Return a Device, made once for all sites and mountings of a process."""
+    made_of = store.fingerprint(absorber.junctions, absorber.terminals, absorber.coupling, absorber.bifaciality)
+    return _device(_Known(made_of, absorber), steps)
+
+
+@lru_cache(maxsize=128)
+def _device(known: _Known, steps: tuple[float, ...]) -> Device:
+    return Device.of(known.absorber, steps)
 
 
 @dataclass(frozen=True, slots=True)

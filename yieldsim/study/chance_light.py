@@ -41,6 +41,7 @@ STEP = 1.5  # spreads to either side at which the closing is done anew: between 
 MOST_LIT = 5500  # intervals closed anew: a year of hours whole, of finer intervals every second day, third, ...
 _LEAST_DAYS = 3
 _RED_NM = 700.0
+_NOTHING = 1e-12  # what is left of a month under snow: it counts for nothing, and still has a mean
 _SAME = 1e-6  # haze solved twice
 _ALBEDO_MOST = 0.98
 _ABSORPTION_MOST = 0.95
@@ -272,8 +273,8 @@ class _Drawn:
         total = faces.front.total()
         temp_air = kelvin(sky.weather["temp_air"][sky.lit])
         temperature = faces.temperatures(mounting, absorbers)
-        left = annual.kept_share(losses)[sky.month]
-        lit = np.flatnonzero((total > 0) & (left > 0))
+        left = np.maximum(annual.kept_share(losses), _NOTHING)[sky.month]
+        lit = np.flatnonzero(total > 0)
         number = _classes(faces.front.bands()[lit], temperature[0][lit], kinds)
         order = lit[np.argsort(number, kind="stable")]
         starts = np.flatnonzero(np.diff(np.sort(number), prepend=-1))
