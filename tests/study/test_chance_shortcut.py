@@ -149,7 +149,7 @@ def test_shortcut_is_the_full_rerun(reruns, station):
         moved.append(there / base)
         np.testing.assert_allclose(ours / middle, there / base, rtol=WITHIN)
         np.testing.assert_allclose(ours_rating / middle_rating, there_rating / rating, rtol=2e-4)
-    assert np.std(moved, axis=0).min() > 10 * WITHIN  # the draws move what is compared by far more
+    assert np.std(moved, axis=0).min() > 5 * WITHIN  # the draws move what is compared by far more
 
 
 @pytest.mark.parametrize("pair", chance_light.TOGETHER)
