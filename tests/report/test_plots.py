@@ -9,8 +9,7 @@ from matplotlib.text import Text
 from yieldsim.report import canvas, marks, plots
 
 LONG_SITES = (
-    "Amber Mesa on the dry inland plateau, 40", "Mangrove Reach at the humid tropics, forty",
-    "Saltmarsh Point, temperate sea side 40 ch", "Birchholm where the winters are long, 40", "Highmoor $x_1$ <b>",
+    "Amber Mesa on the dry inland plateau, 40", "Saltmarsh Point, temperate sea side 40 ch", "Highmoor $x_1$ <b>",
 )  # fmt: skip
 TWELVE = {f"absorber of a long name no {i:02d}": 0.75 + 0.11 * i for i in range(12)}
 
