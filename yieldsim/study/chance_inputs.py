@@ -92,8 +92,9 @@ INPUTS: tuple[Input, ...] = (
         "scattering albedos near 500 nm run from 0.85 to 0.98 (common practice, no source)",
     ),
     Input(
-        "albedo", 0.2, 1.0, "factor", "site", LN, "ground albedo",
-        "grass and soil lie between 0.15 and 0.3 where 0.2 is taken (common practice, no source)",
+        "albedo", 0.25, 1.0, "factor", "site", LN, "odds of the ground to reflect light, albedo / (1 - albedo)",
+        "grass and soil lie between 0.15 and 0.3 where 0.2 is taken, snow between 0.7 and 0.85 where 0.8 is (common "
+        "practice, no source)",
     ),
     Input(
         "heat_loss", 0.1, 0.5, "factor", "all", LN, "heat loss coefficients of the cell temperature",

@@ -42,8 +42,8 @@ MOST_LIT = 5500  # intervals closed anew: a year of hours whole, of finer interv
 _LEAST_DAYS = 3
 _RED_NM = 700.0
 _NOTHING = 1e-12  # what is left of a month under snow: it counts for nothing, and still has a mean
+_DARK = 1e-6  # of a class's light: a band below it stays as it is; saturated ones move by hundreds of powers of ten
 _SAME = 1e-6  # haze solved twice
-_ALBEDO_MOST = 0.98
 _ABSORPTION_MOST = 0.95
 
 
@@ -155,8 +155,8 @@ def _moved_air(air: Air, by: Mapping[str, float]) -> Air:
     for name in ("water_cm", "ozone_atm_cm", "aod500"):
         fields[name] = fields[name] * by.get(name, 1.0)
     fields["angstrom_exponent"] = air.angstrom_exponent + by.get("angstrom_exponent", 0.0)
-    if "albedo" in by:
-        fields["albedo"] = np.minimum(air.albedo * by["albedo"], np.maximum(_ALBEDO_MOST, air.albedo))
+    if "albedo" in by:  # the odds of reflecting: dark ground moves in proportion, snow stays below 1
+        fields["albedo"] = air.albedo * by["albedo"] / (1 + air.albedo * (by["albedo"] - 1))
     return Air(**fields)
 
 
@@ -306,7 +306,7 @@ class _Drawn:
             if kept is None or base is None or light_there is None:
                 continue
             there = light_there / self.weight[:, None]
-            seen = (base > 0) & (there > 0)
+            seen = (base > _DARK * base.sum(axis=2, keepdims=True)) & (there > 0)
             logarithm = np.log(np.where(seen, there, 1.0) / np.where(seen, base, 1.0))
             for term, part in parts.items():
                 kept[term] += part * logarithm

@@ -19,6 +19,7 @@ Array = NDArray[np.float64]
 
 Dimension = tuple[str, str, int]  # input, owner, and which of several numbers it takes
 _OF_MODEL = ("model_clear", "model_cloud")
+_MOST = 2.0  # of a logarithm: no input moves a band by more than sevenfold, however far squares are led on
 
 
 def junction_owner(absorber: Absorber, i: int) -> str:
@@ -222,7 +223,8 @@ def _shifted(base: Array, moves: Array, coefficients: Array, error: Array) -> Ar
     """
     out = base
     if len(coefficients):
-        out = base * np.exp((coefficients @ moves.reshape(len(coefficients), -1)).reshape(base.shape))
+        logarithm = (coefficients @ moves.reshape(len(coefficients), -1)).reshape(base.shape)
+        out = base * np.exp(np.minimum(np.maximum(logarithm, -_MOST), _MOST))
     wrong = out * np.exp(error)
     total = out.sum(axis=2)
     kept = np.divide(total, wrong.sum(axis=2), out=np.zeros_like(total), where=total > 0)
