@@ -249,7 +249,7 @@ DAMAGES = (
     (("gap_sweep",), {"from_ev": 1, "to_ev": 2, "step_ev": 0}, "gap_sweep.step_ev"),
     (("gap_pairs",), {"top_ev": [1.5, 1.6, 0.1], "bottom_ev": [0.9, 1.0]}, "gap_pairs.bottom_ev"),
     (("keep",), ["everything"], "keep[0]"),
-    (("chance",), {"draws": 10}, "chance"),
+    (("chance",), {"draws": 10}, "chance.draws"),
 )
 
 
@@ -290,3 +290,41 @@ def stacks(draw):
         )
         links.append(Link(diode, coupling * radiative, thermal))
     return links
+
+
+# ------------------------------------------------------------------------------------------------- weather files
+
+_NASTY = (
+    b"nan", b"inf", b"-inf", b"1e999", b"1e300", b"-1e300", b"9" * 400, b"-9999", b"1_0", b"\xd9\xa3", b"", b" ", b'"',
+    b'"""', b",", b";", b"\t", b"\r", b"\n", b"\n\n", b"\x00", b"\xff\xfe", b"0x10", b"--", b"24:00", b"29", b"0000",
+)  # fmt: skip
+
+
+@st.composite
+def damaged(draw, content):
+    """Return a file with up to three faults: bytes replaced or put in, cells made nasty, lines lost, repeated, swapped."""
+    for _ in range(draw(st.integers(1, 3))):
+        kind = draw(st.sampled_from(["cell", "bytes", "lost", "again", "swapped", "cut", "put in"]))
+        if kind in ("lost", "again", "swapped"):
+            lines = content.split(b"\n")
+            i, j = (draw(st.integers(0, len(lines) - 1)) for _ in range(2))
+            if kind == "lost":
+                lines[i : i + draw(st.integers(1, 3))] = []
+            elif kind == "again":
+                lines.insert(j, lines[i])
+            else:
+                lines[i], lines[j] = lines[j], lines[i]
+            content = b"\n".join(lines)
+        elif kind == "cell":
+            delimiter = draw(st.sampled_from([b",", b" ", b":", b"\n"]))
+            cells = content.split(delimiter)
+            # Half of the faults are in the header, where few bytes are.
+            most = len(cells) - 1 if draw(st.booleans()) else min(len(cells) - 1, 60)
+            cells[draw(st.integers(0, most))] = draw(st.sampled_from(_NASTY))
+            content = delimiter.join(cells)
+        else:
+            at = draw(st.integers(0, len(content)))
+            junk = draw(st.binary(max_size=40))
+            rest = {"bytes": content[at + len(junk) :], "cut": b"", "put in": content[at:]}[kind]
+            content = content[:at] + junk + rest
+    return content

@@ -5,6 +5,7 @@ import json
 from pathlib import Path
 from types import SimpleNamespace
 
+import pandas as pd
 import pytest
 
 from yieldsim import api
@@ -90,12 +91,6 @@ def test_hostile_names_are_shown_as_text():
     assert "s?ite" in text
 
 
-class Frame:
-    def to_dict(self, orient):
-        assert orient == "records"
-        return ROWS
-
-
 @pytest.fixture
 def engine(monkeypatch):
     """Return the calls that a run makes to the engine, which computes nothing here."""
@@ -103,9 +98,11 @@ def engine(monkeypatch):
 
     def run_study(plan, out, **options):
         calls.append((plan, out, options))
-        return SimpleNamespace(annual=Frame())
+        return SimpleNamespace(annual=pd.DataFrame(ROWS))
 
-    monkeypatch.setattr(api, "load_study", lambda path: SimpleNamespace(name=Path(path).stem, reference="silicon"))
+    monkeypatch.setattr(
+        api, "load_study", lambda path: SimpleNamespace(name=Path(path).stem, reference="silicon", sites=[None])
+    )
     monkeypatch.setattr(api, "run_study", run_study)
     monkeypatch.setattr(answer, "answer", lambda result: SimpleNamespace(winner="A wins.", ranking="Nothing moves."))
     return calls

@@ -31,7 +31,7 @@ def test_each_cell_stands_at_its_day_and_local_hour(year):
 def test_months_add_up_to_the_light_of_the_year(year):
     with canvas.style():
         figure = weather.weather_picture("Made up", year)
-    axes = figure.axes[1]
+    axes = figure.axes[2]
     total = sum(bar.get_height() for bar in axes.patches)
     assert total == pytest.approx(year["ghi"].sum() / 1000, rel=1e-12)  # hourly W/m2; rounding only
     assert f"{year['ghi'].sum() / 1000:,.0f} kWh/m²" in axes.get_title(loc="left")
