@@ -21,8 +21,8 @@ def test_worked_example():
     """Reference: the levelised cost of the manual NREL/TP-462-5173 (Short, Packey, Holt 1995): LCOE = TLCC x UCRF / Q
     where TLCC is capital plus the present value of yearly costs (formula from memory, amounts ours): 100 000 of
     capital, 1 500 a year, 90 000 kWh a year, 20 years at 8 %: (100000 + 1500 x 9.8181) x 0.101852 / 90000."""
-    output = money.present_worth_of_one(0.08, 20)
-    found = money.cost_of_energy(90_000.0, 1_500.0, 100_000.0, output, output)
+    worth = money.present_worth_of_one(0.08, 20)
+    found = money.cost_of_energy(90_000.0 * worth, 1_500.0, 100_000.0, worth)
     assert found == pytest.approx((100_000 + 1_500 * 9.8181) * 0.101852 / 90_000, rel=2e-5)  # four-digit factors
     assert money.capital_recovery(0.08, 20) == pytest.approx(0.101852, abs=5.1e-7)
 
@@ -33,12 +33,13 @@ def test_worked_example():
 )  # fmt: skip
 def test_cash_flows_written_out(rate, growth, years, revenue, cost, capital):
     """Closed form against a loop over the years."""
-    flows = [revenue * (1 + growth) ** n - cost for n in range(years)]
-    written = sum(flow / (1 + rate) ** (n + 1) for n, flow in enumerate(flows)) - capital
+    sales = [revenue * (1 + growth) ** n for n in range(years)]
+    written = sum((sold - cost) / (1 + rate) ** (n + 1) for n, sold in enumerate(sales)) - capital
     output, costs = money.present_worth_of_one(rate, years, growth), money.present_worth_of_one(rate, years)
-    found = money.net_present_value(revenue, cost, capital, output, costs)
     scale = revenue * output + cost * costs + capital + 1.0
+    found = money.net_present_value(revenue * output, cost, capital, costs)
     assert found == pytest.approx(written, abs=1e-9 * scale)
+    assert money.present_value(sales, rate) == pytest.approx(revenue * output, abs=1e-9 * scale)
 
 
 @pytest.mark.parametrize("rate", [0.0, 1e-15, 1e-9, 0.04])
@@ -52,11 +53,20 @@ def test_a_rate_equal_to_the_growth_is_no_pole(rate):
 def test_the_cost_of_energy_as_price_is_worth_nothing():
     """Definition: sold at its cost, energy leaves a net present value of zero."""
     output, costs = money.present_worth_of_one(0.06, 25, -0.005), money.present_worth_of_one(0.06, 25)
-    price = money.cost_of_energy(1200.0, 15.0, 900.0, output, costs)
-    assert money.net_present_value(1200.0 * price, 15.0, 900.0, output, costs) == pytest.approx(0.0, abs=1e-9)
+    price = money.cost_of_energy(1200.0 * output, 15.0, 900.0, costs)
+    value = money.net_present_value(1200.0 * output * price, 15.0, 900.0, costs)
+    assert value == pytest.approx(0.0, abs=1e-9)
+
+
+def test_energy_that_is_not_there_has_no_finite_cost():
+    assert money.cost_of_energy(0.0, 15.0, 900.0, 10.0) == np.inf
+    found = money.cost_of_energy(np.array([0.0, 100.0]), 10.0, 900.0, 10.0)
+    assert list(found) == [np.inf, 10.0]
 
 
 def test_arrays_and_bad_numbers():
+    flows = np.array([[1.0, 1.0, 1.0], [0.0, 0.0, 2.0]])
+    assert money.present_value(flows, 0.1) == pytest.approx([2.486852, 2 / 1.331], abs=5e-7)  # six-digit factor
     found = money.present_worth_of_one(np.array([0.05, 0.08]), np.array([30, 20]))
     assert found == pytest.approx([15.3725, 9.8181], abs=5.1e-5)
     for bad in ((-1.0, 10, 0.0), (0.05, 0, 0.0), (0.05, 10, -1.0)):

@@ -85,6 +85,57 @@ def test_the_grid_takes_no_more_than_it_takes(greensboro, sold):
         assert low["sold_kwh_kwp"] < 0.9 * high["sold_kwh_kwp"]
 
 
+GRID = replace(TERMS, limited_by="grid_power", size=500.0, dc_to_grid=1.6)
+CLIPPED = 2e-4  # of energy: what a cubic between shares 0.05 apart leaves of this year of hours, measured: 1e-4
+
+
+def clipped(greensboro, share, grid=1 / GRID.dc_to_grid):
+    """What silicon sells at a share of its output, hour by hour [kWh/kW]."""
+    power = greensboro.plane.power[0] * (1 - 0.01 * greensboro.sky.month) / greensboro.ratings.terminals[0]
+    return np.minimum(share * power, grid).sum()
+
+
+def test_an_old_plant_is_clipped_less(greensboro, sold):
+    """Closed form: a life of clipped hours written out year by year; what is clipped hides most of the fading."""
+    fading = 0.02
+    plan = replace(GRID, fading=dict.fromkeys(NAMES, fading))
+    row = table(greensboro, plan, sold(plan))["c-si"]
+    years = [800 * clipped(greensboro, (1 - fading) ** n) for n in range(30)]
+    present = sum(energy / 1.05 ** (n + 1) for n, energy in enumerate(years))
+    assert row["energy_sold_kwh"] == pytest.approx(years[0], rel=1e-12)
+    assert row["energy_life_kwh"] == pytest.approx(sum(years), rel=CLIPPED)
+    assert row["energy_life_discounted_kwh"] == pytest.approx(present, rel=CLIPPED)
+    revenue = (
+        row["net_present_value"] + row["capital"] + row["yearly_cost"] * worth.money.present_worth_of_one(0.05, 30)
+    )
+    assert revenue == pytest.approx(0.06 * present, rel=CLIPPED)
+    in_proportion = years[0] * sum((1 - fading) ** n for n in range(30))
+    assert row["energy_life_kwh"] > 1.03 * in_proportion
+
+
+def test_a_good_year_is_clipped_more(greensboro, sold):
+    """Closed form: each draw's hours clipped; more light is worth less than its share, less light costs less."""
+    rows, shares = sold(GRID), np.array([0.8, 0.93, 1.0, 1.07, 1.22])
+    found = worth.sales_of(GRID, rows[0], shares)
+    exact = np.array([clipped(greensboro, share) for share in shares])
+    assert found.energy == pytest.approx(exact, rel=CLIPPED)
+    assert found.energy[2] == rows[0]["sold_kwh_kwp"]  # without spread the study, to the last digit
+    assert found.energy[4] < 1.15 * found.energy[2]
+    assert found.energy[0] > 0.85 * found.energy[2]
+
+
+def test_a_grid_that_takes_all_is_no_limit(greensboro, sold):
+    """Invariant: an inverter never reached, over life and draws, gives what rated power as the limit gives."""
+    wide = replace(GRID, dc_to_grid=0.3, size=1000 / 0.3)
+    shares = {("here", "fixed", name): np.linspace(0.7, 1.3, 21) for name in NAMES}
+    one, two = table(greensboro, wide, sold(wide), shares), table(greensboro, TERMS, sold(), shares)
+    for name in NAMES:
+        assert one[name].keys() == two[name].keys()
+        for key, value in two[name].items():
+            if isinstance(value, float):
+                assert one[name][key] == pytest.approx(value, rel=1e-9, abs=1e-5), key
+
+
 @pytest.mark.parametrize("limited_by", ["area", "dc_power", "grid_power"])
 def test_a_break_even_price_fed_back_leaves_no_margin(greensboro, sold, limited_by):
     """Issue: margin 0 to 1e-6 of the plant's revenue, whatever limits the plant."""
@@ -106,7 +157,8 @@ def test_what_limits_a_plant_is_the_same_for_all(greensboro, sold):
     assert len({round(row["power_kw"], 6) for row in area.values()}) == len(NAMES)
     power = table(greensboro, TERMS, sold())
     assert {row["power_kw"] for row in power.values()} == {1000.0}
-    grid = table(greensboro, replace(TERMS, limited_by="grid_power", size=800.0, dc_to_grid=1.25), sold())
+    plan = replace(TERMS, limited_by="grid_power", size=800.0, dc_to_grid=1.25)
+    grid = table(greensboro, plan, sold(plan))
     assert {row["power_kw"] for row in grid.values()} == {1000.0}
 
 
@@ -124,7 +176,14 @@ def test_a_plant_written_out(greensboro, sold):
     costs = sum(1 / 1.05 ** (n + 1) for n in range(30))
     assert row["net_present_value"] == pytest.approx(energy * 0.06 * output - yearly * costs - capital, rel=1e-9)
     assert row["cost_of_energy_per_kwh"] == pytest.approx((capital + yearly * costs) / (energy * output), rel=1e-12)
+    assert row["energy_sold_kwh"] == pytest.approx(energy, rel=1e-12)
     assert row["energy_life_kwh"] == pytest.approx(energy * sum(0.995**n for n in range(30)), rel=1e-12)
+    assert row["energy_life_discounted_kwh"] == pytest.approx(energy * output, rel=1e-12)
+    assert row["revenue_first_year"] == pytest.approx(energy * 0.06, rel=1e-12)
+    assert row["net_present_value_per_kwp"] == pytest.approx(row["net_present_value"] / 1000, rel=1e-12)
+    assert row["net_present_value_per_m2"] == pytest.approx(row["net_present_value"] / area, rel=1e-12)
+    assert row["break_even_per_w"] == pytest.approx(row["break_even_price_per_w"] - PRICES["c-si"], abs=1e-12)
+    assert row["hours"] == 8760
 
 
 def test_prices_per_area_and_per_watt_are_one(greensboro, sold):
@@ -141,9 +200,11 @@ def test_intervals_follow_the_draws(greensboro, sold):
     """Without spread every draw is the study; with a common one break-even prices hardly move; P90 <= P10."""
     rows = sold()
     still = {("here", "fixed", name): np.ones(50) for name in NAMES}
+    clipped_still = table(greensboro, GRID, sold(GRID), still)["gaas"]
+    assert clipped_still["net_present_value_p90"] == clipped_still["net_present_value"]
     found = table(greensboro, TERMS, rows, still)
     for row in found.values():
-        for key in ("net_present_value", "break_even_price_per_m2", "cost_of_energy_per_kwh"):
+        for key in worth._WITH_INTERVALS:
             assert {row[f"{key}_{p}"] for p in ("p90", "p50", "p10")} == {row[key]}
     rng = np.random.default_rng(1)
     shared = 1 + 0.05 * rng.standard_normal(400)

@@ -52,24 +52,50 @@ def capital_recovery(discount_rate: Any, life_years: Any) -> Any:
     return 1.0 / present_worth_of_one(discount_rate, life_years)
 
 
-def net_present_value(first_year_revenue: Any, yearly_cost: Any, capital: Any, output: Any, costs: Any) -> Any:
+def present_value(flows: Any, discount_rate: float) -> Any:
+    """Return today's worth of what comes at the end of each year, (..., year) array [currency] -> (...) [currency]."""
+    amounts = np.asarray(flows, dtype=np.float64)
+    years = np.arange(1, amounts.shape[-1] + 1)
+    # Not a matrix product: its order of adding, and so the last digit, depends on how many rows there are.
+    return (amounts * (1.0 + discount_rate) ** -years.astype(np.float64)).sum(axis=-1)
+
+
+def net_present_value(revenue: Any, yearly_cost: Any, capital: Any, costs: Any) -> Any:
     """Return revenue less cost less capital in today's money.
 
     Parameters
     ----------
-    first_year_revenue : (...) array [currency/year], falls with the plant's output
+    revenue : (...) array [currency], present value of all that is sold over the life
     yearly_cost : (...) array [currency/year], level
     capital : (...) array [currency], spent at the start
-    output, costs : (...) arrays [year], present worth factors of output and of level costs
+    costs : (...) array [year], present worth factor of level costs
 
     Returns
     -------
     (...) array [currency]
     """
-    return first_year_revenue * output - yearly_cost * costs - capital
+    return revenue - yearly_cost * costs - capital
 
 
-def cost_of_energy(first_year_energy: Any, yearly_cost: Any, capital: Any, output: Any, costs: Any) -> Any:
-    """Return the level price [currency/kWh] at which a life pays for itself; inputs as above, energy [kWh]."""
+def cost_of_energy(energy: Any, yearly_cost: Any, capital: Any, costs: Any) -> Any:
+    """Return the level price at which a life pays for itself.
+
+    Parameters
+    ----------
+    energy : (...) array [kWh], discounted as money is: the present worth of a unit of currency for each kWh sold
+    yearly_cost, capital, costs : as above
+
+    Returns
+    -------
+    (...) array [currency/kWh]; infinite where nothing is sold
+
+    Notes
+    -----
+    LCOE = TLCC / sum over n of Q_n / (1 + r)^n, TLCC = capital + yearly cost x present worth factor.
+
+    References
+    ----------
+    As of `present_worth_of_one`, section on the levelized cost of energy (from memory).
+    """
     with np.errstate(divide="ignore", invalid="ignore"):
-        return (capital + yearly_cost * costs) / (first_year_energy * output)
+        return (capital + yearly_cost * costs) / np.asarray(energy, dtype=np.float64)[()]

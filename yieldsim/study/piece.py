@@ -38,7 +38,8 @@ def key(plan: StudyPlan, site: SitePlan) -> str:
     """Return the hash of all that a site's share is made from: inputs, absorbers, sweeps, losses, this version."""
     version: str = yieldsim.__version__
     kept = frozenset(plan.keep & {"hourly", "spectra"})
-    sold = None if plan.worth is None else (plan.worth.energy_price, plan.worth.limited_by, plan.worth.dc_to_grid)
+    terms = plan.worth
+    sold = None if terms is None else (terms.energy_price, terms.limited_by, terms.dc_to_grid, worth.SHARES)
     parts = (site, plan.absorbers, plan.gap_sweep, plan.gap_pairs, plan.losses, sold, plan.chance)
     return store.fingerprint(version, *parts, kept)
 

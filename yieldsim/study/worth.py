@@ -8,6 +8,7 @@ from typing import Any
 
 import numpy as np
 from numpy.typing import NDArray
+from scipy.interpolate import PchipInterpolator
 
 from yieldsim.constants import STANDARD_IRRADIANCE
 from yieldsim.device.stack import Absorber
@@ -17,12 +18,16 @@ from yieldsim.study.hourly import PlaneYear, SiteSky
 from yieldsim.study.plan import LossesPlan, Row, WorthPlan
 
 Array = NDArray[np.float64]
-Columns = Mapping[str, Sequence[Any]]
 Draws = Mapping[tuple[str, str, str], Array]  # (site, mounting, absorber) -> each draw's yield over the study's [1]
 
 HOURS_OF_YEAR = 8760
 _W_PER_KW = 1000.0
 _29_FEBRUARY = 59  # days before it
+_FINE = tuple(step / 20 for step in range(10, 29))  # 0.5 to 1.4
+
+#: Shares of a plant's output at which clipped energy is kept: an old plant, or one in a poor year, is clipped less.
+#: Between them it is interpolated, from 0.6 up within 0.02 % of the hours' own sum (measured at ratios of 1.1 to 3).
+SHARES = (0.0, 0.2, 0.3, 0.4, *_FINE, 1.5, 1.75, 2.0)
 
 
 def sold_rows(
@@ -48,29 +53,34 @@ def sold_rows(
 
     Returns
     -------
-    rows of ``site, mounting, absorber, sold_kwh_kwp, revenue_per_kwp``, which add up over stretches of time
+    rows of ``site, mounting, absorber, hours, sold_kwh_kwp, revenue_per_kwp``, which add up over stretches of time;
+    where grid power limits, also what were sold and earned if the output were each of `SHARES` of what it is
 
     Notes
     -----
-    Power behind all losses in kW per rated kW; where grid power limits, what exceeds 1/dc_to_grid in an interval is not
-    sold. Prices are those of the interval's hour in local standard time; a leap day has those of the day before.
+    Power behind all losses in kW per rated kW. Where grid power limits, every absorber's plant has the same rated
+    power, dc_to_grid times the grid's, and what exceeds 1/dc_to_grid in an interval is not sold: an absorber whose
+    output stands high at noon is clipped more than one that gains morning and evening. Means over an hour hide what
+    passing clouds would have had clipped within it. Prices are those of the interval's hour in local standard time;
+    a leap day has those of the day before.
     """
     kept = annual.kept_share(losses)[sky.month]
     power = year.power * kept / ratings.terminals[:, None]
-    if plan.limited_by == "grid_power":
-        power = np.minimum(power, 1.0 / plan.dc_to_grid)
-    energy = power * (sky.weather.interval_s / 3600.0)
+    step_h = sky.weather.interval_s / 3600.0
     price = prices_at(sky, plan.energy_price)
-    return [
-        {
-            "site": site,
-            "mounting": year.mounting.name,
-            "absorber": absorber.name,
-            "sold_kwh_kwp": float(energy[i].sum()),
-            "revenue_per_kwp": float(energy[i] @ price),
-        }
-        for i, absorber in enumerate(absorbers)
+    shares: dict[str, float] = {"": 1.0}
+    if plan.limited_by == "grid_power":
+        shares |= {f"_at_{share:g}": share for share in SHARES}
+    rows: list[Row] = [
+        {"site": site, "mounting": year.mounting.name, "absorber": absorber.name, "hours": len(sky.weather) * step_h}
+        for absorber in absorbers
     ]
+    for suffix, share in shares.items():
+        energy = step_h * (np.minimum(share * power, 1.0 / plan.dc_to_grid) if len(shares) > 1 else power)
+        for i, row in enumerate(rows):
+            row[f"sold_kwh_kwp{suffix}"] = float(energy[i].sum())
+            row[f"revenue_per_kwp{suffix}"] = float(energy[i] @ price)
+    return rows
 
 
 def prices_at(sky: SiteSky, prices: tuple[float, ...]) -> Array:
@@ -91,38 +101,87 @@ def prices_at(sky: SiteSky, prices: tuple[float, ...]) -> Array:
 
 
 @dataclass(frozen=True, slots=True)
+class Sales:
+    """What a rated kilowatt sells over a plant's life; each a float or an array over draws.
+
+    Parameters
+    ----------
+    energy, revenue : [kWh/kW], [currency/kW], in the first year
+    energy_life : [kWh/kW], over the life
+    energy_present, revenue_present : [kWh/kW], [currency/kW], over the life, discounted
+    """
+
+    energy: Any
+    revenue: Any
+    energy_life: Any
+    energy_present: Any
+    revenue_present: Any
+
+
+def sales_of(plan: WorthPlan, row: Row, share: Any = 1.0) -> Sales:
+    """Return what is sold over a life.
+
+    Parameters
+    ----------
+    plan : WorthPlan
+    row : of `sold_rows`, a whole year
+    share : (...) array [1], output over the study's: 1, or each draw's yield over the study's
+
+    Notes
+    -----
+    Output falls by the absorber's degradation from year to year, the first year whole. Sold energy falls with it,
+    but for what the grid does not take: that falls first.
+    """
+    rate, years, fading = plan.discount_rate, plan.life_years, plan.degradation(str(row["absorber"]))
+    if plan.limited_by != "grid_power":
+        energy, revenue = (share * float(row[name]) for name in ("sold_kwh_kwp", "revenue_per_kwp"))
+        present = float(money.present_worth_of_one(rate, years, -fading))
+        undiscounted = float(money.present_worth_of_one(0.0, years, -fading))
+        return Sales(energy, revenue, energy * undiscounted, energy * present, revenue * present)
+    shares = np.multiply.outer(np.asarray(share, dtype=np.float64), (1.0 - fading) ** np.arange(years))
+    energies, revenues = (_at_shares(row, name, shares) for name in ("sold_kwh_kwp", "revenue_per_kwp"))
+    present_energy, present_revenue = (money.present_value(flows, rate) for flows in (energies, revenues))
+    return Sales(energies[..., 0], revenues[..., 0], energies.sum(axis=-1), present_energy, present_revenue)
+
+
+def _at_shares(row: Row, name: str, shares: Array) -> Array:
+    """Return what is sold or earned at shares of the output, between those kept by a cubic that never overshoots."""
+    kept = [float(row[f"{name}_at_{share:g}"]) for share in SHARES]
+    return np.asarray(PchipInterpolator(SHARES, kept)(np.clip(shares, SHARES[0], SHARES[-1])))
+
+
+@dataclass(frozen=True, slots=True)
 class Plant:
-    """A plant with one absorber, in numbers; each a float or an array over draws.
+    """A plant with one absorber, in numbers.
 
     Parameters
     ----------
     power_kw, area_m2 : [kW], [m2]
-    energy : [kWh], sold in the first year
-    revenue : [currency], of the first year
+    sales : Sales of a rated kilowatt
     capital : [currency]
     yearly_cost : [currency/year]
-    output, costs : [year], present worth factors of the plant's output and of level costs
+    costs : [year], present worth factor of level costs
     """
 
     power_kw: float
     area_m2: float
-    energy: Any
-    revenue: Any
+    sales: Sales
     capital: float
     yearly_cost: float
-    output: float
     costs: float
 
     def value(self) -> Any:
         """Return the net present value [currency]."""
-        return money.net_present_value(self.revenue, self.yearly_cost, self.capital, self.output, self.costs)
+        revenue = self.sales.revenue_present * self.power_kw
+        return money.net_present_value(revenue, self.yearly_cost, self.capital, self.costs)
 
     def cost_of_energy(self) -> Any:
         """Return the cost of energy [currency/kWh]."""
-        return money.cost_of_energy(self.energy, self.yearly_cost, self.capital, self.output, self.costs)
+        energy = self.sales.energy_present * self.power_kw
+        return money.cost_of_energy(energy, self.yearly_cost, self.capital, self.costs)
 
 
-def plant_of(plan: WorthPlan, absorber: str, efficiency: float, sold: Any, revenue: Any) -> Plant:
+def plant_of(plan: WorthPlan, absorber: str, efficiency: float, sales: Sales) -> Plant:
     """Return a plant of the size that the study limits.
 
     Parameters
@@ -130,8 +189,7 @@ def plant_of(plan: WorthPlan, absorber: str, efficiency: float, sold: Any, reven
     plan : WorthPlan
     absorber : str
     efficiency : float [1], of the module at standard conditions
-    sold : [kWh/kW], in the first year, a float or an array over draws
-    revenue : [currency/kW], likewise
+    sales : Sales of a rated kilowatt
     """
     if plan.limited_by == "area":
         area = plan.size
@@ -141,17 +199,12 @@ def plant_of(plan: WorthPlan, absorber: str, efficiency: float, sold: Any, reven
         area = power / efficiency
     watts = power * _W_PER_KW
     module = plan.module_price_per_m2(absorber, efficiency)
-    capital = area * (module + plan.area_cost_per_m2) + watts * plan.power_cost_per_w + plan.fixed_cost
-    yearly = watts * plan.yearly_cost_per_w + area * plan.yearly_cost_per_m2 + plan.yearly_cost
-    fading = plan.degradation(absorber)
     return Plant(
         power_kw=power,
         area_m2=area,
-        energy=sold * power,
-        revenue=revenue * power,
-        capital=capital,
-        yearly_cost=yearly,
-        output=float(money.present_worth_of_one(plan.discount_rate, plan.life_years, -fading)),
+        sales=sales,
+        capital=area * (module + plan.area_cost_per_m2) + watts * plan.power_cost_per_w + plan.fixed_cost,
+        yearly_cost=watts * plan.yearly_cost_per_w + area * plan.yearly_cost_per_m2 + plan.yearly_cost,
         costs=float(money.present_worth_of_one(plan.discount_rate, plan.life_years)),
     )
 
@@ -177,8 +230,10 @@ def rows(
     Notes
     -----
     Net present value is linear in the module price: the price per area at which an absorber's plant is worth what the
-    reference's is lies (NPV - NPV_ref)/area above its own. With draws the sold energy and its revenue follow the
-    draw's yield in proportion. P90 of a price or value is exceeded with 90 % probability; so is that of a cost.
+    reference's is lies (NPV - NPV_ref)/area above its own; below zero, no price is low enough. With draws the output
+    of every hour follows the draw's yield in proportion; prices, costs and lives are not drawn. P90 of a price or
+    value is exceeded with 90 % probability; so is that of a cost. ``hours`` are those of the weather: amounts of a
+    part of a year are of that part alone.
     """
     efficiency = {
         absorber.name: float(ratings.terminals[i] * absorber.area_fraction / STANDARD_IRRADIANCE)
@@ -189,20 +244,20 @@ def rows(
     for row in sold:
         by_place.setdefault((str(row["site"]), str(row["mounting"])), {})[str(row["absorber"])] = row
     for (site, mounting), members in by_place.items():
-        plants = {name: _plant(plan, name, efficiency[name], row) for name, row in members.items()}
+        plants = {name: plant_of(plan, name, efficiency[name], sales_of(plan, row)) for name, row in members.items()}
         price = plan.module_price_per_m2(reference, efficiency[reference])
+        other = (price, price / (efficiency[reference] * STANDARD_IRRADIANCE))
         drawn = None if draws is None else _drawn(plan, efficiency, members, draws)
         for name, plant in plants.items():
             row = {"site": site, "mounting": mounting, "absorber": name, "currency": plan.currency}
-            row |= _amounts(plan, name, efficiency[name], plant, plants[reference], price)
+            row["hours"] = members[name]["hours"]
+            row |= _amounts(plan, name, efficiency[name], plant, plants[reference], other)
             if drawn is not None:
-                row |= _spread(plan, name, efficiency[name], drawn[name], drawn[reference], price)
+                row |= _spread(
+                    _amounts(plan, name, efficiency[name], drawn[name], drawn[reference], other), drawn[name]
+                )
             found.append(row)
     return found
-
-
-def _plant(plan: WorthPlan, name: str, efficiency: float, row: Row, share: Any = 1.0) -> Plant:
-    return plant_of(plan, name, efficiency, float(row["sold_kwh_kwp"]) * share, float(row["revenue_per_kwp"]) * share)
 
 
 def _drawn(
@@ -214,23 +269,25 @@ def _drawn(
         yields = draws.get((str(row["site"]), str(row["mounting"]), name))
         if yields is None:
             return None
-        plants[name] = _plant(plan, name, efficiency[name], row, yields)
+        plants[name] = plant_of(plan, name, efficiency[name], sales_of(plan, row, yields))
     return plants
 
 
 def _amounts(
-    plan: WorthPlan, name: str, efficiency: float, plant: Plant, other: Plant, other_price: float
+    plan: WorthPlan, name: str, efficiency: float, plant: Plant, other: Plant, other_price: tuple[float, float]
 ) -> dict[str, Any]:
-    """Return the amounts of one plant set against the reference's."""
+    """Return the amounts of one plant set against the reference's, whose module price is per area and per watt."""
     value, base = plant.value(), other.value()
+    watts_per_m2 = efficiency * STANDARD_IRRADIANCE
     own = plan.module_price_per_m2(name, efficiency)
     even = own + (value - base) / plant.area_m2
     return {
         "power_kw": plant.power_kw,
         "area_m2": plant.area_m2,
-        "energy_sold_kwh": plant.energy,
-        "energy_life_kwh": plant.energy * _years_of_output(plan, name),
-        "revenue_first_year": plant.revenue,
+        "energy_sold_kwh": plant.sales.energy * plant.power_kw,
+        "energy_life_kwh": plant.sales.energy_life * plant.power_kw,
+        "energy_life_discounted_kwh": plant.sales.energy_present * plant.power_kw,
+        "revenue_first_year": plant.sales.revenue * plant.power_kw,
         "capital": plant.capital,
         "yearly_cost": plant.yearly_cost,
         "cost_of_energy_per_kwh": plant.cost_of_energy(),
@@ -238,27 +295,31 @@ def _amounts(
         "net_present_value_per_kwp": value / plant.power_kw,
         "net_present_value_per_m2": value / plant.area_m2,
         "module_price_per_m2": own,
-        "module_price_per_w": own / (efficiency * STANDARD_IRRADIANCE),
+        "module_price_per_w": own / watts_per_m2,
         "break_even_price_per_m2": even,
-        "break_even_price_per_w": even / (efficiency * STANDARD_IRRADIANCE),
-        "break_even_per_m2": even - other_price,
+        "break_even_price_per_w": even / watts_per_m2,
+        "break_even_per_m2": even - other_price[0],
+        "break_even_per_w": even / watts_per_m2 - other_price[1],
     }
 
 
-_WITH_INTERVALS = ("cost_of_energy_per_kwh", "net_present_value", "break_even_price_per_m2", "break_even_per_m2")
+_WITH_INTERVALS = (
+    "energy_sold_kwh",
+    "cost_of_energy_per_kwh",
+    "net_present_value",
+    "net_present_value_per_kwp",
+    "net_present_value_per_m2",
+    "break_even_price_per_m2",
+    "break_even_price_per_w",
+    "break_even_per_m2",
+    "break_even_per_w",
+)
 
 
-def _spread(
-    plan: WorthPlan, name: str, efficiency: float, plant: Plant, other: Plant, other_price: float
-) -> dict[str, float]:
-    amounts = _amounts(plan, name, efficiency, plant, other, other_price)
+def _spread(amounts: Mapping[str, Any], plant: Plant) -> dict[str, float]:
+    """Return P90, P50 and P10 of amounts over the draws."""
     row: dict[str, float] = {}
     for key in _WITH_INTERVALS:
-        low, middle, high = np.quantile(np.broadcast_to(amounts[key], np.shape(plant.energy)), (0.1, 0.5, 0.9))
+        low, middle, high = np.quantile(np.broadcast_to(amounts[key], np.shape(plant.sales.energy)), (0.1, 0.5, 0.9))
         row |= {f"{key}_p90": float(low), f"{key}_p50": float(middle), f"{key}_p10": float(high)}
     return row
-
-
-def _years_of_output(plan: WorthPlan, name: str) -> float:
-    """Return how many first years' output a life gives."""
-    return float(money.present_worth_of_one(0.0, plan.life_years, -plan.degradation(name)))
