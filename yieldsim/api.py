@@ -62,7 +62,7 @@ from yieldsim.study import (
 )
 from yieldsim.study.annual import Ratings
 from yieldsim.study.plan import ColumnsPlan, Row, SitePlan, StudyPlan
-from yieldsim.study.result import StudyResult, by_hour_table, records, responses_table
+from yieldsim.study.result import StudyResult, by_hour_table, ideal_names, records, responses_table
 from yieldsim.weather import Weather
 
 _VERSIONS_OF = ("numpy", "scipy", "pandas", "xarray", "pvlib", "numba", "h5py", "h5netcdf", "matplotlib", "pydantic")
@@ -233,7 +233,7 @@ def _decision(
 ) -> dict[str, pd.DataFrame | None]:
     """Return the tables that several sites, and money, add to a study's."""
     weights = portfolio.weights_of([site.name for site in plan.sites], plan.portfolio)
-    regrets = portfolio.regret_rows(found["annual"], weights)
+    regrets = portfolio.regret_rows(found["annual"], weights, ideal_names(plan.resolved))
     made: dict[str, list[Row]] = {"regret": regrets}
     if len(plan.sites) > 1:
         made["portfolio"] = portfolio.portfolio_rows(regrets)

@@ -38,6 +38,16 @@ def test_regret_is_what_the_best_has_more():
     assert found["wet", "film"] == 0.0
 
 
+def test_an_ideal_absorber_is_no_choice():
+    """Definition: what no device reaches is not set against what can be bought, unless too little is left."""
+    rows = portfolio.regret_rows(ANNUAL, {"dry": 0.5, "wet": 0.5}, ["silicon"])
+    assert {row["absorber"] for row in rows} == {"film", "tandem"}
+    found = {(row["site"], row["absorber"]): row["regret"] for row in rows if row["measure"] == "energy_kwh_m2"}
+    assert found["dry", "film"] == 0.0
+    assert found["dry", "tandem"] == pytest.approx(1 - 300 / 380)
+    assert portfolio.choices(["a", "b", "c"], ["b", "c"]) == {"a", "b", "c"}
+
+
 def test_who_is_best_on_average_and_who_regrets_least():
     """Closed form: means and worst regrets by hand; who wins nowhere is told."""
     found = by_absorber({"dry": 0.5, "wet": 0.5})

@@ -24,13 +24,28 @@ def weights_of(sites: Sequence[str], given: Mapping[str, float] | None) -> dict[
     return {site: weight / total for site, weight in raw.items()}
 
 
-def regret_rows(annual: Columns, weights: Mapping[str, float]) -> list[Row]:
+def choices(absorbers: Sequence[str], ideal: Sequence[str]) -> set[str]:
+    """Return the absorbers one can choose: without ideal ones, which no device is, where two others remain."""
+    real = set(absorbers) - set(ideal)
+    return real if len(real) > 1 else set(absorbers)
+
+
+def regret_rows(annual: Columns, weights: Mapping[str, float], ideal: Sequence[str] = ()) -> list[Row]:
     """Return for every site, mounting, absorber and measure how far it stays behind the best one there.
+
+    Parameters
+    ----------
+    annual : columns of the study's annual table
+    weights : share of each site in the portfolio [1]
+    ideal : absorbers that stand for a limit no device reaches: no choice, so they are left out where two others remain
 
     Returns
     -------
     rows of ``site, mounting, measure, absorber, value, best, regret, weight``; regret = 1 - value / best
     """
+    chosen = choices(annual["absorber"], ideal)
+    kept = [i for i, name in enumerate(annual["absorber"]) if name in chosen]
+    annual = {name: [annual[name][i] for i in kept] for name in ("site", "mounting", "absorber", *MEASURES)}
     rows: list[Row] = []
     for measure in MEASURES:
         best: dict[tuple[str, str], float] = {}
