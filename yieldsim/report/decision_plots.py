@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import re
 from collections.abc import Mapping, Sequence
 from typing import Any
 
@@ -19,10 +20,12 @@ Place = tuple[str, str]
 
 MEASURE = "energy_kwh_m2"
 _ROW_IN = 0.24
-_NAME = 26
+_BAR_IN = 3.1  # width of a panel of bars
+_LINE = 52  # characters of a pair's names on one line; longer ones take two
+_SURE = 0.9
 _MOST_ROWS = 14
 _MOST_CAUSES = 8
-_P90 = "P90 (exceeded with 90 % probability) to P10, dot at P50"
+_UNITS = re.compile(r"_(ev|atm_cm|cm)$")
 
 
 def _at(table: pd.DataFrame, place: Place, measure: str | None = MEASURE) -> pd.DataFrame:
@@ -39,7 +42,19 @@ def _span(axes: Axes, y: int, low: float, middle: float, high: float, colour: st
 
 
 def _pair(row: Mapping[str, Any]) -> str:
-    return f"{shorten(str(row['absorber']), _NAME)} over {shorten(str(row['other']), _NAME)}"
+    """Return a pair's names, on two lines where one would be long."""
+    one, other = shorten(str(row["absorber"])), shorten(str(row["other"]))
+    return f"{one} over {other}" if len(one) + len(other) < _LINE else f"{one}\nover {other}"
+
+
+def _lines(texts: Sequence[str]) -> list[str]:
+    """Return the lines of texts, to be measured."""
+    return [line for text in texts for line in text.split("\n")]
+
+
+def _unknown(name: object) -> str:
+    """Return what an input is called, without its unit."""
+    return _UNITS.sub("", str(name)).replace("_", " ")
 
 
 def _rows(axes: Axes, names: Sequence[str], label: str) -> None:
@@ -59,25 +74,18 @@ def margins(result: StudyResult, places: list[Place], names: list[str], more: st
     frames = [_nearest(_at(table, place)) for place in places]
     texts = [_pair(row) for f in frames for row in records(f)]
     rows = max(len(frame) for frame in frames)
-    left, right = 0.3 + text_width(texts, 8.5), 0.25 + text_width(["100 %"])
-    figure, drawn = panels(len(places), 1, (4.2, _ROW_IN * rows + 0.2), (left, right, 0.55, 0.4))
-    low = 100 * min(float(frame["margin_p90"].min()) for frame in frames)
-    high = 100 * max(float(frame["margin_p10"].max()) for frame in frames)
+    row_in = _ROW_IN if len(_lines(texts)) == len(texts) else 1.45 * _ROW_IN
+    left, right = 0.3 + text_width(_lines(texts), 8.5), 0.25 + text_width(["100 %"])
+    figure, drawn = panels(len(places), 1, (4.2, row_in * rows + 0.2), (left, right, 0.55, 0.4))
+    low = 100 * min(0.0, *(float(frame["margin_p90"].min()) for frame in frames))
+    high = 100 * max(0.0, *(float(frame["margin_p10"].max()) for frame in frames))
     pad = 0.05 * max(high - low, 1.0)
     for axes, title, frame in zip(drawn, names, frames, strict=True):
         pairs = records(frame)[::-1]
         for y, row in enumerate(pairs):
-            sure = row["probability"] >= 0.9
-            colour = COLOURS[0] if sure else COLOURS[1]
-            _span(
-                axes,
-                y,
-                100 * row["margin_p90"],
-                100 * row["margin_p50"],
-                100 * row["margin_p10"],
-                colour,
-                "o" if sure else "D",
-            )
+            colour, sign = (COLOURS[0], "o") if row["probability"] >= _SURE else (COLOURS[1], "D")
+            lower, middle, upper = (100 * float(row[f"margin_{p}"]) for p in ("p90", "p50", "p10"))
+            _span(axes, y, lower, middle, upper, colour, sign)
             axes.annotate(
                 f"{100 * row['probability']:.0f} %",
                 (1.01, y),
@@ -89,12 +97,18 @@ def margins(result: StudyResult, places: list[Place], names: list[str], more: st
         _rows(axes, called, "margin of energy per area [%]")
         axes.set_xlim(low - pad, high + pad)
         axes.set_title(title)
-    head(figure, f"Margin {_P90}; beside it the probability that it is above zero{more}")
+    cut = f"; the {_MOST_ROWS} pairs in most doubt" if len(_at(table, places[0])) > _MOST_ROWS else ""
+    head(figure, f"Bar: margin from P90 (exceeded with 90 % probability) to P10, sign at its P50{cut}{more}")
+    below = (
+        f"At the right the probability that it is above zero: circle from {100 * _SURE:.0f} % up, diamond below that"
+    )
+    corner = (0.12 / figure.get_figwidth(), 1 - 0.4 / figure.get_figheight())
+    figure.text(*corner, below, fontsize=8.5, color=GREY)
     return figure
 
 
 def _nearest(frame: pd.DataFrame) -> pd.DataFrame:
-    """Return the pairs that decide: the best against all others, then the closest."""
+    """Return the pairs in most doubt, in the table's order."""
     if len(frame) <= _MOST_ROWS:
         return frame
     close = (frame["probability"] - 0.5).abs()
@@ -106,14 +120,15 @@ def regret(result: StudyResult, places: list[Place], names: list[str], more: str
     table = result.regret
     if table is None or table.empty or len(places) < 2:
         return None
-    absorbers = [str(name) for name in result.standard["absorber"]]
+    compared = set(table["absorber"])
+    absorbers = [str(name) for name in result.standard["absorber"] if name in compared]
     grid = np.full((len(absorbers), len(places)), np.nan)
     for j, place in enumerate(places):
         for row in records(_at(table, place)):
             grid[absorbers.index(str(row["absorber"])), j] = 100 * row["regret"]
     worst = np.nanmax(grid, axis=1)
     order = np.argsort(worst, kind="stable")
-    called = [shorten(absorbers[i], 32) for i in order]
+    called = [shorten(absorbers[i]) for i in order]
     left, slanted = 0.25 + text_width(called, 8.5), 0.75 * text_width(names, SMALL) + 0.25
     cell = (0.72, 0.26)
     size = (cell[0] * (len(places) + 1), cell[1] * len(absorbers))
@@ -124,8 +139,8 @@ def regret(result: StudyResult, places: list[Place], names: list[str], more: str
         y = len(absorbers) - 1 - i
         depth = 0.0 if not np.isfinite(value) else min(1.0, value / most)
         axes.barh(y, 0.94, 0.88, left=j + 0.03, color=COLOURS[1], alpha=0.75 * depth)
-        best = np.isfinite(value) and value < 5e-4 and j < len(places)
-        text = "best" if best else f"{value:.1f}" if np.isfinite(value) else "–"
+        best = value < 5e-4 and j < len(places)
+        text = "best" if best else _given_away(value)
         axes.text(j + 0.5, y, text, ha="center", va="center", fontsize=SMALL, fontweight="bold" if best else "normal")
     for j, name in enumerate([*names, "worst"]):
         axes.text(j + 0.4, len(absorbers) - 0.4, name, rotation=45, rotation_mode="anchor", fontsize=SMALL)
@@ -137,8 +152,16 @@ def regret(result: StudyResult, places: list[Place], names: list[str], more: str
     axes.tick_params(axis="y", length=0)
     axes.grid(visible=False)
     axes.set_xlabel("energy per area given away [%]", loc="left")
-    head(figure, f"Regret against the best at each place, smallest worst case on top{more}")
+    left_out = "" if len(absorbers) == len(result.standard) else "; ideal absorbers left out"
+    head(figure, f"Regret against the best at each place, smallest worst case on top{left_out}{more}")
     return figure
+
+
+def _given_away(value: float) -> str:
+    """Return a regret [%] in a cell; a little is not nothing."""
+    if not np.isfinite(value):
+        return "–"
+    return "<0.1" if 5e-4 <= value < 0.05 else f"{value:.1f}"
 
 
 def break_even(result: StudyResult, places: list[Place], names: list[str], more: str) -> Figure | None:
@@ -150,12 +173,13 @@ def break_even(result: StudyResult, places: list[Place], names: list[str], more:
     if not absorbers:
         return None
     currency = shorten(str(table["currency"].iloc[0]), 8)
-    called = [shorten(name, 32) for name in absorbers]
+    called = [shorten(name) for name in absorbers]
     left = 0.3 + text_width(called, 8.5)
     with_chance = "break_even_per_m2_p50" in table
     right = 0.3 if with_chance else 0.7
-    figure, drawn = panels(len(places), 2, (3.1, _ROW_IN * len(absorbers) + 0.2), (left, right, 0.55, 0.4))
+    figure, drawn = panels(len(places), 2, (_BAR_IN, _ROW_IN * len(absorbers) + 0.2), (left, right, 0.55, 0.4))
     edges: list[float] = []
+    digits = _digits(float(table["break_even_per_m2"].abs().max()))
     for axes, title, place in zip(drawn, names, places, strict=True):
         by_name = {str(row["absorber"]): row for row in records(_at(table, place, None))}
         for y, name in enumerate(reversed(absorbers)):
@@ -171,18 +195,31 @@ def break_even(result: StudyResult, places: list[Place], names: list[str], more:
                 edges += [low, high]
             else:
                 axes.annotate(
-                    f"{value:+.0f}".replace("-", "−"), (value, y), (4 if value >= 0 else -4, 0), fontsize=SMALL,
+                    _signed(value, digits), (value, y), (4 if value >= 0 else -4, 0), fontsize=SMALL,
                     textcoords="offset points", va="center", ha="left" if value >= 0 else "right",
                 )  # fmt: skip
         _rows(axes, called[::-1], f"price difference [{currency}/m²]")
         axes.set_title(title)
-    pad = 0.16 * max(max([*edges, 0.0]) - min([*edges, 0.0]), 1e-9)
+    low, high = min(*edges, 0.0), max(*edges, 0.0)
+    room = 0.15 if with_chance else 0.12 + text_width([_signed(value, digits) for value in edges])  # [in], a side
+    pad = max(high - low, 1e-9) * room / max(_BAR_IN - 2 * room, 0.5)
     for axes in drawn:
-        axes.set_xlim(min([*edges, 0.0]) - pad, max([*edges, 0.0]) + pad)
-    reference = shorten(result.reference, 32)
+        axes.set_xlim(low - pad, high + pad)
+    reference = shorten(result.reference)
     spans = "; line: P90 (exceeded with 90 % probability) to P10" if with_chance else ""
     head(figure, f"What more than {reference} a module may cost per area for the same plant value{spans}{more}")
     return figure
+
+
+def _digits(most: float) -> int:
+    """Return how many digits after the point show the largest amount with three, none for large ones."""
+    return int(np.clip(2 - np.floor(np.log10(max(most, 1e-6))), 0, 6))
+
+
+def _signed(value: float, digits: int) -> str:
+    """Return an amount with its sign, never a negative zero."""
+    rounded = round(value, digits)
+    return f"{rounded:+,.{digits}f}".replace("-", "−") if rounded else f"{0:.{digits}f}"
 
 
 def causes(result: StudyResult, places: list[Place], names: list[str], more: str) -> Figure | None:
@@ -191,12 +228,12 @@ def causes(result: StudyResult, places: list[Place], names: list[str], more: str
     if table is None or table.empty:
         return None
     frames = [_causes_of(_at(table, place)) for place in places]
-    words = [name.replace("_", " ") for frame in frames for name in frame["input"]]
+    words = [_unknown(name) for frame in frames for name in frame["input"]]
     if not words:
         return None
     left = 0.3 + text_width(words, 8.5)
     rows = max(len(frame) for frame in frames)
-    figure, drawn = panels(len(places), 2, (3.1, _ROW_IN * rows + 0.2), (left, 0.75, 0.55, 0.6))
+    figure, drawn = panels(len(places), 2, (_BAR_IN, _ROW_IN * rows + 0.2), (left, 0.75, 0.55, 0.75))
     for axes, title, frame in zip(drawn, names, frames, strict=True):
         for y, row in enumerate(records(frame)[::-1]):
             total = 100 * max(float(row["total"]), 0.0)
@@ -205,11 +242,12 @@ def causes(result: StudyResult, places: list[Place], names: list[str], more: str
             axes.plot([100 * row["total_low"], 100 * row["total_high"]], [y, y], color="black", linewidth=1.1)
             text = str(row["note"]) if doubtful else f"{total:.0f}"
             axes.annotate(text, (1.01, y), xycoords=("axes fraction", "data"), fontsize=6.5, va="center")
-        called = [str(name).replace("_", " ") for name in frame["input"]][::-1]
+        called = [_unknown(name) for name in frame["input"]][::-1]
         _rows(axes, called, "share of the margin's variance [%]")
         axes.set_xlim(0, 108)
-        pair = f"{shorten(str(frame['absorber'].iloc[0]), 20)} over {shorten(str(frame['other'].iloc[0]), 20)}"
-        axes.set_title(f"{title}\n{pair}", fontsize=8.5)
+        if len(frame):
+            title = f"{title}\n{_pair(records(frame)[0])}"
+        axes.set_title(title, fontsize=8.5)
     head(figure, f"What the margin of the best over the next hangs on; line: interval of the share{more}")
     return figure
 
