@@ -56,7 +56,7 @@ def test_annual_table(five):
 
 def test_worth_and_portfolio_tables(five):
     """Each site has a plant an absorber, the reference breaks even with itself; one absorber is best on average and one
-    regrets least; the best single gap costs no site less than nothing."""
+    regrets least, and the ideal one is no choice; the best single gap costs no site less than nothing."""
     _, folder = five
     worth, portfolio = pd.read_csv(folder / "worth.csv"), pd.read_csv(folder / "portfolio.csv")
     assert len(worth) == 5 * 8
@@ -64,6 +64,10 @@ def test_worth_and_portfolio_tables(five):
     reference = worth[worth["absorber"] == "silicon"]
     assert reference["break_even_per_m2"].abs().max() < 1e-9
     assert worth["cost_of_energy_per_kwh"].between(0.02, 0.6).all()
+    assert (worth["hours"] == 8760).all()
+    assert (worth["energy_life_discounted_kwh"] < worth["energy_life_kwh"]).all()
+    for name in ("regret.csv", "portfolio.csv"):
+        assert set(worth["absorber"]) - set(pd.read_csv(folder / name)["absorber"]) == {"ideal 1.34"}
     for _, kind in portfolio.groupby("measure"):
         assert kind["best_on_average"].sum() == 1
         assert kind["smallest_worst_regret"].sum() == 1
