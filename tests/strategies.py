@@ -302,7 +302,7 @@ _NASTY = (
 
 @st.composite
 def damaged(draw, content):
-    """Return a file with up to three faults: bytes replaced or put in, cells made nasty, lines lost, repeated, swapped."""
+    """Return a file with up to three faults: bytes changed or put in, nasty cells, lines lost, repeated, swapped."""
     for _ in range(draw(st.integers(1, 3))):
         kind = draw(st.sampled_from(["cell", "bytes", "lost", "again", "swapped", "cut", "put in"]))
         if kind in ("lost", "again", "swapped"):

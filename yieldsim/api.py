@@ -121,7 +121,7 @@ def _column_map(columns: ColumnsPlan | None) -> readers.ColumnMap | None:
     if columns is None:
         return None
     named = {name: readers.Column(column, unit) for name, column, unit in columns.columns}
-    return readers.ColumnMap(columns.time, named, columns.time_format)
+    return readers.ColumnMap(columns.time, named, columns.time_format, columns.missing)
 
 
 def run_study(

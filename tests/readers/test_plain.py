@@ -88,7 +88,7 @@ def test_the_study_may_say_where_it_is(read):
         (HEAD.replace(": 50", ": fifty") + NAMES + ROWS, 0, "latitude_deg"),
         (HEAD.replace(": 50", ": 95") + NAMES + ROWS, 0, "latitude_deg"),
         (HEAD + NAMES, 0, ""),
-        (HEAD + NAMES + ROWS.replace("510", "5100"), 0, "ghi"),
+        (HEAD + NAMES + ROWS.replace("510", "5100"), 9, "ghi"),
     ],
 )
 def test_messages_name_the_place(read, text, line, where):

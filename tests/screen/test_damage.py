@@ -215,7 +215,6 @@ REAL = os.environ.get("YIELDSIM_REAL_WEATHER")
 TRAPS = {
     "ESP_Granada.084190_SWEC.epw": "beam_of_another_moment",
     "PRT_Lisboa.085360_INETI.epw": "timestamps",
-    "tmy_45.000_8.000_2005_2023.epw": "timestamps",
 }
 
 

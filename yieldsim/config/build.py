@@ -147,12 +147,13 @@ def _columns_plan(columns: site_schema.Columns | None) -> ColumnsPlan | None:
     if columns is None:
         return None
     given = columns.model_dump(exclude_none=True)
-    time, time_format = given.pop("time"), given.pop("time_format", None)
+    time, time_format, codes = given.pop("time"), given.pop("time_format", None), given.pop("missing", ())
     named = tuple(
         (name, column, None) if isinstance(column, str) else (name, column["column"], column["unit"])
         for name, column in given.items()
     )
-    return ColumnsPlan(tuple(time) if isinstance(time, list) else (time,), named, time_format)
+    missing = tuple(codes) if isinstance(codes, list | tuple) else (codes,)
+    return ColumnsPlan(tuple(time) if isinstance(time, list) else (time,), named, time_format, missing)
 
 
 def _twelve(value: Any) -> Monthly:

@@ -122,6 +122,13 @@ _TimeColumns = Annotated[
 ]
 
 
+_Codes = Annotated[
+    Annotated[Annotated[float, Number(-1e9, 1e9)], Tag("<one>")]
+    | Annotated[list[Annotated[float, Number(-1e9, 1e9)]], Length(1, 20, "numbers"), Tag("<list>")],
+    by(one_or_list),
+]
+
+
 class Columns(Section):
     """Which columns of a table are what; each in our unit unless it says otherwise."""
 
@@ -129,6 +136,7 @@ class Columns(Section):
     time_format: Annotated[str, Text(60, "a form such as %d.%m.%Y %H:%M")] | None = Field(
         default=None, description="how the time is written, as strptime has it; ISO 8601 if left out"
     )
+    missing: _Codes | None = Field(default=None, description="number or numbers that stand for a missing value")
     ghi: _Column | None = None
     dni: _Column | None = None
     dhi: _Column | None = None

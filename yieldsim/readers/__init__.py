@@ -10,20 +10,18 @@ not decided here but in `yieldsim.screen`.
 from __future__ import annotations
 
 from collections.abc import Iterator, Mapping, Sequence
-from dataclasses import dataclass, replace
-from itertools import pairwise
+from dataclasses import dataclass
 from types import ModuleType
 from typing import Protocol, cast
 
-import numpy as np
-from numpy.typing import NDArray
-
 from yieldsim.errors import InputError, Problem
 from yieldsim.readers import bsrn, cf, epw, grid, mapped, plain, psm, pvgis, surfrad, tmy2, tmy3
-from yieldsim.readers._raw import Raw, Wanted, joined, weather_from
+from yieldsim.readers._make import weather_from
+from yieldsim.readers._raw import Raw, Wanted, joined, within_range
 from yieldsim.readers._source import Source, open_source
+from yieldsim.readers._years import Stretch
 from yieldsim.readers.mapped import Column, ColumnMap
-from yieldsim.weather import STAMP_FORM, Weather, cut, parse_stamp
+from yieldsim.weather import STAMP_FORM, Weather, parse_stamp
 
 
 class Reader(Protocol):
@@ -76,13 +74,8 @@ def read(
         If it cannot be read on this machine.
     """
     wanted = _wanted(timestamps, shown or path, over)
-    if cell is not None:
-        return grid.read(path, shown or path, cell, wanted)
-    source = open_source(path, shown)
-    raws = list(_raws(source, format, columns))
-    if not raws:
-        raise source.refuse(0, "", "a header without rows", "at least one row")
-    return weather_from(joined(raws), wanted)
+    pieces = _pieces(File(path, shown or path, format, cell=cell, columns=columns))
+    return weather_from(joined(list(pieces)), wanted)
 
 
 @dataclass(frozen=True, slots=True)
@@ -108,111 +101,38 @@ def years(files: Sequence[File], **over: float | None) -> Iterator[Weather]:
     Notes
     -----
     A file of up to 366 days is a year, wherever it starts. Rows that go on for longer, in one file or in several that
-    follow each other, are cut at the turn of each year of local standard time. Typical years stand for themselves.
+    follow each other, are cut at the turn of each year: see `_years.Stretch`. Typical years stand for themselves.
 
     Raises
     ------
     InputError, PlaceError
         As `read`; and where files of one stretch differ in interval, clock or place.
     """
-    run: list[tuple[Raw, Wanted]] = []
+    stretch = Stretch()
     for file in files:
         wanted = _wanted(file.timestamps, file.shown, over)
-        if file.cell is not None:
-            yield from _flushed(run)
-            yield from cut_at_years(grid.read(file.path, file.shown, file.cell, wanted))
-            continue
-        source = open_source(file.path, file.shown)
         fresh = True
-        for raw in _raws(source, file.format, file.columns):
-            if run and (raw.typical or run[-1][0].typical or (fresh and not _follows(run[-1][0], raw))):
-                yield from _flushed(run)
-            run.append((raw, wanted))
+        for raw in _pieces(file):
+            if fresh and not stretch.follows(raw, wanted):
+                yield from stretch.rest()
+                stretch = Stretch()
+            yield from stretch.add(raw, wanted)
             fresh = False
-            yield from _whole_years(run)
-        if fresh:
-            raise source.refuse(0, "", "a header without rows", "at least one row")
-    yield from _flushed(run)
+    yield from stretch.rest()
 
 
-_A_YEAR_S = 366 * 86_400
-_GAP_S = 45 * 86_400  # files further apart than that are years of their own
-
-
-def _follows(before: Raw, after: Raw) -> bool:
-    """Return whether a file goes on where another one ended, rather than being a year of its own."""
-    if _span_s([before]) > 300 * 86_400 and _span_s([after]) > 300 * 86_400:
-        return False
-    return 0 < int(after.time[0]) - int(before.time[-1]) < _GAP_S
-
-
-def _span_s(raws: Sequence[Raw]) -> int:
-    return int(raws[-1].time[-1]) - int(raws[0].time[0])
-
-
-def _flushed(run: list[tuple[Raw, Wanted]]) -> Iterator[Weather]:
-    """Yield what a stretch still holds, and forget it."""
-    if run:
-        raws, wanted = [raw for raw, _ in run], run[0][1]
-        run.clear()
-        weather = weather_from(joined(_alike(raws)), wanted)
-        yield weather
-
-
-def _whole_years(run: list[tuple[Raw, Wanted]]) -> Iterator[Weather]:
-    """Yield the calendar years that a stretch longer than a year has behind it, and keep the rest."""
-    if run[-1][0].typical or _span_s([raw for raw, _ in run]) <= _A_YEAR_S:
+def _pieces(file: File) -> Iterator[Raw]:
+    """Yield the rows of a file in pieces, every value known to be possible."""
+    if file.cell is not None:
+        yield within_range(grid.rows(file.path, file.shown, file.cell))
         return
-    wanted = run[0][1]
-    together = joined(_alike([raw for raw, _ in run]))
-    run.clear()
-    number = _local_year(together, wanted)
-    last = int(number[-1])
-    for year in np.unique(number[number < last]):
-        yield weather_from(_rows(together, number == year), wanted)
-    run.append((_rows(together, number == last), wanted))
-
-
-def cut_at_years(weather: Weather) -> Iterator[Weather]:
-    """Yield a weather of more than a year cut at the turn of each year of local standard time."""
-    if weather.typical or int(weather.time[-1] - weather.time[0]) <= _A_YEAR_S:
-        yield weather
-        return
-    local = weather.time + round(weather.utc_offset_h * 3600)
-    number = local.astype("datetime64[s]").astype("datetime64[Y]").astype(np.int64)
-    edges = [0, *(np.flatnonzero(np.diff(number)) + 1).tolist(), len(weather)]
-    for start, end in pairwise(edges):
-        yield cut(weather, start, end)
-
-
-def _local_year(raw: Raw, wanted: Wanted) -> NDArray[np.int64]:
-    """Return the year of local standard time each row belongs to; labels at an interval's end belong before it."""
-    longitude = raw.longitude_deg if wanted.longitude_deg is None else wanted.longitude_deg
-    fallback = 0.0 if longitude is None else 3600.0 * round(longitude / 15)
-    clock_s = fallback if raw.clock_offset_s is None else float(raw.clock_offset_s)
-    offset_h = raw.utc_offset_h if wanted.utc_offset_h is None else wanted.utc_offset_h
-    local = raw.time - round(clock_s) + round((clock_s / 3600 if offset_h is None else offset_h) * 3600)
-    moment = local - (1 if raw.label == "end" else 0)
-    return np.asarray(moment.astype("datetime64[s]").astype("datetime64[Y]").astype(np.int64))
-
-
-def _rows(raw: Raw, chosen: NDArray[np.bool_]) -> Raw:
-    columns = {name: values[chosen] for name, values in raw.columns.items()}
-    return replace(raw, time=raw.time[chosen], row=raw.row[chosen], columns=columns)
-
-
-def _alike(raws: list[Raw]) -> list[Raw]:
-    """Return pieces of one stretch, once they are known to be of one kind."""
-    first = raws[0]
-    for raw in raws[1:]:
-        for name in ("label", "clock_offset_s", "interval_s", "latitude_deg", "longitude_deg"):
-            if getattr(raw, name) != getattr(first, name):
-                found = f"{getattr(raw, name)} after {getattr(first, name)} in {first.shown}"
-                raise InputError(Problem(raw.shown, 0, name, found, "files of one kind for one stretch of time"))
-    shared = [name for name in first.columns if all(name in raw.columns for raw in raws)]
-    names = dict.fromkeys(raw.shown for raw in raws)
-    shown = first.shown if len(names) == 1 else f"{first.shown} to {raws[-1].shown} ({len(names)} files)"
-    return [replace(raw, shown=shown, columns={name: raw.columns[name] for name in shared}) for raw in raws]
+    source = open_source(file.path, file.shown)
+    empty = True
+    for raw in _raws(source, file.format, file.columns):
+        empty = False
+        yield within_range(raw)
+    if empty:
+        raise source.refuse(0, "", "a header without rows", "at least one row")
 
 
 def _wanted(timestamps: str | None, shown: str, over: Mapping[str, float | None]) -> Wanted:

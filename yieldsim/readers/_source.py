@@ -17,6 +17,8 @@ HEAD_BYTES = 65_536  # enough for the longest header met (PSM, 46 columns; PVGIS
 WHOLE_BYTES = 256 * 2**20  # B: bound for files read in one go; one year of minute data in BSRN form is 60 MB
 STREAM_BYTES = 16 * 2**30  # B: bound for files read in pieces; 20 years of minute data with ten columns are 1 GB
 LINE_BYTES = 65_536  # B: no weather format has longer lines
+WHOLE_LINES = 2_000_000  # bound for files read in one go: a year of minutes has 525,600
+STREAM_LINES = 40_000_000  # bound for files read in pieces: 75 years of minutes
 _GZIP = b"\x1f\x8b"
 _BYTE_ORDER_MARK = b"\xef\xbb\xbf"
 
@@ -48,7 +50,8 @@ class Source:
         return InputError(self.problem(line, where, found, allowed))
 
     def lines(self, limit: int = STREAM_BYTES) -> Iterator[str]:
-        """Yield the lines of the file without their ends, as text."""
+        """Yield the lines of the file without their ends, as text; raises InputError beyond a size [B] or count."""
+        most = STREAM_LINES if limit > WHOLE_BYTES else WHOLE_LINES
         with _unpacked(self.path, self.shown) as stream:
             read = 0
             for number, line in enumerate(iter(lambda: stream.readline(LINE_BYTES + 1), b""), start=1):
@@ -57,6 +60,8 @@ class Source:
                     raise self.refuse(number, "", "a line that does not end", f"lines of at most {LINE_BYTES} bytes")
                 if read > limit:
                     raise self.refuse(number, "", f"more than {limit // 2**20} MiB", "a smaller file")
+                if number > most:
+                    raise self.refuse(number, "", f"more than {most} lines", "a shorter file")
                 if b"\x00" in line:
                     raise self.refuse(number, "", "bytes that are not text", "a text file")
                 text = line.removeprefix(_BYTE_ORDER_MARK) if number == 1 else line
@@ -66,12 +71,12 @@ class Source:
         """Return all lines of a file that is read in one go."""
         return list(self.lines(WHOLE_BYTES))
 
-    def content(self) -> bytes:
-        """Return all bytes, unpacked, of a file that is read in one go."""
+    def content(self, limit: int) -> bytes:
+        """Return all bytes, unpacked, of a file that is read in one go; raises InputError beyond a size [B]."""
         with _unpacked(self.path, self.shown) as stream:
-            content = stream.read(WHOLE_BYTES + 1)
-        if len(content) > WHOLE_BYTES:
-            raise self.refuse(0, "", f"more than {WHOLE_BYTES // 2**20} MiB", "a smaller file")
+            content = stream.read(limit + 1)
+        if len(content) > limit:
+            raise self.refuse(0, "", f"more than {limit // 2**20} MiB", "a smaller file")
         return content
 
 

@@ -71,9 +71,21 @@ def blocks(
     InputError
         For rows with too few or too many cells and for cells that are not numbers, all of a block at once.
     """
+    return numbered_blocks(source, enumerate(lines, start=first_line), numbers, texts, fields, delimiter)
+
+
+def numbered_blocks(
+    source: Source,
+    lines: Iterable[tuple[int, str]],
+    numbers: Mapping[str, int],
+    texts: Mapping[str, int],
+    fields: int,
+    delimiter: str = ",",
+) -> Iterator[Block]:
+    """Yield the rows of a table in blocks, each line with its number in the file; see `blocks`."""
     kept: list[str] = []
     rows: list[int] = []
-    for number, line in enumerate(lines, start=first_line):
+    for number, line in lines:
         if line and not line.isspace():
             kept.append(line)
             rows.append(number)
@@ -97,21 +109,17 @@ def whole(
     parts = list(blocks(source, lines, first_line, numbers, texts, fields, delimiter))
     if not parts:
         raise source.refuse(first_line, "", "no rows", "at least one")
+    return together(parts)
+
+
+def together(parts: Sequence[Block]) -> Block:
+    """Return blocks of one table as one."""
+    numbers, texts = parts[0].numbers, parts[0].texts
     return Block(
         np.concatenate([part.row for part in parts]),
         {name: np.concatenate([part.numbers[name] for part in parts]) for name in numbers},
         {name: np.concatenate([part.texts[name] for part in parts]) for name in texts},
     )
-
-
-def numbers_of(source: Source, rows: Sequence[int], name: str, texts: Sequence[str]) -> Array:
-    """Return texts cut out of lines as numbers; raises InputError with the row of every one that is none."""
-    try:
-        return np.asarray([float(text) for text in texts], dtype=np.float64)
-    except ValueError:
-        wrong = [(row, text) for row, text in zip(rows, texts, strict=True) if not _NUMBER.fullmatch(text.strip())]
-    problems = [source.problem(row, name, repr(text[:40]), "a number") for row, text in wrong[:MOST_PROBLEMS]]
-    raise InputError(problems + _more(source, len(wrong) - len(problems), "such cells"))
 
 
 def calendar_seconds(

@@ -10,7 +10,6 @@ from __future__ import annotations
 from collections.abc import Iterator
 
 import numpy as np
-from numpy.typing import NDArray
 
 from yieldsim.errors import InputError, Problem
 from yieldsim.readers import _raw, _table
@@ -19,18 +18,20 @@ from yieldsim.readers._source import WHOLE_BYTES, Source
 
 FORMAT = "bsrn"
 _STATION, _PLACE, _BASIC = "0001", "0004", "0100"
-# In the two lines of a minute: our column -> (line, position from 0, unit in ours); each quantity has four numbers.
+_FIELDS = (10, 11)  # numbers in the first and the second line of a minute
+# Our column -> position among the numbers of both lines, from 0, and what one of the file's units is in ours. Each
+# irradiance is followed by its deviation, least and largest value.
 _COLUMNS = {
-    "ghi": (0, 2, 1.0),
-    "dni": (0, 6, 1.0),
-    "dhi": (1, 0, 1.0),
-    "temp_air": (1, 8, 1.0),
-    "relative_humidity": (1, 9, 1.0),
-    "pressure": (1, 10, 100.0),
+    "ghi": (2, 1.0),
+    "dni": (6, 1.0),
+    "dhi": (10, 1.0),
+    "temp_air": (18, 1.0),
+    "relative_humidity": (19, 1.0),
+    "pressure": (20, 100.0),
 }
-_FIELDS = (10, 11)
-_LOWEST = {"temp_air": -90.0}  # codes of -99.9 and -999 lie below; elsewhere below -90 too
-_MISSING = -90.0
+_DATE = {"day": 0, "minute": 1}
+_MISSING = -90.0  # codes are -999, -99.9 and the like; no column reaches down to this
+_REQUIRED = ("ghi", "dni", "dhi", "temp_air")
 
 
 def claims(source: Source) -> bool:
@@ -49,40 +50,38 @@ def read(source: Source) -> Iterator[Raw]:
     """
     records = _records(source)
     month, year = _month(source, records)
-    place = _place(source, records)
-    rows, numbers = _minutes(source, records)
+    latitude, longitude, height = _place(source, records)
+    numbers = {name: at for name, (at, _) in _COLUMNS.items()} | _DATE
+    blocks = _table.numbered_blocks(source, _minutes(source, records), numbers, {}, sum(_FIELDS))
+    block = _table.together(list(blocks))
+    rows = len(block.row)
     time = _table.calendar_seconds(
         source,
-        rows,
-        np.full(len(rows), float(year)),
-        np.full(len(rows), float(month)),
-        numbers["day"],
-        numbers["minute"] * 60.0,
+        block.row,
+        np.full(rows, float(year)),
+        np.full(rows, float(month)),
+        block.numbers["day"],
+        block.numbers["minute"] * 60.0,
         86_399,
     )
-    columns, findings = {}, []
-    for name, (_, _, scale) in _COLUMNS.items():
-        coded = numbers[name] <= _LOWEST.get(name, _MISSING)
-        if coded.any():
-            findings.append(_raw.found_missing(name, coded, time))
-        values = np.where(coded, np.nan, numbers[name] * scale)
-        if np.isfinite(values).any() or name in ("ghi", "dni", "dhi", "temp_air"):
-            columns[name] = values
+    columns = {name: block.numbers[name] * scale for name, (_, scale) in _COLUMNS.items()}
+    coded = {name: block.numbers[name] <= _MISSING for name in _COLUMNS}
+    columns, marks = _raw.without_codes(source, columns, coded, time, block.row)
     yield Raw(
         shown=source.shown,
         name="",
-        latitude_deg=place[0],
-        longitude_deg=place[1],
-        elevation_m=place[2],
-        utc_offset_h=float(round(place[1] / 15)),
+        latitude_deg=latitude,
+        longitude_deg=longitude,
+        elevation_m=height,
+        utc_offset_h=_raw.zone_h(longitude),
         clock_offset_s=0,
         label="start",
         clock="UTC",
         time=time,
-        interval_s=60,
-        row=rows,
-        columns=columns,
-        findings=tuple(findings),
+        interval_s=None,  # minutes, but two, three or five of them in early years
+        row=block.row,
+        columns={name: values for name, values in columns.items() if name in _REQUIRED or np.isfinite(values).any()},
+        marks=marks,
     )
 
 
@@ -107,7 +106,7 @@ def _records(source: Source) -> Records:
 def _month(source: Source, records: Records) -> tuple[int, int]:
     number, line = records[_STATION][0]
     cells = line.split()
-    if len(cells) < 3 or not all(cell.isdigit() for cell in cells[1:3]):
+    if len(cells) < 3 or not all(cell.isascii() and cell.isdigit() and len(cell) <= 4 for cell in cells[1:3]):
         raise source.refuse(number, "", repr(line[:60]), "station, month, year")
     return int(cells[1]), int(cells[2])
 
@@ -125,9 +124,9 @@ def _place(source: Source, records: Records) -> tuple[float, float, float]:
     raise source.refuse(0, _PLACE, "no latitude, longitude and height", "a record 0004 that has them")
 
 
-def _minutes(source: Source, records: Records) -> tuple[NDArray[np.int64], dict[str, NDArray[np.float64]]]:
-    """Return line numbers and columns of record 0100, two lines a minute."""
-    lines = [(number, line.split()) for number, line in records[_BASIC] if line.strip()]
+def _minutes(source: Source, records: Records) -> list[tuple[int, str]]:
+    """Return the two lines of each minute as one, cells set apart by commas, with the number of the first."""
+    lines = [(number, line.split()) for number, line in records[_BASIC] if line and not line.isspace()]
     problems: list[Problem] = [
         source.problem(number, "", f"{len(cells)} numbers", f"{_FIELDS[i % 2]}")
         for i, (number, cells) in enumerate(lines)
@@ -135,12 +134,11 @@ def _minutes(source: Source, records: Records) -> tuple[NDArray[np.int64], dict[
     ]
     if len(lines) % 2:
         problems.append(source.problem(lines[-1][0], "", "half a minute", "two lines a minute"))
+    if not lines:
+        problems.append(source.problem(0, _BASIC, "no rows", "at least one"))
     if problems:
         raise InputError(problems[: _table.MOST_PROBLEMS])
-    rows = [number for number, _ in lines[::2]]
-    wanted = {"day": (0, 0), "minute": (0, 1)} | {name: (line, at) for name, (line, at, _) in _COLUMNS.items()}
-    numbers = {
-        name: _table.numbers_of(source, rows, name, [cells[at] for _, cells in lines[line::2]])
-        for name, (line, at) in wanted.items()
-    }
-    return np.array(rows, dtype=np.int64), numbers
+    return [
+        (number, ",".join([*first, *second]))
+        for (number, first), (_, second) in zip(lines[::2], lines[1::2], strict=True)
+    ]

@@ -8,13 +8,14 @@ from typing import Any
 import numpy as np
 import xarray as xr
 
-from yieldsim.readers import _units, grid
+from yieldsim.readers import _raw, _units, grid
 from yieldsim.readers._raw import Raw
 from yieldsim.readers._source import Source
 from yieldsim.weather import COLUMNS
 
 FORMAT = "netcdf"
 _MAGIC = (b"\x89HDF", b"CDF\x01", b"CDF\x02", b"CDF\x05")
+_BLOCK_ROWS = 262_144  # half a year of minutes
 _PLACE = {
     "latitude_deg": ("latitude", "lat", "latitude_deg"),
     "longitude_deg": ("longitude", "lon", "longitude_deg"),
@@ -37,47 +38,57 @@ def read(source: Source) -> Iterator[Raw]:
     """
     try:
         with grid.opened(str(source.path), source.shown) as dataset:
-            yield _raw_of(source, dataset)
+            yield from _raws_of(source, dataset)
     except grid.BROKEN as error:
         found = f"it cannot be read ({type(error).__name__}: {str(error)[:80]})"
         raise source.refuse(0, "", found, "CF NetCDF") from None
 
 
-def _raw_of(source: Source, dataset: xr.Dataset) -> Raw:
+def _raws_of(source: Source, dataset: xr.Dataset) -> Iterator[Raw]:
+    """Yield the rows in pieces."""
     many = [name for name, size in dataset.sizes.items() if size > 1 and str(name).lower() in _PLACES_ALONG]
     if many:
         found = f"{dataset.sizes[many[0]]} places along {many[0]}"
         raise source.refuse(0, "", found, "one place; for many, `sites: {grid: FILE}` or a site's `cell:`")
     if "time" not in dataset.variables:
         raise source.refuse(0, "time", "no such variable", "CF time")
-    dataset = dataset.squeeze(drop=False)
+    dataset = dataset.squeeze([name for name in dataset.dims if dataset.sizes[name] == 1 and name != "time"])
+    if dataset["time"].dims != ("time",) or not 0 < dataset.sizes["time"] <= grid.MOST_MOMENTS:
+        raise source.refuse(0, "time", f"a shape of {dict(dataset['time'].sizes)}", f"1 to {grid.MOST_MOMENTS} moments")
     time = grid.seconds(dataset["time"].values, dataset["time"].attrs, source.shown)
     label, interval_s = grid.label_of(dataset, "time", time, source.shown)
-    columns = {}
+    use: dict[str, tuple[str, float, float]] = {}
     for key, variable in dataset.data_vars.items():
         name = str(key) if str(key) in COLUMNS else grid.STANDARD_NAMES.get(variable.attrs.get("standard_name", ""))
-        if name is None or variable.dims != ("time",) or name in columns:
+        if name is None or variable.dims != ("time",) or name in use:
             continue
-        factor, offset = _units.conversion(name, variable.attrs.get("units"), source.shown, str(key))
-        columns[name] = np.asarray(variable.values, dtype=np.float64) * factor + offset
+        unit = variable.attrs.get("units")
+        use[name] = (str(key), *_units.conversion(name, None if unit is None else str(unit), source.shown, str(key)))
     place = {field: _of_place(dataset, names) for field, names in _PLACE.items()}
-    offset_h, longitude = dataset.attrs.get("utc_offset_h"), place["longitude_deg"]
-    fallback = None if longitude is None else float(round(longitude / 15))
-    return Raw(
-        shown=source.shown,
-        name=str(dataset.attrs.get("site", dataset.attrs.get("title", ""))),
-        latitude_deg=place["latitude_deg"],
-        longitude_deg=longitude,
-        elevation_m=place["elevation_m"],
-        utc_offset_h=fallback if offset_h is None else float(offset_h),
-        clock_offset_s=0,
-        label=label,
-        clock="UTC",
-        time=np.atleast_1d(time),
-        interval_s=interval_s,
-        row=np.arange(1, np.size(time) + 1, dtype=np.int64),
-        columns=columns,
-    )
+    offset_h, local_h = dataset.attrs.get("utc_offset_h"), _raw.zone_h(place["longitude_deg"])
+    if offset_h is not None:
+        local_h = _raw.offset_s(source, 0, "utc_offset_h", float(offset_h)) / 3600
+    for start in range(0, len(time), _BLOCK_ROWS):
+        part = dataset.isel(time=slice(start, start + _BLOCK_ROWS))
+        rows = len(part["time"])
+        yield Raw(
+            shown=source.shown,
+            name=str(dataset.attrs.get("site", dataset.attrs.get("title", ""))),
+            latitude_deg=place["latitude_deg"],
+            longitude_deg=place["longitude_deg"],
+            elevation_m=place["elevation_m"],
+            utc_offset_h=local_h,
+            clock_offset_s=0,
+            label=label,
+            clock="UTC",
+            time=time[start : start + rows],
+            interval_s=interval_s,
+            row=np.arange(start + 1, start + rows + 1, dtype=np.int64),  # there are no lines: the number of the value
+            columns={
+                name: np.asarray(part[key].values, dtype=np.float64) * factor + offset
+                for name, (key, factor, offset) in use.items()
+            },
+        )
 
 
 _PLACES_ALONG = ("lat", "lon", "latitude", "longitude", "x", "y")

@@ -4,21 +4,23 @@ Header lines up to ``DATA PERIODS``, the first of them ``LOCATION,city,state,cou
 time zone,elevation``; then 35 columns without names. Each column has its own code for a missing value. Water is in mm,
 aerosol in thousandths, by the format's description; files made from TMY3 hold the water in tenths of that and the
 aerosol as it is, which is found out here. Documented with EnergyPlus, Auxiliary Programs (format from memory).
+PVGIS writes its typical years in this form too, with hours of UTC and the moment of the light in a comment: its row of
+hour 1 is that of 00:00 UTC in the CSV form of the same year, whatever zone ``LOCATION`` names.
 """
 
 from __future__ import annotations
 
 import re
 from collections.abc import Iterator
+from dataclasses import replace
 from itertools import chain
 
 import numpy as np
 from numpy.typing import NDArray
 
 from yieldsim.readers import _raw, _table
-from yieldsim.readers._raw import Raw
+from yieldsim.readers._raw import Mark, Raw
 from yieldsim.readers._source import WHOLE_BYTES, Source
-from yieldsim.weather import Finding
 
 FORMAT = "epw"
 # Our column -> position from 0, what one of the file's units is in ours, and from which value on it is missing.
@@ -41,9 +43,10 @@ _NOT_BELOW_ZERO = ("precipitable_water", "aod_broadband", "snow_depth", "albedo"
 _DATE = {"year": 0, "month": 1, "day": 2, "hour": 3}
 _LEAST_FIELDS = 22  # up to the wind
 _HEADER_LINES = 20
-_WET = 5.0  # cm: water beyond this over a whole cold or dry year gives the tenfold away
 _TENFOLD = 3.0  # how many times what the humidity tells makes water ten times too large
-_OFFSET = re.compile(r"irradiance time offset \(h\):\s*(-?\d+(?:\.\d+)?)", re.IGNORECASE)
+_LEAST_HOURS = 24  # with water, to tell
+_MOST_AEROSOL = 4.0  # optical depth beyond which a whole file is in thousandths
+_OFFSET = re.compile(r"irradiance time offset \(h\):\s*(-?\d{1,9}(?:\.\d+)?)", re.IGNORECASE)
 
 
 def claims(source: Source) -> bool:
@@ -68,6 +71,7 @@ def read(source: Source) -> Iterator[Raw]:
         if len(header) > _HEADER_LINES:
             raise source.refuse(len(header), "", "no line DATA PERIODS", f"one within {_HEADER_LINES} lines")
     name, position, offset_h = _place(source, header[0])
+    clock_s = _raw.offset_s(source, 1, "time zone", offset_h)
     first = next(lines, "")
     fields = first.rstrip(", ").count(",") + 1
     if fields < _LEAST_FIELDS:
@@ -76,10 +80,15 @@ def read(source: Source) -> Iterator[Raw]:
     numbers = given | _DATE
     block = _table.whole(source, chain([first], lines), len(header) + 1, numbers, {}, fields)
     time = _times(source, block)
-    columns, findings = _columns(block, given, time)
-    moment = next((float(found[1]) for line in header if (found := _OFFSET.search(line))), None)
-    if moment is not None:  # light of one moment, told by the header
-        time = time + round(moment * 3600)
+    columns, marks = _columns(source, block, given, time)
+    label, clock = "end", "local standard time"
+    for number, line in enumerate(header, start=1):
+        if moment := _OFFSET.search(line):  # PVGIS: light of one moment, hours of UTC whatever zone the place has
+            label, clock_s, clock = "middle", 0, f"UTC, light {float(moment[1]):+g} h from each label"
+            shift_s = _raw.offset_s(source, number, "irradiance time offset", float(moment[1]))
+            time = time + shift_s
+            marks = tuple(replace(mark, time=mark.time + shift_s) for mark in marks)
+            break
     yield Raw(
         shown=source.shown,
         name=name,
@@ -87,15 +96,15 @@ def read(source: Source) -> Iterator[Raw]:
         longitude_deg=position[1],
         elevation_m=position[2],
         utc_offset_h=offset_h,
-        clock_offset_s=round(offset_h * 3600),
-        label="end" if moment is None else "middle",
-        clock="local standard time" if moment is None else f"local standard time, light {moment:+g} h from each label",
+        clock_offset_s=clock_s,
+        label=label,
+        clock=clock,
         time=time,
         interval_s=3600,
         row=block.row,
         columns=columns,
         typical=_raw.is_typical(time),
-        findings=tuple(findings),
+        marks=marks,
     )
 
 
@@ -120,49 +129,53 @@ def _times(source: Source, block: _table.Block) -> NDArray[np.int64]:
 
 
 def _columns(
-    block: _table.Block, given: dict[str, int], time: NDArray[np.int64]
-) -> tuple[dict[str, NDArray[np.float64]], list[Finding]]:
-    """Return columns in our units, missing codes taken out, and what was found."""
-    columns: dict[str, NDArray[np.float64]] = {}
-    findings: list[Finding] = []
+    source: Source, block: _table.Block, given: dict[str, int], time: NDArray[np.int64]
+) -> tuple[dict[str, NDArray[np.float64]], tuple[Mark, ...]]:
+    """Return columns in our units, missing codes taken out, and the marks that tell of it."""
+    coded = {}
     for name in given:
-        _, scale, missing_from = _COLUMNS[name]
         values = block.numbers[name]
-        coded = values >= missing_from
+        coded[name] = values >= _COLUMNS[name][2]
         if name == "aod_broadband":
-            coded = np.isclose(values, 0.999) | (values >= 999.0)
+            coded[name] = np.isclose(values, 0.999) | (values >= 999.0)
         if name in _NOT_BELOW_ZERO:
-            coded |= values < 0
-        if coded.any():
-            findings.append(_raw.found_missing(name, coded, time))
-        columns[name] = np.where(coded, np.nan, values * scale)
-    _thousandths(columns, findings, time)
-    _tenfold_water(columns, findings, time)
-    return {name: values for name, values in columns.items() if np.isfinite(values).any()}, findings
+            coded[name] |= values < 0
+    columns = {name: block.numbers[name] * _COLUMNS[name][1] for name in given}
+    columns, marks = _raw.without_codes(source, columns, coded, time, block.row)
+    mended = (*_thousandths(source, columns, time, block.row), *_tenfold_water(source, columns, time, block.row))
+    return {name: values for name, values in columns.items() if np.isfinite(values).any()}, (*marks, *mended)
 
 
-def _thousandths(columns: dict[str, NDArray[np.float64]], findings: list[Finding], time: NDArray[np.int64]) -> None:
+def _thousandths(
+    source: Source, columns: dict[str, NDArray[np.float64]], time: NDArray[np.int64], row: NDArray[np.int64]
+) -> tuple[Mark, ...]:
     """Bring aerosol given in thousandths, as the format says, to its own unit."""
     aerosol = columns.get("aod_broadband")
-    if aerosol is not None and np.isfinite(aerosol).any() and np.nanmax(aerosol) > 4.0:
-        columns["aod_broadband"] = aerosol / 1000.0
-        what = f"aerosol up to {np.nanmax(aerosol):g}: given in thousandths"
-        findings.append(Finding("unit", len(time), int(time[0]), int(time[-1]), what, "divided by 1000"))
+    if aerosol is None or not np.isfinite(aerosol).any() or np.nanmax(aerosol) <= _MOST_AEROSOL:
+        return ()
+    columns["aod_broadband"] = aerosol / 1000.0
+    what = f"aerosol up to {np.nanmax(aerosol):g}: given in thousandths"
+    at = np.isfinite(aerosol)
+    return (Mark("unit", what, "divided by 1000", source.shown, time[at], row[at]),)
 
 
-def _tenfold_water(columns: dict[str, NDArray[np.float64]], findings: list[Finding], time: NDArray[np.int64]) -> None:
+def _tenfold_water(
+    source: Source, columns: dict[str, NDArray[np.float64]], time: NDArray[np.int64], row: NDArray[np.int64]
+) -> tuple[Mark, ...]:
     """Bring water that is ten times what the humidity tells (files made from TMY3) to what it is."""
     from pvlib.atmosphere import gueymard94_pw
 
     water = columns.get("precipitable_water")
     if water is None or not {"temp_air", "relative_humidity"} <= set(columns):
-        return
-    told = np.asarray(gueymard94_pw(columns["temp_air"], np.clip(columns["relative_humidity"], 1.0, 100.0)))
-    usable = np.isfinite(water) & np.isfinite(told) & (water > 0)
-    if usable.sum() < 24:
-        return
-    ratio = float(np.median(water[usable]) / np.median(told[usable]))
-    if ratio > _TENFOLD:
-        columns["precipitable_water"] = water / 10.0
-        what = f"water {ratio:.1f} times what temperature and humidity tell: ten times too large"
-        findings.append(Finding("tenfold_water", int(usable.sum()), int(time[0]), int(time[-1]), what, "divided by 10"))
+        return ()
+    temperature = np.clip(columns["temp_air"], -90.0, 65.0)
+    told = np.asarray(gueymard94_pw(temperature, np.clip(columns["relative_humidity"], 1.0, 100.0)))
+    at = np.isfinite(water) & np.isfinite(told) & (water > 0)
+    if at.sum() < _LEAST_HOURS:
+        return ()
+    ratio = float(np.median(water[at]) / np.median(told[at]))
+    if ratio <= _TENFOLD:
+        return ()
+    columns["precipitable_water"] = water / 10.0
+    what = f"water {ratio:.1f} times what temperature and humidity tell, ten times too large,"
+    return (Mark("tenfold_water", what, "divided by 10", source.shown, time[at], row[at]),)

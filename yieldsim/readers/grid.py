@@ -1,7 +1,7 @@
 """Weather on a grid: CF NetCDF or Zarr with time, latitude and longitude, read in blocks of cells.
 
 grid.cells(path, "weather.nc")          # which cells hold weather, and where they lie
-grid.read(path, "weather.nc", (3, 5))   # the weather of one of them
+grid.rows(path, "weather.nc", (3, 5))   # the weather of one of them
 """
 
 from __future__ import annotations
@@ -11,14 +11,15 @@ from functools import lru_cache
 from pathlib import Path
 from typing import Any
 
+import h5py
 import numpy as np
 import xarray as xr
 from numpy.typing import NDArray
 
 from yieldsim.errors import InputError, Problem
 from yieldsim.readers import _units
-from yieldsim.readers._raw import Raw, Wanted, weather_from
-from yieldsim.weather import COLUMNS, REQUIRED, Weather
+from yieldsim.readers._raw import Raw
+from yieldsim.weather import COLUMNS, REQUIRED
 
 FORMAT = "grid"
 #: What libraries raise on bytes that are no such file; a damaged one can trip them anywhere.
@@ -35,6 +36,7 @@ BROKEN = (
 )
 BLOCK_BYTES = 64_000_000  # of weather held at once by a process
 MOST_CELLS = 1_000_000
+MOST_MOMENTS = 40_000_000  # 75 years of minutes
 _LOOKED_AT = 48  # intervals at the start that tell whether a cell holds weather
 _SECONDS_A_DAY = 86_400
 
@@ -94,15 +96,14 @@ def cells(path: Path, shown: str) -> list[GridCell]:
     ]
 
 
-def read(path: str, shown: str, cell: tuple[int, int], wanted: Wanted) -> Weather:
-    """Return the weather of one cell.
+def rows(path: str, shown: str, cell: tuple[int, int]) -> Raw:
+    """Return the rows of one cell.
 
     Parameters
     ----------
     path : str
     shown : str
     cell : (row, column) along latitude and longitude
-    wanted : what the study says over what the file says
 
     Raises
     ------
@@ -118,7 +119,7 @@ def read(path: str, shown: str, cell: tuple[int, int], wanted: Wanted) -> Weathe
     block = _block(path, shown, *_corner(about, cell))
     i, j = cell[0] - block.row, cell[1] - block.column
     columns = {name: np.ascontiguousarray(values[:, i, j]) for name, values in block.columns.items()}
-    raw = Raw(
+    return Raw(
         shown=f"{shown} [{cell[0]}, {cell[1]}]",
         name="",
         latitude_deg=float(about.latitude[cell[0]]),
@@ -130,11 +131,10 @@ def read(path: str, shown: str, cell: tuple[int, int], wanted: Wanted) -> Weathe
         clock="UTC",
         time=block.time,
         interval_s=block.interval_s,
-        row=np.arange(len(block.time), dtype=np.int64),
+        row=np.arange(1, len(block.time) + 1, dtype=np.int64),  # the number of the value along time
         columns={name: values for name, values in columns.items() if np.isfinite(values).any() or name in REQUIRED},
         notes=("no elevation in the grid: taken for sea level",) if height is None else (),
     )
-    return weather_from(raw, wanted)
 
 
 # ------------------------------------------------------------------------------------------------ what is in it
@@ -187,6 +187,8 @@ def opened(path: str, shown: str) -> xr.Dataset:
             return folder
         with Path(path).open("rb") as stream:
             classic = stream.read(3) == b"CDF"
+        if not classic:
+            _refuse_endless(path, shown)
         return xr.open_dataset(path, engine="scipy" if classic else "h5netcdf", decode_times=False)
     except ImportError:
         allowed = 'NetCDF, or Zarr with pip install "yieldsim[cluster]"'
@@ -194,6 +196,16 @@ def opened(path: str, shown: str) -> xr.Dataset:
     except BROKEN as error:
         reason = str(error).splitlines()[0][:120] if str(error) else type(error).__name__
         raise InputError(Problem(shown, 0, "", f"it cannot be read ({reason})", "CF NetCDF 4 or Zarr")) from None
+
+
+def _refuse_endless(path: str, shown: str) -> None:
+    """Raise InputError for an axis too long to hold; opening would read it whole, and packed it takes no room."""
+    with h5py.File(path) as file:
+        for name in file:
+            variable = file.get(name)
+            if isinstance(variable, h5py.Dataset) and variable.ndim == 1 and variable.size > MOST_MOMENTS:
+                found = f"{variable.size} values"
+                raise InputError(Problem(shown, 0, str(name), found, f"at most {MOST_MOMENTS} moments"))
 
 
 @lru_cache(maxsize=2)

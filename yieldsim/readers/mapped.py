@@ -2,7 +2,9 @@
 
 Cells are separated by commas, semicolons or tabs; with semicolons a comma is a decimal point. The line of column names
 is the first that holds all those named. ``time`` may be one column or a list that is joined by a blank, with a
-``time_format`` where it is not ISO 8601. A column whose unit is not ours says so: ``{column: T, unit: K}``.
+``time_format`` where it is not ISO 8601. A column whose unit is not ours says so: ``{column: T, unit: K}``. Numbers
+that stand for "missing" are told with ``missing: -999`` or a list. Labels stand at the start of the interval, in local
+standard time, unless the times name their zone or the study's ``timestamps`` says otherwise.
 """
 
 from __future__ import annotations
@@ -16,12 +18,12 @@ import pandas as pd
 from numpy.typing import NDArray
 
 from yieldsim.errors import InputError
-from yieldsim.readers import _table, _units
+from yieldsim.readers import _raw, _table, _units
 from yieldsim.readers._raw import Raw
 from yieldsim.readers._source import Source
-from yieldsim.weather import COLUMNS
 
 _HEAD_LINES = 200
+_NAMES_ZONE = r"\d\s*(?:Z|z|UTC|GMT)$|:\d{2}(?:[.,]\d+)?\s*[+-]\d{2}(?::?\d{2})?$"  # behind a time of day
 _SHOWN = 30
 
 
@@ -42,11 +44,13 @@ class ColumnMap:
     time : names of the columns that together are the time
     columns : our column -> Column
     time_format : str or None, as strptime has it; None = ISO 8601
+    missing : numbers that stand for "missing" in every column
     """
 
     time: tuple[str, ...]
     columns: Mapping[str, Column]
     time_format: str | None = None
+    missing: tuple[float, ...] = ()
 
 
 def read(source: Source, wanted: ColumnMap) -> Iterator[Raw]:
@@ -68,6 +72,8 @@ def read(source: Source, wanted: ColumnMap) -> Iterator[Raw]:
     for block in _table.blocks(source, lines, line + 1, numbers, texts, len(names), delimiter):
         time, offset_s = _times(source, block, wanted)
         columns = {name: block.numbers[name] * factors[name][0] + factors[name][1] for name in numbers}
+        coded = {name: np.isin(block.numbers[name], wanted.missing) for name in numbers} if wanted.missing else {}
+        columns, marks = _raw.without_codes(source, columns, coded, time, block.row)
         yield Raw(
             shown=source.shown,
             name="",
@@ -82,6 +88,7 @@ def read(source: Source, wanted: ColumnMap) -> Iterator[Raw]:
             interval_s=None,
             row=block.row,
             columns=columns,
+            marks=marks,
         )
 
 
@@ -94,6 +101,9 @@ def _header(source: Source, wanted: ColumnMap) -> tuple[int, list[str], str]:
             names = _table.split(line, delimiter)
             missing = [name for name in needed if name not in names]
             if not missing:
+                twice = [name for name in needed if names.count(name) > 1]
+                if twice:
+                    raise InputError([source.problem(i + 1, name, "the column twice", "one of it") for name in twice])
                 return i + 1, names, delimiter
             if len(missing) < best[0]:
                 best = len(missing), names, i + 1
@@ -121,10 +131,9 @@ def _times(source: Source, block: _table.Block, wanted: ColumnMap) -> tuple[NDAr
         )
         raise source.refuse(int(block.row[i]), "time", found, allowed)
     seconds = moments.dt.tz_localize(None).to_numpy().astype("datetime64[s]").astype(np.int64)
-    named = joined.str.contains(r"(?:Z|[+-]\d{2}:?\d{2})$", regex=True).to_numpy() & (joined.str.len() > 16).to_numpy()
+    named = joined.str.contains(_NAMES_ZONE, regex=True).to_numpy()
+    if named.any() and not named.all():
+        i = int(np.argmax(named != named[0]))
+        found = "times with and without a time zone"
+        raise source.refuse(int(block.row[i]), "time", found, "one or the other")
     return seconds, 0 if named.all() else None
-
-
-def known(names: Mapping[str, object]) -> list[str]:
-    """Return the names of a map that are none of ours."""
-    return [name for name in names if name not in COLUMNS and name not in ("time", "time_format")]

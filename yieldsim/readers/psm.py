@@ -12,6 +12,7 @@ from collections.abc import Iterator
 from itertools import chain, islice
 
 import numpy as np
+from numpy.typing import NDArray
 
 from yieldsim.readers import _raw, _table
 from yieldsim.readers._raw import Raw
@@ -31,7 +32,12 @@ _COLUMNS = {
     "Precipitable Water": ("precipitable_water", 1.0),
     "Surface Albedo": ("albedo", 1.0),
     "Aerosol Optical Depth": ("aod500", 1.0),
+    "AOD": ("aod500", 1.0),
 }
+_ALPHA = "Alpha"
+_AOD_NM = 550.0  # the aerosol is MERRA-2's at 550 nm, its exponent that of 470 to 870 nm (from memory)
+_USUAL_ALPHA = 1.3  # Angstrom's own, where the file has none
+_ALPHA_RANGE = (-0.5, 3.0)
 _MISSING_BELOW = -900.0  # codes are -999 and -9999
 
 
@@ -68,20 +74,20 @@ def read(source: Source) -> Iterator[Raw]:
     about = dict(zip(_table.split(head[0]), _table.split(head[1]), strict=False)) if at_header == 2 else {}
     at = {name: i for i, name in enumerate(names)}
     numbers = {ours: at[theirs] for theirs, (ours, _) in _COLUMNS.items() if theirs in at}
-    numbers |= {name: at[name] for name in _DATE}
+    numbers |= {name: at[name] for name in (*_DATE, _ALPHA) if name in at}
     block = _table.whole(source, chain([first], lines), at_header + 2, numbers, {}, fields)
     year, month, day, hour, minute = (block.numbers[name] for name in _DATE)
     time = _table.calendar_seconds(source, block.row, year, month, day, hour * 3600.0 + minute * 60.0, 86_399)
-    scale, columns, findings = dict(_COLUMNS.values()), {}, []
-    for name in numbers:
-        if name in _DATE:
-            continue
-        coded = block.numbers[name] <= _MISSING_BELOW
-        if coded.any():
-            findings.append(_raw.found_missing(name, coded, time))
-        columns[name] = np.where(coded, np.nan, block.numbers[name] * scale[name])
+    scale = dict(_COLUMNS.values())
+    columns = {name: block.numbers[name] * scale[name] for name in numbers if name in scale}
+    coded = {name: block.numbers[name] <= _MISSING_BELOW for name in columns}
+    columns, marks = _raw.without_codes(source, columns, coded, time, block.row)
+    notes: tuple[str, ...] = ()
+    if "aod500" in columns:
+        columns["aod500"], notes = _at_500_nm(columns["aod500"], block.numbers.get(_ALPHA))
     place = [_number(about.get(name)) for name in ("Latitude", "Longitude", "Elevation")]
     clock_h, local_h = _number(about.get("Time Zone")), _number(about.get("Local Time Zone"))
+    clock_s = None if clock_h is None else _raw.offset_s(source, 2, "Time Zone", clock_h)
     yield Raw(
         shown=source.shown,
         name=" ".join(about[name] for name in ("Source", "Location ID") if about.get(name)),
@@ -89,7 +95,7 @@ def read(source: Source) -> Iterator[Raw]:
         longitude_deg=place[1],
         elevation_m=place[2],
         utc_offset_h=local_h,
-        clock_offset_s=None if clock_h is None else round(clock_h * 3600),
+        clock_offset_s=clock_s,
         label="middle",
         clock="UTC" if clock_h == 0 else "local standard time",
         time=time,
@@ -97,8 +103,22 @@ def read(source: Source) -> Iterator[Raw]:
         row=block.row,
         columns=columns,
         typical=_raw.is_typical(time),
-        findings=tuple(findings),
+        notes=notes,
+        marks=marks,
     )
+
+
+def _at_500_nm(
+    aod: NDArray[np.float64], alpha: NDArray[np.float64] | None
+) -> tuple[NDArray[np.float64], tuple[str, ...]]:
+    """Return aerosol optical depth at 500 nm from that of the file, by Angstrom's law, and words for it."""
+    exponent = np.full(len(aod), _USUAL_ALPHA)
+    if alpha is not None:
+        usable = (alpha >= _ALPHA_RANGE[0]) & (alpha <= _ALPHA_RANGE[1])
+        exponent = np.where(usable, alpha, _USUAL_ALPHA)
+    whose = f"an exponent of {_USUAL_ALPHA:g}" if alpha is None else "the file's exponent"
+    note = f"aerosol of the file taken for {_AOD_NM:g} nm, brought to 500 nm with {whose}"
+    return aod * (500.0 / _AOD_NM) ** -exponent, (note,)
 
 
 def _number(text: str | None) -> float | None:

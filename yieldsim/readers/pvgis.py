@@ -18,7 +18,6 @@ from numpy.typing import NDArray
 from yieldsim.readers import _raw, _table
 from yieldsim.readers._raw import Raw
 from yieldsim.readers._source import Source
-from yieldsim.weather import Finding
 
 FORMAT = "pvgis"
 _TIME = "time(UTC)"
@@ -32,11 +31,13 @@ _COLUMNS = {
     "SP": ("pressure", 1.0),
 }
 _HEAD_LINES = 40
+_ROW = re.compile(r"\d{8}:\d{4},")
+_JSON_BYTES = 32 * 2**20  # B: a typical year has 1.5 MB
 _KEYS = {
-    "latitude": re.compile(r"^Latitude \(decimal degrees\):\s*(-?[\d.]+)"),
-    "longitude": re.compile(r"^Longitude \(decimal degrees\):\s*(-?[\d.]+)"),
-    "elevation": re.compile(r"^Elevation \(m\):\s*(-?[\d.]+)"),
-    "irradiance_time_offset": re.compile(r"^Irradiance Time Offset \(h\):\s*(-?[\d.]+)"),
+    "latitude": re.compile(r"^Latitude \(decimal degrees\):\s*(-?\d{1,9}(?:\.\d*)?)\s*$"),
+    "longitude": re.compile(r"^Longitude \(decimal degrees\):\s*(-?\d{1,9}(?:\.\d*)?)\s*$"),
+    "elevation": re.compile(r"^Elevation \(m\):\s*(-?\d{1,9}(?:\.\d*)?)\s*$"),
+    "irradiance_time_offset": re.compile(r"^Irradiance Time Offset \(h\):\s*(-?\d{1,9}(?:\.\d*)?)\s*$"),
 }
 
 
@@ -44,7 +45,11 @@ def claims(source: Source) -> bool:
     """Return whether the file is of this format, in either form."""
     if source.head.lstrip()[:1] == b"{":
         return b'"tmy_hourly"' in source.head or (b'"inputs"' in source.head and b'"months_selected"' in source.head)
-    return any(line.startswith(_TIME) for line in source.lines_of_head[:_HEAD_LINES])
+    return any(_names_columns(line) for line in source.lines_of_head[:_HEAD_LINES])
+
+
+def _names_columns(line: str) -> bool:
+    return line.startswith(_TIME) and _TIME in _table.split(line)
 
 
 def read(source: Source) -> Iterator[Raw]:
@@ -61,14 +66,17 @@ def read(source: Source) -> Iterator[Raw]:
 def _from_csv(source: Source) -> Raw:
     about: dict[str, float] = {}
     lines = source.whole_lines()
-    start = next((i for i, line in enumerate(lines[:_HEAD_LINES]) if line.startswith(_TIME)), None)
+    start = next((i for i, line in enumerate(lines[:_HEAD_LINES]) if _names_columns(line)), None)
     if start is None:
         raise source.refuse(1, "", f"no line of column names with {_TIME}", "a typical year of PVGIS")
     for line in lines[:start]:
         about |= {key: float(found[1]) for key, pattern in _KEYS.items() if (found := pattern.match(line))}
     names = _table.split(lines[start])
     body = lines[start + 1 :]
-    end = next((i for i, line in enumerate(body) if not line[:8].isdigit()), len(body))  # legends follow the table
+    end = next((i for i, line in enumerate(body) if not _ROW.match(line)), len(body))  # legends follow the table
+    later = next((i for i in range(end, len(body)) if _ROW.match(body[i])), None)
+    if later is not None:  # the table goes on behind a row that does not begin with a time
+        raise source.refuse(start + 2 + end, "time", repr(body[end][:40]), "a time such as 20180101:0000")
     at = {name: i for i, name in enumerate(names)}
     numbers = {ours: at[theirs] for theirs, (ours, _) in _COLUMNS.items() if theirs in at}
     block = _table.whole(source, body[:end], start + 2, numbers, {"time": at[_TIME]}, len(names))
@@ -77,7 +85,7 @@ def _from_csv(source: Source) -> Raw:
 
 def _from_json(source: Source) -> Raw:
     try:
-        content = json.loads(source.content().decode(source.encoding))
+        content = json.loads(source.content(_JSON_BYTES).decode(source.encoding))
         about = content["inputs"]["location"]
         rows = content["outputs"]["tmy_hourly"]
         frame = pd.DataFrame(rows)
@@ -88,7 +96,7 @@ def _from_json(source: Source) -> Raw:
             if theirs in frame
         }
         place = {key: float(about[key]) for key in _KEYS if about.get(key) is not None}
-    except (ValueError, KeyError, TypeError, RecursionError) as error:
+    except (ValueError, KeyError, TypeError, AttributeError, OverflowError, RecursionError) as error:
         found = f"not what PVGIS writes ({type(error).__name__}: {str(error)[:60]})"
         raise source.refuse(getattr(error, "lineno", 0), "", found, "inputs.location and outputs.tmy_hourly") from None
     return _raw_of(source, place, texts, np.arange(1, len(texts) + 1, dtype=np.int64), numbers)
@@ -107,25 +115,24 @@ def _raw_of(
         i = int(np.argmax(bad))
         raise source.refuse(int(rows[i]), "time", repr(str(texts[i])[:40]), "a time such as 20180101:0000")
     offset_h = about.get("irradiance_time_offset", 0.0)
+    shift_s = _raw.offset_s(source, 0, "irradiance_time_offset", offset_h)
     time = moments.to_numpy().astype("datetime64[s]").astype(np.int64)
     longitude = about.get("longitude")
     clock = f"UTC, light {offset_h:+g} h from each label" if offset_h else "UTC"
-    unfilled = [name for name, values in numbers.items() if not np.isfinite(values).all()]
-    findings: list[Finding] = [_raw.found_missing(name, ~np.isfinite(numbers[name]), time) for name in unfilled]
+    time = time + shift_s
     return Raw(
         shown=source.shown,
         name="",
         latitude_deg=about.get("latitude"),
         longitude_deg=longitude,
         elevation_m=about.get("elevation"),
-        utc_offset_h=None if longitude is None else float(round(longitude / 15)),
+        utc_offset_h=_raw.zone_h(longitude),
         clock_offset_s=0,
         label="middle",
         clock=clock,
-        time=time + round(offset_h * 3600),
+        time=time,
         interval_s=3600,
         row=rows,
         columns={name: values + 0.0 for name, values in numbers.items()},
-        typical=_raw.is_typical(time + 1800),  # a label at midnight begins its day
-        findings=tuple(findings),
+        typical=_raw.is_typical(time + 1800 - shift_s),  # a label at midnight begins its day
     )

@@ -1,8 +1,9 @@
 """SURFRAD: stations of the United States' surface radiation network, minutes (three before 2009), UTC.
 
-Two lines for the place (longitude counted westward), then 48 numbers a line: year, day of year, month, day, hour,
-minute, hour with fraction, zenith, then a value and a flag each. Labels stand at the end of the interval. A value is
-taken as missing at -9999.9 or where its flag is not 0. Described in the network's README (from memory).
+Two lines for the place (longitude counted westward: all stations lie there), then 48 numbers a line: year, day of year,
+month, day, hour, minute, hour with fraction, zenith, then a value and a flag each. Labels stand at the end of the
+interval. A value is taken as missing at -9999.9 or where its flag is not 0: 1 bad, 2 questionable. Described in the
+network's README (from memory).
 """
 
 from __future__ import annotations
@@ -13,7 +14,7 @@ from collections.abc import Iterator
 import numpy as np
 
 from yieldsim.readers import _raw, _table
-from yieldsim.readers._raw import Raw
+from yieldsim.readers._raw import Mark, Raw
 from yieldsim.readers._source import Source
 
 FORMAT = "surfrad"
@@ -30,7 +31,7 @@ _COLUMNS = {
 _DATE = {"year": 0, "month": 2, "day": 3, "hour": 4, "minute": 5}
 _FIELDS = 48
 _MISSING = -9990.0
-_PLACE = re.compile(r"\s*(-?\d+\.?\d*)\s+(-?\d+\.?\d*)\s+(-?\d+)\s*m\b.*")
+_PLACE = re.compile(r"\s*(-?\d{1,3}\.?\d*)\s+(-?\d{1,3}\.?\d*)\s+(-?\d{1,5})\s*m\b.*")
 
 
 def claims(source: Source) -> bool:
@@ -58,21 +59,23 @@ def read(source: Source) -> Iterator[Raw]:
     for block in _table.blocks(source, joined, 3, numbers, {}, _FIELDS):
         year, month, day, hour, minute = (block.numbers[key] for key in _DATE)
         time = _table.calendar_seconds(source, block.row, year, month, day, hour * 3600 + minute * 60, 86_399)
-        columns, findings = {}, []
-        for column, (_, scale) in _COLUMNS.items():
-            values, flag = block.numbers[column], block.numbers[f"{column} flag"]
-            coded = (values <= _MISSING) | (flag != 0)
-            if coded.any():
-                findings.append(_raw.found_missing(column, coded, time))
-            columns[column] = np.where(coded, np.nan, values * scale)
-        longitude = -float(found[2])
+        columns = {column: block.numbers[column] * scale for column, (_, scale) in _COLUMNS.items()}
+        coded = {column: block.numbers[column] <= _MISSING for column in _COLUMNS}
+        flagged = {column: (block.numbers[f"{column} flag"] != 0) & ~coded[column] for column in _COLUMNS}
+        columns, marks = _raw.without_codes(source, columns, coded, time, block.row)
+        for column, at in flagged.items():
+            if at.any():
+                what = f"{column} is marked bad or questionable by the station"
+                marks = (*marks, Mark("flagged", what, "taken as missing", source.shown, time[at], block.row[at]))
+                columns[column] = np.where(at, np.nan, columns[column])
+        longitude = -abs(float(found[2]))
         yield Raw(
             shown=source.shown,
             name=name.strip(),
             latitude_deg=float(found[1]),
             longitude_deg=longitude,
             elevation_m=float(found[3]),
-            utc_offset_h=float(round(longitude / 15)),
+            utc_offset_h=_raw.zone_h(longitude),
             clock_offset_s=0,
             label="end",
             clock="UTC",
@@ -80,5 +83,5 @@ def read(source: Source) -> Iterator[Raw]:
             interval_s=None,
             row=block.row,
             columns=columns,
-            findings=tuple(findings),
+            marks=marks,
         )

@@ -11,7 +11,6 @@ from collections.abc import Iterator
 from itertools import islice
 
 import numpy as np
-from numpy.typing import NDArray
 
 from yieldsim.errors import InputError, Problem
 from yieldsim.readers import _raw, _table
@@ -36,8 +35,9 @@ _COLUMNS = {
 _DATE = {"year": (2, 3), "month": (4, 5), "day": (6, 7), "hour": (8, 9)}
 _LENGTH = 142
 _PLACE = re.compile(
-    r"\s*(?P<number>\d{5}) (?P<name>.{22}) (?P<state>..) +(?P<zone>-?\d+) +(?P<ns>[NS]) +(?P<lat>\d+) +(?P<lat_min>\d+)"
-    r" +(?P<ew>[EW]) +(?P<lon>\d+) +(?P<lon_min>\d+) +(?P<height>-?\d+)\s*"
+    r"\s*(?P<number>\d{5}) (?P<name>.{22}) (?P<state>..) +(?P<zone>-?\d{1,3})"
+    r" +(?P<ns>[NS]) +(?P<lat>\d{1,3}) +(?P<lat_min>\d{1,2})"
+    r" +(?P<ew>[EW]) +(?P<lon>\d{1,3}) +(?P<lon_min>\d{1,2}) +(?P<height>-?\d{1,5})\s*"
 )
 
 
@@ -61,20 +61,15 @@ def read(source: Source) -> Iterator[Raw]:
         raise source.refuse(
             1, "place", repr(first[:80]), "station, name, state, time zone, latitude, longitude, height"
         )
-    rows, numbers = _numbers(source, lines)
-    date = (numbers.pop(name) for name in _DATE)
-    year, month, day, hour = date
-    time = _table.calendar_seconds(source, rows, 1900 + year, month, day, hour * 3600.0, 86_400)
-    columns, findings = {}, []
-    for name, (start, end, scale) in _COLUMNS.items():
-        values = numbers[name]
-        coded = values == 10 ** (end - start + 1) - 1
-        if coded.any():
-            findings.append(_raw.found_missing(name, coded, time))
-        values = np.where(coded, np.nan, values * scale)
-        if np.isfinite(values).any():
-            columns[name] = values
     offset_h = float(place["zone"])
+    clock_s = _raw.offset_s(source, 1, "time zone", offset_h)
+    numbers = {name: i for i, name in enumerate((*_DATE, *_COLUMNS))}
+    block = _table.together(list(_table.numbered_blocks(source, _cut(source, lines), numbers, {}, len(numbers))))
+    year, month, day, hour = (block.numbers[name] for name in _DATE)
+    time = _table.calendar_seconds(source, block.row, 1900 + year, month, day, hour * 3600.0, 86_400)
+    columns = {name: block.numbers[name] * scale for name, (_, _, scale) in _COLUMNS.items()}
+    coded = {name: block.numbers[name] == 10 ** (end - start + 1) - 1 for name, (start, end, _) in _COLUMNS.items()}
+    columns, marks = _raw.without_codes(source, columns, coded, time, block.row)
     latitude = (float(place["lat"]) + float(place["lat_min"]) / 60) * (1 if place["ns"] == "N" else -1)
     longitude = (float(place["lon"]) + float(place["lon_min"]) / 60) * (1 if place["ew"] == "E" else -1)
     yield Raw(
@@ -84,39 +79,37 @@ def read(source: Source) -> Iterator[Raw]:
         longitude_deg=longitude,
         elevation_m=float(place["height"]),
         utc_offset_h=offset_h,
-        clock_offset_s=round(offset_h * 3600),
+        clock_offset_s=clock_s,
         label="end",
         clock="local standard time",
         time=time,
         interval_s=3600,
-        row=rows,
-        columns=columns,
+        row=block.row,
+        columns={name: values for name, values in columns.items() if np.isfinite(values).any()},
         typical=_raw.is_typical(time),
-        findings=tuple(findings),
+        marks=marks,
     )
 
 
-def _numbers(source: Source, lines: Iterator[str]) -> tuple[NDArray[np.int64], dict[str, NDArray[np.float64]]]:
-    """Return line numbers and every field as numbers."""
-    fields = {name: (start - 1, end) for name, (start, end) in _DATE.items()}
-    fields |= {name: (start - 1, end) for name, (start, end, _) in _COLUMNS.items()}
-    texts: dict[str, list[str]] = {name: [] for name in fields}
-    rows: list[int] = []
+def _cut(source: Source, lines: Iterator[str]) -> list[tuple[int, str]]:
+    """Return each line's number and its fields, set apart by commas."""
+    fields = [(start - 1, end) for start, end in _DATE.values()]
+    fields += [(start - 1, end) for start, end, _ in _COLUMNS.values()]
+    least = max(end for _, end in fields)
+    cut: list[tuple[int, str]] = []
     problems: list[Problem] = []
     for number, line in enumerate(lines, start=2):
-        if not line.strip():
+        if not line or line.isspace():
             continue
-        if len(line.rstrip()) < _COLUMNS["snow_depth"][1]:
-            problems.append(source.problem(number, "", f"{len(line)} characters", f"{_LENGTH}"))
+        if len(line.rstrip()) < least or "," in line or '"' in line:
+            found = f"{len(line.rstrip())} characters" if len(line.rstrip()) < least else "a comma or quotation mark"
+            problems.append(source.problem(number, "", found, f"{_LENGTH} characters, fields in fixed columns"))
             if len(problems) == _table.MOST_PROBLEMS:
                 break
             continue
-        rows.append(number)
-        for name, (start, end) in fields.items():
-            texts[name].append(line[start:end])
-    if not rows and not problems:
+        cut.append((number, ",".join(line[start:end] for start, end in fields)))
+    if not cut and not problems:
         problems = [source.problem(2, "", "no rows", "at least one")]
     if problems:
         raise InputError(problems)
-    numbers = {name: _table.numbers_of(source, rows, name, values) for name, values in texts.items()}
-    return np.array(rows, dtype=np.int64), numbers
+    return cut

@@ -54,6 +54,7 @@ def read(source: Source) -> Iterator[Raw]:
     lines = source.lines(WHOLE_BYTES)
     head = list(islice(lines, 2))
     name, offset_h, position = _place(source, head[0])
+    clock_s = _raw.offset_s(source, 1, "time zone", offset_h)
     names = _table.split(head[1])
     at = {name: i for i, name in enumerate(names)}
     missing = [name for name in (_DATE, _CLOCK) if name not in at]
@@ -63,9 +64,9 @@ def read(source: Source) -> Iterator[Raw]:
     scale = dict(_COLUMNS.values())
     block = _table.whole(source, lines, 3, numbers, {"date": at[_DATE], "clock": at[_CLOCK]}, len(names))
     time = _times(source, block)
-    columns = {
-        ours: np.where(values > _MISSING_BELOW, values * scale[ours], np.nan) for ours, values in block.numbers.items()
-    }
+    columns = {name: values * scale[name] for name, values in block.numbers.items()}
+    coded = {name: values <= _MISSING_BELOW for name, values in block.numbers.items()}
+    columns, marks = _raw.without_codes(source, columns, coded, time, block.row)
     yield Raw(
         shown=source.shown,
         name=name,
@@ -73,7 +74,7 @@ def read(source: Source) -> Iterator[Raw]:
         longitude_deg=position[1],
         elevation_m=position[2],
         utc_offset_h=offset_h,
-        clock_offset_s=round(offset_h * 3600),
+        clock_offset_s=clock_s,
         label="end",
         clock="local standard time",
         time=time,
@@ -81,6 +82,7 @@ def read(source: Source) -> Iterator[Raw]:
         row=block.row,
         columns=columns,
         typical=_raw.is_typical(time),
+        marks=marks,
     )
 
 

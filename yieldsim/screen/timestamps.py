@@ -320,10 +320,8 @@ def _gap_near(weather: Weather, moment: int) -> int:
 
 def _repeat_near(weather: Weather, moment: int) -> int:
     for finding in weather.findings:
-        if finding.kind == "duplicate" and abs(finding.first - moment) < 400 * 86_400:
-            local = finding.first - round(weather.utc_offset_h * 3600)
-            if abs(local - moment) < 12 * 86_400:
-                return local
+        if finding.kind == "duplicate" and abs(finding.first - moment) < 12 * 86_400:
+            return finding.first
     return moment // 86_400 * 86_400 + 86_400
 
 

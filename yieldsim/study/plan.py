@@ -23,11 +23,13 @@ class ColumnsPlan:
     time : names of the columns that together are the time
     columns : (our column, its name in the file, its unit there or None for ours) each
     time_format : str or None, as strptime has it; None = ISO 8601
+    missing : numbers that stand for a missing value
     """
 
     time: tuple[str, ...]
     columns: tuple[tuple[str, str, str | None], ...]
     time_format: str | None = None
+    missing: tuple[float, ...] = ()
 
 
 @dataclass(frozen=True, slots=True)
