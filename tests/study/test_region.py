@@ -159,7 +159,7 @@ def test_killed_at_random_moments_and_gone_on_with(folder, whole):
     """A run killed again and again gives the bytes of an unbroken one; what was finished is not lost."""
     moments = random.Random(5)
     out, finished = folder / "killed", 0
-    for _ in range(30):
+    for _ in range(8):
         run = subprocess.Popen(command(str(folder / "region.yaml"), "--out", str(out)), stderr=subprocess.DEVNULL)
         try:
             run.wait(timeout=moments.uniform(1.5, 5.0))
