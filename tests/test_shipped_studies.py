@@ -156,9 +156,7 @@ def test_every_shipped_study_runs(study, tmp_path):
     """Each is a question of its own; here: it runs, nothing is NaN, the ledger is exhaustive, the page is written."""
     plan = yieldsim.load_study(ROOT / "configs" / f"{study}.yaml")
     if plan.chance is not None:
-        plan = replace(
-            plan, chance=replace(plan.chance, draws=100)
-        )  # a quarter of them, asked the same
+        plan = replace(plan, chance=replace(plan.chance, draws=100))  # a quarter of them, asked the same
     result = yieldsim.run_study(plan, tmp_path)
     assert not result.annual.isna().any().any()
     assert (result.annual["energy_kwh_m2"] > 0).all()
