@@ -15,6 +15,7 @@ from tests import strategies
 from yieldsim import readers
 from yieldsim.errors import InputError
 from yieldsim.readers import READERS, Column, ColumnMap, File, _source
+from yieldsim.readers.grid import seconds
 
 DATA = Path(__file__).parent / "data"
 SHIPPED = Path(pvlib.__file__).parent / "data"
@@ -211,3 +212,8 @@ def test_netcdf_of_more_moments_than_it_can_be(tmp_path):
         variable.attrs["units"] = "seconds since 1970-01-01"
         file.create_variable("ghi", ("time",), "f8", chunks=(1000,))
     refused_quickly(tmp_path / "x", "moments")
+
+
+def test_moments_outside_the_calendar():
+    with pytest.raises(InputError, match="cannot be read"):
+        seconds(np.array([1e246, 2e246]), {"units": "hours since 2021-06-01"}, "x.nc")

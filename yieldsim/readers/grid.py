@@ -277,8 +277,9 @@ def seconds(values: Any, attributes: Any, shown: str) -> NDArray[np.int64]:
     try:
         decoded = xr.decode_cf(xr.Dataset({"moment": ("n", np.asarray(values), told)}))["moment"].values
         return np.asarray(decoded.astype("datetime64[s]").astype(np.int64))
-    except (ValueError, TypeError, OverflowError) as error:
-        reason = str(error).splitlines()[0][:120]
+    except (ValueError, TypeError, OverflowError, ImportError) as error:
+        beyond = "its dates lie outside the standard calendar"  # what xarray would hand to a package of other calendars
+        reason = beyond if isinstance(error, ImportError) else str(error).splitlines()[0][:120]
         raise InputError(Problem(shown, 0, "time", f"it cannot be read ({reason})", "CF time, UTC")) from None
 
 
