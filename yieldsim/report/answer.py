@@ -8,6 +8,7 @@ from typing import Any
 
 import pandas as pd
 
+from yieldsim.study.portfolio import choices
 from yieldsim.study.result import StudyResult, ideal_names, records
 
 #: Two absorbers closer than this are not told apart without a chance calculation: the residue of clear and cloudy
@@ -87,12 +88,11 @@ def answer(result: StudyResult) -> Answer:
 
     Absorbers of ideal quality are left out where two others remain: a limit no device reaches is no choice.
     """
-    named = set(result.annual["absorber"])
-    ideal = [name for name in ideal_names(result.resolved) if name in named]
-    if len(named) - len(ideal) < 2:
-        ideal = []
-    all_places = places(result.annual[~result.annual["absorber"].isin(ideal)])
-    left_out = f" Left out as ideal, which no device is: {listed(ideal)}." if ideal else ""
+    ideal = ideal_names(result.resolved)
+    chosen = choices(list(result.annual["absorber"]), ideal)
+    all_places = places(result.annual[result.annual["absorber"].isin(chosen)])
+    out = [name for name in ideal if name not in chosen]
+    left_out = f" Left out as ideal, which no device is: {listed(out)}." if out else ""
     return Answer(
         _winner(all_places) + left_out,
         _certainty(all_places, result.head_to_head),

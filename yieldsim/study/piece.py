@@ -40,8 +40,8 @@ def key(plan: StudyPlan, site: SitePlan) -> str:
     kept = frozenset(plan.keep & {"hourly", "spectra"})
     terms = plan.worth
     sold = None if terms is None else (terms.energy_price, terms.limited_by, terms.dc_to_grid, worth.SHARES)
-    parts = (site, plan.absorbers, plan.gap_sweep, plan.gap_pairs, plan.losses, sold, plan.chance)
-    return store.fingerprint(version, *parts, kept)
+    made_from = (site, plan.absorbers, plan.gap_sweep, plan.gap_pairs, plan.losses, sold, plan.chance)
+    return store.fingerprint(version, *made_from, kept)
 
 
 def compute(plan: StudyPlan, site: SitePlan, years: Iterable[Weather], folder: Path) -> dict[str, Any]:
