@@ -64,13 +64,15 @@ def site_pieces(
         else:
             seconds[site.name] = 0.0
     problems: list[Problem] = []
+    refused = 0
     for name, error, took in _each(plan, waiting, load_weather, folder, workers, cluster):
         if error is None:
             seconds[name] = took
         else:
             problems.extend(error.problems)
+            refused += 1
         if progress is not None:
-            progress(name, len(seconds) + len(problems), len(plan.sites))
+            progress(name, len(seconds) + refused, len(plan.sites))
     if problems:
         raise InputError(problems)
     return seconds
