@@ -19,20 +19,20 @@ CELLS = [Cell(i, j, 40.0 + 0.5 * i, 8.0 + 0.5 * j, 100.0 * i) for i in range(3) 
 
 @pytest.fixture
 def study(tmp_path):
-    def make(sites, table=None, name="sites.csv"):
+    def make(sites, table=None, name="sites.csv", cells=CELLS):
         if table is not None:
             (tmp_path / name).write_text(table, encoding="utf-8")
         (tmp_path / "grid.nc").write_bytes(b"stands for a grid")
         path = tmp_path / "study.yaml"
         path.write_text(f"study: many\nsites: {sites}\n{REST}", encoding="utf-8")
-        return load(path, lambda _path, _shown: CELLS)
+        return load(path, lambda _path, _shown: cells)
 
     return make
 
 
-def problems_of(make, *args):
+def problems_of(make, *args, **more):
     with pytest.raises(InputError) as caught:
-        make(*args)
+        make(*args, **more)
     return caught.value.problems
 
 
@@ -98,6 +98,19 @@ def test_a_place_off_the_grid_is_refused(study):
     table = "name,latitude_deg,longitude_deg\nFar,50,8\nNo place,,\n"
     found = problems_of(study, "{table: sites.csv, grid: grid.nc}", table)
     assert [problem.line for problem in found] == [2, 3]
+
+
+def test_places_either_side_of_the_date_line_are_near(study):
+    cells = [Cell(0, 0, -17.0, 179.5), Cell(0, 1, -17.0, -180.0), Cell(0, 2, -17.0, -179.5)]
+    table = "name,latitude_deg,longitude_deg\nWest,-17,179.9\nEast,-17,-179.9\n"
+    plan = study("{table: sites.csv, grid: grid.nc}", table, cells=cells)
+    assert [site.weather[0].cell for site in plan.sites] == [(0, 1), (0, 1)]
+
+
+@pytest.mark.parametrize("sites", ["{grid: grid.nc}", "{table: sites.csv, grid: grid.nc}"])
+def test_a_grid_without_weather_is_refused(study, sites):
+    (problem,) = problems_of(study, sites, "name,latitude_deg,longitude_deg\nHere,40,8\n", cells=[])
+    assert (problem.file, problem.found) == ("grid.nc", "no cell with weather")
 
 
 @pytest.mark.parametrize(

@@ -9,6 +9,9 @@ from dataclasses import dataclass, replace
 from pathlib import Path
 from typing import Any
 
+import numpy as np
+from numpy.typing import NDArray
+
 from yieldsim.config.fields import nearest, show
 from yieldsim.config.inputs import locate, read_text
 from yieldsim.config.tree import Document
@@ -107,7 +110,10 @@ def _cells_of(many: Mapping[str, Any], folder: Path, cells: Cells | None) -> Seq
         return ()
     if cells is None:
         raise InputError(Problem("", 0, "sites.grid", "a grid", "sites one by one: this use cannot read grids"))
-    return cells(locate(many["grid"], folder), many["grid"])
+    found = cells(locate(many["grid"], folder), many["grid"])
+    if not found:
+        raise InputError(Problem(many["grid"], 0, "", "no cell with weather", "at least one"))
+    return found
 
 
 def _site_of(cell: Cell, grid: str) -> dict[str, Any]:
@@ -156,12 +162,13 @@ def _of_table(
     if problems:
         raise InputError(problems)
     sites: list[dict[str, Any]] = []
+    known = _Grid.of(cells, grid) if grid is not None else None
     for (number, _), row in zip(lines[1:], rows[1:], strict=True):
         if len(row) > len(head):
             problems.append(Problem(shown, number, "", f"{len(row)} cells", f"{len(head)}, as in the header"))
             continue
         site = _row_site(shown, number, dict(zip(head, (cell.strip() for cell in row), strict=False)), problems)
-        sites.append(_placed(site, shown, number, cells, grid, problems) if grid and "weather" not in site else site)
+        sites.append(site if known is None or "weather" in site else _placed(site, shown, number, known, problems))
     if not sites and not problems:
         problems = [Problem(shown, 0, "", "a header without rows", "a row for each site")]
     if problems:
@@ -189,34 +196,40 @@ def _row_site(shown: str, number: int, row: Mapping[str, str], problems: list[Pr
     return site
 
 
-def _placed(
-    site: dict[str, Any], shown: str, number: int, cells: Sequence[Cell], grid: str, problems: list[Problem]
-) -> dict[str, Any]:
+@dataclass(frozen=True, slots=True)
+class _Grid:
+    """The cells of a grid and where they lie, (n,) [deg]; ``reach`` is how far a place may be from a cell's middle."""
+
+    name: str
+    cells: Sequence[Cell]
+    latitude_deg: NDArray[np.float64]
+    longitude_deg: NDArray[np.float64]
+    reach: float
+
+    @classmethod
+    def of(cls, cells: Sequence[Cell], name: str) -> _Grid:
+        """Return it of cells; the reach is one step of the grid."""
+        places = np.array([(cell.latitude_deg, cell.longitude_deg) for cell in cells]).reshape(-1, 2)
+        steps = np.concatenate([np.diff(np.unique(places[:, k])) for k in (0, 1)])
+        return cls(name, cells, places[:, 0], places[:, 1], float(steps.max(initial=0.0)) or 0.5)
+
+    def nearest(self, latitude_deg: float, longitude_deg: float) -> tuple[Cell, float]:
+        """Return the cell nearest to a place and how far it is [deg]."""
+        east = np.abs(self.longitude_deg - longitude_deg) % 360
+        apart = np.maximum(np.abs(self.latitude_deg - latitude_deg), np.minimum(east, 360 - east))
+        nearest = int(np.argmin(apart))
+        return self.cells[nearest], float(apart[nearest])
+
+
+def _placed(site: dict[str, Any], shown: str, number: int, grid: _Grid, problems: list[Problem]) -> dict[str, Any]:
     """Return a site with the weather of the grid's nearest cell, which must lie within a cell's reach."""
     if not {"latitude_deg", "longitude_deg"} <= set(site):
         problems.append(Problem(shown, number, "latitude_deg", "no place", "latitude and longitude, or weather"))
         return site
-    reach = _reach(cells)
-
-    def apart(cell: Cell) -> float:
-        east = abs(cell.longitude_deg - float(site["longitude_deg"])) % 360
-        return max(abs(cell.latitude_deg - float(site["latitude_deg"])), float(min(east, 360 - east)))
-
-    near = min(cells, key=apart)
-    if apart(near) > reach:
-        found = f"{site['latitude_deg']:g}, {site['longitude_deg']:g}, {apart(near):.3g} deg from the nearest cell"
-        problems.append(
-            Problem(shown, number, "latitude_deg", found, f"a place within {reach:.3g} deg of a cell of {grid}")
-        )
-    site |= {"weather": grid, "cell": [near.row, near.column]}
-    return site if near.elevation_m is None else {"elevation_m": near.elevation_m, **site}
-
-
-def _reach(cells: Sequence[Cell]) -> float:
-    """Return how far a place may lie from a cell's middle [deg]: one step of the grid."""
-    steps = [
-        abs(b - a)
-        for values in ({cell.latitude_deg for cell in cells}, {cell.longitude_deg for cell in cells})
-        for a, b in zip(sorted(values), sorted(values)[1:], strict=False)
-    ]
-    return max(steps, default=0.5)
+    cell, apart = grid.nearest(site["latitude_deg"], site["longitude_deg"])
+    if not apart <= grid.reach:
+        found = f"{site['latitude_deg']:g}, {site['longitude_deg']:g}, {apart:.3g} deg from the nearest cell"
+        allowed = f"a place within {grid.reach:.3g} deg of a cell of {grid.name}"
+        problems.append(Problem(shown, number, "latitude_deg", found, allowed))
+    site |= {"weather": grid.name, "cell": [cell.row, cell.column]}
+    return site if cell.elevation_m is None else {"elevation_m": cell.elevation_m, **site}
