@@ -219,7 +219,9 @@ def _gathered(plan: StudyPlan, folder: Path, details: dict[str, Any]) -> StudyRe
         gap_pair_materials=pd.DataFrame(standing) if standing else None,
         generation=pd.DataFrame(films) if films else None,
         ledger=None if ledger is None else ledger.fillna(0.0),
-        region=region.dataset(plan, found["annual"], found.get("gap_sweep")) if region.is_region(plan) else None,
+        region=region.dataset(plan, found["annual"], found.get("gap_sweep"), ideal_names(plan.resolved))
+        if region.is_region(plan)
+        else None,
         responses=responses_table(plan.absorbers),
         by_hour=pd.concat(by_hour, ignore_index=True) if by_hour else None,
         **more,

@@ -113,6 +113,25 @@ def test_winner_margin_and_best_gap_are_those_of_the_tables(plan, whole):
         assert float(cell["best_gap_ev"].isel(quality=0)) == best
 
 
+def test_an_ideal_absorber_wins_nowhere_where_two_others_remain(plan, whole):
+    """As in the answer and the regrets: a limit that no device reaches is no choice."""
+    from dataclasses import replace
+
+    import pandas as pd
+
+    annual = pd.read_csv(whole / "annual.csv")
+    limit = annual[annual["absorber"] == "film"].assign(absorber="limit")
+    limit["energy_kwh_m2"] *= 3
+    more = replace(plan, absorbers=(replace(plan.absorbers[0], name="limit"), *plan.absorbers))
+    columns = pd.concat([limit, annual]).to_dict("list")
+    without, among = (region.dataset(more, columns, None, ideal) for ideal in (["limit"], []))
+    known = among["best_absorber"].values >= 0
+    assert set(among["best_absorber"].values[known]) == {0}
+    assert set(without["best_absorber"].values[known]) == {1}  # silicon, as without the limit
+    with xr.open_dataset(whole / "region.nc", engine="h5netcdf") as found:
+        np.testing.assert_allclose(without["margin"].values, found["margin"].values, rtol=1e-9)
+
+
 def test_a_grid_keeps_its_maps_and_little_else(whole):
     assert (whole / "plots" / "region.png").is_file()
     assert not (whole / "hourly").exists()

@@ -11,6 +11,7 @@ from numpy.typing import NDArray
 
 from yieldsim.study.compare import MEASURES
 from yieldsim.study.plan import SitePlan, StudyPlan
+from yieldsim.study.portfolio import choices
 
 Array = NDArray[np.float64]
 Columns = Mapping[str, Sequence[Any]]
@@ -30,7 +31,7 @@ def is_region(plan: StudyPlan) -> bool:
     return len(files) == 1 and all(_cell(site) is not None for site in plan.sites)
 
 
-def dataset(plan: StudyPlan, annual: Columns, gap_sweep: Columns | None) -> xr.Dataset:
+def dataset(plan: StudyPlan, annual: Columns, gap_sweep: Columns | None, ideal: Sequence[str] = ()) -> xr.Dataset:
     """Return the annual results of a grid of sites.
 
     Parameters
@@ -38,6 +39,7 @@ def dataset(plan: StudyPlan, annual: Columns, gap_sweep: Columns | None) -> xr.D
     plan : StudyPlan whose sites are cells of a grid
     annual : columns of ``annual.csv``
     gap_sweep : columns of ``gap_sweep.csv`` or None
+    ideal : absorbers that stand for a limit no device reaches: none of them wins where two others remain
 
     Returns
     -------
@@ -68,7 +70,10 @@ def dataset(plan: StudyPlan, annual: Columns, gap_sweep: Columns | None) -> xr.D
     light = measures["poa_kwh_m2"].max(axis=1)
     flat = ("mounting", "latitude", "longitude")
     variables["poa_kwh_m2"] = (flat, light, {"units": "kWh m-2", "long_name": "light on the plane a year"})
-    best, margin = _winners(measures["energy_kwh_m2"])
+    real = choices(absorbers, ideal)
+    chosen = np.array([i for i, name in enumerate(absorbers) if name in real])
+    winner, margin = _winners(measures["energy_kwh_m2"][:, chosen])
+    best = np.where(winner >= 0, chosen[winner], -1).astype(np.int32)
     variables["best_absorber"] = (
         flat,
         best,
@@ -112,11 +117,11 @@ def _places(sites: Sequence[SitePlan]) -> tuple[Array, Array, dict[str, tuple[in
     return latitude, longitude, {name: (row_of[row], column_of[column]) for name, (row, column) in cells.items()}
 
 
-def _winners(energy: Array) -> tuple[NDArray[np.int32], Array]:
+def _winners(energy: Array) -> tuple[NDArray[np.int64], Array]:
     """Return the best absorber's number and its margin of energy (mounting, absorber, lat, lon) over the next one's."""
     known = np.isfinite(energy).all(axis=1)
     ordered = np.sort(np.where(np.isfinite(energy), energy, -np.inf), axis=1)
-    best = np.where(known, np.argmax(np.nan_to_num(energy, nan=-np.inf), axis=1), -1).astype(np.int32)
+    best = np.where(known, np.argmax(np.nan_to_num(energy, nan=-np.inf), axis=1), -1)
     if energy.shape[1] < 2:
         return best, np.where(known, 0.0, np.nan)
     with np.errstate(invalid="ignore", divide="ignore"):
