@@ -88,7 +88,7 @@ function ranks(width) {
 }
 
 function causes(width) {
-  const rows = hereRows(study.causes).sort((a, b) => b.total - a.total).slice(0, 10).map((row, i) => ({ ...row, i, name: row.input.replaceAll("_", " ") }));
+  const rows = hereRows(study.causes).sort((a, b) => b.total - a.total).slice(0, 10).map((row, i) => ({ ...row, i, name: row.input }));
   const pair = rows.length ? `${names()[rows[0].absorber]} over ${names()[rows[0].other]}` : "";
   const percent = (v) => figures(100 * Math.max(v, 0), 0);
   const text = (d) => (d.note ? `${d.name}: ${d.note}` : `${d.name}: ${percent(d.total)} % of the variance (${percent(d.total_low)} to ${percent(d.total_high)} %)`);

@@ -2,7 +2,6 @@
 
 from __future__ import annotations
 
-import re
 from collections.abc import Mapping, Sequence
 from typing import Any
 
@@ -13,7 +12,7 @@ from matplotlib.figure import Figure
 from matplotlib.ticker import MaxNLocator
 
 from yieldsim.report.canvas import GREY, SMALL, head, panels, text_width
-from yieldsim.report.marks import COLOURS, mark, shorten
+from yieldsim.report.marks import COLOURS, called, mark, shorten
 from yieldsim.study.result import StudyResult, records
 
 Place = tuple[str, str]
@@ -25,7 +24,6 @@ _LINE = 52  # characters of a pair's names on one line; longer ones take two
 _SURE = 0.9
 _MOST_ROWS = 14
 _MOST_CAUSES = 8
-_UNITS = re.compile(r"_(ev|atm_cm|cm)$")
 
 
 def _at(table: pd.DataFrame, place: Place, measure: str | None = MEASURE) -> pd.DataFrame:
@@ -50,11 +48,6 @@ def _pair(row: Mapping[str, Any]) -> str:
 def _lines(texts: Sequence[str]) -> list[str]:
     """Return the lines of texts, to be measured."""
     return [line for text in texts for line in text.split("\n")]
-
-
-def _unknown(name: object) -> str:
-    """Return what an input is called, without its unit."""
-    return _UNITS.sub("", str(name)).replace("_", " ")
 
 
 def _rows(axes: Axes, names: Sequence[str], label: str) -> None:
@@ -228,7 +221,7 @@ def causes(result: StudyResult, places: list[Place], names: list[str], more: str
     if table is None or table.empty:
         return None
     frames = [_causes_of(_at(table, place)) for place in places]
-    words = [_unknown(name) for frame in frames for name in frame["input"]]
+    words = [called(name) for frame in frames for name in frame["input"]]
     if not words:
         return None
     left = 0.3 + text_width(words, 8.5)
@@ -242,8 +235,8 @@ def causes(result: StudyResult, places: list[Place], names: list[str], more: str
             axes.plot([100 * row["total_low"], 100 * row["total_high"]], [y, y], color="black", linewidth=1.1)
             text = str(row["note"]) if doubtful else f"{total:.0f}"
             axes.annotate(text, (1.01, y), xycoords=("axes fraction", "data"), fontsize=6.5, va="center")
-        called = [_unknown(name) for name in frame["input"]][::-1]
-        _rows(axes, called, "share of the margin's variance [%]")
+        labels = [called(name) for name in frame["input"]][::-1]
+        _rows(axes, labels, "share of the margin's variance [%]")
         axes.set_xlim(0, 108)
         if len(frame):
             title = f"{title}\n{_pair(records(frame)[0])}"

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import re
 import unicodedata
 from collections.abc import Sequence
 from dataclasses import dataclass
@@ -13,6 +14,7 @@ from numpy.typing import NDArray
 #: values from memory; their yellow is left out, being too pale for a line on white.
 COLOURS = ("#0072B2", "#D55E00", "#009E73", "#CC79A7", "#E69F00", "#56B4E9", "#333333")
 DASHES: tuple[tuple[float, ...], ...] = ((), (5, 2), (1.5, 1.5), (6, 2, 1.5, 2))
+_UNITS = re.compile(r"_(ev|atm_cm|cm)$")
 MARKERS = ("o", "s", "^", "D", "v", "P", "X", "<", ">", "p", "h", "*")
 
 
@@ -36,6 +38,11 @@ def mark(number: int) -> Mark:
         DASHES[(turn + colour % 3) % len(DASHES)],
         MARKERS[number % len(MARKERS)],
     )
+
+
+def called(name: object) -> str:
+    """Return what an input of a chance calculation is called in words, without its unit."""
+    return _UNITS.sub("", str(name)).replace("_", " ")
 
 
 def shorten(name: str, length: int = 40) -> str:

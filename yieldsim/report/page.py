@@ -13,7 +13,7 @@ import pandas as pd
 from markupsafe import Markup
 
 from yieldsim.report import answer as answers
-from yieldsim.report.marks import position
+from yieldsim.report.marks import called, position
 from yieldsim.report.payload import MOST_PLACES, payload
 from yieldsim.study import store
 from yieldsim.study.result import TABLES, StudyResult, records
@@ -56,7 +56,7 @@ def render(result: StudyResult) -> str:
         lstrip_blocks=True,
         loader=jinja2.FunctionLoader(_asset),
     )
-    environment.filters |= {"figures": _figures, "percent": answers.percent}
+    environment.filters |= {"figures": _figures, "percent": answers.percent, "called": called}
     found = answers.places(result.annual)
     has = {name: getattr(result, name) is not None for name in TABLES}
     return environment.get_template("page.html").render(

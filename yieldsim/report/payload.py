@@ -12,6 +12,7 @@ import pandas as pd
 import xarray as xr
 
 from yieldsim.report.answer import Place, places
+from yieldsim.report.marks import called
 from yieldsim.study import store
 from yieldsim.study.result import STANDARD_SITE, StudyResult, edges_nm, records
 
@@ -232,7 +233,8 @@ def _by_energy(table: pd.DataFrame) -> pd.DataFrame:
 def _of_margins(table: pd.DataFrame) -> pd.DataFrame:
     """Return the causes of a margin between two absorbers, not those of one absorber's yield."""
     margins = _by_energy(table)
-    return margins[margins["other"].fillna("").astype(str) != ""]
+    margins = margins[margins["other"].fillna("").astype(str) != ""]
+    return margins.assign(input=margins["input"].map(called))
 
 
 def _shown(table: pd.DataFrame) -> pd.DataFrame:
