@@ -310,8 +310,8 @@ def own_power(made: Array, temperature: Array, log_saturation: Array, ideality: 
     numbers : (4,) array, as `junction.constants` gives them
     """
     return points.junction_power(
-        np.ascontiguousarray(made),
-        np.ascontiguousarray(temperature),
+        np.require(made, requirements=("C", "W")),
+        np.require(temperature, requirements=("C", "W")),
         log_saturation,
         _INVERSE_HOT,
         (_INVERSE_COLD - _INVERSE_HOT) / _INVERSE_STEPS,

@@ -271,7 +271,7 @@ def kernel_hours(air: Air, cloud_depth: Array) -> tuple[Array, Array]:
     masses = (relative_air_mass(air.cos_zenith), ozone_air_mass(air.cos_zenith))
     content = (air.pressure / BIRD_PRESSURE, air.water_cm, air.ozone_atm_cm, air.aod500, air.angstrom_exponent)
     albedo = air.albedo[:, None] if air.albedo.ndim == 1 else air.albedo
-    return np.stack([*masses, *content, cloud_depth], axis=1), np.ascontiguousarray(albedo)
+    return np.stack([*masses, *content, cloud_depth], axis=1), np.require(albedo, requirements=("C", "W"))
 
 
 def kernel_model(constants: Optics) -> Model:

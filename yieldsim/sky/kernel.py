@@ -24,19 +24,18 @@ from yieldsim.sky.kernel_layer import (
     SHAPE,
     SLOPE,
     STRAIGHT,
-    STRIDE,
     TOTAL,
     WATER,
     Model,
     Room,
-    back_to_top,
+    below,
     compiled,
     exp,
     gas,
     on_ground,
     start,
     summed,
-    through,
+    top,
     top_of_few,
     workspace,
 )
@@ -45,7 +44,7 @@ Array = NDArray[np.float64]
 
 # numba keeps compiled code until the function's own file changes and does not look at the files it calls. So this file
 # must change whenever kernel_layer.py does: a test compares the hash.
-LAYER_SHA256 = "d4b7b2b79e0f9d836b4be91e27a5f20c43d6a51e83694898daec0edca09053a2"
+LAYER_SHA256 = "cda440e60771593ab0c9a8b336ea9e32e80e41aa3040f6a765ba54fef8c2949a"
 
 CLOUD_DEPTH_MAX = 300.0  # the thickest clouds pass about 2 %; beyond it nothing measurable changes
 CLOUD_TOLERANCE = 2e-4  # of transmittance: moves no band over broadband by more than 0.01 %
@@ -78,7 +77,8 @@ def transmit(hours: Array, albedo: Array, model: Model, beam: Array, total: Arra
         hour = hours[h]
         start(s, n, model, hour, known_exponent)
         known_exponent = hour[EXPONENT]
-        through(s, n, model, hour, hour[CLOUD], 0, room)
+        top(s, n, model, hour, room)
+        below(s, n, model, hour, hour[CLOUD], room)
         on_ground(s, n, albedo[h], hour[AIR_MASS])
         for b in range(n_band):
             beam[h, b], total[h, b] = s[STRAIGHT + b], s[TOTAL + b]
@@ -103,21 +103,23 @@ def beam_haze(hours: Array, model: Model, top: Array, wanted: Array, bounds: tup
     Parameters
     ----------
     hours, model : as in `transmit`; the AOD of the hours is where the search starts
-    top : as in `split`
+    top : (STRIDE,) array [W m-2], light above the air at the mean distance, 0 beyond the last band
     wanted : (n,) array [ln(W m-2)], at the mean earth-sun distance
     bounds : two floats [1], of the haze
     haze : (n,) array [1] to fill
     """
     s, room = workspace()
-    log_top = np.log(top)
+    n, log_top = _lanes(len(top)), np.empty(len(top))
+    for b in range(n):
+        log_top[b] = math.log(top[b]) if top[b] > 0 else -math.inf
     for h in range(hours.shape[0]):
         aod = hours[h, AOD]
-        _beam(s, STRIDE, model, log_top, hours[h], room)
+        _beam(s, n, model, log_top, hours[h], room)
         for _ in range(_HAZE_STEPS):
-            for b in range(STRIDE):
+            for b in range(n):
                 s[TOTAL + b] = exp(s[DEPTH + b] - aod * s[SLOPE + b])
             light, fall, bend = 0.0, 0.0, 0.0
-            for b in range(STRIDE):
+            for b in range(n):
                 light += s[TOTAL + b]
                 fall += s[TOTAL + b] * s[SLOPE + b]
                 bend += s[TOTAL + b] * s[SLOPE + b] * s[SLOPE + b]
@@ -133,7 +135,7 @@ def beam_haze(hours: Array, model: Model, top: Array, wanted: Array, bounds: tup
 
 @compiled
 def _cloud_depth(
-    s: Array, n: int, model: Model, top: Array, hour: Array, albedo: Array, clear: float, passed: float, room: Room
+    s: Array, n: int, model: Model, light: Array, hour: Array, albedo: Array, clear: float, passed: float, room: Room
 ) -> float:
     """Return the depth of the cloud that passes a share of the clear light, from the top layer kept in s.
 
@@ -143,15 +145,16 @@ def _cloud_depth(
     """
     if passed >= 1.0 - CLOUD_TOLERANCE:
         return 0.0
-    target, ground, into = 1.0 / max(passed, 1e-3) - 1.0, np.mean(albedo), 1.0 / hour[AIR_MASS]
+    target, ground, into = 1.0 / max(passed, 1e-3) - 1.0, 0.0, 1.0 / hour[AIR_MASS]
+    for each in albedo:
+        ground += each / len(albedo)
     low, high, before, miss_before = 0.0, CLOUD_DEPTH_MAX, 0.0, -target
     # First guess: a line through skies of all kinds, 12 % off at the median.
     now = min(target / max((0.2 - 0.12 * into) - ground * (0.2 - 0.1 * into), 0.01), CLOUD_DEPTH_MAX)
     for step in range(_CLOUD_STEPS):
-        back_to_top(s, n)
-        through(s, n, model, hour, now, 1, room)
+        below(s, n, model, hour, now, room)
         on_ground(s, n, albedo, hour[AIR_MASS])
-        miss = clear / summed(s, n, TOTAL, top) - 1.0 - target
+        miss = clear / summed(s[TOTAL : TOTAL + n], n, light) - 1.0 - target
         if miss > 0:
             high = now
         else:
@@ -200,7 +203,7 @@ def split(
     s, room = workspace()
     few, few_room = workspace()
     n_band, n_few = beam.shape[1], _lanes(len(chosen))
-    n, top, few_top, known_exponent = _lanes(n_band), tops[0], tops[1], math.nan
+    n, above, few_above, known_exponent = _lanes(n_band), tops[0], tops[1], math.nan
     few_albedo = np.empty(len(chosen) if albedo.shape[1] > 1 else 1)
     for h in range(hours.shape[0]):
         dni, dhi, level = light[h, 0], light[h, 1], light[h, 2] * light[h, 3]
@@ -208,13 +211,15 @@ def split(
         if dni > 0:
             start(s, n, models[0], hour, known_exponent)
             known_exponent = hour[EXPONENT]
-            through(s, n, models[0], hour, 0.0, 0, room)
+            top(s, n, models[0], hour, room)
+            below(s, n, models[0], hour, 0.0, room)
             on_ground(s, n, albedo[h], air_mass)
-            straight, clear = summed(s, n, STRAIGHT, top), summed(s, n, TOTAL, top)
+            straight = summed(s[STRAIGHT : STRAIGHT + n], n, above)
+            clear = summed(s[TOTAL : TOTAL + n], n, above)
             share, scale = min(1.0, dni / (straight * light[h, 2])), dni / straight
             for b in range(n_band):
-                direct = s[STRAIGHT + b] * top[b]
-                beam[h, b], diffuse[h, b] = direct * scale, (s[TOTAL + b] * top[b] - direct) * (level * share)
+                direct = s[STRAIGHT + b] * above[b]
+                beam[h, b], diffuse[h, b] = direct * scale, (s[TOTAL + b] * above[b] - direct) * (level * share)
             given = (clear - straight) * level * share
             found[h, 0] = share
         else:
@@ -226,21 +231,21 @@ def split(
                 top_of_few(s, few, chosen)
             else:
                 start(few, n_few, models[1], hour, math.nan)
-                through(few, n_few, models[1], hour, 0.0, 0, few_room)
+                top(few, n_few, models[1], hour, few_room)
+                below(few, n_few, models[1], hour, 0.0, few_room)
                 on_ground(few, n_few, few_albedo, air_mass)
-            clear = summed(few, n_few, TOTAL, few_top)
+            clear = summed(few[TOTAL : TOTAL + n_few], n_few, few_above)
             passed = ((dni * light[h, 3] + dhi) / level - share * clear) / ((1.0 - share) * clear)
-            cloud = _cloud_depth(few, n_few, models[1], few_top, hour, few_albedo, clear, passed, few_room)
-            if dni > 0:
-                back_to_top(s, n)
-            else:
+            cloud = _cloud_depth(few, n_few, models[1], few_above, hour, few_albedo, clear, passed, few_room)
+            if dni <= 0:
                 start(s, n, models[0], hour, known_exponent)
                 known_exponent = hour[EXPONENT]
+                top(s, n, models[0], hour, room)
             if cloud > 0 or dni <= 0:
-                through(s, n, models[0], hour, cloud, 1 if dni > 0 else 0, room)
+                below(s, n, models[0], hour, cloud, room)
                 on_ground(s, n, albedo[h], air_mass)
-            scale = max(dhi - given, 0.0) / summed(s, n, TOTAL, top)
+            scale = max(dhi - given, 0.0) / summed(s[TOTAL : TOTAL + n], n, above)
             for b in range(n_band):
-                diffuse[h, b] += s[TOTAL + b] * top[b] * scale
+                diffuse[h, b] += s[TOTAL + b] * above[b] * scale
             found[h, 1] = cloud
         _scaled_to(diffuse[h], dhi)

@@ -123,7 +123,7 @@ def start(s: Array, n: int, model: Model, hour: Array, known_exponent: float) ->
 
 @compiled
 def _around(
-    table: Array, first: float, path: float, weights: Array, spare: Array, bands: Array, row: int, law: Array
+    table: Array, first: float, path: float, weights: Array, spare: Array, strength: Array, law: Array
 ) -> Array:
     """Return the rows of the six nodes around a path and set their weights; beyond the table the curve itself."""
     place = (math.log(path) - first) / NODE_STEP if path > 0 else -1.0
@@ -138,7 +138,7 @@ def _around(
     weights[:] = 0.0
     weights[0] = 1.0
     for i in range(STRIDE):
-        y = bands[row + i] * path
+        y = strength[i] * path
         spare[i] = law[0] * y / (1.0 + law[1] * y) ** 0.45
     return spare
 
@@ -147,8 +147,9 @@ def _around(
 def gas(s: Array, n: int, model: Model, water_path: float, air_path: float, slant: float, room: Room) -> None:
     """Set the vertical depth of gas in the next layer from its paths down to the layer's foot."""
     bands, v, w = model[0], room[0], room[1]
-    x = _around(model[1], _FIRST_WATER, water_path, v, room[2], bands, _WATER_K, model[3][0])
-    y = _around(model[2], _FIRST_MIXED, air_path, w, room[3], bands, _MIXED_K, model[3][1])
+    wet_k, even_k = bands[_WATER_K : _WATER_K + STRIDE], bands[_MIXED_K : _MIXED_K + STRIDE]
+    x = _around(model[1], _FIRST_WATER, water_path, v, room[2], wet_k, model[3][0])
+    y = _around(model[2], _FIRST_MIXED, air_path, w, room[3], even_k, model[3][1])
     v0, v1, v2, v3, v4, v5 = v[0], v[1], v[2], v[3], v[4], v[5]
     w0, w1, w2, w3, w4, w5 = w[0], w[1], w[2], w[3], w[4], w[5]
     inverse = 1.0 / slant
@@ -282,13 +283,6 @@ def _solve(s: Array, n: int, mu: float) -> None:
 
 
 @compiled
-def _first(s: Array, n: int) -> None:
-    for b in range(n):
-        s[_D1 + b], s[_D2 + b], s[_BEAM + b] = s[_DOWN1 + b], s[_DOWN2 + b], s[_PASSED + b]
-        s[_S11 + b], s[_S12 + b], s[_S22 + b] = s[_R11 + b], s[_R12 + b], s[_R22 + b]
-
-
-@compiled
 def _add(s: Array, n: int) -> None:
     """Add the layer below those joined so far."""
     for b in range(n):
@@ -330,46 +324,50 @@ def on_ground(s: Array, n: int, albedo: Array, air_mass: float) -> None:
 
 
 @compiled
-def through(s: Array, n: int, model: Model, hour: Array, cloud: float, first: int, room: Room) -> None:
-    """Join the layers from the first (0 or 1) to the ground to those above; keep the state below the top one."""
-    bands, fixed, air_mass = model[0], model[4], hour[AIR_MASS]
-    # `column._slants`
-    straight = math.exp(-(1.0 - fixed[_CLOUD_G] * fixed[_CLOUD_G]) * cloud * air_mass)
-    turned = (1.0 - straight) * fixed[_DIFFUSIVITY]
-    water_path, air_path = 0.0, 0.0
-    for i in range(3):
-        slant = air_mass
-        if i > 0:
-            slant = straight * air_mass + (turned * fixed[_CLOUD_PATH] if i == 1 else turned)
-        air = hour[PRESSURE] * fixed[_AIR_SHARE + i]
-        water_path += hour[WATER] * fixed[_WATER_SHARE + i] * slant
-        air_path += air * slant
-        if i < first:
-            continue
-        gas(s, n, model, water_path, air_path, slant, room)
-        _mix(s, n, bands, air, fixed[_HAZE_SHARE + i], cloud if i == 1 else 0.0, fixed)
-        _modes(s, n, air_mass)
-        _solve(s, n, 1.0 / air_mass)
-        if i > 0:
-            _add(s, n)
-        else:
-            _first(s, n)
-            _keep_top(s, n)
+def _layer(
+    s: Array, n: int, model: Model, hour: Array, paths: tuple[float, float], slant: float, air: float,
+    haze_share: float, cloud: float, room: Room,
+) -> None:  # fmt: skip
+    """Set what one layer does to light, from the paths of vapour and of other gas down to its foot."""
+    gas(s, n, model, paths[0], paths[1], slant, room)
+    _mix(s, n, model[0], air, haze_share, cloud, model[4])
+    _modes(s, n, hour[AIR_MASS])
+    _solve(s, n, 1.0 / hour[AIR_MASS])
 
 
 @compiled
-def _keep_top(s: Array, n: int) -> None:
+def top(s: Array, n: int, model: Model, hour: Array, room: Room) -> None:
+    """Set and keep what the top layer does to light; no cloud lies in it."""
+    fixed, air_mass = model[4], hour[AIR_MASS]
+    air = hour[PRESSURE] * fixed[_AIR_SHARE]
+    paths = (hour[WATER] * fixed[_WATER_SHARE] * air_mass, air * air_mass)
+    _layer(s, n, model, hour, paths, air_mass, air, fixed[_HAZE_SHARE], 0.0, room)
     for b in range(n):
-        s[_K1 + b], s[_K2 + b], s[_K3 + b], s[_K4 + b] = s[_SUM_PATH + b], s[_SUM_DEPTH + b], s[_BEAM + b], s[_D1 + b]
-        s[_K5 + b], s[_K6 + b], s[_K7 + b], s[_K8 + b] = s[_D2 + b], s[_S11 + b], s[_S12 + b], s[_S22 + b]
+        s[_K1 + b], s[_K2 + b], s[_K3 + b] = s[_SUM_PATH + b], s[_SUM_DEPTH + b], s[_PASSED + b]
+        s[_K4 + b], s[_K5 + b] = s[_DOWN1 + b], s[_DOWN2 + b]
+        s[_K6 + b], s[_K7 + b], s[_K8 + b] = s[_R11 + b], s[_R12 + b], s[_R22 + b]
 
 
 @compiled
-def back_to_top(s: Array, n: int) -> None:
-    """Take away all layers but the top one."""
+def below(s: Array, n: int, model: Model, hour: Array, cloud: float, room: Room) -> None:
+    """Join the layers below to the top one as it was kept, a cloud in the first of them."""
     for b in range(n):
         s[_SUM_PATH + b], s[_SUM_DEPTH + b], s[_BEAM + b], s[_D1 + b] = s[_K1 + b], s[_K2 + b], s[_K3 + b], s[_K4 + b]
         s[_D2 + b], s[_S11 + b], s[_S12 + b], s[_S22 + b] = s[_K5 + b], s[_K6 + b], s[_K7 + b], s[_K8 + b]
+    fixed, air_mass = model[4], hour[AIR_MASS]
+    # `column._slants`
+    straight = math.exp(-(1.0 - fixed[_CLOUD_G] * fixed[_CLOUD_G]) * cloud * air_mass)
+    turned = (1.0 - straight) * fixed[_DIFFUSIVITY]
+    water_path = hour[WATER] * fixed[_WATER_SHARE] * air_mass
+    air_path = hour[PRESSURE] * fixed[_AIR_SHARE] * air_mass
+    for i in range(1, 3):
+        slant = straight * air_mass + (turned * fixed[_CLOUD_PATH] if i == 1 else turned)
+        air = hour[PRESSURE] * fixed[_AIR_SHARE + i]
+        water_path += hour[WATER] * fixed[_WATER_SHARE + i] * slant
+        air_path += air * slant
+        drops = cloud if i == 1 else 0.0
+        _layer(s, n, model, hour, (water_path, air_path), slant, air, fixed[_HAZE_SHARE + i], drops, room)
+        _add(s, n)
 
 
 @compiled
@@ -389,12 +387,12 @@ def workspace() -> tuple[Array, Room]:
 
 
 @compiled
-def summed(s: Array, n: int, row: int, top: Array) -> float:
-    """Return the sum of a row times what comes from above (n,), four at a time."""
+def summed(row: Array, n: int, weights: Array) -> float:
+    """Return the sum of a row times weights (n,), four at a time."""
     a, b, c, d = 0.0, 0.0, 0.0, 0.0
     for i in range(0, n, 4):
-        a += s[row + i] * top[i]
-        b += s[row + i + 1] * top[i + 1]
-        c += s[row + i + 2] * top[i + 2]
-        d += s[row + i + 3] * top[i + 3]
+        a += row[i] * weights[i]
+        b += row[i + 1] * weights[i + 1]
+        c += row[i + 2] * weights[i + 2]
+        d += row[i + 3] * weights[i + 3]
     return (a + b) + (c + d)
