@@ -13,7 +13,7 @@ import matplotlib as mpl
 from matplotlib.axes import Axes
 from matplotlib.figure import Figure
 from matplotlib.font_manager import FontProperties
-from matplotlib.textpath import TextPath
+from matplotlib.textpath import text_to_path
 
 from yieldsim.report.marks import Mark, spread
 
@@ -53,9 +53,8 @@ def to_bytes(figure: Figure, suffix: str, name: str) -> bytes:
 def text_width(texts: Iterable[str], size: float = SMALL) -> float:
     """Return the width of the widest of some texts in the font of the pictures [in]; ``size`` in points."""
     font = FontProperties(size=size)
-    # A dollar sign would start a formula here; another capital is as wide.
-    paths = (TextPath((0, 0), text.replace("$", "S"), prop=font) for text in set(texts) if text.strip())
-    return max((float(path.get_extents().x1) for path in paths), default=0.0) / 72
+    widths = (text_to_path.get_text_width_height_descent(text, font, ismath=False)[0] for text in set(texts))
+    return float(max(widths, default=0.0)) / 72
 
 
 def panels(count: int, columns: int, size: tuple[float, float], margins: Margins) -> tuple[Figure, list[Axes]]:
