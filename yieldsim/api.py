@@ -27,20 +27,21 @@ import platform
 import sys
 import time
 from collections.abc import Iterator, Mapping, Sequence
+from contextlib import nullcontext
 from dataclasses import replace
 from datetime import UTC, datetime
 from difflib import get_close_matches
 from importlib import metadata
 from itertools import combinations
 from pathlib import Path
-from typing import Any
+from typing import TYPE_CHECKING, Any
 
 import numpy as np
 import pandas as pd
 import xarray as xr
 
 import yieldsim
-from yieldsim import checks, config, readers, report, screen
+from yieldsim import config, readers, report, screen
 from yieldsim.config import library
 from yieldsim.config.many import Cell
 from yieldsim.device.stack import gap_label
@@ -54,6 +55,7 @@ from yieldsim.study import (
     hourly,
     pairs,
     portfolio,
+    ready,
     region,
     run,
     store,
@@ -61,9 +63,13 @@ from yieldsim.study import (
     worth,
 )
 from yieldsim.study.annual import Ratings
+from yieldsim.study.hands import Hands
 from yieldsim.study.plan import ColumnsPlan, Row, SitePlan, StudyPlan
-from yieldsim.study.result import StudyResult, by_hour_table, ideal_names, records, responses_table
+from yieldsim.study.result import StudyResult, ideal_names, records, responses_table
 from yieldsim.weather import Weather
+
+if TYPE_CHECKING:
+    from yieldsim import checks
 
 _VERSIONS_OF = ("numpy", "scipy", "pandas", "xarray", "pvlib", "numba", "h5py", "h5netcdf", "matplotlib", "pydantic")
 
@@ -128,7 +134,7 @@ def run_study(
     plan: StudyPlan,
     out: str | Path | None = None,
     *,
-    workers: int = 1,
+    workers: int | Hands = 1,
     cluster: str | None = None,
     fresh: bool = False,
     progress: run.Progress | None = None,
@@ -139,7 +145,7 @@ def run_study(
     ----------
     plan : StudyPlan, from `load_study`
     out : folder of the results; ``outputs/<study>`` under the current folder unless given
-    workers : int, processes that share the sites
+    workers : int, processes that share the sites and the pictures; 1 = this one alone; or such processes, begun before
     cluster : str or None, ``tcp://HOST:PORT`` of a Dask scheduler whose workers share the sites instead
     fresh : compute again what an earlier run into the same folder finished
     progress : called with (what, steps finished, steps in all)
@@ -161,28 +167,34 @@ def run_study(
         folder.mkdir(parents=True, exist_ok=True)
     except OSError as error:
         raise PlaceError(f"cannot make the folder {folder}: {error.strerror}") from error
-    seconds = run.site_pieces(
-        plan, load_weather, folder, workers=workers, cluster=cluster, fresh=fresh, progress=progress
-    )
-    details: dict[str, Any] = {
-        "study": plan.name,
-        "yieldsim": yieldsim.__version__,
-        "started": start.strftime("%Y-%m-%dT%H:%M:%SZ"),
-        "python": platform.python_version(),
-        "platform": platform.platform(),
-        "versions": {name: metadata.version(name) for name in _VERSIONS_OF},
-        "inputs": {file.shown: file.sha256 for site in plan.sites for file in site.weather} | dict(plan.inputs),
-        "absorbers": [f"{name}: {finding}" for name, finding in plan.findings],
-        "seconds": {name: round(value, 3) for name, value in seconds.items()},
-        "folder": plan.folder,
-        "config": dict(plan.resolved),
-    }
-    result = _gathered(plan, folder, details)
-    if progress is not None:
-        progress("report", len(plan.sites), len(plan.sites))
-    report.write(result, folder, plan.keep)
-    details |= {"seconds_in_all": round(time.perf_counter() - clock, 3), "peak_memory_mb": peak_memory_mb()}
-    store.write_json(folder / "run.json", details)
+    own = Hands(workers) if isinstance(workers, int) and workers > 1 else nullcontext()
+    with own as made:
+        hands = workers if isinstance(workers, Hands) else made
+        if hands is not None:
+            hands.begin(ready.power, plan.absorbers, load_weather)
+            report.prepare()  # while the others compile
+        seconds = run.site_pieces(
+            plan, load_weather, folder, hands=hands, cluster=cluster, fresh=fresh, progress=progress
+        )
+        details: dict[str, Any] = {
+            "study": plan.name,
+            "yieldsim": yieldsim.__version__,
+            "started": start.strftime("%Y-%m-%dT%H:%M:%SZ"),
+            "python": platform.python_version(),
+            "platform": platform.platform(),
+            "versions": {name: metadata.version(name) for name in _VERSIONS_OF},
+            "inputs": {file.shown: file.sha256 for site in plan.sites for file in site.weather} | dict(plan.inputs),
+            "absorbers": [f"{name}: {finding}" for name, finding in plan.findings],
+            "seconds": {name: round(value, 3) for name, value in seconds.items()},
+            "folder": plan.folder,
+            "config": dict(plan.resolved),
+        }
+        result = _gathered(plan, folder, details)
+        if progress is not None:
+            progress("report", len(plan.sites), len(plan.sites))
+        report.write(result, folder, plan.keep, hands)
+        details |= {"seconds_in_all": round(time.perf_counter() - clock, 3), "peak_memory_mb": peak_memory_mb()}
+        store.write_json(folder / "run.json", details)
     return replace(result, run=details)
 
 
@@ -195,10 +207,7 @@ def _gathered(plan: StudyPlan, folder: Path, details: dict[str, Any]) -> StudyRe
         return pd.concat(parts, ignore_index=True) if parts else None
 
     standard = standard_table(plan)
-    rated = dict(zip(standard["absorber"], Ratings.of(plan.absorbers).terminals, strict=True))
     names = [site.name for site in plan.sites]
-    kept = store.open_hourly(folder, names if "hourly" in plan.keep else [])
-    by_hour = [by_hour_table({name: hours}, rated) for name, hours in kept]
     paired = frame("gap_pairs", [] if plan.gap_pairs is None else pairs.standard_rows(plan.gap_pairs))
     standing = [] if paired is None else pairs.material_rows(records(paired), paired_materials(plan))
     films = generation.rows(plan.absorbers, plan.films)
@@ -223,7 +232,7 @@ def _gathered(plan: StudyPlan, folder: Path, details: dict[str, Any]) -> StudyRe
         if region.is_region(plan)
         else None,
         responses=responses_table(plan.absorbers),
-        by_hour=pd.concat(by_hour, ignore_index=True) if by_hour else None,
+        by_hour=frame("by_hour"),
         **more,
         spectra=store.open_spectra(folder, names),
         run=details,
@@ -336,6 +345,8 @@ def verify() -> Iterator[checks.Outcome]:
     published = {
         entry.name: {name: (found.value, found.source) for name, found in entry.published.items()} for entry in entries
     }
+    from yieldsim import checks  # late: solvers that only this needs
+
     return checks.outcomes(absorbers, published)
 
 

@@ -10,7 +10,7 @@ import pytest
 
 from yieldsim import api
 from yieldsim.cli import main
-from yieldsim.commands.run import departure, differences, summary, workers
+from yieldsim.commands.run import cores, departure, differences, summary, workers
 from yieldsim.config import load
 from yieldsim.errors import PlaceError
 from yieldsim.report import answer
@@ -113,8 +113,8 @@ def test_run_hands_its_options_to_the_engine(engine, capsys):
     said = capsys.readouterr()
     assert main(["run", "x.yaml", "--out", "there", "--workers", "2", "--fresh", "--quiet"]) == 0
     (_, first, one), (_, second, two) = engine
-    assert (first, one["workers"], one["fresh"]) == (Path("outputs/two-coasts"), 1, False)
-    assert (second, two["workers"], two["fresh"]) == (Path("there"), 2, True)
+    assert (first, one["workers"].count, one["fresh"]) == (Path("outputs/two-coasts"), cores(), False)
+    assert (second, two["workers"].count, two["fresh"]) == (Path("there"), 2, True)
     assert capsys.readouterr() == ("", "")  # the quiet run says nothing
     assert said.err == ""  # no progress where nobody watches
     assert "Saltmarsh Point" in said.out

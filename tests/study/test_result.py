@@ -22,7 +22,7 @@ def _hourly(power, utc_offset_h=0.0, start="2023-01-01T00:00"):
 
 def test_hours_of_a_year_add_up_to_its_yield():
     power = np.maximum(0, np.sin(np.arange(8760) / 24 * 2 * np.pi)) * 150
-    table = by_hour_table({"One": _hourly(power)}, {"a": 200.0})
+    table = by_hour_table("One", _hourly(power), {"a": 200.0})
     # sums of float64: rounding only
     assert table["specific_yield_kwh_kwp"].sum() == pytest.approx(power.sum() / 200.0, rel=1e-12)
     assert table["month"].between(1, 12).all()
@@ -33,7 +33,7 @@ def test_hours_of_a_year_add_up_to_its_yield():
 def test_an_hour_is_counted_at_local_standard_time(offset, month, hour):
     power = np.zeros(24)
     power[12] = 100.0
-    (row,) = records(by_hour_table({"One": _hourly(power, offset)}, {"a": 100.0}))
+    (row,) = records(by_hour_table("One", _hourly(power, offset), {"a": 100.0}))
     assert (row["month"], row["hour"]) == (month, hour)
     assert row["specific_yield_kwh_kwp"] == 1.0
 

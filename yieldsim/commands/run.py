@@ -3,10 +3,12 @@
 from __future__ import annotations
 
 import argparse
+import os
 import platform
 import re
 import sys
 from collections.abc import Mapping, Sequence
+from contextlib import nullcontext
 from pathlib import Path
 from typing import TYPE_CHECKING, Any, cast
 
@@ -15,6 +17,7 @@ from yieldsim.commands._terminal import Progress, bold, cut, plain, table, wrapp
 from yieldsim.errors import InputError, Problem
 
 if TYPE_CHECKING:
+    from yieldsim.study.hands import Hands
     from yieldsim.study.plan import StudyPlan
 
 EXAMPLE = """example:
@@ -38,12 +41,24 @@ def arguments(parser: argparse.ArgumentParser) -> None:
         help="repeat a finished run instead, and say what differs",
     )
     parser.add_argument("--out", metavar="DIR", type=Path, help="folder of the results (default: outputs/STUDY)")
-    parser.add_argument("--workers", metavar="N", type=workers, default=1, help="processes that share the sites")
+    parser.add_argument(
+        "--workers",
+        metavar="N",
+        type=workers,
+        default=cores(),
+        help="processes that share the work (default here: %(default)s)",
+    )
     parser.add_argument(
         "--cluster", metavar="tcp://HOST:PORT", type=cluster, help="Dask scheduler whose workers share the sites"
     )
     parser.add_argument("--fresh", action="store_true", help="compute again what an earlier run finished")
     parser.add_argument("--quiet", action="store_true", help="no progress and no summary")
+
+
+def cores() -> int:
+    """Return how many processes share the work unless told: the cores at hand, but 4 at most."""
+    allowed = len(os.sched_getaffinity(0)) if hasattr(os, "sched_getaffinity") else os.cpu_count() or 1
+    return min(allowed, 4)
 
 
 def workers(text: str) -> int:
@@ -62,18 +77,26 @@ def cluster(text: str) -> str:
 
 def run(options: argparse.Namespace) -> int:
     """Compute the study, show progress, print the summary."""
-    from yieldsim import api
-    from yieldsim.study.store import file_stem
-
     if (options.study is None) == (options.record is None):
         found = "neither a study nor --from" if options.study is None else "a study and --from"
         raise InputError(Problem("", 0, "command line", found, "either STUDY.yaml or --from run.json"))
+    from yieldsim.study.hands import Hands
+
+    alone = options.workers == 1 or options.cluster is not None
+    with nullcontext() if alone else Hands(options.workers) as hands:  # at work while the rest is imported
+        return _run(options, hands)
+
+
+def _run(options: argparse.Namespace, hands: Hands | None) -> int:
+    from yieldsim import api
+    from yieldsim.study.store import file_stem
+
     plan = api.load_study(options.study) if options.record is None else _repeated(options.record)
     out = options.out if options.out is not None else Path("outputs", file_stem(plan.name))
     progress = Progress(options.quiet)
     try:
         result = api.run_study(
-            plan, out, workers=options.workers, cluster=options.cluster, fresh=options.fresh, progress=progress
+            plan, out, workers=hands or 1, cluster=options.cluster, fresh=options.fresh, progress=progress
         )
     finally:
         progress.close()

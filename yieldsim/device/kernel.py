@@ -8,25 +8,14 @@ this file changes; the limits of steps it takes over from `diode` and `series` a
 from __future__ import annotations
 
 import math
-from collections.abc import Callable
-from typing import Any, TypeVar, cast
 
 import numpy as np
-from numba import njit
 from numpy.typing import NDArray
 
+from yieldsim.compiled import compiled, inner
 from yieldsim.device import diode, series
 
 Array = NDArray[np.float64]
-
-_Function = TypeVar("_Function", bound=Callable[..., Any])
-_OPTIONS: dict[str, Any] = {"error_model": "numpy", "cache": True, "nogil": True}
-
-
-def _compiled(function: _Function) -> _Function:
-    """Compile a function when it is first called; kept on disk for the next process."""
-    return cast(_Function, njit(**_OPTIONS)(function))
-
 
 _NEWTON_STEPS, _ROOT_STEPS = diode.NEWTON_STEPS, diode.ROOT_STEPS
 _SETTLED, _VOLTAGE_SETTLED, _NO_VOLTAGE = diode.SETTLED, diode.VOLTAGE_SETTLED, diode.NO_VOLTAGE
@@ -37,19 +26,19 @@ CONSTANTS = 4
 _RS, _SHUNT, _CHI, _BUILT_IN = range(CONSTANTS)
 
 
-@_compiled
+@compiled
 def _expm1(x: float) -> float:
     """Return exp(x) - 1; the library's own takes three times as long as exp and is needed near 0 only."""
     return math.exp(x) - 1 if abs(x) > 1 else math.expm1(x)
 
 
-@_compiled
+@compiled
 def _log1p(x: float) -> float:
     """Return ln(1 + x), likewise."""
     return math.log(1 + x) if x > 1 else math.log1p(x)
 
 
-@_compiled
+@inner
 def _derivatives(jl: float, j0: float, a: float, constants: Array, vj: float) -> tuple[float, float, float]:
     """`diode.derivatives`."""
     growth = _expm1(vj / a)
@@ -63,7 +52,7 @@ def _derivatives(jl: float, j0: float, a: float, constants: Array, vj: float) ->
     return current, slope, bend
 
 
-@_compiled
+@inner
 def _upper_bound(jl: float, j0: float, a: float, constants: Array) -> float:
     """`diode._upper_bound`."""
     bound: float = a * _log1p(jl / j0)
@@ -74,7 +63,7 @@ def _upper_bound(jl: float, j0: float, a: float, constants: Array) -> float:
     return bound
 
 
-@_compiled
+@inner
 def _start(jl: float, j0: float, a: float) -> float:
     """`diode.power_point_start`."""
     target = 1 + _log1p(jl / j0)
@@ -84,7 +73,7 @@ def _start(jl: float, j0: float, a: float) -> float:
     return a * (w - 1)
 
 
-@_compiled
+@inner
 def _point(
     jl: float, j0: float, a: float, constants: Array, start: float, reward: float, emission: float, kt: float
 ) -> float:
@@ -117,7 +106,7 @@ def _point(
     return vj
 
 
-@_compiled
+@inner
 def _voltage_at(jl: float, j0: float, a: float, constants: Array, current: float, guess: float) -> float:
     """`diode.voltage_at`; a NaN guess is none."""
     spare = jl - current
@@ -135,7 +124,7 @@ def _voltage_at(jl: float, j0: float, a: float, constants: Array, current: float
     return vj
 
 
-@_compiled
+@inner
 def _state(
     jl: Array, j0: Array, a: Array, constants: Array, emission: Array, thermal: float, current: float, state: Array
 ) -> None:
@@ -159,7 +148,7 @@ def _state(
             gain_bend = gain_slope / thermal
 
 
-@_compiled
+@inner
 def _first_current(jl: Array, j0: Array, a: Array, constants: Array, total: float, state: Array) -> float:
     """`series._start`; leaves no guess in state."""
     whole = 0.0
@@ -175,7 +164,7 @@ def _first_current(jl: Array, j0: Array, a: Array, constants: Array, total: floa
     return current
 
 
-@_compiled
+@inner
 def _newton_step(state: Array, j0: Array, a: Array, back: float) -> tuple[float, float]:
     """`series._newton_step`: change of the current and move of the limiting junction."""
     limiting = 0
@@ -189,7 +178,7 @@ def _newton_step(state: Array, j0: Array, a: Array, back: float) -> tuple[float,
     return -(grown + (slope - growing / width) * move) / (slope * fall), move
 
 
-@_compiled
+@inner
 def _resistance(constants: Array) -> float:
     total = 0.0
     for i in range(len(constants)):
@@ -197,7 +186,7 @@ def _resistance(constants: Array) -> float:
     return total
 
 
-@_compiled
+@inner
 def _sum(rows: Array, row: int) -> float:
     """Return the sum of a row; a loop compiles several times faster than an array expression."""
     total = 0.0
@@ -206,7 +195,7 @@ def _sum(rows: Array, row: int) -> float:
     return total
 
 
-@_compiled
+@inner
 def _series(
     jl: Array, j0: Array, a: Array, constants: Array, emission: Array, thermal: float, total: float, state: Array
 ) -> float:
@@ -241,7 +230,7 @@ def _series(
     return float(now * (_sum(state, 0) - now * series_resistance))
 
 
-@_compiled
+@inner
 def _separate(jl: Array, j0: Array, a: Array, constants: Array, emission: Array, thermal: float, state: Array) -> float:
     """`series.separate_power` of one hour; rows of state: voltage, earning per current."""
     n, coupled = len(jl), False
@@ -268,7 +257,7 @@ def _separate(jl: Array, j0: Array, a: Array, constants: Array, emission: Array,
     return power
 
 
-@_compiled
+@compiled
 def stack_power(
     photocurrent: Array,
     saturation: Array,

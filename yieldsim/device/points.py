@@ -10,9 +10,9 @@ from __future__ import annotations
 import math
 
 import numpy as np
-from numba import njit
 from numpy.typing import NDArray
 
+from yieldsim.compiled import compiled, inner
 from yieldsim.device import diode
 
 Array = NDArray[np.float64]
@@ -31,11 +31,10 @@ _JL, _J0, _A, _INVERSE_A, _TARGET, _W, _LOW, _HIGH, _VJ, _ACTIVE, _CURRENT = (_C
 _LIT, _BLANK = _CHUNK * 11, _CHUNK * 12
 _N_ROW = 13
 
-# What is compiled calls nothing compiled elsewhere: numba's cache looks at this file only. No fast-math flags: fresh
-# and cached code would give other last digits.
+# What is compiled calls nothing compiled elsewhere: numba's cache looks at this file only.
 
 
-@njit(error_model="numpy", cache=True, nogil=True)
+@compiled
 def _expm1(x: float) -> float:
     """Return exp(x) - 1 for |x| <= 700 to 1e-13 of its value, also near 0."""
     x = min(max(x, -_MOST), _MOST)
@@ -51,7 +50,7 @@ def _expm1(x: float) -> float:
     return small * power + (power - 1.0)
 
 
-@njit(error_model="numpy", cache=True, nogil=True)
+@compiled
 def _log(x: float) -> float:
     """Return ln(x) for normal x > 0: within 3e-9, and to rounding near 1, where steps end."""
     bits = np.float64(x).view(np.int64)
@@ -65,7 +64,7 @@ def _log(x: float) -> float:
     return power * _LN2_HIGH + (2.0 * s * series + power * _LN2_LOW)
 
 
-@njit(error_model="numpy", cache=True, nogil=True)
+@inner
 def _begin(s: Array, n: int, constants: Array) -> None:
     """Set the bracket and the first voltage: `diode._upper_bound`, `diode.power_point_start`."""
     shunt, recombination, built_in = constants[1], constants[2], constants[3]
@@ -90,7 +89,7 @@ def _begin(s: Array, n: int, constants: Array) -> None:
         s[_VJ + h] = start if start < 0.99 * high else high * 0.5
 
 
-@njit(error_model="numpy", cache=True, nogil=True)
+@inner
 def _step(s: Array, n: int, constants: Array) -> int:
     """Take one step of `diode.rewarded_point`, nothing rewarded; return how many hours have not settled."""
     resistance, shunt, recombination, built_in = constants[0], constants[1], constants[2], constants[3]
@@ -125,7 +124,7 @@ def _step(s: Array, n: int, constants: Array) -> int:
     return active
 
 
-@njit(error_model="numpy", cache=True, nogil=True)
+@compiled
 def _exp(x: float) -> float:
     """Return exp(x) for |x| <= 700 to 1e-13 of its value: the whole power times what is left within +-ln(2)/2."""
     x = min(max(x, -_MOST), _MOST)
@@ -135,7 +134,7 @@ def _exp(x: float) -> float:
     return (_expm1((x - k * _LN2_HIGH) - k * _LN2_LOW) + 1.0) * power
 
 
-@njit(error_model="numpy", cache=True, nogil=True)
+@inner
 def _chunk(s: Array, n: int, constants: Array, power: Array) -> None:
     """Set the power of a chunk of hours from its rows of generated and saturation current and thermal voltage."""
     for h in range(n):
@@ -160,7 +159,7 @@ def _chunk(s: Array, n: int, constants: Array, power: Array) -> None:
         power[h] = found if s[_LIT + h] > 0 else s[_BLANK + h]
 
 
-@njit(error_model="numpy", cache=True, nogil=True)
+@compiled
 def single_power(photocurrent: Array, saturation: Array, thermal: Array, constants: Array) -> Array:
     """Return the power of a junction in each hour; 0 in the dark, NaN where an input is NaN.
 
@@ -184,7 +183,7 @@ def single_power(photocurrent: Array, saturation: Array, thermal: Array, constan
     return power
 
 
-@njit(error_model="numpy", cache=True, nogil=True)
+@compiled
 def junction_power(
     photocurrent: Array, temperature: Array, log_saturation: Array, hot: float, per_step: float, thermal: float,
     constants: Array,

@@ -10,6 +10,7 @@ import math
 import numpy as np
 from numpy.typing import NDArray
 
+from yieldsim.compiled import compiled, inner
 from yieldsim.sky.kernel_layer import (
     AIR_MASS,
     AOD,
@@ -29,7 +30,6 @@ from yieldsim.sky.kernel_layer import (
     Model,
     Room,
     below,
-    compiled,
     exp,
     gas,
     on_ground,
@@ -44,7 +44,7 @@ Array = NDArray[np.float64]
 
 # numba keeps compiled code until the function's own file changes and does not look at the files it calls. So this file
 # must change whenever kernel_layer.py does: a test compares the hash.
-LAYER_SHA256 = "cda440e60771593ab0c9a8b336ea9e32e80e41aa3040f6a765ba54fef8c2949a"
+LAYER_SHA256 = "59fc25c804b4a3d3f78f6aa3fb0b3deaaa3af580cc425e909baf107f889b04cc"
 
 CLOUD_DEPTH_MAX = 300.0  # the thickest clouds pass about 2 %; beyond it nothing measurable changes
 CLOUD_TOLERANCE = 2e-4  # of transmittance: moves no band over broadband by more than 0.01 %
@@ -53,7 +53,7 @@ _CHORD = 0.003  # of 1/K: the chord from there ends within the tolerance
 _HAZE_STEPS, _HAZE_SETTLED = 12, 1e-5  # the third power of the last step is left
 
 
-@compiled
+@inner
 def _lanes(n_band: int) -> int:
     return (n_band + LANES - 1) // LANES * LANES
 
@@ -84,7 +84,7 @@ def transmit(hours: Array, albedo: Array, model: Model, beam: Array, total: Arra
             beam[h, b], total[h, b] = s[STRAIGHT + b], s[TOTAL + b]
 
 
-@compiled
+@inner
 def _beam(s: Array, n: int, model: Model, log_top: Array, hour: Array, room: Room) -> None:
     """Set the logarithm of the hazeless beam and haze's depth along it per AOD."""
     bands, air_mass = model[0], hour[AIR_MASS]
@@ -133,7 +133,7 @@ def beam_haze(hours: Array, model: Model, top: Array, wanted: Array, bounds: tup
         haze[h] = aod
 
 
-@compiled
+@inner
 def _cloud_depth(
     s: Array, n: int, model: Model, light: Array, hour: Array, albedo: Array, clear: float, passed: float, room: Room
 ) -> float:
@@ -171,7 +171,7 @@ def _cloud_depth(
     return float(now)
 
 
-@compiled
+@inner
 def _scaled_to(diffuse: Array, dhi: float) -> None:
     total = 0.0
     for b in range(len(diffuse)):

@@ -8,13 +8,11 @@ once. Intensities are scaled by the roots of their streams' slants, which makes 
 from __future__ import annotations
 
 import math
-from collections.abc import Callable
-from typing import Any, TypeVar, cast
 
 import numpy as np
-from numba import njit
 from numpy.typing import NDArray
 
+from yieldsim.compiled import compiled, inner
 from yieldsim.sky.layer import RESONANCE, STREAMS
 
 Array = NDArray[np.float64]
@@ -23,18 +21,6 @@ Array = NDArray[np.float64]
 #: their curves of growth (2, 2), shares of air, water and haze by layer and the column's other constants (14,).
 Model = tuple[Array, Array, Array, Array, Array]
 Room = tuple[Array, Array, Array, Array]  # weights of nodes and spare rows, for both gases
-
-_Function = TypeVar("_Function", bound=Callable[..., Any])
-
-
-def compiled(function: _Function) -> _Function:
-    """Compile a function when it is first called; kept on disk for the next process until its file changes.
-
-    No fast-math flags: with them, code just compiled and code read from the cache gave other last digits, and two runs
-    other bytes. The loops are vectorised all the same.
-    """
-    return cast(_Function, njit(error_model="numpy", cache=True, nogil=True)(function))
-
 
 _M1, _M2 = STREAMS
 _S1, _S2 = math.sqrt(_M1), math.sqrt(_M2)
@@ -105,7 +91,7 @@ def exp(x: float) -> float:
     return ((1.0 + r) + r2 * (low + r4 * high)) * np.int64(power).view(np.float64)
 
 
-@compiled
+@inner
 def start(s: Array, n: int, model: Model, hour: Array, known_exponent: float) -> None:
     """Begin a column: haze and the depth of ozone along the beam; nothing above yet."""
     bands = model[0]
@@ -121,7 +107,7 @@ def start(s: Array, n: int, model: Model, hour: Array, known_exponent: float) ->
         s[_SUM_DEPTH + b] = 0.0
 
 
-@compiled
+@inner
 def _around(
     table: Array, first: float, path: float, weights: Array, spare: Array, strength: Array, law: Array
 ) -> Array:
@@ -143,7 +129,7 @@ def _around(
     return spare
 
 
-@compiled
+@inner
 def gas(s: Array, n: int, model: Model, water_path: float, air_path: float, slant: float, room: Room) -> None:
     """Set the vertical depth of gas in the next layer from its paths down to the layer's foot."""
     bands, v, w = model[0], room[0], room[1]
@@ -162,7 +148,7 @@ def gas(s: Array, n: int, model: Model, water_path: float, air_path: float, slan
         s[_SUM_PATH + b] = path
 
 
-@compiled
+@inner
 def _mix(s: Array, n: int, bands: Array, air_depth: float, haze_share: float, cloud: float, fixed: Array) -> None:
     """Mix a layer, cut its phase function by delta-M: depth, and half the albedo times each moment."""
     cg, moment, open_sky = fixed[_CLOUD_G], fixed[_RAYLEIGH_MOMENT], fixed[_OPEN_SKY]
@@ -185,7 +171,7 @@ def _mix(s: Array, n: int, bands: Array, air_depth: float, haze_share: float, cl
         s[_W3 + b] = 7.0 * (h3 + c * cg3 - peak) * inverse
 
 
-@compiled
+@inner
 def _modes(s: Array, n: int, into: float) -> None:
     """Set the layer's matrices for sum (P) and difference (N) of both hemispheres, the roots of N P, what fades."""
     for b in range(n):
@@ -210,7 +196,7 @@ def _modes(s: Array, n: int, into: float) -> None:
         s[_PASSED + b] = exp(-into * s[_TAU + b])
 
 
-@compiled
+@inner
 def _solve(s: Array, n: int, mu: float) -> None:
     """Set what the layer throws back (R) and lets through (Q) of diffuse light, and makes of the beam."""
     into, square = 1.0 / mu, 1.0 / (mu * mu)
@@ -282,7 +268,7 @@ def _solve(s: Array, n: int, mu: float) -> None:
         s[_UP2 + b] = high_b - (r12 * low_a + r22 * low_b) - (q12 * lit_a + q22 * lit_b)
 
 
-@compiled
+@inner
 def _add(s: Array, n: int) -> None:
     """Add the layer below those joined so far."""
     for b in range(n):
@@ -305,7 +291,7 @@ def _add(s: Array, n: int) -> None:
         s[_BEAM + b] = beam * s[_PASSED + b]
 
 
-@compiled
+@inner
 def on_ground(s: Array, n: int, albedo: Array, air_mass: float) -> None:
     """Set the transmittance of all light and of the beam, the ground's throw to and fro in it."""
     if len(albedo) == 1:
@@ -323,7 +309,7 @@ def on_ground(s: Array, n: int, albedo: Array, air_mass: float) -> None:
         s[TOTAL + b] = max(down * exp(-s[OZONE + b]) / (1.0 - s[GROUND + b] * back), s[STRAIGHT + b])
 
 
-@compiled
+@inner
 def _layer(
     s: Array, n: int, model: Model, hour: Array, paths: tuple[float, float], slant: float, air: float,
     haze_share: float, cloud: float, room: Room,
@@ -335,7 +321,7 @@ def _layer(
     _solve(s, n, 1.0 / hour[AIR_MASS])
 
 
-@compiled
+@inner
 def top(s: Array, n: int, model: Model, hour: Array, room: Room) -> None:
     """Set and keep what the top layer does to light; no cloud lies in it."""
     fixed, air_mass = model[4], hour[AIR_MASS]
@@ -348,7 +334,7 @@ def top(s: Array, n: int, model: Model, hour: Array, room: Room) -> None:
         s[_K6 + b], s[_K7 + b], s[_K8 + b] = s[_R11 + b], s[_R12 + b], s[_R22 + b]
 
 
-@compiled
+@inner
 def below(s: Array, n: int, model: Model, hour: Array, cloud: float, room: Room) -> None:
     """Join the layers below to the top one as it was kept, a cloud in the first of them."""
     for b in range(n):
@@ -370,7 +356,7 @@ def below(s: Array, n: int, model: Model, hour: Array, cloud: float, room: Room)
         _add(s, n)
 
 
-@compiled
+@inner
 def top_of_few(s: Array, few: Array, chosen: NDArray[np.intp]) -> None:
     """Copy the top layer and what the air holds from all bands to a few."""
     for i, b in enumerate(chosen):
@@ -380,13 +366,13 @@ def top_of_few(s: Array, few: Array, chosen: NDArray[np.intp]) -> None:
         few[TOTAL + i] = s[TOTAL + b]
 
 
-@compiled
+@inner
 def workspace() -> tuple[Array, Room]:
     """Return scratch memory and room for the curves of growth."""
     return np.zeros(N_SCRATCH * STRIDE), (np.empty(6), np.empty(6), np.zeros(6 * STRIDE), np.zeros(6 * STRIDE))
 
 
-@compiled
+@inner
 def summed(row: Array, n: int, weights: Array) -> float:
     """Return the sum of a row times weights (n,), four at a time."""
     a, b, c, d = 0.0, 0.0, 0.0, 0.0

@@ -6,9 +6,10 @@ from collections.abc import Iterable, Mapping, Sequence
 from dataclasses import dataclass, field
 from datetime import UTC, datetime
 from pathlib import Path
-from typing import TYPE_CHECKING, Any
+from typing import Any
 
 import numpy as np
+import xarray as xr
 
 import yieldsim
 from yieldsim.device.stack import Absorber
@@ -28,10 +29,8 @@ from yieldsim.study.hourly import (
 from yieldsim.study.ledger import ledger_rows
 from yieldsim.study.parts import parts
 from yieldsim.study.plan import GapPairsPlan, MountingPlan, Row, SitePlan, StudyPlan
+from yieldsim.study.result import by_hour_table, records
 from yieldsim.weather import Weather
-
-if TYPE_CHECKING:
-    import xarray as xr
 
 
 def key(plan: StudyPlan, site: SitePlan) -> str:
@@ -74,7 +73,7 @@ def compute(plan: StudyPlan, site: SitePlan, years: Iterable[Weather], folder: P
             skies.append(_entered(books, plan, site, part, kept, new_year=not skies, share=len(part) / len(weather)))
         quality += quality_rows(site.name, weather, skies)
     piece = {"weather_quality": quality} | _tables(plan, site, books, calendar)
-    files = datasets_of.write(folder)
+    files, piece["by_hour"] = datasets_of.write(folder)
     if datasets_of.chance is not None:
         found, draws = datasets_of.chance.told(piece["annual"], piece["yearly"])
         piece |= found
@@ -176,15 +175,19 @@ class _Datasets:
         if "spectra" in self.plan.keep:
             self.spectra.append(datasets.spectra_dataset(self.site.name, sky, years))
 
-    def write(self, folder: Path) -> list[Path]:
-        """Write the datasets and return their files."""
-        files = []
+    def write(self, folder: Path) -> tuple[list[Path], list[Row]]:
+        """Write the datasets; return their files, and how the year's yield spreads over the day."""
+        files, by_hour = [], []
         for kind in ("hourly", "spectra"):
             if found := getattr(self, kind):
-                path = folder / kind / f"{store.file_stem(self.site.name)}.nc"
-                store.write_netcdf(path, datasets.joined(found))
+                path, dataset = folder / kind / f"{store.file_stem(self.site.name)}.nc", datasets.joined(found)
+                store.write_netcdf(path, dataset)
                 files.append(path)
-        return files
+                if kind == "hourly":
+                    names = [absorber.name for absorber in self.plan.absorbers]
+                    rated = dict(zip(names, Ratings.of(self.plan.absorbers).terminals, strict=True))
+                    by_hour = records(by_hour_table(self.site.name, xr.decode_cf(dataset), rated))
+        return files, by_hour
 
 
 def monthly_hours(weather: Weather) -> annual.Array:

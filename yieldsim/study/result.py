@@ -193,12 +193,13 @@ def responses_table(absorbers: Sequence[Absorber]) -> pd.DataFrame:
     return pd.concat(parts, ignore_index=True)
 
 
-def by_hour_table(hourly: Mapping[str, xr.Dataset], rated_w_m2: Mapping[str, float]) -> pd.DataFrame:
+def by_hour_table(site: str, hourly: xr.Dataset, rated_w_m2: Mapping[str, float]) -> pd.DataFrame:
     """Return how a year's yield spreads over months and hours of the day.
 
     Parameters
     ----------
-    hourly : site -> dataset of ``hourly/<site>.nc``
+    site : its name
+    hourly : dataset of ``hourly/<site>.nc``
     rated_w_m2 : absorber -> terminal power at standard test conditions per collecting area [W m-2]
 
     Returns
@@ -206,21 +207,19 @@ def by_hour_table(hourly: Mapping[str, xr.Dataset], rated_w_m2: Mapping[str, flo
     DataFrame of ``site, mounting, absorber, month`` (1-12), ``hour`` (0-23, local standard time, start) and
     ``specific_yield_kwh_kwp``, before the losses behind the absorber; hours of the day without light are left out
     """
+    seconds = hourly["time"].values.astype("datetime64[s]").astype(np.int64)
+    step_s = int(np.median(np.diff(seconds))) if len(seconds) > 1 else 3600
+    # The middle of the interval says which hour and month it belongs to.
+    local = (seconds + step_s // 2 + round(float(hourly.attrs["utc_offset_h"]) * 3600)).astype("datetime64[s]")
+    month = local.astype("datetime64[M]").astype(np.int64) % 12
+    hour = local.astype("datetime64[h]").astype(np.int64) % 24
+    cell = np.asarray(month * 24 + hour)
     parts = []
-    for site, dataset in hourly.items():
-        seconds = dataset["time"].values.astype("datetime64[s]").astype(np.int64)
-        step_s = int(np.median(np.diff(seconds))) if len(seconds) > 1 else 3600
-        # The middle of the interval says which hour and month it belongs to.
-        local = (seconds + step_s // 2 + round(float(dataset.attrs["utc_offset_h"]) * 3600)).astype("datetime64[s]")
-        month = local.astype("datetime64[M]").astype(np.int64) % 12
-        hour = local.astype("datetime64[h]").astype(np.int64) % 24
-        cell = np.asarray(month * 24 + hour)
-        names = [str(name) for name in dataset["absorber"].values]
-        for m, mounting in enumerate(dataset["mounting"].values):
-            for a, name in enumerate(names):
-                power = np.nan_to_num(np.asarray(dataset["power"].values[m, a], dtype=np.float64))
-                energy = np.bincount(cell, power, minlength=288) * (step_s / 3600.0) / rated_w_m2[name]
-                parts.append(_hours_of(site, str(mounting), name, energy))
+    for m, mounting in enumerate(hourly["mounting"].values):
+        for a, name in enumerate(hourly["absorber"].values):
+            power = np.nan_to_num(np.asarray(hourly["power"].values[m, a], dtype=np.float64))
+            energy = np.bincount(cell, power, minlength=288) * (step_s / 3600.0) / rated_w_m2[str(name)]
+            parts.append(_hours_of(site, str(mounting), str(name), energy))
     return pd.concat(parts, ignore_index=True)
 
 

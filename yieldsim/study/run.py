@@ -5,14 +5,13 @@ from __future__ import annotations
 import time
 from array import array
 from collections.abc import Callable, Iterable, Iterator, Mapping, Sequence
-from concurrent.futures import FIRST_COMPLETED, Future, ProcessPoolExecutor, wait
 from dataclasses import replace
-from multiprocessing import get_context
 from pathlib import Path
 from typing import Any
 
 from yieldsim.errors import InputError, Problem
 from yieldsim.study import piece, store
+from yieldsim.study.hands import Hands
 from yieldsim.study.plan import SitePlan, StudyPlan
 from yieldsim.weather import Weather
 
@@ -20,15 +19,13 @@ LoadWeather = Callable[[SitePlan], Iterable[Weather]]
 Progress = Callable[[str, int, int], None]  # what is being done, steps finished, steps in all
 Outcome = tuple[str, InputError | None, float]  # site, what is wrong with its weather, seconds it took
 
-_AHEAD = 4  # tasks waiting for each process: it never idles, and no more is held than that
-
 
 def site_pieces(
     plan: StudyPlan,
     load_weather: LoadWeather,
     folder: Path,
     *,
-    workers: int = 1,
+    hands: Hands | None = None,
     cluster: str | None = None,
     fresh: bool = False,
     progress: Progress | None = None,
@@ -40,7 +37,7 @@ def site_pieces(
     plan : StudyPlan
     load_weather : gives a site's screened weather; called in the process that computes the site
     folder : Path of the results
-    workers : int, processes; 1 = this one
+    hands : Hands or None, processes that share the sites; None = this one alone
     cluster : str or None, address of a Dask scheduler whose workers see the same paths
     fresh : compute again what an earlier run finished
     progress : called with (site, finished, all) as sites finish
@@ -54,7 +51,8 @@ def site_pieces(
     InputError
         When weather of any site cannot be used; every other site is finished first.
     PlaceError
-        When the cluster cannot be reached or loses a site again and again; what is finished is kept.
+        When a process is ended from outside, the cluster cannot be reached, or it loses a site again and again; what
+        is finished is kept.
     """
     seconds: dict[str, float] = {}
     waiting: list[SitePlan] = []
@@ -65,7 +63,7 @@ def site_pieces(
             seconds[site.name] = 0.0
     problems: list[Problem] = []
     refused = 0
-    for name, error, took in _each(plan, waiting, load_weather, folder, workers, cluster):
+    for name, error, took in _each(plan, waiting, load_weather, folder, hands, cluster):
         if error is None:
             seconds[name] = took
         else:
@@ -83,7 +81,7 @@ def _each(
     sites: Sequence[SitePlan],
     load_weather: LoadWeather,
     folder: Path,
-    workers: int,
+    hands: Hands | None,
     cluster: str | None,
 ) -> Iterator[Outcome]:
     bare = replace(plan, sites=(), resolved={})  # what a site's work needs: not the thousand other sites
@@ -91,30 +89,12 @@ def _each(
         from yieldsim.study import cluster as elsewhere
 
         yield from elsewhere.each(cluster, one, bare, sites, load_weather, folder.absolute())
-    elif workers <= 1 or len(sites) <= 1:
+    elif hands is not None and sites:
+        hands.settle()
+        yield from hands.share(one, ((bare, site, load_weather, folder) for site in sites))
+    else:
         for site in sites:
             yield one(bare, site, load_weather, folder)
-    else:
-        yield from _in_processes(bare, sites, load_weather, folder, min(workers, len(sites)))
-
-
-def _in_processes(
-    plan: StudyPlan, sites: Sequence[SitePlan], load_weather: LoadWeather, folder: Path, workers: int
-) -> Iterator[Outcome]:
-    # Fresh interpreters: a fork would copy the locks of threads that numpy and HDF5 may hold.
-    with ProcessPoolExecutor(workers, mp_context=get_context("spawn")) as pool:
-        left = iter(sites)
-        running: set[Future[Outcome]] = set()
-        while True:
-            for site in left:
-                running.add(pool.submit(one, plan, site, load_weather, folder))
-                if len(running) >= _AHEAD * workers:
-                    break
-            if not running:
-                return
-            done, running = wait(running, return_when=FIRST_COMPLETED)
-            for future in done:
-                yield future.result()
 
 
 def one(plan: StudyPlan, site: SitePlan, load_weather: LoadWeather, folder: Path) -> Outcome:

@@ -139,7 +139,13 @@ def write_piece(folder: Path, stem: str, key: str, piece: Mapping[str, Any], fil
 
 def open_spectra(folder: Path, sites: Sequence[str]) -> dict[str, xr.Dataset]:
     """Return the kept spectra of each site that has any, read into memory."""
-    return dict(_opened(folder / "spectra", sites))
+    found = {}
+    for site in sites:
+        path = folder / "spectra" / f"{file_stem(site)}.nc"
+        if path.is_file():
+            with xr.open_dataset(path, engine="h5netcdf") as dataset:
+                found[site] = dataset.load()
+    return found
 
 
 def open_region(folder: Path) -> xr.Dataset | None:
@@ -149,16 +155,3 @@ def open_region(folder: Path) -> xr.Dataset | None:
         return None
     with xr.open_dataset(path, engine="h5netcdf") as dataset:
         return dataset.load()
-
-
-def open_hourly(folder: Path, sites: Sequence[str]) -> Iterator[tuple[str, xr.Dataset]]:
-    """Yield (site, hours) of each site whose hours were kept, one in memory at a time."""
-    return _opened(folder / "hourly", sites)
-
-
-def _opened(folder: Path, sites: Sequence[str]) -> Iterator[tuple[str, xr.Dataset]]:
-    for site in sites:
-        path = folder / f"{file_stem(site)}.nc"
-        if path.is_file():
-            with xr.open_dataset(path, engine="h5netcdf") as dataset:
-                yield site, dataset.load()
