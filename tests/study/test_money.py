@@ -17,7 +17,48 @@ def test_published_factors(rate, years, factor):
     assert money.present_worth_of_one(rate, years) == pytest.approx(factor, abs=5.1e-5)
 
 
-def test_worked_example():
+# HELP below: LibreOffice 7.4 Help, the manual of a spreadsheet (The Document Foundation; Debian package
+# libreoffice-help-en-us 7.4.7), chapter Financial Functions: worked examples, amounts rounded to cents.
+
+
+def test_worked_example_of_an_annuity():
+    """Reference: HELP, PMT: 25,000 at 1.99 % a year over 36 months take 715.96 a month."""
+    rate = 0.0199 / 12
+    assert 25_000 * money.capital_recovery(rate, 36) == pytest.approx(715.96, abs=0.005)
+    assert 715.96 * money.present_worth_of_one(rate, 36) == pytest.approx(25_000, abs=0.005 * 36)
+
+
+def test_worked_example_of_a_net_present_value():
+    """Reference: HELP, NPV: 10, 20 and 30 at 8.75 % are worth 49.43, and 9.43 after costs of 40 at the start."""
+    worth = money.present_value([10.0, 20.0, 30.0], 0.0875)
+    assert worth == pytest.approx(49.43, abs=0.005)
+    assert money.net_present_value(worth, 0.0, 40.0, money.present_worth_of_one(0.0875, 3)) == pytest.approx(
+        9.43, abs=0.005
+    )
+
+
+def test_worked_example_of_a_present_value():
+    """Reference: HELP, PV: 500 a month for 48 months at 8 % a year and 20,000 at the end are worth 35,019.37."""
+    flows = np.full(48, 500.0)
+    flows[-1] += 20_000
+    assert money.present_value(flows, 0.08 / 12) == pytest.approx(35_019.37, abs=0.005)
+
+
+def test_worked_example_of_a_project():
+    """Reference: Brealey, Myers, Allen, Principles of Corporate Finance (13th ed.), section 2.1: an office block of
+    370,000, sold for 420,000 a year later, has a net present value of 30,000 at 5 % (seen as the tests of the PyPI
+    package financialkit 0.1.0 quote it)."""
+    worth = money.present_value([420_000.0], 0.05)
+    assert money.net_present_value(worth, 0.0, 370_000.0, money.present_worth_of_one(0.05, 1)) == pytest.approx(30_000)
+
+
+def test_a_loan_paid_by_what_is_made():
+    """Reference: HELP, PMT, as above: makes a plant 100 units a month and costs 84.04 to run, a unit costs 8.00."""
+    worth = money.present_worth_of_one(0.0199 / 12, 36)
+    assert money.cost_of_energy(100.0 * worth, 84.04, 25_000.0, worth) == pytest.approx(8.00, abs=5e-5)
+
+
+def test_levelised_cost():
     """Reference: the levelised cost of the manual NREL/TP-462-5173 (Short, Packey, Holt 1995): LCOE = TLCC x UCRF / Q
     where TLCC is capital plus the present value of yearly costs (formula from memory, amounts ours): 100 000 of
     capital, 1 500 a year, 90 000 kWh a year, 20 years at 8 %: (100000 + 1500 x 9.8181) x 0.101852 / 90000."""
