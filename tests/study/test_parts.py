@@ -1,5 +1,6 @@
 """A year in parts is the year in one piece."""
 
+import tracemalloc
 from dataclasses import replace
 
 import numpy as np
@@ -9,6 +10,7 @@ from yieldsim.config import library
 from yieldsim.study import annual, parts, piece
 from yieldsim.study.book import Book
 from yieldsim.study.plan import GapSweepPlan, LossesPlan, MountingPlan, SitePlan, StudyPlan
+from yieldsim.weather import cut
 
 TILTED = MountingPlan("fixed", "fixed", 30.0, 180.0)
 
@@ -48,11 +50,11 @@ def test_the_year_in_parts(greensboro_weather, tmp_path, monkeypatch):
     """Invariant: cut into months, every table is that of the whole year. 0.02 %: the hour on either side of a cut does
     not know its neighbour, which tells haze from cloud."""
     whole = compute([greensboro_weather], tmp_path / "a", monkeypatch, keep=frozenset({"hourly", "spectra"}))
-    cut = compute([greensboro_weather], tmp_path / "b", monkeypatch, 800, frozenset({"hourly", "spectra"}))
-    assert set(whole) == set(cut)
+    pieces = compute([greensboro_weather], tmp_path / "b", monkeypatch, 800, frozenset({"hourly", "spectra"}))
+    assert set(whole) == set(pieces)
     for table in ("annual", "monthly", "ledger", "gap_sweep"):
-        assert len(whole[table]) == len(cut[table])
-        for one, two in zip(whole[table], cut[table], strict=True):
+        assert len(whole[table]) == len(pieces[table])
+        for one, two in zip(whole[table], pieces[table], strict=True):
             assert list(one) == list(two)
             for name, value in one.items():
                 if isinstance(value, float):
@@ -91,6 +93,31 @@ def test_several_years_are_their_mean(greensboro_weather, sand_point, tmp_path, 
     for table, measure in (("annual", "poa_kwh_m2"), ("ledger", "thermalised"), ("gap_sweep", "energy_kwh_m2")):
         for i, row in enumerate(both[table]):
             assert row[measure] == pytest.approx(np.mean([one[table][i][measure] for one in alone]), rel=1e-12)
+
+
+def following(weather, number):
+    return replace(weather, time=weather.time + number * 365 * 86400)
+
+
+def test_hours_are_on_disk_before_the_next_year_is_read(greensboro_weather, tmp_path, monkeypatch):
+    def years():
+        yield greensboro_weather
+        assert (tmp_path / "hourly" / "here.nc").is_file()
+        yield following(greensboro_weather, 1)
+
+    compute(years(), tmp_path, monkeypatch, keep=frozenset({"hourly"}))
+
+
+def test_memory_does_not_grow_with_the_years(greensboro_weather, tmp_path, monkeypatch):
+    """What is held of a year that is over are its sums: 20 kB, where its light alone takes 1.5 MB."""
+    short = cut(greensboro_weather, 0, 600)
+    peaks = []
+    for count in (2, 2, 8):  # the first time round also imports and tables
+        tracemalloc.start()
+        compute((following(short, i) for i in range(count)), tmp_path / str(count), monkeypatch)
+        peaks.append(tracemalloc.get_traced_memory()[1])
+        tracemalloc.stop()
+    assert peaks[2] - peaks[1] < 1e6
 
 
 def test_a_book_of_one_year_is_its_sums(greensboro):

@@ -65,6 +65,8 @@ def compute(plan: StudyPlan, site: SitePlan, years: Iterable[Weather], folder: P
     quality: list[Row] = []
     calendar: list[int] = []
     datasets_of = _Datasets(plan, site)
+    files: list[Path] = []
+    by_hour: list[Row] = []
     for weather in years:
         calendar.append(_calendar_year(weather))
         skies: list[_Told] = []
@@ -72,8 +74,9 @@ def compute(plan: StudyPlan, site: SitePlan, years: Iterable[Weather], folder: P
             kept = datasets_of if len(calendar) == 1 else None
             skies.append(_entered(books, plan, site, part, kept, new_year=not skies, share=len(part) / len(weather)))
         quality += quality_rows(site.name, weather, skies)
-    piece = {"weather_quality": quality} | _tables(plan, site, books, calendar)
-    files, piece["by_hour"] = datasets_of.write(folder)
+        if len(calendar) == 1:
+            files, by_hour = datasets_of.write(folder)
+    piece = {"weather_quality": quality, "by_hour": by_hour} | _tables(plan, site, books, calendar)
     if datasets_of.chance is not None:
         found, draws = datasets_of.chance.told(piece["annual"], piece["yearly"])
         piece |= found
@@ -176,7 +179,7 @@ class _Datasets:
             self.spectra.append(datasets.spectra_dataset(self.site.name, sky, years))
 
     def write(self, folder: Path) -> tuple[list[Path], list[Row]]:
-        """Write the datasets; return their files, and how the year's yield spreads over the day."""
+        """Write the datasets and let go of them; return their files, and how the year's yield spreads over the day."""
         files, by_hour = [], []
         for kind in ("hourly", "spectra"):
             if found := getattr(self, kind):
@@ -187,6 +190,7 @@ class _Datasets:
                     names = [absorber.name for absorber in self.plan.absorbers]
                     rated = dict(zip(names, Ratings.of(self.plan.absorbers).terminals, strict=True))
                     by_hour = records(by_hour_table(self.site.name, xr.decode_cf(dataset), rated))
+        self.hourly, self.spectra = [], []
         return files, by_hour
 
 
