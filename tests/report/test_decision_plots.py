@@ -129,6 +129,16 @@ def test_without_its_table_there_is_no_picture(name, crowd):
             assert plots.PICTURES[name](replace(crowd, **{table: nothing})) is None
 
 
+def test_an_ideal_absorber_is_no_pair_s_part(crowd):
+    """As in the answer and the regrets: nobody can choose a limit."""
+    four, table = list(NAMES)[:4], crowd.head_to_head
+    few, limit = table[table["absorber"].isin(four) & table["other"].isin(four)], four[3]
+    entries = [{"name": name, "quality": "ideal"} if name == limit else {"name": name} for name in NAMES]
+    for resolved, shown in ((crowd.resolved, True), ({**crowd.resolved, "absorbers": entries}, False)):
+        for axes in drawn("margins", replace(crowd, head_to_head=few, resolved=resolved)).axes:
+            assert any(limit[-3:] in text for text in ticks(axes)) is shown
+
+
 def test_many_pairs_keep_those_in_most_doubt(crowd):
     """More pairs than a page holds: the ones nearest to even odds, in the table's order, and the picture says so."""
     table = crowd.head_to_head

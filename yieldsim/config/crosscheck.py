@@ -129,15 +129,21 @@ def _weather_twice(document: Document, study: dict[str, Any]) -> Iterator[Proble
                 seen.add(file)
 
 
+def _unknown(
+    document: Document, path: KeyPath, given: dict[Any, Any], names: list[str], wanted: str
+) -> Iterator[Problem]:
+    """Find keys that name nothing the study has."""
+    for name in given:
+        if name not in names:
+            yield document.problem((*path, str(name)), show(name), wanted + nearest(name, names), of_key=True)
+
+
 def _portfolio(document: Document, study: dict[str, Any]) -> Iterator[Problem]:
     weights = study.get("portfolio")
     sites = [name for _, name in _names(study, "sites")]
     if not isinstance(weights, dict) or not sites:
         return
-    for name in weights:
-        if name not in sites:
-            allowed = f"the name of a site{nearest(name, sites)}"
-            yield document.problem(("portfolio", str(name)), show(name), allowed, of_key=True)
+    yield from _unknown(document, ("portfolio",), weights, sites, "the name of a site")
     numbers = [weight for weight in weights.values() if isinstance(weight, int | float)]
     if weights and len(numbers) == len(weights) and not any(weight > 0 for weight in numbers):
         yield document.problem(("portfolio",), "no weight above 0", "at least one site that counts")
@@ -149,11 +155,8 @@ def _worth(document: Document, study: dict[str, Any]) -> Iterator[Problem]:
     if not isinstance(worth, dict) or not names:
         return
     for key in _BY_ABSORBER:
-        given = worth.get(key)
-        for name in given if isinstance(given, dict) else ():
-            if name not in names:
-                allowed = f"the name of an absorber{nearest(name, names)}"
-                yield document.problem(("worth", key, str(name)), show(name), allowed, of_key=True)
+        if isinstance(worth.get(key), dict):
+            yield from _unknown(document, ("worth", key), worth[key], names, "the name of an absorber")
     prices: list[dict[str, Any]] = [worth[key] for key in _BY_ABSORBER[:2] if isinstance(worth.get(key), dict)]
     if len(prices) < sum(worth.get(key) is not None for key in _BY_ABSORBER[:2]):
         return  # one price for all
@@ -176,7 +179,4 @@ def _chance(document: Document, study: dict[str, Any]) -> Iterator[Problem]:
         names = [name for _, name in _names(study, section)]
         if not isinstance(given, dict) or not isinstance(items, list) or len(names) < len(items):
             continue
-        for name in given:
-            if name not in names:
-                allowed = f"the name of one of the {section}{nearest(name, names)}"
-                yield document.problem(("chance", section, str(name)), show(name), allowed, of_key=True)
+        yield from _unknown(document, ("chance", section), given, names, f"the name of one of the {section}")

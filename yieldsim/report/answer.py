@@ -95,9 +95,19 @@ def answer(result: StudyResult) -> Answer:
     left_out = f" Left out as ideal, which no device is: {listed(out)}." if out else ""
     return Answer(
         _winner(all_places) + left_out,
-        _certainty(all_places, result.head_to_head),
+        _certainty(all_places, duels(result)),
         _ranking(all_places) + _moved(all_places, result.reference),
     )
+
+
+def duels(result: StudyResult) -> pd.DataFrame | None:
+    """Return the pairs there is a choice between, by energy per area; None where the study drew nothing."""
+    table = result.head_to_head
+    if table is None or table.empty:
+        return None
+    left_out = set(result.annual["absorber"]) - choices(list(result.annual["absorber"]), ideal_names(result.resolved))
+    kept = ~(table["absorber"].isin(left_out) | table["other"].isin(left_out))
+    return table[kept & (table["measure"] == "energy_kwh_m2")] if "measure" in table else table[kept]
 
 
 def _moved(all_places: Sequence[Place], reference: str) -> str:
@@ -168,13 +178,13 @@ def _energy(place: Place) -> str:
     return f"{place.rows[0]['energy_kwh_m2']:,.1f}"
 
 
-def _certainty(all_places: Sequence[Place], duels: pd.DataFrame | None) -> str:
+def _certainty(all_places: Sequence[Place], pairs: pd.DataFrame | None) -> str:
     if len(all_places[0].rows) < 2:
         return (
             "Without a second absorber no comparison can be in doubt; the yields themselves can, see the limits below."
         )
-    if duels is not None and not duels.empty:
-        return _chances(all_places, duels)
+    if pairs is not None and not pairs.empty:
+        return _chances(all_places, pairs)
     close = [place.name for place in all_places if place.lead < DOUBT]
     base = f"The study holds no chance calculation, so leads below {percent(DOUBT)} should count as a draw"
     if not close:
@@ -184,14 +194,12 @@ def _certainty(all_places: Sequence[Place], duels: pd.DataFrame | None) -> str:
     return f"{base}: that is so at {listed(close)}."
 
 
-def _chances(all_places: Sequence[Place], duels: pd.DataFrame) -> str:
+def _chances(all_places: Sequence[Place], pairs: pd.DataFrame) -> str:
     """Return how probable it is that the best beats the next, from the head-to-head table read either way round."""
     found: dict[str, float] = {}
-    if "measure" in duels:
-        duels = duels[duels["measure"] == "energy_kwh_m2"]
     for place in all_places:
         best, second = place.best, str(place.rows[1]["absorber"])
-        here = duels[(duels["site"] == place.site) & (duels["mounting"] == place.mounting)]
+        here = pairs[(pairs["site"] == place.site) & (pairs["mounting"] == place.mounting)]
         straight = here[(here["absorber"] == best) & (here["other"] == second)]
         reverse = here[(here["absorber"] == second) & (here["other"] == best)]
         if not straight.empty:
@@ -206,16 +214,16 @@ def _chances(all_places: Sequence[Place], duels: pd.DataFrame) -> str:
     said = f"The best beats the next best with a probability of {percent(found[low])}"
     if found[low] != found[high]:
         said += f" ({low}) to {percent(found[high])} ({high})"
-    return f"{said}.{_least_sure(next(place for place in all_places if place.name == low), duels)}"
+    return f"{said}.{_least_sure(next(place for place in all_places if place.name == low), pairs)}"
 
 
-def _least_sure(place: Place, duels: pd.DataFrame) -> str:
+def _least_sure(place: Place, pairs: pd.DataFrame) -> str:
     """Return in words how far and how surely the best leads at the place where that is least sure."""
-    if "verdict" not in duels:
+    if "verdict" not in pairs:
         return ""
     best, second = place.best, str(place.rows[1]["absorber"])
-    at = (duels["site"] == place.site) & (duels["mounting"] == place.mounting)
-    for row in records(duels[at & duels["absorber"].isin([best, second]) & duels["other"].isin([best, second])]):
+    at = (pairs["site"] == place.site) & (pairs["mounting"] == place.mounting)
+    for row in records(pairs[at & pairs["absorber"].isin([best, second]) & pairs["other"].isin([best, second])]):
         return (
             f" At {place.name}, where it is least sure, {row['absorber']} ahead of {row['other']} is {row['verdict']}: "
             f"by {percent(row['margin_p50'])}, with a probability of 80 % between {percent(row['margin_p90'])} and "

@@ -11,6 +11,7 @@ from matplotlib.axes import Axes
 from matplotlib.figure import Figure
 from matplotlib.ticker import MaxNLocator
 
+from yieldsim.report.answer import duels
 from yieldsim.report.canvas import GREY, SMALL, head, panels, text_width
 from yieldsim.report.marks import COLOURS, called, mark, shorten
 from yieldsim.study.result import StudyResult, records
@@ -61,8 +62,8 @@ def _rows(axes: Axes, names: Sequence[str], label: str) -> None:
 
 def margins(result: StudyResult, places: list[Place], names: list[str], more: str) -> Figure | None:
     """Draw how far one absorber lies above another at each place: a row a pair, its probability beside it."""
-    table = result.head_to_head
-    if table is None or table.empty or "measure" not in table:
+    table = duels(result)
+    if table is None or table.empty:
         return None
     frames = [_nearest(_at(table, place)) for place in places]
     texts = [_pair(row) for f in frames for row in records(f)]

@@ -11,7 +11,7 @@ import numpy as np
 import pandas as pd
 import xarray as xr
 
-from yieldsim.report.answer import Place, places
+from yieldsim.report.answer import Place, duels, places
 from yieldsim.report.marks import called
 from yieldsim.study import store
 from yieldsim.study.result import STANDARD_SITE, StudyResult, edges_nm, records
@@ -60,7 +60,7 @@ def payload(result: StudyResult) -> Tree:
         ("gap_pairs", result.gap_pairs, lambda table: _pairs(table, result.gap_pair_materials, found)),
         ("generation", result.generation, lambda table: _films(table, absorbers)),
         ("chance", result.chance, lambda table: _listed(table, found, absorbers)),
-        ("head_to_head", result.head_to_head, lambda table: _listed(_duels(table, result), found, absorbers)),
+        ("head_to_head", duels(result), lambda table: _listed(_of_few(table, result), found, absorbers)),
         ("rank_chance", result.rank_chance, lambda table: _listed(_by_energy(table), found, absorbers)),
         ("causes", result.causes, lambda table: _listed(_of_margins(table), found, absorbers)),
         (
@@ -244,10 +244,8 @@ def _shown(table: pd.DataFrame) -> pd.DataFrame:
     return table[names]
 
 
-def _duels(table: pd.DataFrame, result: StudyResult) -> pd.DataFrame:
-    """Return the pairs a page shows: by energy per area, all of few absorbers, else those with the reference."""
-    if "measure" in table:
-        table = table[table["measure"] == "energy_kwh_m2"]
+def _of_few(table: pd.DataFrame, result: StudyResult) -> pd.DataFrame:
+    """Return the pairs a page shows: all of few absorbers, else those with the reference."""
     if len(result.standard) > MOST_IN_DUELS:
         table = table[(table["absorber"] == result.reference) | (table["other"] == result.reference)]
     return table
