@@ -31,6 +31,7 @@ from contextlib import nullcontext
 from dataclasses import replace
 from datetime import UTC, datetime
 from difflib import get_close_matches
+from functools import lru_cache
 from importlib import metadata
 from itertools import combinations
 from pathlib import Path
@@ -43,9 +44,10 @@ import xarray as xr
 import yieldsim
 from yieldsim import config, readers, report, screen
 from yieldsim.config import library
+from yieldsim.config.inputs import locate, sha256
 from yieldsim.config.many import Cell
 from yieldsim.device.stack import gap_label
-from yieldsim.errors import InputError, PlaceError, Problem
+from yieldsim.errors import InputError, Problem
 from yieldsim.study import (
     chance,
     chance_store,
@@ -121,6 +123,26 @@ def load_weather(site: SitePlan) -> Iterator[Weather]:
     ]
     for weather in readers.years(files, **overrides):
         yield screen.screen(weather, site.allow_gaps)
+    for file in site.weather:
+        where = locate(file.path, Path())
+        if _digest(where, _state(where)) != file.sha256:
+            found = "content other than when the study was loaded"
+            raise InputError(
+                Problem(file.shown, 0, "", found, "a file that stays as it is while it is used: run again")
+            )
+
+
+@lru_cache(maxsize=64)  # a grid of thousands of cells is one file
+def _digest(path: Path, _state: tuple[int, ...]) -> str:
+    return sha256(path)
+
+
+def _state(path: Path) -> tuple[int, ...]:
+    """Return what changes when a file is written: a folder is looked at once in a process."""
+    if path.is_dir():
+        return ()
+    found = path.stat()
+    return found.st_mtime_ns, found.st_size, found.st_ino
 
 
 def _column_map(columns: ColumnsPlan | None) -> readers.ColumnMap | None:
@@ -157,18 +179,14 @@ def run_study(
     Raises
     ------
     InputError
-        When weather cannot be used; sites that can are finished and kept.
+        When weather cannot be used, or changed while it was; sites that can are finished and kept.
     PlaceError
-        When the folder cannot be written.
+        When the folder cannot be written or is in use by another run.
     """
     start, clock = datetime.now(UTC), time.perf_counter()
     folder = Path("outputs", store.file_stem(plan.name)) if out is None else Path(out)
-    try:
-        folder.mkdir(parents=True, exist_ok=True)
-    except OSError as error:
-        raise PlaceError(f"cannot make the folder {folder}: {error.strerror}") from error
     own = Hands(workers) if isinstance(workers, int) and workers > 1 else nullcontext()
-    with own as made:
+    with store.held(folder), own as made:
         hands = workers if isinstance(workers, Hands) else made
         if hands is not None:
             hands.begin(ready.power, plan.absorbers, load_weather)
@@ -189,11 +207,16 @@ def run_study(
             "folder": plan.folder,
             "config": dict(plan.resolved),
         }
+        details["fingerprint"] = store.fingerprint(details["yieldsim"], details["inputs"], details["config"])[:16]
         result = _gathered(plan, folder, details)
         if progress is not None:
             progress("report", len(plan.sites), len(plan.sites))
-        report.write(result, folder, plan.keep, hands)
-        details |= {"seconds_in_all": round(time.perf_counter() - clock, 3), "peak_memory_mb": peak_memory_mb()}
+        files = report.write(result, folder, plan.keep, hands)
+        details |= {
+            "tables": {file.name: sha256(file) for file in files if file.suffix == ".csv"},
+            "seconds_in_all": round(time.perf_counter() - clock, 3),
+            "peak_memory_mb": peak_memory_mb(),
+        }
         store.write_json(folder / "run.json", details)
     return replace(result, run=details)
 

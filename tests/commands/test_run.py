@@ -98,7 +98,7 @@ def engine(monkeypatch):
 
     def run_study(plan, out, **options):
         calls.append((plan, out, options))
-        return SimpleNamespace(annual=pd.DataFrame(ROWS))
+        return SimpleNamespace(annual=pd.DataFrame(ROWS), run={"tables": {"annual.csv": "1", "new.csv": "2"}})
 
     monkeypatch.setattr(
         api, "load_study", lambda path: SimpleNamespace(name=Path(path).stem, reference="silicon", sites=[None])
@@ -165,6 +165,23 @@ def test_a_run_is_repeated_from_its_record_and_what_differs_is_said(engine, reco
     assert "no-such-package not installed, then 1.0" in err
     assert "content of" not in err
     assert "as it resolves" not in err
+
+
+def test_the_tables_are_compared_with_the_record_s(engine, recorded, capsys):
+    content = json.loads(recorded.read_text(encoding="utf-8"))
+    for then, told in (
+        (None, "holds no hashes"),
+        ({"annual.csv": "0", "new.csv": "2"}, "differs: annual.csv has other content"),
+        ({"annual.csv": "1"}, "differs: new.csv is new"),
+        ({"annual.csv": "1", "new.csv": "2", "old.csv": "3"}, "differs: old.csv is not made any more"),
+        ({"annual.csv": "1", "new.csv": "2"}, "Repeated: all 2 tables"),
+    ):
+        recorded.write_text(json.dumps(content | {"tables": then}), encoding="utf-8")
+        assert main(["run", "--from", str(recorded)]) == 0
+        said = capsys.readouterr()
+        assert told in said.out + said.err
+        assert ("Repeated" in said.out) is ("Repeated" in told)
+    assert all(options["fresh"] for _, _, options in engine)
 
 
 def test_other_weather_and_another_library_are_told(engine, recorded, capsys):

@@ -38,7 +38,7 @@ def arguments(parser: argparse.ArgumentParser) -> None:
         dest="record",
         metavar="run.json",
         type=Path,
-        help="repeat a finished run instead, and say what differs",
+        help="compute a finished run anew instead, and say what differs",
     )
     parser.add_argument("--out", metavar="DIR", type=Path, help="folder of the results (default: outputs/STUDY)")
     parser.add_argument(
@@ -91,15 +91,26 @@ def _run(options: argparse.Namespace, hands: Hands | None) -> int:
     from yieldsim import api
     from yieldsim.study.store import file_stem
 
-    plan = api.load_study(options.study) if options.record is None else _repeated(options.record)
+    before: Row | None = None
+    if options.record is None:
+        plan = api.load_study(options.study)
+    else:
+        plan, before = _repeated(options.record)
     out = options.out if options.out is not None else Path("outputs", file_stem(plan.name))
     progress = Progress(options.quiet)
     try:
         result = api.run_study(
-            plan, out, workers=hands or 1, cluster=options.cluster, fresh=options.fresh, progress=progress
+            plan,
+            out,
+            workers=hands or 1,
+            cluster=options.cluster,
+            fresh=options.fresh or before is not None,
+            progress=progress,
         )
     finally:
         progress.close()
+    if before is not None:
+        _compared(dict(before.get("tables") or {}), dict(result.run["tables"]), options.quiet)
     if not options.quiet:
         from yieldsim.report.answer import answer
 
@@ -112,14 +123,26 @@ def _run(options: argparse.Namespace, hands: Hands | None) -> int:
     return 0
 
 
-def _repeated(record: Path) -> StudyPlan:
-    """Return the plan of a finished run; tell on stderr what is not as it was then."""
+def _compared(then: Row, now: Row, quiet: bool) -> None:
+    """Tell which tables are not those of the record."""
+    if not then:
+        print("differs: the record holds no hashes of tables to compare with", file=sys.stderr)
+    for name in [*then, *(name for name in now if then and name not in then)]:
+        if then.get(name) != now.get(name):
+            what = "is not made any more" if name not in now else "is new" if name not in then else "has other content"
+            print(f"differs: {plain(name)} {what}", file=sys.stderr)
+    if then and then == now and not quiet:
+        print(f"Repeated: all {len(now)} tables are those of the record, byte for byte.\n")
+
+
+def _repeated(record: Path) -> tuple[StudyPlan, Row]:
+    """Return the plan of a finished run and its record; tell on stderr what is not as it was then."""
     from yieldsim import config
 
     plan, before = config.load_run(record)
     for line in differences(plan, before):
         print(f"differs: {line}", file=sys.stderr)
-    return plan
+    return plan, before
 
 
 def differences(plan: StudyPlan, before: Row) -> list[str]:

@@ -62,12 +62,14 @@ def rebuild(folder: str | Path) -> list[Path]:
     InputError
         With every file that is missing or is not what a study writes.
     PlaceError
-        Where the folder cannot be written.
+        Where the folder cannot be written or is in use by a run.
     """
     from yieldsim.report import reading
 
     folder = Path(folder)
-    return _pictures_and_page(reading.read_result(folder), folder, True, None)
+    result = reading.read_result(folder)
+    with store.held(folder):
+        return _pictures_and_page(result, folder, True, None)
 
 
 def _pictures_and_page(result: StudyResult, folder: Path, plots: bool, hands: Hands | None) -> list[Path]:

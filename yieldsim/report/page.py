@@ -63,6 +63,7 @@ def render(result: StudyResult) -> str:
         study=result.study,
         version=str(result.run.get("yieldsim", "")),
         started=str(result.run.get("started", "")),
+        fingerprint=str(result.run.get("fingerprint", "")),
         inputs=dict(result.run.get("inputs", {})),
         answer=answers.answer(result),
         count=len(found),

@@ -9,7 +9,7 @@ from dataclasses import replace
 from pathlib import Path
 from typing import Any
 
-from yieldsim.errors import InputError, Problem
+from yieldsim.errors import InputError, PlaceError, Problem
 from yieldsim.study import piece, store
 from yieldsim.study.hands import Hands
 from yieldsim.study.plan import SitePlan, StudyPlan
@@ -116,11 +116,18 @@ def tables(plan: StudyPlan, folder: Path) -> dict[str, Mapping[str, Sequence[Any
     Returns
     -------
     table -> column -> values; numbers as compact arrays, so that thousands of sites fit
+
+    Raises
+    ------
+    PlaceError
+        When a site's piece is not there any more.
     """
     found: dict[str, _Columns] = {}
     for site in plan.sites:
         content = store.read_piece(folder, store.file_stem(site.name), piece.key(plan, site))
-        for table, rows in (content or {}).items():
+        if content is None:
+            raise PlaceError(f"what was finished of {site.name} is gone from {folder}: run again")
+        for table, rows in content.items():
             columns = found.setdefault(table, _Columns())
             for row in rows:
                 columns.add(row)

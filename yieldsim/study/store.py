@@ -15,6 +15,7 @@ from typing import Any
 
 import numpy as np
 import xarray as xr
+from filelock import FileLock, Timeout
 
 from yieldsim.errors import PlaceError
 
@@ -74,6 +75,31 @@ def _feed(digest: Any, thing: Any) -> None:
 
 
 @contextmanager
+def held(folder: Path) -> Iterator[None]:
+    """Hold a folder of results for one run; the system lets go of it when the process ends, however it ends.
+
+    Raises
+    ------
+    PlaceError
+        While another run holds it, or where it cannot be written.
+    """
+    lock = FileLock(folder / PIECES / "lock")
+    try:
+        (folder / PIECES).mkdir(parents=True, exist_ok=True)
+        lock.acquire(timeout=0)
+    except Timeout:
+        raise PlaceError(f"{folder} is in use by another run: wait until it ends, or name another folder") from None
+    except OSError as error:
+        raise PlaceError(f"cannot write in the folder {folder}: {error.strerror or error}") from error
+    try:
+        for left_by_a_killed_run in folder.rglob(".*.part"):
+            left_by_a_killed_run.unlink(missing_ok=True)
+        yield
+    finally:
+        lock.release()
+
+
+@contextmanager
 def whole_file(path: Path) -> Iterator[Path]:
     """Give a temporary name beside ``path``; rename it to ``path`` when the block ends well, remove it otherwise.
 
@@ -91,7 +117,8 @@ def whole_file(path: Path) -> Iterator[Path]:
         yield temporary
         temporary.replace(path)
     except OSError as error:
-        raise PlaceError(f"cannot write {path}: {error.strerror or error}") from error
+        what = error.strerror or error
+        raise PlaceError(f"cannot write {path}: {what}; what is finished is kept: run again when it can be") from error
     finally:
         temporary.unlink(missing_ok=True)
 
@@ -108,10 +135,14 @@ def write_json(path: Path, content: Any) -> None:
 
 
 def write_netcdf(path: Path, dataset: xr.Dataset) -> None:
-    """Write an xarray Dataset as NetCDF 4, compressed, whole or not at all."""
+    """Write an xarray Dataset as NetCDF 4, compressed, whole or not at all.
+
+    Made in memory first: the HDF5 library ends the process when a disk is full.
+    """
     encoding = {name: {"zlib": True, "complevel": 1} for name, data in dataset.data_vars.items() if data.ndim}
+    content = dataset.to_netcdf(engine="h5netcdf", encoding=encoding)
     with whole_file(path) as temporary:
-        dataset.to_netcdf(temporary, engine="h5netcdf", encoding=encoding)
+        temporary.write_bytes(content)
 
 
 def read_piece(folder: Path, stem: str, key: str) -> dict[str, Any] | None:
