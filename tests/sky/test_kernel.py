@@ -72,6 +72,27 @@ def test_paths_beyond_the_tables(water_cm, pressure):
     assert np.max(np.abs(compiled.beam - plain.beam)) < 1e-9
 
 
+def some_bands():
+    """Bands from blue to infrared, one next to dark in vapour; not a multiple of those done at once."""
+    bare, chosen = column.bare_optics(), [3, 17, 40, 41, 90, 121]
+    return bare.replace(**{name: getattr(bare, name)[chosen] for name in column.Optics.__slots__})
+
+
+@pytest.mark.parametrize("per_band", [False, True])
+def test_some_bands_equal_the_plain_form(per_band):
+    """As `test_equals_the_plain_form`, on so few bands that it can be run without compiling; one hour is without vapour,
+    one has the exponent of the hour before."""
+    air, optics, n = any_air(24, 9), some_bands(), 24
+    water, exponent = air.water_cm.copy(), air.angstrom_exponent.copy()
+    water[0], exponent[2] = 0.0, exponent[1]
+    albedo = np.random.default_rng(9).uniform(0.0, 0.95, (n, 6) if per_band else n)
+    air = replace(air, water_cm=water, angstrom_exponent=exponent, albedo=albedo)
+    cloud = np.resize([0.0, 0.0, 0.01, 1.0, 20.0, 300.0], n)
+    compiled, plain = column.transmit(air, cloud, optics), column.transmit_plain(air, cloud, optics)
+    assert np.max(np.abs(compiled.total - plain.total)) < 1e-9
+    assert np.max(np.abs(compiled.beam - plain.beam)) < 1e-9
+
+
 def test_few_bands_are_those_of_many():
     """A choice of bands gives what all bands give there: no band knows of another."""
     air, cloud, chosen = any_air(30, 6), np.linspace(0, 30, 30), np.array([3, 17, 40, 41, 90, 121])

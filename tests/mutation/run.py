@@ -1,0 +1,480 @@
+"""Mutation testing: are the tests of sky, device and study red when a line of them is wrong?
+
+    pip install -e ".[dev,mutation]"
+    python tests/mutation/run.py map                    # which test runs which line: once, and again when tests change
+    python tests/mutation/run.py run --count 400        # 400 mutants of each package; goes on where it was stopped
+    python tests/mutation/run.py report --survivors     # figures, and the diffs of what lived
+
+cosmic-ray's operators make the mutants; each has a rank from its seed and its own line, so that the sample stays the same
+where the code does. Left out are mutants in annotations, and those that any call at all would kill (`is` for `<`, shifts
+of floats), since they flatter. A server imports the libraries once and forks a process for each mutant, which imports
+yieldsim with the mutated source and runs the tests that run the mutated line, cheap ones first, until one is red.
+Compiled modules, and those whose constants they take in, are run as plain Python on tests that this leaves affordable.
+"""
+
+from __future__ import annotations
+
+import argparse
+import ast
+import contextlib
+import hashlib
+import importlib.abc
+import importlib.machinery
+import importlib.util
+import io
+import json
+import os
+import resource
+import signal
+import sys
+import time
+from collections import Counter, defaultdict
+from collections.abc import Iterable, Iterator
+from dataclasses import astuple, dataclass
+from pathlib import Path
+from types import CodeType, FrameType
+from typing import Any
+
+ROOT = Path(__file__).parents[2]
+PACKAGES = ("sky", "device", "study")
+TESTS = ("tests/sky", "tests/device", "tests/study", "tests/screen", "tests/checks")
+#: Modules that are compiled, or whose constants compiled code takes in: their mutants are run as plain Python.
+PLAIN = ("sky.kernel", "sky.kernel_layer", "sky.layer", "device.kernel", "device.points", "device.diode", "device.series")
+SEED = 20
+LONGEST = {False: 15.0, True: 3.0}  # s of processor time for one test, compiled and plain; longer ones are left out
+BUDGET = 8.0  # s of processor time for all tests of one mutant
+
+
+# ---- mutants -----------------------------------------------------------------------------------------------------
+
+
+@dataclass(frozen=True)
+class Mutant:
+    """One change of one line: where, by which operator, the how manieth of its kind in the module."""
+
+    module: str
+    operator: str
+    occurrence: int
+    line: int
+    rank: str
+
+    @property
+    def package(self) -> str:
+        return self.module.split(".")[0]
+
+
+def path_of(module: str) -> Path:
+    return ROOT / "yieldsim" / f"{module.replace('.', '/')}.py"
+
+
+_ARITHMETIC, _BITS = {"Add", "Sub", "Mul", "Div", "FloorDiv", "Mod", "Pow"}, {"BitOr", "BitAnd", "BitXor"}
+_SHIFTS = {"LShift", "RShift"}
+
+
+def flatters(operator: str) -> bool:
+    """Say whether any run of the line would kill the mutant, or the tool makes it twice."""
+    parts = operator.split("/")[1].split("_")
+    if parts[0] == "ReplaceBinaryOperator":
+        return not any({parts[1], parts[2]} <= family for family in (_ARITHMETIC, _BITS, _SHIFTS))
+    if parts[0] == "ReplaceComparisonOperator":
+        return (parts[1] in ("Is", "IsNot")) != (parts[2] in ("Is", "IsNot"))
+    if parts[0] == "ReplaceUnaryOperator":
+        return parts[2] in ("Not", "Invert") and parts[1] != "Delete"
+    return parts[0] in ("VariableInserter", "VariableReplacer")
+
+
+def spans_without_effect(source: str) -> set[int]:
+    """Return the (line, column) starts of everything that only type checkers read, as line * 1000 + column."""
+    places: set[int] = set()
+    for node in ast.walk(ast.parse(source)):
+        parts: list[ast.AST | None] = []
+        if isinstance(node, ast.FunctionDef):
+            everyone = [*node.args.posonlyargs, *node.args.args, *node.args.kwonlyargs]
+            parts = [node.returns, *(a.annotation for a in everyone)]
+        elif isinstance(node, ast.AnnAssign):
+            parts = [node.annotation]
+        elif isinstance(node, ast.If) and isinstance(node.test, ast.Name) and node.test.id == "TYPE_CHECKING":
+            parts = [node]
+        for part in parts:
+            if part is not None:
+                lines = source.split("\n")
+                for line in range(part.lineno, part.end_lineno + 1):  # type: ignore[attr-defined]
+                    first = part.col_offset if line == part.lineno else 0  # type: ignore[attr-defined]
+                    last = part.end_col_offset if line == part.end_lineno else len(lines[line - 1])  # type: ignore[attr-defined]
+                    places.update(line * 1000 + column for column in range(first, last))
+    return places
+
+
+def mutants_of(module: str) -> Iterator[Mutant]:
+    import cosmic_ray.plugins
+    from cosmic_ray.ast import ast_nodes, get_ast
+
+    source = path_of(module).read_text("utf-8")
+    lines, idle = source.split("\n"), spans_without_effect(source)
+    nodes = list(ast_nodes(get_ast(source)))
+    for name in sorted(cosmic_ray.plugins.operator_names()):
+        if flatters(name):
+            continue
+        operator, seen, count = cosmic_ray.plugins.get_operator(name)(), Counter[str](), 0
+        for node in nodes:
+            for start, _ in operator.mutation_positions(node):
+                text = lines[start[0] - 1].strip()
+                seen[text] += 1
+                mark = "|".join((str(SEED), module, name, text, str(seen[text])))
+                count += 1
+                if start[0] * 1000 + start[1] not in idle and node.parent.type not in ("parameters", "import_from"):
+                    yield Mutant(module, name, count - 1, start[0], hashlib.sha256(mark.encode()).hexdigest()[:16])
+
+
+def mutate(mutant: Mutant) -> tuple[str, str] | None:
+    """Return a module's source and the mutated one; None if that is no Python."""
+    import cosmic_ray.plugins
+    from cosmic_ray.mutating import mutate_code
+
+    source = path_of(mutant.module).read_text("utf-8")
+    changed = mutate_code(source, cosmic_ray.plugins.get_operator(mutant.operator)(), mutant.occurrence)
+    try:
+        tree = ast.dump(ast.parse(changed or ""))
+    except SyntaxError:
+        return None
+    return (source, str(changed)) if tree != ast.dump(ast.parse(source)) else None
+
+
+def changed_lines(source: str, changed: str) -> str:
+    """Return what a mutant does, without line numbers: its name in the results."""
+    import difflib
+
+    rows = difflib.unified_diff(source.split("\n"), changed.split("\n"), lineterm="", n=0)
+    return "\n".join(row for row in rows if not row.startswith(("---", "+++", "@@")))
+
+
+def sample(package: str, count: int, out: Path) -> list[tuple[Mutant, str]]:
+    """Return the mutants of a package that rank first, and what each changes; kept until a source changes."""
+    files = sorted((ROOT / "yieldsim" / package).glob("*.py"))
+    state = hashlib.sha256(b"".join(f.read_bytes() for f in files) + bytes(str(count), "ascii"))
+    kept = out / f"sample-{package}.json"
+    if kept.exists():
+        found = json.loads(kept.read_text("utf-8"))
+        if found["state"] == state.hexdigest():
+            return [(Mutant(*fields), change) for fields, change in found["mutants"]]
+    ranked = sorted((m for file in files for m in mutants_of(f"{package}.{file.stem}")), key=lambda m: m.rank)
+    chosen: list[tuple[Mutant, str]] = []
+    for mutant in ranked:
+        if len(chosen) == count:
+            break
+        if pair := mutate(mutant):
+            chosen.append((mutant, changed_lines(*pair)))
+    record = {"state": state.hexdigest(), "of": len(ranked), "mutants": [(astuple(m), change) for m, change in chosen]}
+    kept.write_text(json.dumps(record), "utf-8")
+    return chosen
+
+
+# ---- which test runs which line ----------------------------------------------------------------------------------
+
+
+class TooSlow(Exception):
+    """A test that took more processor time than a mutant can be given."""
+
+
+def _stop(_: int, frame: FrameType | None) -> None:
+    raise TooSlow
+
+
+class Watch:
+    """Plugin of pytest: contexts of coverage by test and by shared fixture, times of both, an end to slow ones."""
+
+    def __init__(self, cover: Any, longest: float) -> None:
+        self.cover, self.longest, self.now = cover, longest, ""
+        self.seconds: dict[str, float] = {}
+        self.shared: dict[str, list[str]] = {}
+        self.shared_seconds: Counter[str] = Counter()
+        self.failed: set[str] = set()
+
+    def _switch(self, name: str) -> None:
+        self.now = name
+        self.cover.switch_context(name)
+
+    def pytest_collection_modifyitems(self, items: list[Any]) -> None:
+        for item in items:
+            indices = getattr(getattr(item, "callspec", None), "indices", {})
+            for name, definitions in item._fixtureinfo.name2fixturedefs.items():
+                if definitions and definitions[-1].scope != "function":
+                    key = f"fixture {definitions[-1].baseid}|{name}|{indices.get(name, '')}"
+                    self.shared.setdefault(item.nodeid, []).append(key)
+
+    def pytest_runtest_logstart(self, nodeid: str) -> None:
+        signal.setitimer(signal.ITIMER_PROF, self.longest)
+        self._switch(nodeid)
+        self.seconds[nodeid] = -time.process_time()
+
+    def pytest_runtest_logfinish(self, nodeid: str) -> None:
+        signal.setitimer(signal.ITIMER_PROF, 0)
+        self.seconds[nodeid] += time.process_time()
+        self._switch("")
+
+    def pytest_runtest_logreport(self, report: Any) -> None:
+        if not report.passed:
+            self.failed.add(report.nodeid)
+
+    def fixture(self, fixturedef: Any, request: Any) -> Iterator[None]:
+        if fixturedef.scope == "function":
+            return (yield)
+        before, start = self.now, time.process_time()
+        key = f"fixture {fixturedef.baseid}|{fixturedef.argname}|{getattr(request, 'param_index', '')}"
+        if not hasattr(request, "param"):
+            key = key.rsplit("|", 1)[0] + "|"
+        self._switch(key)
+        try:
+            return (yield)
+        finally:
+            taken = time.process_time() - start
+            self.shared_seconds[key] += taken
+            if before in self.seconds:
+                self.seconds[before] -= taken
+            self._switch(before)
+
+
+def make_map(out: Path, plain: bool, tests: list[str]) -> None:
+    """Run the tests once under coverage and write which of them run which line, and how long each takes."""
+    import coverage
+    import pytest
+
+    data = out / f"map-{'plain' if plain else 'compiled'}.coverage"
+    data.unlink(missing_ok=True)
+    cover = coverage.Coverage(data_file=str(data), source=[str(ROOT / "yieldsim" / p) for p in PACKAGES], config_file=False)
+    watch = Watch(cover, LONGEST[plain])
+    Watch.pytest_fixture_setup = pytest.hookimpl(wrapper=True)(Watch.fixture)  # type: ignore[attr-defined]
+    signal.signal(signal.SIGPROF, _stop)
+    cover.start()
+    pytest.main(["-q", "--no-header", "-p", "no:cacheprovider", "--tb=no", "-r", "fE", *tests], plugins=[watch])
+    cover.stop()
+    cover.save()
+    found, names = cover.get_data(), [t for t in watch.seconds if t not in watch.failed]
+    places = {name: i for i, name in enumerate(names)}
+    users: dict[str, list[int]] = defaultdict(list)
+    for name in names:
+        for key in watch.shared.get(name, ()):
+            users[key].append(places[name])
+    lines: dict[str, dict[int, list[int]]] = {}
+    for file in found.measured_files():
+        module = ".".join(Path(file).relative_to(ROOT / "yieldsim").with_suffix("").parts)
+        lines[module] = {
+            line: sorted({i for c in contexts for i in ([places[c]] if c in places else users.get(c, []))})
+            for line, contexts in found.contexts_by_lineno(file).items()
+        }
+    costs = [
+        [name, round(watch.seconds[name], 4), sorted(watch.shared.get(name, ()))]
+        for name in names
+    ]
+    record = {"tests": costs, "shared": watch.shared_seconds, "lines": lines}
+    data.with_suffix(".json").write_text(json.dumps(record), "utf-8")
+    print(f"{len(names)} tests mapped, {len(watch.failed)} left out", flush=True)
+
+
+def choose(record: dict[str, Any], mutant: Mutant, budget: float) -> list[str]:
+    """Return the tests for a mutant within a budget, those that run its line first, a file's tests together."""
+    by_line = record["lines"].get(mutant.module, {})
+    everyone = {i for tests in by_line.values() for i in tests}
+    here = set(by_line.get(str(mutant.line), ()))
+    package, own = mutant.module.split(".", 1)
+    chosen: list[int] = []
+    paid: set[str] = set()
+    spent = 0.0
+
+    def cost(i: int) -> float:
+        name, seconds, shared = record["tests"][i]
+        return float(seconds) + sum(record["shared"].get(key, 0.0) for key in shared if key not in paid)
+
+    for group in (here, everyone - here):
+        for i in sorted(group, key=lambda i: (own not in record["tests"][i][0], cost(i))):
+            price = cost(i)
+            if spent + price <= budget or not chosen:
+                spent += price
+                paid.update(record["tests"][i][2])
+                chosen.append(i)
+    files: dict[str, list[int]] = defaultdict(list)
+    for i in chosen:
+        files[record["tests"][i][0].split("::")[0]].append(i)
+    order = sorted(
+        files, key=lambda f: (f"test_{own}.py" not in f or package not in f, sum(record["tests"][i][1] for i in files[f]))
+    )
+    return [record["tests"][i][0] for f in order for i in sorted(files[f], key=lambda i: (i not in here, cost(i)))]
+
+
+# ---- running -----------------------------------------------------------------------------------------------------
+
+
+class Mutated(importlib.abc.MetaPathFinder, importlib.machinery.SourceFileLoader):
+    """Gives the import of one module another source than its file has."""
+
+    def __init__(self, module: str, changed: str) -> None:
+        self.wanted, self.changed = f"yieldsim.{module}", changed
+        super().__init__(self.wanted, str(path_of(module)))
+
+    def find_spec(self, fullname: str, path: Any = None, target: Any = None) -> importlib.machinery.ModuleSpec | None:
+        if fullname != self.wanted:
+            return None
+        return importlib.util.spec_from_file_location(fullname, self.path, loader=self)
+
+    def get_code(self, fullname: str) -> CodeType:
+        text = self.changed.replace("except CosmicRayTestingException", "except ZeroDivisionError")
+        return compile(text, self.path, "exec", dont_inherit=True)
+
+
+class Chosen:
+    """Plugin of pytest: only the chosen tests in their order; no shrinking of what Hypothesis finds."""
+
+    def __init__(self, tests: list[str]) -> None:
+        self.order = {name: i for i, name in enumerate(tests)}
+        self.first = ""
+
+    def pytest_sessionstart(self) -> None:
+        from hypothesis import Phase, settings
+
+        settings.register_profile(
+            "mutation", settings.get_profile("ci"), phases=(Phase.explicit, Phase.generate), report_multiple_bugs=False
+        )
+        settings.load_profile("mutation")
+
+    def pytest_collection_modifyitems(self, items: list[Any]) -> None:
+        items[:] = sorted((i for i in items if i.nodeid in self.order), key=lambda i: self.order[i.nodeid])
+
+    def pytest_runtest_logreport(self, report: Any) -> None:
+        if report.failed and not self.first:
+            self.first = report.nodeid
+
+
+def child(mutant: Mutant, changed: str, tests: list[str], pipe: int) -> None:
+    """Import the mutated package, run the tests in this process and write into the pipe what became of it."""
+    import pytest
+
+    sys.meta_path.insert(0, Mutated(mutant.module, changed))
+    plugin = Chosen(tests)
+    files = list(dict.fromkeys(name.split("::")[0] for name in tests))
+    with contextlib.redirect_stdout(io.StringIO()), contextlib.redirect_stderr(io.StringIO()):
+        code = pytest.main(["-x", "-q", "-p", "no:cacheprovider", "--tb=no", *files], plugins=[plugin])
+    verdict = "survived" if code == 0 else "killed" if code in (1, 2, 3, 4) else f"no tests ({code})"
+    os.write(pipe, json.dumps([verdict, plugin.first]).encode())
+
+
+def attempt(mutant: Mutant, changed: str, tests: list[str], budget: float) -> tuple[str, str]:
+    """Run one mutant in a process of its own; stopped by its processor time, or by ten times that on the clock."""
+    if not tests:
+        return "no tests", ""
+    reader, writer = os.pipe()
+    seconds = int(2 * budget + 10)
+    process = os.fork()
+    if process == 0:
+        os.close(reader)
+        os.setpgid(0, 0)
+        resource.setrlimit(resource.RLIMIT_CPU, (seconds, seconds))
+        signal.alarm(10 * seconds)
+        null = os.open(os.devnull, os.O_WRONLY)
+        os.dup2(null, 1)
+        os.dup2(null, 2)
+        try:
+            child(mutant, changed, tests, writer)
+        except BaseException:
+            os.write(writer, json.dumps(["killed", "import"]).encode())
+        os._exit(0)
+    os.close(writer)
+    with os.fdopen(reader, "rb") as pipe:
+        said = pipe.read()
+    _, status = os.waitpid(process, 0)
+    if os.WIFSIGNALED(status):
+        return ("timeout" if os.WTERMSIG(status) in (signal.SIGXCPU, signal.SIGALRM, signal.SIGKILL) else "killed"), ""
+    verdict, first = json.loads(said)
+    return verdict, first
+
+
+def warm_up() -> None:
+    """Import all libraries once, then forget the package itself, so that each mutant imports it anew."""
+    import hypothesis
+    import pytest
+    import scipy.optimize
+    import xarray
+
+    import yieldsim.api
+    import yieldsim.report
+    import yieldsim.study.run
+
+    assert hypothesis and pytest and scipy.optimize and xarray and yieldsim.report and yieldsim.study.run
+    for name in [n for n in sys.modules if n == "yieldsim" or n.startswith("yieldsim.")]:
+        del sys.modules[name]
+
+
+def results(out: Path) -> dict[tuple[str, str], dict[str, Any]]:
+    """Return what is known of each mutant by module and change, the last word of each."""
+    file = out / "results.jsonl"
+    rows = [json.loads(row) for row in file.read_text("utf-8").splitlines()] if file.exists() else []
+    return {(r["module"], r["change"]): r for r in rows}
+
+
+def run(out: Path, count: int, plain: bool, budget: float, again: bool, only: Iterable[str]) -> None:
+    """Run the mutants of the sample that have no verdict yet (or survived, to try them again)."""
+    record = json.loads((out / f"map-{'plain' if plain else 'compiled'}.json").read_text("utf-8"))
+    known = results(out)
+    samples = [sample(package, count, out) for package in PACKAGES]
+    warm_up()
+    for mutant, change in (m for row in zip(*samples, strict=True) for m in row):  # stopped early, still even
+        if (mutant.module in PLAIN) != plain or (only and mutant.module not in only):
+            continue
+        before = known.get((mutant.module, change))
+        if before and not (again and before["verdict"] in ("survived", "no tests")):
+            continue
+        _, changed = mutate(mutant) or ("", "")
+        tests = choose(record, mutant, budget)
+        start = time.monotonic()
+        verdict, first = attempt(mutant, changed, tests, budget)
+        row = {
+            "module": mutant.module, "line": mutant.line, "operator": mutant.operator, "change": change,
+            "verdict": verdict, "by": first, "tests": len(tests), "seconds": round(time.monotonic() - start, 1),
+        }  # fmt: skip
+        with (out / "results.jsonl").open("a", encoding="utf-8") as file:
+            file.write(json.dumps(row) + "\n")
+
+
+def report(out: Path, count: int, survivors: bool) -> None:
+    """Print how many of the sample died, by package, and who lived."""
+    known = results(out)
+    for package in PACKAGES:
+        tally, lived = Counter[str](), []
+        for mutant, change in sample(package, count, out):
+            row = known.get((mutant.module, change))
+            tally[row["verdict"] if row else "not run"] += 1
+            if row and row["verdict"] not in ("killed", "timeout"):
+                lived.append((mutant, row))
+        done = sum(tally.values()) - tally["not run"]
+        dead = tally["killed"] + tally["timeout"]
+        print(f"  {done} run, {dead} dead ({100 * dead / max(done, 1):.1f} %): {dict(tally)}")
+        for mutant, row in sorted(lived, key=lambda pair: (pair[0].module, pair[0].line)) if survivors else ():
+            print(f"yieldsim/{mutant.module.replace('.', '/')}.py:{mutant.line} {row['verdict']}\n{row['change']}")
+
+
+def main() -> None:
+    parser = argparse.ArgumentParser(description=__doc__, formatter_class=argparse.RawDescriptionHelpFormatter)
+    parser.add_argument("verb", choices=("map", "run", "report"))
+    parser.add_argument("--out", type=Path, default=ROOT / "outputs" / "mutation")
+    parser.add_argument("--count", type=int, default=400, help="mutants of each package")
+    parser.add_argument("--plain", action="store_true", help="compiled modules, as plain Python (NUMBA_DISABLE_JIT=1)")
+    parser.add_argument("--budget", type=float, default=BUDGET, help="seconds of tests for a mutant")
+    parser.add_argument("--again", action="store_true", help="try survivors again, after new tests")
+    parser.add_argument("--only", nargs="*", default=(), help="modules, such as sky.sun")
+    parser.add_argument("--survivors", action="store_true", help="with report: who lived")
+    parser.add_argument("--tests", nargs="*", default=TESTS, help="with map: folders or files of tests")
+    args = parser.parse_args()
+    os.chdir(ROOT)
+    sys.path.insert(0, str(ROOT))
+    args.out.mkdir(parents=True, exist_ok=True)
+    if args.plain:
+        os.environ["NUMBA_DISABLE_JIT"] = "1"
+    if args.verb == "map":
+        make_map(args.out, args.plain, list(args.tests))
+    elif args.verb == "run":
+        run(args.out, args.count, args.plain, args.budget, args.again, args.only)
+    else:
+        report(args.out, args.count, args.survivors)
+
+
+if __name__ == "__main__":
+    main()
