@@ -2,6 +2,7 @@
 
     pip install -e ".[dev,mutation]"
     python tests/mutation/run.py map                    # which test runs which line: once, and again when tests change
+    python tests/mutation/run.py map --plain --tests tests/sky tests/device
     python tests/mutation/run.py run --count 400        # 400 mutants of each package; goes on where it was stopped
     python tests/mutation/run.py report --survivors     # figures, and the diffs of what lived
 
@@ -17,6 +18,7 @@ from __future__ import annotations
 import argparse
 import ast
 import contextlib
+import gc
 import hashlib
 import importlib.abc
 import importlib.machinery
@@ -28,6 +30,7 @@ import resource
 import signal
 import sys
 import time
+import traceback
 from collections import Counter, defaultdict
 from collections.abc import Iterable, Iterator
 from dataclasses import astuple, dataclass
@@ -37,12 +40,20 @@ from typing import Any
 
 ROOT = Path(__file__).parents[2]
 PACKAGES = ("sky", "device", "study")
-TESTS = ("tests/sky", "tests/device", "tests/study", "tests/screen", "tests/checks")
+TESTS = ("tests/sky", "tests/device", "tests/study")
 #: Modules that are compiled, or whose constants compiled code takes in: their mutants are run as plain Python.
-PLAIN = ("sky.kernel", "sky.kernel_layer", "sky.layer", "device.kernel", "device.points", "device.diode", "device.series")
+PLAIN = (
+    "sky.kernel",
+    "sky.kernel_layer",
+    "sky.layer",
+    "device.kernel",
+    "device.points",
+    "device.diode",
+    "device.series",
+)
 SEED = 20
 LONGEST = {False: 15.0, True: 3.0}  # s of processor time for one test, compiled and plain; longer ones are left out
-BUDGET = 8.0  # s of processor time for all tests of one mutant
+BUDGET = 4.0  # s of processor time for all tests of one mutant
 
 
 # ---- mutants -----------------------------------------------------------------------------------------------------
@@ -241,7 +252,9 @@ def make_map(out: Path, plain: bool, tests: list[str]) -> None:
 
     data = out / f"map-{'plain' if plain else 'compiled'}.coverage"
     data.unlink(missing_ok=True)
-    cover = coverage.Coverage(data_file=str(data), source=[str(ROOT / "yieldsim" / p) for p in PACKAGES], config_file=False)
+    cover = coverage.Coverage(
+        data_file=str(data), source=[str(ROOT / "yieldsim" / p) for p in PACKAGES], config_file=False
+    )
     watch = Watch(cover, LONGEST[plain])
     Watch.pytest_fixture_setup = pytest.hookimpl(wrapper=True)(Watch.fixture)  # type: ignore[attr-defined]
     signal.signal(signal.SIGPROF, _stop)
@@ -262,43 +275,63 @@ def make_map(out: Path, plain: bool, tests: list[str]) -> None:
             line: sorted({i for c in contexts for i in ([places[c]] if c in places else users.get(c, []))})
             for line, contexts in found.contexts_by_lineno(file).items()
         }
-    costs = [
-        [name, round(watch.seconds[name], 4), sorted(watch.shared.get(name, ()))]
-        for name in names
-    ]
+    costs = [[name, round(watch.seconds[name], 4), sorted(watch.shared.get(name, ()))] for name in names]
     record = {"tests": costs, "shared": watch.shared_seconds, "lines": lines}
-    data.with_suffix(".json").write_text(json.dumps(record), "utf-8")
+    kept = data.with_suffix(".json")
+    if kept.exists() and tests != list(TESTS):
+        record = merged(json.loads(kept.read_text("utf-8")), record)
+    kept.write_text(json.dumps(record), "utf-8")
     print(f"{len(names)} tests mapped, {len(watch.failed)} left out", flush=True)
 
 
-def choose(record: dict[str, Any], mutant: Mutant, budget: float) -> list[str]:
-    """Return the tests for a mutant within a budget, those that run its line first, a file's tests together."""
+def merged(old: dict[str, Any], new: dict[str, Any]) -> dict[str, Any]:
+    """Return a map with the tests of some files mapped anew."""
+    files = {name.split("::")[0] for name, _, _ in new["tests"]}
+    stale = {i for i, (name, _, _) in enumerate(old["tests"]) if name.split("::")[0] in files}
+    lines: dict[str, dict[str, list[int]]] = {
+        module: {line: [i for i in tests if i not in stale] for line, tests in found.items()}
+        for module, found in old["lines"].items()
+    }
+    for module, found in new["lines"].items():
+        for line, tests in found.items():
+            here = lines.setdefault(module, {}).setdefault(str(line), [])
+            here.extend(len(old["tests"]) + i for i in tests)
+    return {"tests": old["tests"] + new["tests"], "shared": old["shared"] | new["shared"], "lines": lines}
+
+
+def choose(record: dict[str, Any], mutant: Mutant, budget: float) -> list[list[str]]:
+    """Return the tests for a mutant within a budget: first those of its module's own file, then others by their price.
+
+    Tests that run the line come before those that run another of the module, which tell of constants and of what a
+    cache or the import ran for all.
+    """
     by_line = record["lines"].get(mutant.module, {})
-    everyone = {i for tests in by_line.values() for i in tests}
     here = set(by_line.get(str(mutant.line), ()))
+    there = {i for tests in by_line.values() for i in tests} - here
     package, own = mutant.module.split(".", 1)
-    chosen: list[int] = []
     paid: set[str] = set()
-    spent = 0.0
 
     def cost(i: int) -> float:
-        name, seconds, shared = record["tests"][i]
+        _, seconds, shared = record["tests"][i]
         return float(seconds) + sum(record["shared"].get(key, 0.0) for key in shared if key not in paid)
 
-    for group in (here, everyone - here):
-        for i in sorted(group, key=lambda i: (own not in record["tests"][i][0], cost(i))):
-            price = cost(i)
-            if spent + price <= budget or not chosen:
-                spent += price
-                paid.update(record["tests"][i][2])
-                chosen.append(i)
-    files: dict[str, list[int]] = defaultdict(list)
-    for i in chosen:
-        files[record["tests"][i][0].split("::")[0]].append(i)
-    order = sorted(
-        files, key=lambda f: (f"test_{own}.py" not in f or package not in f, sum(record["tests"][i][1] for i in files[f]))
-    )
-    return [record["tests"][i][0] for f in order for i in sorted(files[f], key=lambda i: (i not in here, cost(i)))]
+    def is_own(i: int) -> bool:
+        return str(record["tests"][i][0]).startswith(f"tests/{package}/test_{own}.py")
+
+    groups: list[list[str]] = []
+    for mine, share in ((True, 0.5), (False, 1.0)):
+        chosen: list[int] = []
+        spent = 0.0
+        for group in (here, there):
+            for i in sorted((i for i in group if is_own(i) == mine), key=cost):
+                if spent + cost(i) <= share * budget:
+                    spent += cost(i)
+                    paid.update(record["tests"][i][2])
+                    chosen.append(i)
+        order = list(dict.fromkeys(record["tests"][i][0].split("::")[0] for i in chosen))
+        names = [record["tests"][i][0] for i in chosen]
+        groups.append(sorted(names, key=lambda name: order.index(name.split("::")[0])))
+    return [group for group in groups if group]
 
 
 # ---- running -----------------------------------------------------------------------------------------------------
@@ -324,9 +357,8 @@ class Mutated(importlib.abc.MetaPathFinder, importlib.machinery.SourceFileLoader
 class Chosen:
     """Plugin of pytest: only the chosen tests in their order; no shrinking of what Hypothesis finds."""
 
-    def __init__(self, tests: list[str]) -> None:
-        self.order = {name: i for i, name in enumerate(tests)}
-        self.first = ""
+    def __init__(self, tests: list[str], pipe: int) -> None:
+        self.order, self.pipe = {name: i for i, name in enumerate(tests)}, pipe
 
     def pytest_sessionstart(self) -> None:
         from hypothesis import Phase, settings
@@ -340,24 +372,35 @@ class Chosen:
         items[:] = sorted((i for i in items if i.nodeid in self.order), key=lambda i: self.order[i.nodeid])
 
     def pytest_runtest_logreport(self, report: Any) -> None:
-        if report.failed and not self.first:
-            self.first = report.nodeid
+        if report.failed:
+            os.write(self.pipe, json.dumps(["killed", report.nodeid]).encode())
+            os._exit(0)
 
 
-def child(mutant: Mutant, changed: str, tests: list[str], pipe: int) -> None:
+def child(mutant: Mutant, changed: str, groups: list[list[str]], pipe: int) -> None:
     """Import the mutated package, run the tests in this process and write into the pipe what became of it."""
+    import numba
+
+    numba.config.DISABLE_JIT = mutant.module in PLAIN  # read where a function is decorated
+    sys.meta_path.insert(0, Mutated(mutant.module, changed))
+    for tests in groups:
+        files = dict.fromkeys(name.split("::")[0] for name in tests)
+        code = pytest_quietly(["-x", *files], [Chosen(tests, pipe)])
+        if code != 0:  # no test failed, or it would have ended this process: a file cannot be imported, if not worse
+            os.write(pipe, json.dumps(["killed" if code in (2, 4) else f"error {code}", ""]).encode())
+            return
+    os.write(pipe, json.dumps(["survived", ""]).encode())
+
+
+def pytest_quietly(arguments: list[str], plugins: list[Any]) -> int:
     import pytest
 
-    sys.meta_path.insert(0, Mutated(mutant.module, changed))
-    plugin = Chosen(tests)
-    files = list(dict.fromkeys(name.split("::")[0] for name in tests))
+    options = ["-q", "-p", "no:cacheprovider", "--tb=no", "-W", "ignore::pytest.PytestAssertRewriteWarning"]
     with contextlib.redirect_stdout(io.StringIO()), contextlib.redirect_stderr(io.StringIO()):
-        code = pytest.main(["-x", "-q", "-p", "no:cacheprovider", "--tb=no", *files], plugins=[plugin])
-    verdict = "survived" if code == 0 else "killed" if code in (1, 2, 3, 4) else f"no tests ({code})"
-    os.write(pipe, json.dumps([verdict, plugin.first]).encode())
+        return int(pytest.main([*options, *arguments], plugins=plugins))
 
 
-def attempt(mutant: Mutant, changed: str, tests: list[str], budget: float) -> tuple[str, str]:
+def attempt(mutant: Mutant, changed: str, tests: list[list[str]], budget: float) -> tuple[str, str]:
     """Run one mutant in a process of its own; stopped by its processor time, or by ten times that on the clock."""
     if not tests:
         return "no tests", ""
@@ -375,7 +418,7 @@ def attempt(mutant: Mutant, changed: str, tests: list[str], budget: float) -> tu
         try:
             child(mutant, changed, tests, writer)
         except BaseException:
-            os.write(writer, json.dumps(["killed", "import"]).encode())
+            os.write(writer, json.dumps(["error", traceback.format_exc()[-400:]]).encode())
         os._exit(0)
     os.close(writer)
     with os.fdopen(reader, "rb") as pipe:
@@ -388,19 +431,15 @@ def attempt(mutant: Mutant, changed: str, tests: list[str], budget: float) -> tu
 
 
 def warm_up() -> None:
-    """Import all libraries once, then forget the package itself, so that each mutant imports it anew."""
-    import hypothesis
-    import pytest
-    import scipy.optimize
-    import xarray
-
-    import yieldsim.api
-    import yieldsim.report
-    import yieldsim.study.run
-
-    assert hypothesis and pytest and scipy.optimize and xarray and yieldsim.report and yieldsim.study.run
-    for name in [n for n in sys.modules if n == "yieldsim" or n.startswith("yieldsim.")]:
+    """Collect all tests once, so that libraries are there, then forget what each mutant must import anew."""
+    code = pytest_quietly(["--collect-only", *TESTS], [])
+    if code:
+        raise SystemExit(f"pytest cannot collect the tests (exit code {code})")
+    pytest_quietly(["tests/device/test_points.py", "tests/sky/test_perez_1990.py"], [])
+    for name in [n for n in sys.modules if n.split(".")[0] in ("yieldsim", "tests", "conftest")]:
         del sys.modules[name]
+    gc.collect()
+    gc.freeze()  # a child need not go through all of it again when pytest ends
 
 
 def results(out: Path) -> dict[tuple[str, str], dict[str, Any]]:
@@ -410,25 +449,25 @@ def results(out: Path) -> dict[tuple[str, str], dict[str, Any]]:
     return {(r["module"], r["change"]): r for r in rows}
 
 
-def run(out: Path, count: int, plain: bool, budget: float, again: bool, only: Iterable[str]) -> None:
+def run(out: Path, count: int, budget: float, again: bool, only: Iterable[str]) -> None:
     """Run the mutants of the sample that have no verdict yet (or survived, to try them again)."""
-    record = json.loads((out / f"map-{'plain' if plain else 'compiled'}.json").read_text("utf-8"))
+    records = [json.loads((out / f"map-{mode}.json").read_text("utf-8")) for mode in ("compiled", "plain")]
     known = results(out)
     samples = [sample(package, count, out) for package in PACKAGES]
     warm_up()
     for mutant, change in (m for row in zip(*samples, strict=True) for m in row):  # stopped early, still even
-        if (mutant.module in PLAIN) != plain or (only and mutant.module not in only):
+        if only and mutant.module not in only:
             continue
         before = known.get((mutant.module, change))
         if before and not (again and before["verdict"] in ("survived", "no tests")):
             continue
         _, changed = mutate(mutant) or ("", "")
-        tests = choose(record, mutant, budget)
+        tests = choose(records[mutant.module in PLAIN], mutant, budget)
         start = time.monotonic()
         verdict, first = attempt(mutant, changed, tests, budget)
         row = {
             "module": mutant.module, "line": mutant.line, "operator": mutant.operator, "change": change,
-            "verdict": verdict, "by": first, "tests": len(tests), "seconds": round(time.monotonic() - start, 1),
+            "verdict": verdict, "by": first, "tests": sum(map(len, tests)), "seconds": round(time.monotonic() - start, 1),
         }  # fmt: skip
         with (out / "results.jsonl").open("a", encoding="utf-8") as file:
             file.write(json.dumps(row) + "\n")
@@ -456,7 +495,7 @@ def main() -> None:
     parser.add_argument("verb", choices=("map", "run", "report"))
     parser.add_argument("--out", type=Path, default=ROOT / "outputs" / "mutation")
     parser.add_argument("--count", type=int, default=400, help="mutants of each package")
-    parser.add_argument("--plain", action="store_true", help="compiled modules, as plain Python (NUMBA_DISABLE_JIT=1)")
+    parser.add_argument("--plain", action="store_true", help="with map: compiled modules as plain Python")
     parser.add_argument("--budget", type=float, default=BUDGET, help="seconds of tests for a mutant")
     parser.add_argument("--again", action="store_true", help="try survivors again, after new tests")
     parser.add_argument("--only", nargs="*", default=(), help="modules, such as sky.sun")
@@ -466,12 +505,13 @@ def main() -> None:
     os.chdir(ROOT)
     sys.path.insert(0, str(ROOT))
     args.out.mkdir(parents=True, exist_ok=True)
+    os.environ.setdefault("OPENBLAS_NUM_THREADS", "1")
     if args.plain:
         os.environ["NUMBA_DISABLE_JIT"] = "1"
     if args.verb == "map":
         make_map(args.out, args.plain, list(args.tests))
     elif args.verb == "run":
-        run(args.out, args.count, args.plain, args.budget, args.again, args.only)
+        run(args.out, args.count, args.budget, args.again, args.only)
     else:
         report(args.out, args.count, args.survivors)
 

@@ -20,6 +20,7 @@ from yieldsim.study.chance_light import Found
 from yieldsim.study.chance_shortcut import absorber_owner, junction_owner
 from yieldsim.study.chance_year import spreads_of
 from yieldsim.study.plan import ChancePlan, GroundPlan, LossesPlan
+from yieldsim.weather import cut
 
 WITHIN = 1e-3  # of a year's energy: what the shortcut may differ from the full rerun
 
@@ -44,9 +45,9 @@ def sample():
 class Rerun:
     """A station's year, run again in full for a draw."""
 
-    def __init__(self, year):
+    def __init__(self, year, absorbers=None):
         self.sky, self.mounting, self.site = year.sky, year.plane.mounting, year.plan
-        self.absorbers = sample()
+        self.absorbers = absorbers or sample()
         self.spreads = spreads_of(ChancePlan(), "here", self.absorbers)
         self.drawn = chance_shortcut.dimensions("here", self.absorbers)
         self.found = Found.of(self.site, self.sky)
@@ -127,6 +128,15 @@ def reruns(greensboro, sand_point):
     return {"greensboro": Rerun(greensboro), "sand_point": Rerun(sand_point)}
 
 
+@pytest.fixture(scope="module")
+def days(greensboro, greensboro_weather):
+    """Five days of spring, a tandem and one that takes rear light through another glass: what a change is seen in
+    soon."""
+    sky = hourly.site_sky(greensboro.plan, cut(greensboro_weather, 24 * 100, 24 * 105))
+    few = SimpleNamespace(plan=greensboro.plan, sky=sky, plane=greensboro.plane)
+    return Rerun(few, [each for each in sample() if each.name in ("tandem", "both sides")])
+
+
 def draws(rerun, count):
     """Return draws within 2.5 spreads; responses only fall, since a response that is measured near 1 cannot rise."""
     numbers = np.clip(np.random.default_rng(1).normal(size=(count, len(rerun.drawn))), -2.5, 2.5)
@@ -151,6 +161,19 @@ def test_shortcut_is_the_full_rerun(reruns, station):
         np.testing.assert_allclose(ours / middle, there / base, rtol=WITHIN)
         np.testing.assert_allclose(ours_rating / middle_rating, there_rating / rating, rtol=2e-4)
     assert np.std(moved, axis=0).min() > 5 * WITHIN  # the draws move what is compared by far more
+
+
+def test_a_few_days_by_the_shortcut_are_their_full_rerun(days):
+    """As for the years, where each class holds but an hour or two."""
+    zero = np.zeros(len(days.drawn))
+    base, rating = days.energies(zero)
+    middle, middle_rating = days.told(zero)
+    np.testing.assert_allclose(middle, base, rtol=5e-3)  # classes alone: power is not straight in what they average
+    for numbers in draws(days, 3):
+        there, there_rating = days.energies(numbers)
+        ours, ours_rating = days.told(numbers)
+        np.testing.assert_allclose(ours / middle, there / base, rtol=WITHIN)
+        np.testing.assert_allclose(ours_rating / middle_rating, there_rating / rating, rtol=2e-4)
 
 
 @pytest.mark.parametrize("pair", chance_light.TOGETHER)
@@ -232,8 +255,6 @@ def test_classes_keep_the_light(reruns):
 def test_parts_of_a_year_are_the_year(reruns, greensboro_weather):
     """A year of minutes comes month by month: quarters, closed on their own and told more coarsely, give the ratios of
     the whole within 0.2 %; months of their own haze make most of the difference."""
-    from yieldsim.weather import cut
-
     rerun = reruns["greensboro"]
     moves = {name: rerun.spreads.site[name] for name in OF_LIGHT}
     n = len(greensboro_weather)
