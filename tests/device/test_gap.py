@@ -56,3 +56,10 @@ def test_a_plateau_that_leans_does_not_drag_the_edge():
     level = np.interp(wave, [300, 500, 880], [0.9, 0.9, 0.6]) / (1 + np.exp((1.378 - 1239.842 / wave) / 0.006))
     # the lean holds a third of the fall; 5 nm are 8 meV
     assert steepest_edge_ev(wave, level) == pytest.approx(1.378, abs=4e-3)
+
+
+def test_a_fall_that_lasts_to_the_last_point():
+    """Straight down in energy from 1.5 to 1.3 eV, where the curve ends: its middle."""
+    energy = np.array([3.0, 1.5, 1.45, 1.4, 1.35, 1.3])
+    level = np.array([0.9, 0.9, 0.675, 0.45, 0.225, 0.0])
+    assert steepest_edge_ev(wavelength_nm(energy), level) == pytest.approx(1.4, abs=1e-9)

@@ -206,3 +206,9 @@ def test_joined_stacks_are_computed_as_apart():
     apart = np.concatenate([series.maximum_power(first)[0], series.maximum_power(second)[0]])
     assert series.maximum_power(series.joined([first, second]))[0] == pytest.approx(apart, rel=1e-11)
     assert {field.name for field in fields(Link)} == {"diode", "emission", "thermal_voltage"}  # all of them joined
+
+
+def test_stacks_of_other_sizes_cannot_be_joined():
+    one = pair(np.full(2, 200.0), np.full(2, 210.0))
+    with pytest.raises(ValueError, match="shorter"):
+        series.joined([one, one[:1]])

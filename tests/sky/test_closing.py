@@ -340,3 +340,9 @@ class TestMonthlyHaze:
         np.testing.assert_allclose(expected[:2], 0.2)
         assert np.all(np.isnan(expected[2:]))
         assert np.all(days == 0)
+
+
+def test_the_middle_of_three_hours_may_be_steady():
+    """Three are the fewest that tell; less tell nothing."""
+    assert list(closing.steady(np.full(3, 0.2), np.ones(3, dtype=bool))) == [False, True, False]
+    assert not closing.steady(np.full(2, 0.2), np.ones(2, dtype=bool)).any()

@@ -94,3 +94,12 @@ class TestHours:
         assert ground.broadband(albedo) == pytest.approx([old, 0.8, 0.3, 0.8, 0.8], abs=1e-12)
         visible = spectrum.band_wavelengths() < 700
         assert albedo[1, visible].mean() > 0.9 > albedo[3, visible].mean()
+
+
+def test_black_and_white_grounds_can_be_scaled():
+    """Ends of the range: what reflects nothing stays black at level 0, what reflects all stays white at level 1."""
+    bands = np.ones_like(spectrum.band_wavelengths())
+    assert np.all(ground.scaled(0 * bands, np.array([0.0])) == 0)
+    assert np.all(ground.scaled(bands, np.array([1.0])) == 1)
+    np.testing.assert_allclose(ground.scaled(0 * bands, np.array([0.3])), 0.3, rtol=1e-12)
+    np.testing.assert_allclose(ground.scaled(bands, np.array([0.3])), 0.3, rtol=1e-12)

@@ -250,3 +250,10 @@ def test_tables_are_complete(whole):
     for rows in tables.values():
         assert rows
         assert all(row["site"] == "here" and row["mounting"] == "fixed" for row in rows)
+
+
+@pytest.mark.parametrize("share", [0.5, 0.1])
+def test_error_of_a_quantile(share):
+    """Closed form for evenly spread draws between 0 and 1: the standard deviation of how many lie below, over n."""
+    found = chance.quantile_error(np.linspace(0, 1, 10_001), share)
+    assert found == pytest.approx(np.sqrt(share * (1 - share) / 10_001), rel=1e-3)

@@ -9,7 +9,7 @@ from yieldsim.device.bank import Bank
 from yieldsim.device.junction import Junction
 from yieldsim.device.response import step
 from yieldsim.device.stack import Absorber
-from yieldsim.study import hourly, pairs
+from yieldsim.study import hourly, pairs, sweep
 from yieldsim.study.plan import GapPairsPlan, LossesPlan
 
 
@@ -123,3 +123,12 @@ def test_how_far_today_s_pairs_stay_behind():
     assert (one["best_top_gap_ev"], one["best_bottom_gap_ev"]) == (1.8, 1.0)
     assert best["behind_best"] == pytest.approx(0.0, abs=1e-12)
     assert (found[2]["best_top_gap_ev"], found[2]["best_bottom_gap_ev"]) == (1.6, 1.2)
+
+
+def test_efficiency_is_that_of_the_module():
+    """The light-collecting share of the area counts once: in pairs, in a sweep and in the ranking alike."""
+    whole, part = (replace(stack(1.7, 1.1, 2), area_fraction=share) for share in (1.0, 0.9))
+    for efficiency in (pairs._efficiency, sweep._efficiency):
+        found = efficiency([whole, part])
+        assert found[1] == pytest.approx(0.9 * found[0], rel=1e-12)
+        assert found[0] == pytest.approx(Bank.of([whole]).standard().terminal_power[0] / 1000, rel=1e-12)
