@@ -2,8 +2,14 @@
 
 from __future__ import annotations
 
+import unicodedata
 from collections.abc import Iterable
 from dataclasses import dataclass
+
+
+def plain(text: str) -> str:
+    """Return text without characters that could steer a terminal: control and direction-changing ones become ``?``."""
+    return "".join("?" if unicodedata.category(character) in ("Cc", "Cf", "Cs") else character for character in text)
 
 
 class YieldsimError(Exception):
@@ -34,11 +40,11 @@ class Problem:
     excerpt: str = ""
 
     def __str__(self) -> str:
-        """Return the problem as people read it: place, key, found, allowed."""
+        """Return the problem as people read it: place, key, found, allowed; on one line but for the excerpt."""
         place = ":".join(part for part in (self.file, str(self.line) if self.line else "") if part)
         head = ": ".join(part for part in (place, self.where) if part)
         body = f"found {self.found}; allowed: {self.allowed}" if self.allowed else self.found
-        text = f"{head}: {body}" if head else body
+        text = plain(f"{head}: {body}" if head else body)
         return f"{text}\n{self.excerpt}" if self.excerpt else text
 
 

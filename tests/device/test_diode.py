@@ -10,7 +10,9 @@ from pvlib.singlediode import bishop88_mpp
 
 from tests.strategies import diodes
 from yieldsim.constants import THERMAL_EV_PER_K
+from yieldsim.device import points
 from yieldsim.device.diode import Diode, curve, maximum_power, open_circuit, power_point_start, short_circuit
+from yieldsim.device.junction import LEAST_RECOMBINATION_V
 
 THERMAL = THERMAL_EV_PER_K * 298.15
 
@@ -74,6 +76,29 @@ def test_power_point_against_a_fine_search():
     # a search with steps of 5e-5 of Voc misses the top by less than (n kT/q)^-2 times that squared, 2e-5
     assert np.all(power >= best * (1 - 1e-12))
     assert np.all(power <= best * (1 + 2e-5))
+
+
+@pytest.mark.parametrize("recombination", [LEAST_RECOMBINATION_V, 1e-5, 1e-4, 1e-3, 1e-2])
+def test_power_point_of_an_i_layer_that_cuts_the_curve_off(recombination):
+    """Voltages the diode alone would reach are 0.2 to 3.5 V, the field ends at 0.3 to 1 V: far below many of them."""
+    rng = np.random.default_rng(5)
+    n = 200
+    light, thermal = 10 ** rng.uniform(-3, 3, n), rng.uniform(0.02, 0.09, n)
+    saturation = light / np.expm1(rng.uniform(0.2, 3.5, n) / thermal)
+    resistance, shunt = rng.choice([0, 1e-5, 1e-4], n), rng.choice([0, 1e-6, 0.01], n)
+    each = light, saturation, thermal, resistance, shunt, recombination, rng.uniform(0.3, 1.0, n)
+    diode = Diode(*each)
+    end = open_circuit(diode)
+    below = np.concatenate([np.linspace(0, 1, 20001), 1 - np.geomspace(1e-12, 1, 20001)])[:, None] * end
+    current, voltage = curve(diode, below)
+    power = maximum_power(diode)[0]
+    best = (current * voltage).max(axis=0)
+    assert np.all(power >= best * (1 - 1e-7))  # the room left below the built-in voltage, 1e-6 V, is held to rounding
+    assert np.all(power <= best * (1 + 2e-5))  # what the search may miss, as above
+    for i in range(n):
+        constants = np.array([resistance[i], shunt[i], recombination, each[6][i]])
+        one = points.single_power(light[i : i + 1], saturation[i : i + 1], thermal[i : i + 1], constants)
+        assert one[0] == pytest.approx(power[i], rel=1e-7)
 
 
 def test_settled_far_below_the_limit(monkeypatch):

@@ -38,7 +38,7 @@ def test_all_faults_are_named_at_once():
         Junction(1.34, step(1.34), ideality=0.5, series_resistance_ohm_cm2=-1)
 
 
-@pytest.mark.parametrize(("recombination", "built_in"), [(0.05, math.inf), (0.4, 1.0)])
+@pytest.mark.parametrize(("recombination", "built_in"), [(0.05, math.inf), (0.4, 1.0), (1e-9, 1.0), (7.7e-73, 0.94)])
 def test_an_i_layer_needs_a_field(recombination, built_in):
     with pytest.raises(ValueError, match="recombination_v"):
         Junction(1.7, step(1.7), recombination_v=recombination, built_in_v=built_in)

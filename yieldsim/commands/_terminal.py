@@ -10,6 +10,8 @@ import unicodedata
 from collections.abc import Callable, Sequence
 from typing import TextIO
 
+from yieldsim.errors import plain
+
 _BOLD, _PLAIN, _CLEAR_LINE = "\x1b[1m", "\x1b[0m", "\r\x1b[K"
 
 
@@ -25,11 +27,6 @@ def bold(text: str, stream: TextIO | None = None) -> str:
     """Return text in bold where the stream is a terminal and NO_COLOR (no-color.org) is not set."""
     stream = sys.stdout if stream is None else stream
     return f"{_BOLD}{text}{_PLAIN}" if is_terminal(stream) and not os.environ.get("NO_COLOR") else text
-
-
-def plain(text: str) -> str:
-    """Return text without characters that could steer a terminal: control and direction-changing ones become ``?``."""
-    return "".join("?" if unicodedata.category(character) in ("Cc", "Cf", "Cs") else character for character in text)
 
 
 def width(text: str) -> int:

@@ -21,7 +21,7 @@ from ruamel.yaml.events import (
 )
 from ruamel.yaml.reader import ReaderError
 
-from yieldsim.errors import InputError, Problem
+from yieldsim.errors import InputError, Problem, plain
 
 MAX_DEPTH = 12  # the deepest key of a study lies 6 levels down
 MAX_NODES = 100_000  # keys and values, also after aliases are written out: guards against alias bombs
@@ -79,15 +79,10 @@ def excerpt(lines: Sequence[str], mark: Mark) -> str:
         return ""
     line = lines[mark.line - 1]
     start = max(0, mark.column - 1 - _SHOWN // 2) if len(line) > _SHOWN else 0
-    shown, before = _printable(line[start : start + _SHOWN]), line[start : mark.column - 1]
+    shown, before = plain(line[start : start + _SHOWN]), line[start : mark.column - 1]
     gutter = f"{mark.line:>6} | "
     blank = "".join("  " if unicodedata.east_asian_width(each) in ("W", "F") else " " for each in before)
     return f"{gutter}{shown}\n{' ' * (len(gutter) - 2)}| {blank}^"
-
-
-def _printable(text: str) -> str:
-    """Return text without characters that could steer a terminal."""
-    return "".join("?" if unicodedata.category(each) in ("Cc", "Cf", "Cs") else each for each in text)
 
 
 def compose(text: str, shown: str) -> Node | None:

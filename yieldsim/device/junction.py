@@ -28,12 +28,15 @@ LIMITS: dict[str, tuple[float, float]] = {
     "shunt_resistance_ohm_cm2": (1.0, math.inf),
     "gap_shift_ev_per_k": (-2e-3, 2e-3),
     "nonradiative_drift_per_k": (-0.3, 0.3),
-    "recombination_v": (0.0, 0.5),
+    "recombination_v": (0.0, 0.5),  # and 0 or `LEAST_RECOMBINATION_V` and above
     "built_in_v": (0.3, math.inf),
     "reflection": (0.0, 0.9),
     "parasitic": (0.0, 0.9),
     "transmits": (0.0, 0.95),
 }
+
+#: Below it [V] an i-layer loses nothing and cuts its curve off at the built-in voltage, sharper than can be solved.
+LEAST_RECOMBINATION_V = 1e-6
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -93,6 +96,10 @@ class Junction:
             faults.append(
                 f"recombination_v is {self.recombination_v:g} V with a built-in voltage of {self.built_in_v:g} V; "
                 "it must stay below a quarter of it, or little is collected at all"
+            )
+        if 0 < self.recombination_v < LEAST_RECOMBINATION_V:
+            faults.append(
+                f"recombination_v is {self.recombination_v:g} V; it must be 0, or {LEAST_RECOMBINATION_V:g} V or more"
             )
         if self.recombination_v > 0 and math.isinf(self.built_in_v):
             faults.append("recombination_v needs a finite built_in_v")

@@ -17,7 +17,7 @@ from yieldsim.device import diode, series
 
 Array = NDArray[np.float64]
 
-_NEWTON_STEPS, _ROOT_STEPS = diode.NEWTON_STEPS, diode.ROOT_STEPS
+_NEWTON_STEPS, _ROOT_STEPS = diode.NEWTON_STEPS, diode.ROOT_STEPS  # 40 and 60: a change there is one here, for numba
 _SETTLED, _VOLTAGE_SETTLED, _NO_VOLTAGE = diode.SETTLED, diode.VOLTAGE_SETTLED, diode.NO_VOLTAGE
 _SERIES_STEPS, _SERIES_SETTLED, _SEPARATE_ROUNDS = series.NEWTON_STEPS, series.SETTLED, series.SEPARATE_ROUNDS
 

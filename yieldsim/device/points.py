@@ -17,7 +17,7 @@ from yieldsim.device import diode
 
 Array = NDArray[np.float64]
 
-_STEPS = diode.NEWTON_STEPS
+_STEPS = diode.NEWTON_STEPS  # 40: written out, so that this file changes with it and numba compiles it anew
 _SETTLED = 1e-5  # of the thermal voltage: the last step's square is left, and of that the square in the power
 _LOG2E = 1.4426950408889634
 _LN2_HIGH, _LN2_LOW = 0.6931471803691238, 1.9082149292705877e-10  # ln 2 in two parts (Cody & Waite 1980)
