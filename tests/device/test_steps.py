@@ -199,13 +199,13 @@ def test_fall_and_bend_are_derivatives_of_the_voltages(form, current, coupled):
 @pytest.mark.parametrize("move", [-0.04, -1e-3, 1e-6, 0.02])
 def test_a_step_follows_the_limiting_junction_s_own_curve(move):
     """Diode and shunt in closed form: the current changes by what the curve says of the voltage moved, however far."""
-    diodes, emission = three(False)
+    diodes, _ = three(False)
     links = [series.Link(each, np.zeros(1), THERMAL) for each in diodes]
     now = np.array([190.0])
     found = series.state_at(links, now)
     i = int(np.argmax(found.fall[:, 0]))
     wanted = diode.derivatives(diodes[i], found.voltage[i, 0] + move)[0] - now[0]
-    jl, j0, a, _ = arrays(diodes)
+    _, j0, a, _ = arrays(diodes)
     change, moved = kernel._newton_step(state("compiled", now[0], False), j0, a, move / found.fall[i, 0])
     trial, also = series._newton_step(links, found, now, np.array([move / found.fall[i, 0]]))
     assert moved == pytest.approx(move, rel=1e-9)

@@ -6,10 +6,10 @@
     python tests/mutation/run.py run --count 400        # 400 mutants of each package; goes on where it was stopped
     python tests/mutation/run.py report --survivors     # figures, and the diffs of what lived
 
-cosmic-ray's operators make the mutants; each has a rank from its seed and its own line, so that the sample stays the same
-where the code does. Left out are mutants in annotations, and those that any call at all would kill (`is` for `<`, shifts
-of floats), since they flatter. A server imports the libraries once and forks a process for each mutant, which imports
-yieldsim with the mutated source and runs the tests that run the mutated line, cheap ones first, until one is red.
+cosmic-ray's operators make the mutants; each has a rank from its seed and its own line, so that the sample stays the
+same where the code does. Left out are mutants in annotations, and those that any call at all would kill (`is` for `<`,
+shifts of floats), since they flatter. A server imports the libraries once and forks a process for each mutant, which
+takes in the mutated source and runs the tests that run the mutated line, cheap ones first, until one is red.
 Compiled modules, and those whose constants they take in, are run as plain Python on tests that this leaves affordable.
 """
 
@@ -183,12 +183,12 @@ def sample(package: str, count: int, out: Path) -> list[tuple[Mutant, str]]:
 # ---- which test runs which line ----------------------------------------------------------------------------------
 
 
-class TooSlow(Exception):
+class TooSlowError(Exception):
     """A test that took more processor time than a mutant can be given."""
 
 
 def _stop(_: int, frame: FrameType | None) -> None:
-    raise TooSlow
+    raise TooSlowError
 
 
 class Watch:
@@ -467,7 +467,8 @@ def run(out: Path, count: int, budget: float, again: bool, only: Iterable[str]) 
         verdict, first = attempt(mutant, changed, tests, budget)
         row = {
             "module": mutant.module, "line": mutant.line, "operator": mutant.operator, "change": change,
-            "verdict": verdict, "by": first, "tests": sum(map(len, tests)), "seconds": round(time.monotonic() - start, 1),
+            "verdict": verdict, "by": first, "tests": sum(map(len, tests)),
+            "seconds": round(time.monotonic() - start, 1),
         }  # fmt: skip
         with (out / "results.jsonl").open("a", encoding="utf-8") as file:
             file.write(json.dumps(row) + "\n")

@@ -6,9 +6,7 @@ import pytest
 from yieldsim.study import air
 
 
-@pytest.mark.parametrize(
-    ("temp", "dew", "humidity"), [(20.0, 20.0, 100.0), (20.0, 9.27, 50.0), (30.0, 18.44, 50.0)]
-)
+@pytest.mark.parametrize(("temp", "dew", "humidity"), [(20.0, 20.0, 100.0), (20.0, 9.27, 50.0), (30.0, 18.44, 50.0)])
 def test_humidity_from_the_dew_point(temp, dew, humidity):
     """Psychrometric tables over water, to their last digit: half a percent of humidity."""
 

@@ -1,4 +1,4 @@
-"""A few days of a whole study, small enough to look at every number: datasets and tables against the hours themselves."""
+"""A few days of a whole study, small enough to look at every number: datasets and tables against the hours."""
 
 from dataclasses import replace
 
@@ -31,7 +31,8 @@ class Days:
         april = cut(year, 24 * 100, 24 * 103)
         self.weather = cut(year, 24 * 10, 24 * 12)
         columns = {name: np.concatenate([self.weather[name], april[name]]) for name in year.columns}
-        arrays = {name: np.concatenate([getattr(self.weather, name), getattr(april, name)]) for name in ("flags", "row")}
+        both = (self.weather, april)
+        arrays = {name: np.concatenate([getattr(each, name) for each in both]) for name in ("flags", "row")}
         time = np.concatenate([self.weather.time, april.time])
         self.weather = replace(year, columns=columns, time=time, **arrays)
         self.sites = tuple(SitePlan(name, (), MOUNTINGS) for name in ("first", "second"))
@@ -194,7 +195,9 @@ def test_sweep_and_ratings_are_those_of_the_absorbers(days):
     mine = [row for row in rows if (row["site"], row["mounting"], row["gap_ev"]) == ("first", "steep", 1.1)]
     own = [
         energy
-        for energy, *key in zip(annual["energy_kwh_m2"], annual["site"], annual["mounting"], annual["absorber"], strict=True)
+        for energy, *key in zip(
+            *(annual[name] for name in ("energy_kwh_m2", "site", "mounting", "absorber")), strict=True
+        )
         if key == ["first", "steep", "c-si"]
     ]
     assert mine[0]["energy_kwh_m2"] == pytest.approx(own[0], rel=1e-9)

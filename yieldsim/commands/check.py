@@ -7,7 +7,8 @@ from collections.abc import Iterator, Sequence
 from pathlib import Path
 from typing import TYPE_CHECKING, Any
 
-from yieldsim.commands._terminal import Progress, bold, plain, wrapped
+from yieldsim.commands._terminal import Progress, bold, wrapped
+from yieldsim.errors import plain
 
 if TYPE_CHECKING:
     from yieldsim.errors import InputError, Problem

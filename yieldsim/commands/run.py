@@ -13,8 +13,8 @@ from pathlib import Path
 from typing import TYPE_CHECKING, Any, cast
 
 from yieldsim import __version__
-from yieldsim.commands._terminal import Progress, bold, cut, plain, table, wrapped
-from yieldsim.errors import InputError, Problem
+from yieldsim.commands._terminal import Progress, bold, cut, table, wrapped
+from yieldsim.errors import InputError, Problem, plain
 
 if TYPE_CHECKING:
     from yieldsim.study.hands import Hands

@@ -12,7 +12,7 @@ import math
 import numpy as np
 from numpy.typing import NDArray
 
-from yieldsim.compiled import compiled, inner
+from yieldsim.compiled import compiled
 from yieldsim.device import diode, series
 
 Array = NDArray[np.float64]
@@ -38,7 +38,7 @@ def _log1p(x: float) -> float:
     return math.log(1 + x) if x > 1 else math.log1p(x)
 
 
-@inner
+@compiled
 def _derivatives(jl: float, j0: float, a: float, constants: Array, vj: float) -> tuple[float, float, float]:
     """`diode.derivatives`."""
     growth = _expm1(vj / a)
@@ -52,7 +52,7 @@ def _derivatives(jl: float, j0: float, a: float, constants: Array, vj: float) ->
     return current, slope, bend
 
 
-@inner
+@compiled
 def _upper_bound(jl: float, j0: float, a: float, constants: Array) -> float:
     """`diode._upper_bound`."""
     bound: float = a * _log1p(jl / j0)
@@ -63,7 +63,7 @@ def _upper_bound(jl: float, j0: float, a: float, constants: Array) -> float:
     return bound
 
 
-@inner
+@compiled
 def _start(jl: float, j0: float, a: float) -> float:
     """`diode.power_point_start`."""
     target = 1 + _log1p(jl / j0)
@@ -73,7 +73,7 @@ def _start(jl: float, j0: float, a: float) -> float:
     return a * (w - 1)
 
 
-@inner
+@compiled
 def _point(
     jl: float, j0: float, a: float, constants: Array, start: float, reward: float, emission: float, kt: float
 ) -> float:
@@ -106,7 +106,7 @@ def _point(
     return vj
 
 
-@inner
+@compiled
 def _voltage_at(jl: float, j0: float, a: float, constants: Array, current: float, guess: float) -> float:
     """`diode.voltage_at`; a NaN guess is none."""
     spare = jl - current
@@ -124,7 +124,7 @@ def _voltage_at(jl: float, j0: float, a: float, constants: Array, current: float
     return vj
 
 
-@inner
+@compiled
 def _state(
     jl: Array, j0: Array, a: Array, constants: Array, emission: Array, thermal: float, current: float, state: Array
 ) -> None:
@@ -148,7 +148,7 @@ def _state(
             gain_bend = gain_slope / thermal
 
 
-@inner
+@compiled
 def _first_current(jl: Array, j0: Array, a: Array, constants: Array, total: float, state: Array) -> float:
     """`series._start`; leaves no guess in state."""
     whole = 0.0
@@ -164,7 +164,7 @@ def _first_current(jl: Array, j0: Array, a: Array, constants: Array, total: floa
     return current
 
 
-@inner
+@compiled
 def _newton_step(state: Array, j0: Array, a: Array, back: float) -> tuple[float, float]:
     """`series._newton_step`: change of the current and move of the limiting junction."""
     limiting = 0
@@ -178,7 +178,7 @@ def _newton_step(state: Array, j0: Array, a: Array, back: float) -> tuple[float,
     return -(grown + (slope - growing / width) * move) / (slope * fall), move
 
 
-@inner
+@compiled
 def _resistance(constants: Array) -> float:
     total = 0.0
     for i in range(len(constants)):
@@ -186,7 +186,7 @@ def _resistance(constants: Array) -> float:
     return total
 
 
-@inner
+@compiled
 def _sum(rows: Array, row: int) -> float:
     """Return the sum of a row; a loop compiles several times faster than an array expression."""
     total = 0.0
@@ -195,7 +195,7 @@ def _sum(rows: Array, row: int) -> float:
     return total
 
 
-@inner
+@compiled
 def _series(
     jl: Array, j0: Array, a: Array, constants: Array, emission: Array, thermal: float, total: float, state: Array
 ) -> float:
@@ -230,7 +230,7 @@ def _series(
     return float(now * (_sum(state, 0) - now * series_resistance))
 
 
-@inner
+@compiled
 def _separate(jl: Array, j0: Array, a: Array, constants: Array, emission: Array, thermal: float, state: Array) -> float:
     """`series.separate_power` of one hour; rows of state: voltage, earning per current."""
     n, coupled = len(jl), False

@@ -12,7 +12,7 @@ import math
 import numpy as np
 from numpy.typing import NDArray
 
-from yieldsim.compiled import compiled, inner
+from yieldsim.compiled import compiled
 from yieldsim.device import diode
 
 Array = NDArray[np.float64]
@@ -64,7 +64,7 @@ def _log(x: float) -> float:
     return power * _LN2_HIGH + (2.0 * s * series + power * _LN2_LOW)
 
 
-@inner
+@compiled
 def _begin(s: Array, n: int, constants: Array) -> None:
     """Set the bracket and the first voltage: `diode._upper_bound`, `diode.power_point_start`."""
     shunt, recombination, built_in = constants[1], constants[2], constants[3]
@@ -89,7 +89,7 @@ def _begin(s: Array, n: int, constants: Array) -> None:
         s[_VJ + h] = start if start < 0.99 * high else high * 0.5
 
 
-@inner
+@compiled
 def _step(s: Array, n: int, constants: Array) -> int:
     """Take one step of `diode.rewarded_point`, nothing rewarded; return how many hours have not settled."""
     resistance, shunt, recombination, built_in = constants[0], constants[1], constants[2], constants[3]
@@ -134,7 +134,7 @@ def _exp(x: float) -> float:
     return (_expm1((x - k * _LN2_HIGH) - k * _LN2_LOW) + 1.0) * power
 
 
-@inner
+@compiled
 def _chunk(s: Array, n: int, constants: Array, power: Array) -> None:
     """Set the power of a chunk of hours from its rows of generated and saturation current and thermal voltage."""
     for h in range(n):
