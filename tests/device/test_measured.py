@@ -114,3 +114,14 @@ def test_edge_of_library_curves_is_near_their_gap(name):
     edge = edge_ev(junction.response.wavelength_nm, junction.response.quantum_efficiency)
     # soft edges lie above the optical gap: 0.1 eV for amorphous silicon, 30 meV for the others
     assert junction.gap_ev - 0.01 < edge < junction.gap_ev + (0.12 if name == "a-si" else 0.04)
+
+
+def test_a_gap_before_the_last_point_is_told():
+    wave = np.append(WAVE[WAVE <= 790], 850.0)
+    told_of = cleaned(wave, np.interp(wave, WAVE, LEVEL), "eqe").findings
+    assert any("no points from 790 to 850 nm" in each for each in told_of)
+
+
+def test_a_curve_without_an_edge_says_where_it_ends():
+    with pytest.raises(ValueError, match="ends at 600 nm"):
+        edge_ev(WAVE[WAVE <= 600], LEVEL[WAVE <= 600])

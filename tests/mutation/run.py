@@ -285,9 +285,9 @@ def make_map(out: Path, plain: bool, tests: list[str]) -> None:
 
 
 def merged(old: dict[str, Any], new: dict[str, Any]) -> dict[str, Any]:
-    """Return a map with the tests of some files mapped anew."""
-    files = {name.split("::")[0] for name, _, _ in new["tests"]}
-    stale = {i for i, (name, _, _) in enumerate(old["tests"]) if name.split("::")[0] in files}
+    """Return a map with some tests mapped anew."""
+    names = {name for name, _, _ in new["tests"]}
+    stale = {i for i, (name, _, _) in enumerate(old["tests"]) if name in names}
     lines: dict[str, dict[str, list[int]]] = {
         module: {line: [i for i in tests if i not in stale] for line, tests in found.items()}
         for module, found in old["lines"].items()

@@ -130,9 +130,9 @@ def reruns(greensboro, sand_point):
 
 @pytest.fixture(scope="module")
 def days(greensboro, greensboro_weather):
-    """Five days of spring, a tandem and one that takes rear light through another glass: what a change is seen in
+    """Five days of February, clear and cloudy, a tandem and one that takes rear light through another glass: what a change is seen in
     soon."""
-    sky = hourly.site_sky(greensboro.plan, cut(greensboro_weather, 24 * 100, 24 * 105))
+    sky = hourly.site_sky(greensboro.plan, cut(greensboro_weather, 24 * 53, 24 * 58))
     few = SimpleNamespace(plan=greensboro.plan, sky=sky, plane=greensboro.plane)
     return Rerun(few, [each for each in sample() if each.name in ("tandem", "both sides")])
 
@@ -345,3 +345,88 @@ def test_every_input_has_a_reason_and_a_range():
         assert step > middle
         assert np.all(each.value(chance_inputs.FARTHEST * -each.highest) > (-np.inf if each.kind == "step" else 0))
     assert len(chance_inputs.BY_NAME) == len(chance_inputs.INPUTS)
+
+
+def test_unmoved_days_are_the_study_s_own(days):
+    again = chance_light.moved(days.sky, days.found, {})
+    for name in ("beam", "diffuse", "aod500"):
+        np.testing.assert_allclose(getattr(again.sky, name), getattr(days.sky.sky, name), rtol=1e-6, atol=1e-9)
+    assert days.found.hourly
+    assert days.found.tells.sum() > 5  # whose haze holds still around a high sun
+    assert np.all(days.found.own[days.found.tells])
+
+
+def test_haze_that_is_fixed_is_never_solved(days):
+    """What the study says of haze stands: no hour tells its own, and moving the expected haze moves every hour's."""
+    site = replace(days.site, atmosphere=replace(days.site.atmosphere, haze="fixed"))
+    sky = hourly.site_sky(site, days.sky.weather)
+    found = Found.of(site, sky)
+    assert not (found.hourly or found.own.any() or found.tells.any())
+    more = chance_light.moved(sky, found, {"aod500": np.log(1.5)})
+    np.testing.assert_allclose(more.sky.aod500, 1.5 * sky.sky.aod500, rtol=1e-12)
+
+
+def test_classes_of_days_keep_light_and_time(days):
+    """Invariants: light behind each glass, intervals, and the light that comes with the sun hidden."""
+    kept = days.shortcut.light
+    faces = hourly.FacesOfYear(days.sky, light.plane_parts(days.sky, days.mounting), None, None)
+    for g, (glass, _) in enumerate(hourly.by_front(days.absorbers)):
+        np.testing.assert_allclose(kept.weight @ kept.front[g], faces.entered(glass)[0].sum(axis=0), rtol=1e-9)
+    total = faces.front.total()
+    assert kept.weight.sum() == pytest.approx(np.count_nonzero(total))
+    brought = kept.weight * kept.front[0].sum(axis=1)
+    hidden = np.average(1 - days.sky.sky.open_share, weights=total)
+    assert np.average(kept.cloudy, weights=brought) == pytest.approx(hidden, rel=0.05)  # glass takes more of low sun
+    air = days.sky.weather["temp_air"][days.sky.lit] + 273.15
+    assert np.average(kept.temp_air, weights=brought) == pytest.approx(np.average(air, weights=total), abs=0.1)
+    assert np.all(kept.rise[:, :-1] > 0)
+    assert np.all(kept.rise[:, -1] == 0)
+    assert kept.temp_air[-1] == STANDARD_CELL_TEMPERATURE
+    assert kept.front[0, -1].sum() == pytest.approx(1000.0)
+
+
+def test_two_stretches_joined_hold_both(days, greensboro_weather):
+    """Invariant: light and time of the parts, and the standard spectrum once, at the end."""
+    moves = {"water_cm": 0.1, "angstrom_exponent": 0.2}
+    parts = []
+    for first, last in ((24 * 53, 24 * 55), (24 * 55, 24 * 58)):
+        sky = hourly.site_sky(days.site, cut(greensboro_weather, first, last))
+        parts += chance_light.gather(days.site, sky, days.absorbers, [LossesPlan()], moves, 0.25)
+    whole = chance_light.joined(parts)
+    n = len(whole.weight)
+    assert n == sum(len(part.weight) for part in parts) - 1
+    assert whole.weight[-1] == 0
+    for name in ("front", "rear"):
+        light_of = [np.einsum("gcb,c->gb", getattr(part, name), part.weight) for part in (whole, *parts)]
+        np.testing.assert_allclose(light_of[0], light_of[1] + light_of[2], rtol=1e-12)
+    np.testing.assert_array_equal(whole.front[:, -1], parts[1].front[:, -1])
+    for name, axis in (("front_moves", 2), ("rear_moves", 2), ("rise", 1), ("cloudy", 0), ("temp_air", 0)):
+        values = getattr(whole, name)
+        assert values.shape[axis] == n
+        head = np.take(values, range(len(parts[0].weight) - 1), axis=axis)
+        np.testing.assert_array_equal(head, np.delete(getattr(parts[0], name), -1, axis=axis))
+    assert len(whole.front_moves) == 2 * 2 + 1
+    assert whole.together == ((0, 1),)
+    assert chance_light.joined(parts[:1]) is parts[0]
+
+
+@pytest.mark.parametrize("drifts", [True, False])
+@pytest.mark.parametrize("kind", [0, 1])
+def test_devices_that_are_not_off_are_the_bank_s(days, kind, drifts):
+    """To rounding of ln J0's table; also where no edge drifts with temperature, and the responses are one."""
+    absorber = days.absorbers[kind]
+    if not drifts:
+        still = tuple(replace(each, gap_shift_ev_per_k=0.0) for each in absorber.junctions)
+        absorber = replace(absorber, junctions=still)
+    kept, bank = days.shortcut.light, Bank.of([absorber])
+    temperature = kept.temp_air + kept.rise[kind]
+    front, rear = kept.front[0], kept.rear[0]
+    wanted = bank.terminal_power(bank.currents(front, temperature, rear), temperature)[0]
+    each = np.ones(len(absorber.junctions))
+    made = chance_device.device(absorber, tuple(0.005 * each))
+    assert made.drifts is drifts
+    off = chance_device.Offsets(0 * each, each, each, each, 0.0)
+    np.testing.assert_allclose(chance_device.power(made, off, front, rear, temperature), wanted, rtol=1e-9)
+    warmer = replace(off, temperature_coefficient=1e-3)
+    there = wanted * (1 + 1e-3 * (temperature - STANDARD_CELL_TEMPERATURE))
+    np.testing.assert_allclose(chance_device.power(made, warmer, front, rear, temperature), there, rtol=1e-9)

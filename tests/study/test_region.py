@@ -265,3 +265,15 @@ def test_no_scheduler_is_told_of(folder, plan, monkeypatch):
     with pytest.raises(PlaceError, match="no Dask scheduler answers"):
         api.run_study(plan, folder / "nowhere", cluster=f"tcp://127.0.0.1:{_free_port()}")
     assert time.monotonic() - start < 60
+
+
+def test_winners_of_cells():
+    """By hand: mountings x absorbers x cells; a cell without weather has none, and one absorber wins by nothing."""
+    energy = np.array([[[[5.0, 1.0, np.nan]], [[4.0, 1.5, np.nan]], [[2.0, 3.0, np.nan]]]])
+    best, margin = region._winners(energy)
+    np.testing.assert_array_equal(best, [[[0, 2, -1]]])
+    np.testing.assert_allclose(margin, [[[0.25, 1.0, np.nan]]])
+    for several in (energy[:, :1], np.concatenate([energy, energy])[:, :1]):
+        best, margin = region._winners(several)
+        np.testing.assert_array_equal(best[0], [[0, 0, -1]])
+        np.testing.assert_array_equal(margin[0], [[0.0, 0.0, np.nan]])
