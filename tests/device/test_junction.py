@@ -1,6 +1,7 @@
 """Junctions: what is refused, temperature, quality, moved gaps."""
 
 import math
+from dataclasses import replace
 
 import numpy as np
 import pytest
@@ -12,6 +13,7 @@ from yieldsim.device.gap import steepest_edge_ev
 from yieldsim.device.junction import (
     LIMITS,
     Junction,
+    constants,
     diode_at,
     moved_to_gap,
     response_at,
@@ -73,7 +75,7 @@ def test_hot_edges_move_and_the_saturation_current_rises():
     assert moved == pytest.approx(-40 * silicon.gap_shift_ev_per_k, rel=0.05)
     levels = saturation_current(silicon, np.array([278.15, 298.15, 318.15]))
     assert np.all(np.diff(np.log(levels)) > 1)
-    assert saturation_current(silicon, 298.15) == pytest.approx(levels[1], rel=1e-12)
+    assert saturation_current(silicon, 298.15) == pytest.approx(levels[1], rel=1e-12, abs=0)
     assert np.isnan(saturation_current(silicon, np.array([np.nan, 300.0]))).tolist() == [True, False]
 
 
@@ -89,3 +91,10 @@ def test_moved_to_a_gap_keeps_quality_and_moves_the_edge():
         moved_to_gap(silicon, 4.2)
     same = moved_to_gap(IDEAL, 1.6)
     assert same.response.wavelength_nm == pytest.approx(step(1.6).wavelength_nm, rel=1e-14)
+
+
+def test_constants_are_in_si_units():
+    """By hand: 1 ohm cm2 is 1e-4 ohm m2, 1000 ohm cm2 of shunt are 10 siemens per m2; no shunt conducts nothing."""
+    one = Junction(1.1, step(1.1), series_resistance_ohm_cm2=1.0, shunt_resistance_ohm_cm2=1000.0)
+    assert constants(one)[:2] == pytest.approx([1e-4, 10.0], rel=1e-12)
+    assert constants(replace(one, shunt_resistance_ohm_cm2=np.inf))[1] == 0.0

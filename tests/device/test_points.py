@@ -32,7 +32,7 @@ def test_single_power_is_that_of_the_plain_form(one):
     row = np.ones(3)
     power = points.single_power(light, one.saturation_current * row, one.thermal_voltage * row, constants(one))
     plain = diode.maximum_power(diode.Diode(light, *astuple(one)[1:]))[0]
-    assert power == pytest.approx(plain, rel=1e-10)
+    assert power == pytest.approx(plain, rel=1e-10, abs=1e-12)
 
 
 @pytest.mark.parametrize(

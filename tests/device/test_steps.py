@@ -208,8 +208,8 @@ def test_a_step_follows_the_limiting_junction_s_own_curve(move):
     _, j0, a, _ = arrays(diodes)
     change, moved = kernel._newton_step(state("compiled", now[0], False), j0, a, move / found.fall[i, 0])
     trial, also = series._newton_step(links, found, now, np.array([move / found.fall[i, 0]]))
-    assert moved == pytest.approx(move, rel=1e-9)
-    assert also[0] == pytest.approx(move, rel=1e-9)
+    assert moved == pytest.approx(move, rel=1e-9, abs=0)
+    assert also[0] == pytest.approx(move, rel=1e-9, abs=0)
     assert change == pytest.approx(wanted, rel=1e-7)
     assert trial[0] - now[0] == pytest.approx(wanted, rel=1e-7)
 
@@ -244,7 +244,9 @@ def test_first_current_of_a_stack(light):
     room = np.zeros((4, 3))
     found = kernel._first_current(jl, j0, a, constants, sum(light), room)
     links = hourly(diodes, [0.0, 0.0, 0.0])
-    assert found == pytest.approx(series._start([series._lit(link, np.array([sum(light)])) for link in links])[0])
+    assert found == pytest.approx(
+        series._start([series._lit(link, np.array([sum(light)])) for link in links])[0], rel=1e-9, abs=0
+    )
     assert np.isnan(room[0]).all()
     if min(light) > 0:
         assert found == pytest.approx(series.maximum_power(links)[1][0], rel=0.08)

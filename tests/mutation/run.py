@@ -387,7 +387,7 @@ def child(mutant: Mutant, changed: str, groups: list[list[str]], pipe: int) -> N
         files = dict.fromkeys(name.split("::")[0] for name in tests)
         code = pytest_quietly(["-x", *files], [Chosen(tests, pipe)])
         if code != 0:  # no test failed, or it would have ended this process: a file cannot be imported, if not worse
-            os.write(pipe, json.dumps(["killed" if code in (2, 4) else f"error {code}", ""]).encode())
+            os.write(pipe, json.dumps(["killed" if code in (1, 2, 4) else f"error {code}", ""]).encode())
             return
     os.write(pipe, json.dumps(["survived", ""]).encode())
 

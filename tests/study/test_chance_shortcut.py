@@ -13,7 +13,7 @@ from yieldsim.device.bank import Bank
 from yieldsim.device.junction import moved_to_gap
 from yieldsim.device.response import scaled
 from yieldsim.device.stack import Absorber
-from yieldsim.spectrum import reference_bands
+from yieldsim.spectrum import band_wavelengths, reference_bands
 from yieldsim.study import chance_device, chance_inputs, chance_light, chance_shortcut, hourly, light
 from yieldsim.study.chance_inputs import BY_NAME, OF_JUNCTION, OF_LIGHT, SHAPES, error_shapes, is_ideal
 from yieldsim.study.chance_light import Found
@@ -430,3 +430,13 @@ def test_devices_that_are_not_off_are_the_bank_s(days, kind, drifts):
     warmer = replace(off, temperature_coefficient=1e-3)
     there = wanted * (1 + 1e-3 * (temperature - STANDARD_CELL_TEMPERATURE))
     np.testing.assert_allclose(chance_device.power(made, warmer, front, rear, temperature), there, rtol=1e-9)
+
+
+def test_error_shapes_tie_bands_as_far_as_they_reach():
+    """Definition: two bands err alike by exp(-(d/reach)^2/2) of their distance; what the shapes leave out is 2 % of the
+    variance over the light, and one that is far from the light is told least well."""
+    shapes, share = error_shapes(), reference_bands() / reference_bands().sum()
+    place = np.log(band_wavelengths())
+    wanted = np.exp(-(((place[:, None] - place) / 0.35) ** 2) / 2)
+    off = share @ (shapes.T @ shapes - wanted) ** 2 @ share
+    assert np.sqrt(off) < 0.03

@@ -31,8 +31,9 @@ class Days:
         april = cut(year, 24 * 100, 24 * 103)
         self.weather = cut(year, 24 * 10, 24 * 12)
         columns = {name: np.concatenate([self.weather[name], april[name]]) for name in year.columns}
-        both = (self.weather, april)
-        arrays = {name: np.concatenate([getattr(each, name) for each in both]) for name in ("flags", "row")}
+        arrays = {
+            name: np.concatenate([getattr(self.weather, name), getattr(april, name)]) for name in ("flags", "row")
+        }
         time = np.concatenate([self.weather.time, april.time])
         self.weather = replace(year, columns=columns, time=time, **arrays)
         self.sites = tuple(SitePlan(name, (), MOUNTINGS) for name in ("first", "second"))
@@ -196,7 +197,7 @@ def test_sweep_and_ratings_are_those_of_the_absorbers(days):
     own = [
         energy
         for energy, *key in zip(
-            *(annual[name] for name in ("energy_kwh_m2", "site", "mounting", "absorber")), strict=True
+            annual["energy_kwh_m2"], annual["site"], annual["mounting"], annual["absorber"], strict=True
         )
         if key == ["first", "steep", "c-si"]
     ]
@@ -219,3 +220,12 @@ def test_quality_tells_of_every_lit_interval(days):
         assert sum(r["rows"] for r in rows if r["site"] == "first" and r["kind"] == f"source:{name}") == n
         assert any(r["found"] == source for r in rows)
     np.testing.assert_array_equal(piece.monthly_hours(days.weather), [48, 0, 0, 72, *[0] * 8])
+
+
+def test_a_sweep_stands_under_the_same_light(days):
+    sweep, annual = days.tables["gap_sweep"], days.tables["annual"]
+    of = zip(annual["site"], annual["mounting"], annual["poa_kwh_m2"], strict=True)
+    light = {(site, mounting): poa for site, mounting, poa in of}
+    for site, mounting, poa in zip(sweep["site"], sweep["mounting"], sweep["poa_kwh_m2"], strict=True):
+        if mounting:
+            assert poa == pytest.approx(light[site, mounting], rel=1e-9)

@@ -8,7 +8,7 @@ from yieldsim.constants import PHOTON_EV_NM
 from yieldsim.device.junction import Junction
 from yieldsim.device.response import Response, step
 from yieldsim.device.stack import Absorber
-from yieldsim.study.result import by_hour_table, edges_nm, records, responses_table
+from yieldsim.study.result import by_hour_table, edges_nm, ideal_names, records, responses_table
 
 
 def _hourly(power, utc_offset_h=0.0, start="2023-01-01T00:00"):
@@ -75,3 +75,13 @@ def test_half_hours_bring_half_the_energy():
     for hourly, energy in ((found, [100, 100, 100]), (half, [50, 100])):
         table = by_hour_table("here", hourly, {"a": 200.0})
         assert list(table["specific_yield_kwh_kwp"]) == pytest.approx([each / 200.0 for each in energy])
+
+
+def test_only_ideal_entries_are_limits():
+    """A stack is one if all its parts are; any other quality, or none, is a device."""
+    ideal, real = {"quality": "ideal"}, {"quality": "as c-si"}
+    entries = [
+        {"name": "a", **ideal}, {"name": "b", **real}, {"name": "c"}, {"name": "d", "stack": [ideal, ideal]},
+        {"name": "e", "stack": [ideal, real]},
+    ]  # fmt: skip
+    assert ideal_names({"absorbers": entries}) == ("a", "d")
