@@ -283,12 +283,14 @@ class Bank:
         moving = np.flatnonzero(np.any(yields != yields[middle], axis=(0, 2)))
         if not len(moving):
             return out
-        matrix = np.ascontiguousarray(yields[:, moving]).reshape(-1, n_band).T
         place = (temperature - FOLD_TEMPERATURES[0]) / (FOLD_TEMPERATURES[1] - FOLD_TEMPERATURES[0])
         at = np.clip(np.nan_to_num(place), 0, n_node - 2).astype(np.intp)
         weight = place - at
+        first, last = int(at.min(initial=n_node)), int(at.max(initial=-1)) + 1  # nodes that some hour needs
+        matrix = np.ascontiguousarray(yields[first : last + 1, moving]).reshape(-1, n_band).T
+        at -= first
         for block in _blocks(len(light)):
-            nodes = (light[block] @ matrix).reshape(-1, n_node, len(moving))
+            nodes = (light[block] @ matrix).reshape(-1, last + 1 - first, len(moving))
             rows = np.arange(len(nodes))
             for column, j in enumerate(moving):
                 a = self.absorber_of[j]

@@ -76,9 +76,10 @@ def scaled(shape: Array, level: Array) -> Array:
     """
     at = float(broadband(shape))
     wanted = np.asarray(level, dtype=np.float64)[:, None]
-    darker = shape * np.minimum(wanted / max(at, 1e-12), 1.0)
-    brighter = 1 - (1 - shape) * np.minimum((1 - wanted) / max(1 - at, 1e-12), 1.0)
-    return np.where(wanted <= at, darker, brighter)
+    albedo = np.asarray(shape * np.minimum(wanted / max(at, 1e-12), 1.0))
+    brighter = ~(wanted[:, 0] <= at)
+    albedo[brighter] = 1 - (1 - shape) * np.minimum((1 - wanted[brighter]) / max(1 - at, 1e-12), 1.0)
+    return albedo
 
 
 def albedo_of(

@@ -92,10 +92,16 @@ def sky_light(
     Solar Radiation Data Workshop (1980) 59; here for each band.
     """
     slant = np.maximum(cos_zenith, least_cos_zenith)[:, None]
-    near = np.clip(around, 0.0, 1.0)
+    # In place: new memory for each step takes longer than the arithmetic.
+    direct = np.clip(around, 0.0, 1.0)
     # As the sun sinks below the least height the uniform part takes over, so that none is lost on the horizontal.
-    uniform = diffuse * (1 - near * np.minimum(cos_zenith[:, None] / slant, 1.0))
-    return SkyLight(beam + diffuse * near / slant, uniform, None if rim is None else diffuse * rim)
+    uniform = direct * np.minimum(cos_zenith[:, None] / slant, 1.0)
+    np.subtract(1.0, uniform, out=uniform)
+    uniform *= diffuse
+    direct *= diffuse
+    direct /= slant
+    direct += beam
+    return SkyLight(direct, uniform, None if rim is None else diffuse * rim)
 
 
 def at_level(around: Array, diffuse: Array, level: Array) -> Array:
@@ -133,11 +139,15 @@ def on_plane(light: SkyLight, sight: Sight, albedo: Array) -> PlaneParts:
     PlaneParts
     """
     reflected = albedo[:, None] if albedo.ndim == 1 else albedo
-    sky = light.uniform * sight.sky[:, None]
+    ground = light.direct * sight.ground_beam[:, None]
+    sky = light.uniform * sight.ground_sky[:, None]
+    ground += sky
+    ground *= reflected
+    np.multiply(light.uniform, sight.sky[:, None], out=sky)
     if light.rim is not None:
-        sky = np.maximum(sky + light.rim * sight.rim[:, None], 0.0)
-    ground = light.direct * sight.ground_beam[:, None] + light.uniform * sight.ground_sky[:, None]
-    return PlaneParts(light.direct * sight.beam[:, None], sky, ground * reflected, sight)
+        sky += light.rim * sight.rim[:, None]
+        np.maximum(sky, 0.0, out=sky)
+    return PlaneParts(light.direct * sight.beam[:, None], sky, ground, sight)
 
 
 # ------------------------------------------------------------------------------------------- through the glass
@@ -208,7 +218,11 @@ def entered(parts: PlaneParts, sun: SunCourse, a_r: float | None) -> Array:
     beam = _share(passed, sight.beam)
     sky = _share(lit_mean(sight.sky_step * from_sky, sun.up), lit_mean(sight.sky_step, sun.up))
     ground = _share(lit_mean(sight.ground_step * from_ground, sun.up), lit_mean(sight.ground_step, sun.up))
-    return np.asarray(parts.beam * beam[:, None] + parts.sky * sky[:, None] + parts.ground * ground[:, None])
+    light = parts.beam * beam[:, None]
+    part = parts.sky * sky[:, None]
+    light += part
+    light += np.multiply(parts.ground, ground[:, None], out=part)
+    return np.asarray(light)
 
 
 def _share(part: Array, whole: Array) -> Array:

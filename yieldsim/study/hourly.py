@@ -225,10 +225,11 @@ class FacesOfYear:
         """Return the light on the rear before its glass, summed over the intervals [W m-2]."""
         return 0.0 if self.rear is None else float(self.rear.total().sum())
 
-    def temperatures(self, mounting: MountingPlan, absorbers: Sequence[Absorber]) -> Array:
-        """Return cell temperatures (n_absorber, n) [K]."""
+    def temperatures(self, mounting: MountingPlan, absorbers: Sequence[Absorber], front: Array | None = None) -> Array:
+        """Return cell temperatures (n_absorber, n) [K]; ``front`` is the front's light (n,) [W m-2], if known already."""
+        front = self.front.total() if front is None else front
         rear = None if self.rear is None else self.rear.total()
-        return cell_temperatures(self.site, mounting, self.front.total(), rear, absorbers)
+        return cell_temperatures(self.site, mounting, front, rear, absorbers)
 
 
 def light_paid(year: PlaneYear, absorbers: Sequence[Absorber], month: NDArray[np.intp]) -> LightPaid:
@@ -300,7 +301,7 @@ def plane_year(
     faces = FacesOfYear(site, parts, rear_parts(site, mounting, absorbers), dust)
     plane_of_array = parts.total()
     n, n_absorber = len(plane_of_array), len(absorbers)
-    temperature = faces.temperatures(mounting, absorbers)
+    temperature = faces.temperatures(mounting, absorbers, plane_of_array)
     offsets = np.concatenate([[0], np.cumsum([len(absorber.junctions) for absorber in absorbers])])
     entered, power = np.empty((n_absorber, n)), np.empty((n_absorber, n))
     current, cool, warm = (np.empty((offsets[-1], n)) for _ in range(3))

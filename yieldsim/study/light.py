@@ -47,7 +47,9 @@ def sky_light(site: SiteSky, plan: MountingPlan) -> plane.SkyLight:
 def _hay_davies(site: SiteSky) -> Shares:
     """Return Hay & Davies' shares, band by band, of haze's part of the scattering: Rayleigh's knows no direction."""
     air = site.air.with_aod500(site.sky.aod500)
-    around = site.sky.beam / _top(site) * column.forward_share(air, site.optics)
+    around = column.forward_share(air, site.optics)
+    top = _top(site)
+    around *= np.divide(site.sky.beam, top, out=top)
     return around, None, plane.LEAST_COS_ZENITH
 
 
