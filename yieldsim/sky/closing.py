@@ -13,7 +13,7 @@ from yieldsim import reference, spectrum
 from yieldsim.sky import column, kernel
 from yieldsim.sky.atmosphere import AOD_RANGE
 from yieldsim.sky.column import Air, Optics
-from yieldsim.sky.kernel_layer import LANES, STRIDE
+from yieldsim.sky.kernel_layer import LANES
 
 Array = NDArray[np.float64]
 Mask = NDArray[np.bool_]
@@ -163,22 +163,17 @@ def beam_haze(air: Air, earth_sun: Array, dni: Array, constants: Optics) -> Arra
     haze = np.empty(len(dni))
     wanted = np.log(np.maximum(dni, 1e-3) / earth_sun)
     hours, _ = column.kernel_hours(air, np.zeros(len(dni)))
-    kernel.beam_haze(hours, column.kernel_model(constants), _top(constants), wanted, AOD_RANGE, haze)
+    kernel.beam_haze(hours, column.kernel_model(constants), wanted, AOD_RANGE, haze)
     return haze
-
-
-def _top(constants: Optics) -> Array:
-    """Return light above the air as the kernel takes it, 0 beyond the last band, (STRIDE,) [W m-2]."""
-    top = np.zeros(STRIDE)
-    top[: len(constants.factor)] = constants.extraterrestrial * constants.factor
-    return top
 
 
 def _solve_haze(
     air: Air, earth_sun: Array, dni: Array, dhi: Array, consecutive: Mask, constants: Optics, few: Optics
 ) -> tuple[Array, Mask]:
     """Return the haze that each hour's beam tells of, and which hours are clear."""
-    solved = beam_haze(air, earth_sun, dni, constants)
+    solved = np.full(len(dni), AOD_RANGE[1])
+    told = dni > _LEAST_BEAM
+    solved[told] = beam_haze(air.only(told), earth_sun[told], dni[told], constants)
     explained = _diffuse_explained(air.with_aod500(solved), earth_sun, dni, dhi, few)
     return solved, explained & _neighbours_agree(solved, explained, consecutive)
 
@@ -223,15 +218,17 @@ def monthly_haze(
     counts as `PRIOR_DAYS` days, in logarithms, since haze scatters by factors.
     """
     expected, days = np.full(12, np.nan), np.zeros(12, dtype=np.intp)
+    order = np.lexsort((solved[clear], day[clear], month[clear]))
+    own_month, own_day, own_haze = month[clear][order], day[clear][order], solved[clear][order]
+    new_day = np.diff(own_day, prepend=-1) != 0
+    first = np.flatnonzero(new_day | (np.diff(own_month, prepend=-1) != 0))
+    count = np.diff(first, append=len(own_day))
+    median = (own_haze[first + (count - 1) // 2] + own_haze[first + count // 2]) / 2
     for m in np.unique(month):
-        inside = month == m
-        expected[m] = np.exp(np.mean(np.log(prior[inside])))
-        chosen = inside & clear
-        own_day, own_haze = day[chosen], solved[chosen]
-        numbers, count = np.unique(own_day, return_counts=True)
-        hazes = [np.median(own_haze[own_day == number]) for number in numbers[count >= _DAY_HOURS]]
+        expected[m] = np.exp(np.mean(np.log(prior[month == m])))
+        hazes = median[(own_month[first] == m) & (count >= _DAY_HOURS)]
         days[m] = len(hazes)
-        if hazes:
+        if len(hazes):
             found = np.log(np.median(hazes))
             expected[m] = np.exp((found * len(hazes) + np.log(expected[m]) * PRIOR_DAYS) / (len(hazes) + PRIOR_DAYS))
     return expected, days
@@ -270,6 +267,5 @@ def _split(
     models = column.kernel_model(constants), column.kernel_model(few)
     light = np.stack([dni, dhi, earth_sun, air.cos_zenith], axis=1)
     found, beam, diffuse = np.zeros((n, 2)), np.zeros((n, n_band)), np.zeros((n, n_band))
-    tops, chosen = (_top(constants), _top(few)), chosen_bands(n_band)[0]
-    kernel.split(hours, albedo, models, tops, chosen, light, _OPEN, found, beam, diffuse)
+    kernel.split(hours, albedo, models, chosen_bands(n_band)[0], light, _OPEN, found, beam, diffuse)
     return beam, diffuse, found[:, 1], found[:, 0]

@@ -11,7 +11,7 @@ from numpy.typing import NDArray
 from yieldsim import reference, spectrum
 from yieldsim.sky import growth, kernel
 from yieldsim.sky.growth import mixed_gas_depth, water_depth
-from yieldsim.sky.kernel_layer import BAND_ROWS, Model
+from yieldsim.sky.kernel_layer import BAND_ROWS, STRIDE, Model
 from yieldsim.sky.layer import MOMENTS, Layer, add_layers, four_stream
 from yieldsim.sky.sun import ozone_air_mass, relative_air_mass
 
@@ -276,11 +276,14 @@ def kernel_hours(air: Air, cloud_depth: Array) -> tuple[Array, Array]:
 
 def kernel_model(constants: Optics) -> Model:
     """Return the column's constants as the kernel takes them."""
-    bands = np.concatenate([growth.padded(getattr(constants, name)) for name in BAND_ROWS])
+    light, fixed = np.zeros(STRIDE), np.zeros(STRIDE)
+    light[: len(constants.factor)] = constants.extraterrestrial * constants.factor
     shares = (*AIR_SHARE, *WATER_SHARE, *HAZE_SHARE)
-    fixed = np.array([*shares, CLOUD_ASYMMETRY, RAYLEIGH_MOMENT, _OPEN_SKY, DIFFUSIVITY, CLOUD_PATH])
-    laws = np.array([growth.WATER_LAW, growth.MIXED_LAW])
-    return (bands, *growth.tables(constants.water, constants.mixed_gas), laws, fixed)
+    others = (CLOUD_ASYMMETRY, RAYLEIGH_MOMENT, _OPEN_SKY, DIFFUSIVITY, CLOUD_PATH)
+    known = (*shares, *others, *growth.WATER_LAW, *growth.MIXED_LAW)
+    fixed[: len(known)] = known
+    bands = [growth.padded(getattr(constants, name)) for name in BAND_ROWS]
+    return np.concatenate([*bands, light, fixed]), growth.tables(constants.water, constants.mixed_gas)
 
 
 def transmit_plain(air: Air, cloud_depth: Array, constants: Optics | None = None) -> Transmittance:

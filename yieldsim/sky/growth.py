@@ -36,8 +36,8 @@ def padded(values: Array) -> Array:
     return row
 
 
-def tables(water: Array, mixed_gas: Array) -> tuple[Array, Array]:
-    """Return the depths of vapour and of mixed gas at the paths of the kernel's nodes, flat, a row of bands a node.
+def tables(water: Array, mixed_gas: Array) -> Array:
+    """Return the depths of vapour, then of mixed gas, at the paths of the kernel's nodes, flat, a row of bands a node.
 
     Parameters
     ----------
@@ -47,9 +47,10 @@ def tables(water: Array, mixed_gas: Array) -> tuple[Array, Array]:
 
 
 @lru_cache(maxsize=16)
-def _tables(water: bytes, mixed_gas: bytes) -> tuple[Array, Array]:
+def _tables(water: bytes, mixed_gas: bytes) -> Array:
     wet, mixed = padded(np.frombuffer(water)), padded(np.frombuffer(mixed_gas))
-    return (
-        water_depth(wet, np.exp(kernel_layer.WATER_NODES)[:, None]).ravel(),
-        mixed_gas_depth(mixed, np.exp(kernel_layer.MIXED_NODES)[:, None]).ravel(),
+    depths = (
+        water_depth(wet, np.exp(kernel_layer.WATER_NODES)[:, None]),
+        mixed_gas_depth(mixed, np.exp(kernel_layer.MIXED_NODES)[:, None]),
     )
+    return np.concatenate(depths).ravel()

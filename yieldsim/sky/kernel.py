@@ -18,23 +18,28 @@ from yieldsim.sky.kernel_layer import (
     DEPTH,
     EXPONENT,
     GAS,
+    GROUND,
     LANES,
+    LOG_TOP,
     OZONE,
     PRESSURE,
     RAYLEIGH,
     SHAPE,
     SLOPE,
     STRAIGHT,
+    STRIDE,
+    TOP,
     TOTAL,
     WATER,
     Model,
-    Room,
     below,
     exp,
     gas,
     on_ground,
     start,
     summed,
+    take,
+    take_ground,
     top,
     top_of_few,
     workspace,
@@ -44,7 +49,7 @@ Array = NDArray[np.float64]
 
 # numba keeps compiled code until the function's own file changes and does not look at the files it calls. So this file
 # must change whenever kernel_layer.py does: a test compares the hash.
-LAYER_SHA256 = "59fc25c804b4a3d3f78f6aa3fb0b3deaaa3af580cc425e909baf107f889b04cc"
+LAYER_SHA256 = "c9f5d55b55ffa2bcaa34cbe7e6b5af5377d8c3a9167d7049c102337ca0210cc8"
 
 CLOUD_DEPTH_MAX = 300.0  # the thickest clouds pass about 2 %; beyond it nothing measurable changes
 CLOUD_TOLERANCE = 2e-4  # of transmittance: moves no band over broadband by more than 0.01 %
@@ -70,51 +75,51 @@ def transmit(hours: Array, albedo: Array, model: Model, beam: Array, total: Arra
     model : `Model`
     beam, total : (n, n_band) arrays to fill [1]
     """
-    s, room = workspace()
+    s, curves = workspace(model), model[1]
     n_band = beam.shape[1]
     n, known_exponent = _lanes(n_band), math.nan
     for h in range(hours.shape[0]):
-        hour = hours[h]
-        start(s, n, model, hour, known_exponent)
-        known_exponent = hour[EXPONENT]
-        top(s, n, model, hour, room)
-        below(s, n, model, hour, hour[CLOUD], room)
-        on_ground(s, n, albedo[h], hour[AIR_MASS])
+        take(s, hours, h)
+        take_ground(s, n, albedo, h)
+        start(s, n, known_exponent)
+        known_exponent = s[EXPONENT]
+        top(s, n, curves)
+        below(s, n, curves, s[CLOUD])
+        on_ground(s, n)
         for b in range(n_band):
             beam[h, b], total[h, b] = s[STRAIGHT + b], s[TOTAL + b]
 
 
 @inner
-def _beam(s: Array, n: int, model: Model, log_top: Array, hour: Array, room: Room) -> None:
+def _beam(s: Array, n: int, curves: Array) -> None:
     """Set the logarithm of the hazeless beam and haze's depth along it per AOD."""
-    bands, air_mass = model[0], hour[AIR_MASS]
-    start(s, n, model, hour, math.nan)
-    gas(s, n, model, hour[WATER] * air_mass, hour[PRESSURE] * air_mass, 1.0, room)
+    air_mass, pressure = s[AIR_MASS], s[PRESSURE]
+    start(s, n, math.nan)
+    gas(s, n, curves, s[WATER] * air_mass, pressure * air_mass, 1.0)
     for b in range(n):
-        air = bands[RAYLEIGH + b] * (hour[PRESSURE] * air_mass)
-        s[DEPTH + b] = log_top[b] - (s[GAS + b] + air + s[OZONE + b])
+        air = s[RAYLEIGH + b] * (pressure * air_mass)
+        s[DEPTH + b] = s[LOG_TOP + b] - (s[GAS + b] + air + s[OZONE + b])
         s[SLOPE + b] = s[SHAPE + b] * air_mass
 
 
 @compiled
-def beam_haze(hours: Array, model: Model, top: Array, wanted: Array, bounds: tuple[float, float], haze: Array) -> None:
+def beam_haze(hours: Array, model: Model, wanted: Array, bounds: tuple[float, float], haze: Array) -> None:
     """Fill the haze with which each hour's beam has the wanted sum; Halley's steps on the logarithm of the beam.
 
     Parameters
     ----------
     hours, model : as in `transmit`; the AOD of the hours is where the search starts
-    top : (STRIDE,) array [W m-2], light above the air at the mean distance, 0 beyond the last band
     wanted : (n,) array [ln(W m-2)], at the mean earth-sun distance
     bounds : two floats [1], of the haze
     haze : (n,) array [1] to fill
     """
-    s, room = workspace()
-    n, log_top = _lanes(len(top)), np.empty(len(top))
+    s, n = workspace(model), STRIDE
     for b in range(n):
-        log_top[b] = math.log(top[b]) if top[b] > 0 else -math.inf
+        s[LOG_TOP + b] = math.log(s[TOP + b]) if s[TOP + b] > 0 else -math.inf
     for h in range(hours.shape[0]):
-        aod = hours[h, AOD]
-        _beam(s, n, model, log_top, hours[h], room)
+        take(s, hours, h)
+        aod = s[AOD]
+        _beam(s, n, model[1])
         for _ in range(_HAZE_STEPS):
             for b in range(n):
                 s[TOTAL + b] = exp(s[DEPTH + b] - aod * s[SLOPE + b])
@@ -134,27 +139,23 @@ def beam_haze(hours: Array, model: Model, top: Array, wanted: Array, bounds: tup
 
 
 @inner
-def _cloud_depth(
-    s: Array, n: int, model: Model, light: Array, hour: Array, albedo: Array, clear: float, passed: float, room: Room
-) -> float:
+def _cloud_depth(s: Array, n: int, curves: Array, ground: float, clear: float, passed: float) -> float:
     """Return the depth of the cloud that passes a share of the clear light, from the top layer kept in s.
 
     With K the cloud's transmittance, 1/K - 1 is nearly linear in the depth: steps follow the chord through the last two
     points inside a bracket that always holds the root, halved where a step leaves it, so the search cannot fail. Over
-    bright ground K may first rise above 1.
+    bright ground K may first rise above 1. The ground is its mean albedo, for the first guess.
     """
     if passed >= 1.0 - CLOUD_TOLERANCE:
         return 0.0
-    target, ground, into = 1.0 / max(passed, 1e-3) - 1.0, 0.0, 1.0 / hour[AIR_MASS]
-    for each in albedo:
-        ground += each / len(albedo)
+    target, into = 1.0 / max(passed, 1e-3) - 1.0, 1.0 / s[AIR_MASS]
     low, high, before, miss_before = 0.0, CLOUD_DEPTH_MAX, 0.0, -target
     # First guess: a line through skies of all kinds, 12 % off at the median.
     now = min(target / max((0.2 - 0.12 * into) - ground * (0.2 - 0.1 * into), 0.01), CLOUD_DEPTH_MAX)
     for step in range(_CLOUD_STEPS):
-        below(s, n, model, hour, now, room)
-        on_ground(s, n, albedo, hour[AIR_MASS])
-        miss = clear / summed(s[TOTAL : TOTAL + n], n, light) - 1.0 - target
+        below(s, n, curves, now)
+        on_ground(s, n)
+        miss = clear / summed(s, TOTAL, n) - 1.0 - target
         if miss > 0:
             high = now
         else:
@@ -172,80 +173,81 @@ def _cloud_depth(
 
 
 @inner
-def _scaled_to(diffuse: Array, dhi: float) -> None:
+def _scaled_to(diffuse: Array, h: int, dhi: float) -> None:
     total = 0.0
-    for b in range(len(diffuse)):
-        total += diffuse[b]
+    for b in range(diffuse.shape[1]):
+        total += diffuse[h, b]
     scale = dhi / total if total > 0 else 0.0
-    for b in range(len(diffuse)):
-        diffuse[b] *= scale
+    for b in range(diffuse.shape[1]):
+        diffuse[h, b] *= scale
 
 
 @compiled
 def split(
-    hours: Array, albedo: Array, models: tuple[Model, Model], tops: tuple[Array, Array], chosen: NDArray[np.intp],
-    light: Array, least_hidden: float, found: Array, beam: Array, diffuse: Array,
+    hours: Array, albedo: Array, models: tuple[Model, Model], chosen: NDArray[np.intp], light: Array,
+    least_hidden: float, found: Array, beam: Array, diffuse: Array,
 ) -> None:  # fmt: skip
     """Fill beam and diffuse light of each band, their sums the measured ones, and the cloud that explains them.
 
     Parameters
     ----------
     hours, albedo : as in `transmit`
-    models : two `Model`, of all bands and of the few that stand for them while the cloud is sought
-    tops : two (STRIDE,) arrays [W m-2], light above the air at the mean distance, 0 beyond the last band; for the few
-        times their weights
+    models : two `Model`, of all bands and of the few that stand for them while the cloud is sought, whose light above
+        the air is times their weights
     chosen : (n_few,) int array, the few bands, a multiple of `LANES`
     light : (n, 4) array, dni, dhi [W m-2], extraterrestrial irradiance over its mean, cosine of the zenith
     least_hidden : float [1], hidden share of the hour from which a cloud is sought
     found : (n, 2) array of zeros to fill [1], share of open sun and depth of the cloud over the rest
     beam, diffuse : (n, n_band) arrays of zeros to fill [W m-2], on a plane facing the sun and on the horizontal
     """
-    s, room = workspace()
-    few, few_room = workspace()
+    s, few = workspace(models[0]), workspace(models[1])
+    curves, few_curves = models[0][1], models[1][1]
     n_band, n_few = beam.shape[1], _lanes(len(chosen))
-    n, above, few_above, known_exponent = _lanes(n_band), tops[0], tops[1], math.nan
-    few_albedo = np.empty(len(chosen) if albedo.shape[1] > 1 else 1)
+    n, known_exponent, n_ground = _lanes(n_band), math.nan, albedo.shape[1]
     for h in range(hours.shape[0]):
         dni, dhi, level = light[h, 0], light[h, 1], light[h, 2] * light[h, 3]
-        hour, air_mass = hours[h], hours[h, AIR_MASS]
+        take(s, hours, h)
+        take_ground(s, n, albedo, h)
         if dni > 0:
-            start(s, n, models[0], hour, known_exponent)
-            known_exponent = hour[EXPONENT]
-            top(s, n, models[0], hour, room)
-            below(s, n, models[0], hour, 0.0, room)
-            on_ground(s, n, albedo[h], air_mass)
-            straight = summed(s[STRAIGHT : STRAIGHT + n], n, above)
-            clear = summed(s[TOTAL : TOTAL + n], n, above)
+            start(s, n, known_exponent)
+            known_exponent = s[EXPONENT]
+            top(s, n, curves)
+            below(s, n, curves, 0.0)
+            on_ground(s, n)
+            straight, clear = summed(s, STRAIGHT, n), summed(s, TOTAL, n)
             share, scale = min(1.0, dni / (straight * light[h, 2])), dni / straight
             for b in range(n_band):
-                direct = s[STRAIGHT + b] * above[b]
-                beam[h, b], diffuse[h, b] = direct * scale, (s[TOTAL + b] * above[b] - direct) * (level * share)
+                direct = s[STRAIGHT + b] * s[TOP + b]
+                beam[h, b], diffuse[h, b] = direct * scale, (s[TOTAL + b] * s[TOP + b] - direct) * (level * share)
             given = (clear - straight) * level * share
             found[h, 0] = share
         else:
             share, given = 0.0, 0.0
         if dhi > 0 and 1.0 - share > least_hidden:
-            for i in range(len(few_albedo)):
-                few_albedo[i] = albedo[h, chosen[i]] if albedo.shape[1] > 1 else albedo[h, 0]
+            take(few, hours, h)
+            ground = 0.0 if n_ground > 1 else albedo[h, 0]
+            for i in range(n_few):
+                few[GROUND + i] = albedo[h, min(chosen[i], n_ground - 1)]
+                ground += few[GROUND + i] / n_few if n_ground > 1 else 0.0
             if dni > 0:
                 top_of_few(s, few, chosen)
             else:
-                start(few, n_few, models[1], hour, math.nan)
-                top(few, n_few, models[1], hour, few_room)
-                below(few, n_few, models[1], hour, 0.0, few_room)
-                on_ground(few, n_few, few_albedo, air_mass)
-            clear = summed(few[TOTAL : TOTAL + n_few], n_few, few_above)
+                start(few, n_few, math.nan)
+                top(few, n_few, few_curves)
+                below(few, n_few, few_curves, 0.0)
+                on_ground(few, n_few)
+            clear = summed(few, TOTAL, n_few)
             passed = ((dni * light[h, 3] + dhi) / level - share * clear) / ((1.0 - share) * clear)
-            cloud = _cloud_depth(few, n_few, models[1], few_above, hour, few_albedo, clear, passed, few_room)
+            cloud = _cloud_depth(few, n_few, few_curves, ground, clear, passed)
             if dni <= 0:
-                start(s, n, models[0], hour, known_exponent)
-                known_exponent = hour[EXPONENT]
-                top(s, n, models[0], hour, room)
+                start(s, n, known_exponent)
+                known_exponent = s[EXPONENT]
+                top(s, n, curves)
             if cloud > 0 or dni <= 0:
-                below(s, n, models[0], hour, cloud, room)
-                on_ground(s, n, albedo[h], air_mass)
-            scale = max(dhi - given, 0.0) / summed(s[TOTAL : TOTAL + n], n, above)
+                below(s, n, curves, cloud)
+                on_ground(s, n)
+            scale = max(dhi - given, 0.0) / summed(s, TOTAL, n)
             for b in range(n_band):
-                diffuse[h, b] += s[TOTAL + b] * above[b] * scale
+                diffuse[h, b] += s[TOTAL + b] * s[TOP + b] * scale
             found[h, 1] = cloud
-        _scaled_to(diffuse[h], dhi)
+        _scaled_to(diffuse, h, dhi)

@@ -2,7 +2,9 @@
 
 Same equations as `column.transmit_plain` with `layer.four_stream`, which the tests hold this to. Rows of scratch memory
 hold one value a band; each loop over bands is plain arithmetic on such rows, so that the compiler takes four bands at
-once. Intensities are scaled by the roots of their streams' slants, which makes every matrix of a layer symmetric.
+once. The same memory holds the hour's values and all constants: functions pass one array on, because counting who holds
+each of several arrays took a sixth of the time. Intensities are scaled by the roots of their streams' slants, which
+makes every matrix of a layer symmetric.
 """
 
 from __future__ import annotations
@@ -17,10 +19,9 @@ from yieldsim.sky.layer import RESONANCE, STREAMS
 
 Array = NDArray[np.float64]
 
-#: Band constants (9 x STRIDE,), depths of vapour and of mixed gas at the nodes' paths (nodes x STRIDE,), factors in
-#: their curves of growth (2, 2), shares of air, water and haze by layer and the column's other constants (14,).
-Model = tuple[Array, Array, Array, Array, Array]
-Room = tuple[Array, Array, Array, Array]  # weights of nodes and spare rows, for both gases
+#: What workspaces begin with (N_CONSTANT x STRIDE,), and the depths of vapour and then of mixed gas at the nodes' paths
+#: (nodes x STRIDE,).
+Model = tuple[Array, Array]
 
 _M1, _M2 = STREAMS
 _S1, _S2 = math.sqrt(_M1), math.sqrt(_M2)
@@ -51,26 +52,30 @@ LANES = 4  # loops over bands run to a multiple of it; bands beyond the last are
 # What the layers joined so far do to light; the same with the top layer alone; what arrives, and rows for others.
 _SUM_PATH, _SUM_DEPTH, _BEAM, _D1, _D2, _S11, _S12, _S22 = (STRIDE * row for row in range(36, 44))
 _K1, _K2, _K3, _K4, _K5, _K6, _K7, _K8 = (STRIDE * row for row in range(44, 52))
-GROUND, STRAIGHT, TOTAL, DEPTH, SLOPE = (STRIDE * row for row in range(52, 57))
-N_SCRATCH = 57
-# Rows of band constants.
+GROUND, STRAIGHT, TOTAL, DEPTH, SLOPE, LOG_TOP, _WET, _EVEN, HOUR = (STRIDE * row for row in range(52, 61))
+# Rows of constants: of the bands, light above the air at the mean distance (0 beyond the last band), and FIXED: shares
+# of air, water and haze by layer, the column's other constants, factors in the curves of growth.
 BAND_ROWS = (
     "rayleigh", "ozone", "gas_scale", "haze_shape", "haze_albedo", "haze_asymmetry", "cloud_albedo", "water",
     "mixed_gas",
 )  # fmt: skip
-RAYLEIGH, _OZONE_K, GAS_SCALE, _HAZE_SHAPE, _HAZE_ALBEDO, _HAZE_G, _CLOUD_ALBEDO, _WATER_K, _MIXED_K = (
-    STRIDE * row for row in range(9)
-)
+(
+    RAYLEIGH, _OZONE_K, GAS_SCALE, _HAZE_SHAPE, _HAZE_ALBEDO, _HAZE_G, _CLOUD_ALBEDO, _WATER_K, _MIXED_K, TOP, _FIXED,
+) = (STRIDE * row for row in range(61, 72))  # fmt: skip
+N_CONSTANT, N_SCRATCH = 11, 72
 # Curves of growth are tabled over the logarithm of the path, alike for all bands, so that an hour's six weights serve
 # every band: 6-point Lagrange, 8e-11 of the depth off at most.
 NODE_STEP = 0.05
 WATER_NODES = math.log(0.003) + NODE_STEP * np.arange(250)  # ln cm, up to 800 cm
 MIXED_NODES = math.log(0.05) + NODE_STEP * np.arange(146)  # up to 74
 _FIRST_WATER, _FIRST_MIXED = float(WATER_NODES[0]), float(MIXED_NODES[0])
-# Columns of an hour; places of the column's constants.
-AIR_MASS, OZONE_MASS, PRESSURE, WATER, OZONE_CM, AOD, EXPONENT, CLOUD = range(8)
-_AIR_SHARE, _WATER_SHARE, _HAZE_SHARE = 0, 3, 6
-_CLOUD_G, _RAYLEIGH_MOMENT, _OPEN_SKY, _DIFFUSIVITY, _CLOUD_PATH = range(9, 14)
+_N_WATER, _N_MIXED = len(WATER_NODES), len(MIXED_NODES)
+# Columns of an hour, in scratch memory from HOUR on; places of the column's constants there.
+COLUMNS = 8
+AIR_MASS, OZONE_MASS, PRESSURE, WATER, OZONE_CM, AOD, EXPONENT, CLOUD = range(HOUR, HOUR + COLUMNS)
+_AIR_SHARE, _WATER_SHARE, _HAZE_SHARE = _FIXED, _FIXED + 3, _FIXED + 6
+_CLOUD_G, _RAYLEIGH_MOMENT, _OPEN_SKY, _DIFFUSIVITY, _CLOUD_PATH, _WATER_LAW = range(_FIXED + 9, _FIXED + 15)
+_MIXED_LAW = _WATER_LAW + 2
 
 
 @compiled
@@ -92,72 +97,75 @@ def exp(x: float) -> float:
 
 
 @inner
-def start(s: Array, n: int, model: Model, hour: Array, known_exponent: float) -> None:
+def start(s: Array, n: int, known_exponent: float) -> None:
     """Begin a column: haze and the depth of ozone along the beam; nothing above yet."""
-    bands = model[0]
-    exponent, aod = hour[EXPONENT], hour[AOD]
-    ozone = hour[OZONE_CM] * hour[OZONE_MASS]
+    exponent, aod = s[EXPONENT], s[AOD]
+    ozone = s[OZONE_CM] * s[OZONE_MASS]
     if exponent != known_exponent:
         for b in range(n):
-            s[SHAPE + b] = exp(-exponent * bands[_HAZE_SHAPE + b])
+            s[SHAPE + b] = exp(-exponent * s[_HAZE_SHAPE + b])
     for b in range(n):
         s[_HAZE + b] = aod * s[SHAPE + b]
-        s[OZONE + b] = bands[GAS_SCALE + b] * bands[_OZONE_K + b] * ozone
+        s[OZONE + b] = s[GAS_SCALE + b] * s[_OZONE_K + b] * ozone
         s[_SUM_PATH + b] = 0.0
         s[_SUM_DEPTH + b] = 0.0
 
 
 @inner
-def _around(
-    table: Array, first: float, path: float, weights: Array, spare: Array, strength: Array, law: Array
-) -> Array:
-    """Return the rows of the six nodes around a path and set their weights; beyond the table the curve itself."""
-    place = (math.log(path) - first) / NODE_STEP if path > 0 else -1.0
-    node = math.floor(place)
-    if 2 <= node <= len(table) // STRIDE - 4:
-        x = place - node
-        a, b, c, d, e, f = x + 2, x + 1, x, x - 1, x - 2, x - 3
-        weights[0], weights[1] = -b * c * d * e * f / 120, a * c * d * e * f / 24
-        weights[2], weights[3] = -a * b * d * e * f / 12, a * b * c * e * f / 12
-        weights[4], weights[5] = -a * b * c * d * f / 24, a * b * c * d * e / 120
-        return table[(node - 2) * STRIDE : (node + 4) * STRIDE]
-    weights[:] = 0.0
-    weights[0] = 1.0
-    for i in range(STRIDE):
-        y = strength[i] * path
-        spare[i] = law[0] * y / (1.0 + law[1] * y) ** 0.45
-    return spare
+def _grown(s: Array, n: int, node: int, x: float, table: Array, depth: int) -> None:
+    """Set a row of depths from a table, x of a step beyond a node."""
+    a, b, c, d, e, f = x + 2, x + 1, x, x - 1, x - 2, x - 3
+    v0, v1 = -b * c * d * e * f / 120, a * c * d * e * f / 24
+    v2, v3 = -a * b * d * e * f / 12, a * b * c * e * f / 12
+    v4, v5 = -a * b * c * d * f / 24, a * b * c * d * e / 120
+    near = table[(node - 2) * STRIDE : (node + 4) * STRIDE]
+    row = s[depth : depth + STRIDE]
+    for i in range(n):
+        low = v0 * near[i] + v1 * near[STRIDE + i]
+        middle = v2 * near[2 * STRIDE + i] + v3 * near[3 * STRIDE + i]
+        high = v4 * near[4 * STRIDE + i] + v5 * near[5 * STRIDE + i]
+        row[i] = low + middle + high
 
 
 @inner
-def gas(s: Array, n: int, model: Model, water_path: float, air_path: float, slant: float, room: Room) -> None:
-    """Set the vertical depth of gas in the next layer from its paths down to the layer's foot."""
-    bands, v, w = model[0], room[0], room[1]
-    wet_k, even_k = bands[_WATER_K : _WATER_K + STRIDE], bands[_MIXED_K : _MIXED_K + STRIDE]
-    x = _around(model[1], _FIRST_WATER, water_path, v, room[2], wet_k, model[3][0])
-    y = _around(model[2], _FIRST_MIXED, air_path, w, room[3], even_k, model[3][1])
-    v0, v1, v2, v3, v4, v5 = v[0], v[1], v[2], v[3], v[4], v[5]
-    w0, w1, w2, w3, w4, w5 = w[0], w[1], w[2], w[3], w[4], w[5]
+def gas(s: Array, n: int, curves: Array, water_path: float, air_path: float, slant: float) -> None:
+    """Set the vertical depth of gas in the next layer from its paths down to the layer's foot.
+
+    Beyond the tables depths are those of the curves of growth themselves.
+    """
+    place = (math.log(water_path) - _FIRST_WATER) / NODE_STEP if water_path > 0 else -1.0
+    node = math.floor(place)
+    if 2 <= node <= _N_WATER - 4:
+        _grown(s, n, node, place - node, curves, _WET)
+    else:
+        for b in range(n):
+            y = s[_WATER_K + b] * water_path
+            s[_WET + b] = s[_WATER_LAW] * y / (1.0 + s[_WATER_LAW + 1] * y) ** 0.45
+    place = (math.log(air_path) - _FIRST_MIXED) / NODE_STEP if air_path > 0 else -1.0
+    node = math.floor(place)
+    if 2 <= node <= _N_MIXED - 4:
+        _grown(s, n, node + _N_WATER, place - node, curves, _EVEN)
+    else:
+        for b in range(n):
+            y = s[_MIXED_K + b] * air_path
+            s[_EVEN + b] = s[_MIXED_LAW] * y / (1.0 + s[_MIXED_LAW + 1] * y) ** 0.45
     inverse = 1.0 / slant
     for b in range(n):
-        c, d, e, f, g = STRIDE + b, 2 * STRIDE + b, 3 * STRIDE + b, 4 * STRIDE + b, 5 * STRIDE + b
-        wet = (v0 * x[b] + v1 * x[c]) + (v2 * x[d] + v3 * x[e]) + (v4 * x[f] + v5 * x[g])
-        even = (w0 * y[b] + w1 * y[c]) + (w2 * y[d] + w3 * y[e]) + (w4 * y[f] + w5 * y[g])
-        path = wet + even
-        s[GAS + b] = (path - s[_SUM_PATH + b]) * (bands[GAS_SCALE + b] * inverse)
+        path = s[_WET + b] + s[_EVEN + b]
+        s[GAS + b] = (path - s[_SUM_PATH + b]) * (s[GAS_SCALE + b] * inverse)
         s[_SUM_PATH + b] = path
 
 
 @inner
-def _mix(s: Array, n: int, bands: Array, air_depth: float, haze_share: float, cloud: float, fixed: Array) -> None:
+def _mix(s: Array, n: int, air_depth: float, haze_share: float, cloud: float) -> None:
     """Mix a layer, cut its phase function by delta-M: depth, and half the albedo times each moment."""
-    cg, moment, open_sky = fixed[_CLOUD_G], fixed[_RAYLEIGH_MOMENT], fixed[_OPEN_SKY]
+    cg, moment, open_sky = s[_CLOUD_G], s[_RAYLEIGH_MOMENT], s[_OPEN_SKY]
     cg2, cg3, cg4 = cg * cg, cg * cg * cg, cg * cg * cg * cg
     for b in range(n):
-        air, haze = bands[RAYLEIGH + b] * air_depth, s[_HAZE + b] * haze_share
+        air, haze = s[RAYLEIGH + b] * air_depth, s[_HAZE + b] * haze_share
         depth = air + haze + s[GAS + b] + cloud
         s[_SUM_DEPTH + b] += depth
-        h, c, g = haze * bands[_HAZE_ALBEDO + b], cloud * bands[_CLOUD_ALBEDO + b], bands[_HAZE_G + b]
+        h, c, g = haze * s[_HAZE_ALBEDO + b], cloud * s[_CLOUD_ALBEDO + b], s[_HAZE_G + b]
         h1 = h * g
         h2 = h1 * g
         h3 = h2 * g
@@ -292,15 +300,9 @@ def _add(s: Array, n: int) -> None:
 
 
 @inner
-def on_ground(s: Array, n: int, albedo: Array, air_mass: float) -> None:
+def on_ground(s: Array, n: int) -> None:
     """Set the transmittance of all light and of the beam, the ground's throw to and fro in it."""
-    if len(albedo) == 1:
-        grey = albedo[0]
-        for b in range(n):
-            s[GROUND + b] = grey
-    else:
-        for b in range(len(albedo)):
-            s[GROUND + b] = albedo[b]
+    air_mass = s[AIR_MASS]
     for b in range(n):
         s[STRAIGHT + b] = exp(-(s[_SUM_DEPTH + b] * air_mass + s[OZONE + b]))
     for b in range(n):
@@ -311,23 +313,23 @@ def on_ground(s: Array, n: int, albedo: Array, air_mass: float) -> None:
 
 @inner
 def _layer(
-    s: Array, n: int, model: Model, hour: Array, paths: tuple[float, float], slant: float, air: float,
-    haze_share: float, cloud: float, room: Room,
+    s: Array, n: int, curves: Array, paths: tuple[float, float], slant: float, air: float, haze_share: float,
+    cloud: float,
 ) -> None:  # fmt: skip
     """Set what one layer does to light, from the paths of vapour and of other gas down to its foot."""
-    gas(s, n, model, paths[0], paths[1], slant, room)
-    _mix(s, n, model[0], air, haze_share, cloud, model[4])
-    _modes(s, n, hour[AIR_MASS])
-    _solve(s, n, 1.0 / hour[AIR_MASS])
+    gas(s, n, curves, paths[0], paths[1], slant)
+    _mix(s, n, air, haze_share, cloud)
+    _modes(s, n, s[AIR_MASS])
+    _solve(s, n, 1.0 / s[AIR_MASS])
 
 
 @inner
-def top(s: Array, n: int, model: Model, hour: Array, room: Room) -> None:
+def top(s: Array, n: int, curves: Array) -> None:
     """Set and keep what the top layer does to light; no cloud lies in it."""
-    fixed, air_mass = model[4], hour[AIR_MASS]
-    air = hour[PRESSURE] * fixed[_AIR_SHARE]
-    paths = (hour[WATER] * fixed[_WATER_SHARE] * air_mass, air * air_mass)
-    _layer(s, n, model, hour, paths, air_mass, air, fixed[_HAZE_SHARE], 0.0, room)
+    air_mass = s[AIR_MASS]
+    air = s[PRESSURE] * s[_AIR_SHARE]
+    paths = (s[WATER] * s[_WATER_SHARE] * air_mass, air * air_mass)
+    _layer(s, n, curves, paths, air_mass, air, s[_HAZE_SHARE], 0.0)
     for b in range(n):
         s[_K1 + b], s[_K2 + b], s[_K3 + b] = s[_SUM_PATH + b], s[_SUM_DEPTH + b], s[_PASSED + b]
         s[_K4 + b], s[_K5 + b] = s[_DOWN1 + b], s[_DOWN2 + b]
@@ -335,24 +337,24 @@ def top(s: Array, n: int, model: Model, hour: Array, room: Room) -> None:
 
 
 @inner
-def below(s: Array, n: int, model: Model, hour: Array, cloud: float, room: Room) -> None:
+def below(s: Array, n: int, curves: Array, cloud: float) -> None:
     """Join the layers below to the top one as it was kept, a cloud in the first of them."""
     for b in range(n):
         s[_SUM_PATH + b], s[_SUM_DEPTH + b], s[_BEAM + b], s[_D1 + b] = s[_K1 + b], s[_K2 + b], s[_K3 + b], s[_K4 + b]
         s[_D2 + b], s[_S11 + b], s[_S12 + b], s[_S22 + b] = s[_K5 + b], s[_K6 + b], s[_K7 + b], s[_K8 + b]
-    fixed, air_mass = model[4], hour[AIR_MASS]
+    air_mass = s[AIR_MASS]
     # `column._slants`
-    straight = math.exp(-(1.0 - fixed[_CLOUD_G] * fixed[_CLOUD_G]) * cloud * air_mass)
-    turned = (1.0 - straight) * fixed[_DIFFUSIVITY]
-    water_path = hour[WATER] * fixed[_WATER_SHARE] * air_mass
-    air_path = hour[PRESSURE] * fixed[_AIR_SHARE] * air_mass
+    straight = math.exp(-(1.0 - s[_CLOUD_G] * s[_CLOUD_G]) * cloud * air_mass)
+    turned = (1.0 - straight) * s[_DIFFUSIVITY]
+    water_path = s[WATER] * s[_WATER_SHARE] * air_mass
+    air_path = s[PRESSURE] * s[_AIR_SHARE] * air_mass
     for i in range(1, 3):
-        slant = straight * air_mass + (turned * fixed[_CLOUD_PATH] if i == 1 else turned)
-        air = hour[PRESSURE] * fixed[_AIR_SHARE + i]
-        water_path += hour[WATER] * fixed[_WATER_SHARE + i] * slant
+        slant = straight * air_mass + (turned * s[_CLOUD_PATH] if i == 1 else turned)
+        air = s[PRESSURE] * s[_AIR_SHARE + i]
+        water_path += s[WATER] * s[_WATER_SHARE + i] * slant
         air_path += air * slant
         drops = cloud if i == 1 else 0.0
-        _layer(s, n, model, hour, (water_path, air_path), slant, air, fixed[_HAZE_SHARE + i], drops, room)
+        _layer(s, n, curves, (water_path, air_path), slant, air, s[_HAZE_SHARE + i], drops)
         _add(s, n)
 
 
@@ -367,18 +369,36 @@ def top_of_few(s: Array, few: Array, chosen: NDArray[np.intp]) -> None:
 
 
 @inner
-def workspace() -> tuple[Array, Room]:
-    """Return scratch memory and room for the curves of growth."""
-    return np.zeros(N_SCRATCH * STRIDE), (np.empty(6), np.empty(6), np.zeros(6 * STRIDE), np.zeros(6 * STRIDE))
+def workspace(model: Model) -> Array:
+    """Return scratch memory with a model's constants in it."""
+    s, constants = np.zeros(N_SCRATCH * STRIDE), model[0]
+    for i in range(len(constants)):
+        s[RAYLEIGH + i] = constants[i]
+    return s
 
 
 @inner
-def summed(row: Array, n: int, weights: Array) -> float:
-    """Return the sum of a row times weights (n,), four at a time."""
-    a, b, c, d = 0.0, 0.0, 0.0, 0.0
+def take(s: Array, hours: Array, h: int) -> None:
+    """Put an hour's values into scratch memory."""
+    for i in range(COLUMNS):
+        s[HOUR + i] = hours[h, i]
+
+
+@inner
+def take_ground(s: Array, n: int, albedo: Array, h: int) -> None:
+    """Put the albedo of an hour's ground into scratch memory."""
+    n_given = albedo.shape[1]
+    for b in range(n):
+        s[GROUND + b] = albedo[h, min(b, n_given - 1)]
+
+
+@inner
+def summed(s: Array, row: int, n: int) -> float:
+    """Return the light below of a row of transmittances, four at a time."""
+    a, b, c, d, passed = 0.0, 0.0, 0.0, 0.0, s[row : row + STRIDE]
     for i in range(0, n, 4):
-        a += row[i] * weights[i]
-        b += row[i + 1] * weights[i + 1]
-        c += row[i + 2] * weights[i + 2]
-        d += row[i + 3] * weights[i + 3]
+        a += passed[i] * s[TOP + i]
+        b += passed[i + 1] * s[TOP + i + 1]
+        c += passed[i + 2] * s[TOP + i + 2]
+        d += passed[i + 3] * s[TOP + i + 3]
     return (a + b) + (c + d)
