@@ -226,7 +226,7 @@ class FacesOfYear:
         return 0.0 if self.rear is None else float(self.rear.total().sum())
 
     def temperatures(self, mounting: MountingPlan, absorbers: Sequence[Absorber], front: Array | None = None) -> Array:
-        """Return cell temperatures (n_absorber, n) [K]; ``front`` is the front's light (n,) [W m-2], if known already."""
+        """Return cell temperatures (n_absorber, n) [K]; ``front`` is the front's light (n,) [W m-2] where known."""
         front = self.front.total() if front is None else front
         rear = None if self.rear is None else self.rear.total()
         return cell_temperatures(self.site, mounting, front, rear, absorbers)
