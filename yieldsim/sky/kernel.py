@@ -49,7 +49,7 @@ Array = NDArray[np.float64]
 
 # numba keeps compiled code until the function's own file changes and does not look at the files it calls. So this file
 # must change whenever kernel_layer.py does: a test compares the hash.
-LAYER_SHA256 = "c9f5d55b55ffa2bcaa34cbe7e6b5af5377d8c3a9167d7049c102337ca0210cc8"
+LAYER_SHA256 = "c9ed7e061437b8185b30db78df3c98eda390aa6b84055514bd2e6e379c984eec"
 
 CLOUD_DEPTH_MAX = 300.0  # the thickest clouds pass about 2 %; beyond it nothing measurable changes
 CLOUD_TOLERANCE = 2e-4  # of transmittance: moves no band over broadband by more than 0.01 %
@@ -206,12 +206,14 @@ def split(
     n, known_exponent, n_ground = _lanes(n_band), math.nan, albedo.shape[1]
     for h in range(hours.shape[0]):
         dni, dhi, level = light[h, 0], light[h, 1], light[h, 2] * light[h, 3]
+        if not (dni > 0 or dhi > 0):
+            continue
         take(s, hours, h)
         take_ground(s, n, albedo, h)
+        start(s, n, known_exponent)
+        known_exponent = s[EXPONENT]
+        top(s, n, curves)
         if dni > 0:
-            start(s, n, known_exponent)
-            known_exponent = s[EXPONENT]
-            top(s, n, curves)
             below(s, n, curves, 0.0)
             on_ground(s, n)
             straight, clear = summed(s, STRAIGHT, n), summed(s, TOTAL, n)
@@ -229,20 +231,13 @@ def split(
             for i in range(n_few):
                 few[GROUND + i] = albedo[h, min(chosen[i], n_ground - 1)]
                 ground += few[GROUND + i] / n_few if n_ground > 1 else 0.0
-            if dni > 0:
-                top_of_few(s, few, chosen)
-            else:
-                start(few, n_few, math.nan)
-                top(few, n_few, few_curves)
+            top_of_few(s, few, chosen)
+            if dni <= 0:
                 below(few, n_few, few_curves, 0.0)
                 on_ground(few, n_few)
             clear = summed(few, TOTAL, n_few)
             passed = ((dni * light[h, 3] + dhi) / level - share * clear) / ((1.0 - share) * clear)
             cloud = _cloud_depth(few, n_few, few_curves, ground, clear, passed)
-            if dni <= 0:
-                start(s, n, known_exponent)
-                known_exponent = s[EXPONENT]
-                top(s, n, curves)
             if cloud > 0 or dni <= 0:
                 below(s, n, curves, cloud)
                 on_ground(s, n)

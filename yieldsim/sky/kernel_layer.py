@@ -14,7 +14,7 @@ import math
 import numpy as np
 from numpy.typing import NDArray
 
-from yieldsim.compiled import compiled, inner
+from yieldsim.compiled import compiled, fma, inner
 from yieldsim.sky.layer import RESONANCE, STREAMS
 
 Array = NDArray[np.float64]
@@ -82,18 +82,24 @@ _MIXED_LAW = _WATER_LAW + 2
 def exp(x: float) -> float:
     """Return exp(x) for -200 <= x <= 700 to 1e-13 of its value; 2**k is made by setting the exponent's bits."""
     x = max(x, _LOWEST)
-    shifted = x * _LOG2E + _ROUNDER
+    shifted = fma(x, _LOG2E, _ROUNDER)
     k = shifted - _ROUNDER
-    r = (x - k * _LN2_HIGH) - k * _LN2_LOW
+    r = fma(-k, _LN2_LOW, fma(-k, _LN2_HIGH, x))
     r2 = r * r
     r4 = r2 * r2
     # exp(r) = 1 + r + r**2 q(r), q through Chebyshev points of +-ln(2)/2.
-    low = (0.4999999999995507 + r * 0.16666666666662833) + r2 * (0.04166666678634886 + r * 0.008333333344064293)
-    high = (0.0013888839088043719 + r * 0.0001984122477939008) + r2 * (
-        2.4867885070502583e-05 + r * 2.761750255097688e-06
+    low = fma(r2, fma(r, 0.008333333344064293, 0.04166666678634886), fma(r, 0.16666666666662833, 0.4999999999995507))
+    high = fma(
+        r2, fma(r, 2.761750255097688e-06, 2.4867885070502583e-05), fma(r, 0.0001984122477939008, 0.0013888839088043719)
     )
     power = (np.float64(shifted).view(np.int64) + np.int64(1023)) << np.int64(52)
-    return ((1.0 + r) + r2 * (low + r4 * high)) * np.int64(power).view(np.float64)
+    return fma(r2, fma(r4, high, low), 1.0 + r) * np.int64(power).view(np.float64)
+
+
+@inner
+def _dot(a: float, b: float, c: float, d: float) -> float:
+    """Return a b + c d."""
+    return float(fma(a, b, c * d))
 
 
 @inner
@@ -121,9 +127,9 @@ def _grown(s: Array, n: int, node: int, x: float, table: Array, depth: int) -> N
     near = table[(node - 2) * STRIDE : (node + 4) * STRIDE]
     row = s[depth : depth + STRIDE]
     for i in range(n):
-        low = v0 * near[i] + v1 * near[STRIDE + i]
-        middle = v2 * near[2 * STRIDE + i] + v3 * near[3 * STRIDE + i]
-        high = v4 * near[4 * STRIDE + i] + v5 * near[5 * STRIDE + i]
+        low = _dot(v0, near[i], v1, near[STRIDE + i])
+        middle = _dot(v2, near[2 * STRIDE + i], v3, near[3 * STRIDE + i])
+        high = _dot(v4, near[4 * STRIDE + i], v5, near[5 * STRIDE + i])
         row[i] = low + middle + high
 
 
@@ -169,7 +175,7 @@ def _mix(s: Array, n: int, air_depth: float, haze_share: float, cloud: float) ->
         h1 = h * g
         h2 = h1 * g
         h3 = h2 * g
-        peak = h3 * g + c * cg4
+        peak = _dot(h3, g, c, cg4)
         tau = depth + open_sky - peak
         inverse = 0.5 / tau
         s[_TAU + b] = tau
@@ -187,7 +193,7 @@ def _modes(s: Array, n: int, into: float) -> None:
         p11, p12, p22 = (w0 + w2 * _AA2 - 1.0) * _I1, (w0 + w2 * _AB2) * _I12, (w0 + w2 * _BB2 - 1.0) * _I2
         n11, n22 = (w1 * _AA1 + w3 * _AA3 - 1.0) * _I1, (w1 * _BB1 + w3 * _BB3 - 1.0) * _I2
         n12 = (w1 * _AB1 + w3 * _AB3) * _I12
-        half = ((n11 * p11 + n12 * p12) + (n12 * p12 + n22 * p22)) * 0.5
+        half = (_dot(n11, p11, n12, p12) + _dot(n12, p12, n22, p22)) * 0.5
         determinant = (n11 * n22 - n12 * n12) * (p11 * p22 - p12 * p12)
         large = half + math.sqrt(max(half * half - determinant, 1e-30))
         small = max(determinant / large, 0.0)
@@ -229,15 +235,20 @@ def _solve(s: Array, n: int, mu: float) -> None:
         p11, p12, p22, n11, n12, n22 = s[_P11 + b], s[_P12 + b], s[_P22 + b], s[_N11 + b], s[_N12 + b], s[_N22 + b]
         large, small = s[_LARGE + b], s[_SMALL + b]
         at_small, slope = s[_AT_SMALL + b], s[_RISE + b]
-        g11, g12, g21, g22 = n11 * p11 + n12 * p12, n11 * p12 + n12 * p22, n12 * p11 + n22 * p12, n12 * p12 + n22 * p22
+        g11, g12, g21, g22 = (
+            _dot(n11, p11, n12, p12),
+            _dot(n11, p12, n12, p22),
+            _dot(n12, p11, n22, p12),
+            _dot(n12, p12, n22, p22),
+        )
         t11, t12, t21, t22 = (
             at_small + slope * (g11 - small),
             slope * g12,
             slope * g21,
             at_small + slope * (g22 - small),
         )
-        x11, x12, x22 = 1.0 - (p11 * t11 + p12 * t21), p11 * t12 + p12 * t22, 1.0 - (p12 * t12 + p22 * t22)
-        y11, y12, y22 = 1.0 - (n11 * t11 + n12 * t12), n11 * t21 + n12 * t22, 1.0 - (n12 * t21 + n22 * t22)
+        x11, x12, x22 = 1.0 - _dot(p11, t11, p12, t21), _dot(p11, t12, p12, t22), 1.0 - _dot(p12, t12, p22, t22)
+        y11, y12, y22 = 1.0 - _dot(n11, t11, n12, t12), _dot(n11, t21, n12, t22), 1.0 - _dot(n12, t21, n22, t22)
         even, odd = x11 * x22 - x12 * x12, y11 * y22 - y12 * y12
         apart_l, apart_s = square - large, square - small
         apart_l = least if abs(apart_l) < least else apart_l
@@ -257,23 +268,28 @@ def _solve(s: Array, n: int, mu: float) -> None:
     for b in range(n):
         p11, p12, p22, n11, n12, n22 = s[_P11 + b], s[_P12 + b], s[_P22 + b], s[_N11 + b], s[_N12 + b], s[_N22 + b]
         r11, r12, r22, q11, q12, q22 = s[_R11 + b], s[_R12 + b], s[_R22 + b], s[_Q11 + b], s[_Q12 + b], s[_Q22 + b]
-        g11, g12, g21, g22 = n11 * p11 + n12 * p12, n11 * p12 + n12 * p22, n12 * p11 + n22 * p12, n12 * p12 + n22 * p22
+        g11, g12, g21, g22 = (
+            _dot(n11, p11, n12, p12),
+            _dot(n11, p12, n12, p22),
+            _dot(n12, p11, n22, p12),
+            _dot(n12, p12, n22, p22),
+        )
         apart = s[_APART + b]
         w0, w1, w2, w3 = s[_W0 + b], s[_W1 + b], s[_W2 + b], s[_W3 + b]
         sum_a, sum_b = ka * (w0 + w2 * ea), kb * (w0 + w2 * eb)
-        right_a = n11 * sum_a + n12 * sum_b + ka * (w1 * oa1 + w3 * oa3) * into
-        right_b = n12 * sum_a + n22 * sum_b + kb * (w1 * ob1 + w3 * ob3) * into
+        right_a = _dot(n11, sum_a, n12, sum_b) + ka * _dot(w1, oa1, w3, oa3) * into
+        right_b = _dot(n12, sum_a, n22, sum_b) + kb * _dot(w1, ob1, w3, ob3) * into
         both_a = ((square - g22) * right_a + g12 * right_b) * apart
         both_b = (g21 * right_a + (square - g11) * right_b) * apart
-        gap_a, gap_b = (p11 * both_a + p12 * both_b + sum_a) * mu, (p12 * both_a + p22 * both_b + sum_b) * mu
+        gap_a, gap_b = (_dot(p11, both_a, p12, both_b) + sum_a) * mu, (_dot(p12, both_a, p22, both_b) + sum_b) * mu
         high_a, high_b, low_a, low_b = both_a + gap_a, both_b + gap_b, both_a - gap_a, both_b - gap_b
         high_a, high_b, low_a, low_b = high_a * 0.5, high_b * 0.5, low_a * 0.5, low_b * 0.5
         passed = s[_PASSED + b]
         lit_a, lit_b = high_a * passed, high_b * passed
-        s[_DOWN1 + b] = low_a * passed - (q11 * low_a + q12 * low_b) - (r11 * lit_a + r12 * lit_b)
-        s[_DOWN2 + b] = low_b * passed - (q12 * low_a + q22 * low_b) - (r12 * lit_a + r22 * lit_b)
-        s[_UP1 + b] = high_a - (r11 * low_a + r12 * low_b) - (q11 * lit_a + q12 * lit_b)
-        s[_UP2 + b] = high_b - (r12 * low_a + r22 * low_b) - (q12 * lit_a + q22 * lit_b)
+        s[_DOWN1 + b] = low_a * passed - _dot(q11, low_a, q12, low_b) - _dot(r11, lit_a, r12, lit_b)
+        s[_DOWN2 + b] = low_b * passed - _dot(q12, low_a, q22, low_b) - _dot(r12, lit_a, r22, lit_b)
+        s[_UP1 + b] = high_a - _dot(r11, low_a, r12, low_b) - _dot(q11, lit_a, q12, lit_b)
+        s[_UP2 + b] = high_b - _dot(r12, low_a, r22, low_b) - _dot(q12, lit_a, q22, lit_b)
 
 
 @inner
@@ -283,17 +299,27 @@ def _add(s: Array, n: int) -> None:
         r11, r12, r22, q11, q12, q22 = s[_R11 + b], s[_R12 + b], s[_R22 + b], s[_Q11 + b], s[_Q12 + b], s[_Q22 + b]
         s11, s12, s22, beam = s[_S11 + b], s[_S12 + b], s[_S22 + b], s[_BEAM + b]
         up_a, up_b = s[_UP1 + b], s[_UP2 + b]
-        z11, z12, z21, z22 = s11 * r11 + s12 * r12, s11 * r12 + s12 * r22, s12 * r11 + s22 * r12, s12 * r12 + s22 * r22
+        z11, z12, z21, z22 = (
+            _dot(s11, r11, s12, r12),
+            _dot(s11, r12, s12, r22),
+            _dot(s12, r11, s22, r12),
+            _dot(s12, r12, s22, r22),
+        )
         d = 1.0 / ((1.0 - z11) * (1.0 - z22) - z12 * z21)
         n11, n12, n21, n22 = (1.0 - z22) * d, z12 * d, z21 * d, (1.0 - z11) * d
-        in_a = s[_D1 + b] + beam * (s11 * up_a + s12 * up_b)
-        in_b = s[_D2 + b] + beam * (s12 * up_a + s22 * up_b)
-        met_a, met_b = n11 * in_a + n12 * in_b, n21 * in_a + n22 * in_b
-        s[_D1 + b] = q11 * met_a + q12 * met_b + beam * s[_DOWN1 + b]
-        s[_D2 + b] = q12 * met_a + q22 * met_b + beam * s[_DOWN2 + b]
+        in_a = s[_D1 + b] + beam * _dot(s11, up_a, s12, up_b)
+        in_b = s[_D2 + b] + beam * _dot(s12, up_a, s22, up_b)
+        met_a, met_b = _dot(n11, in_a, n12, in_b), _dot(n21, in_a, n22, in_b)
+        s[_D1 + b] = _dot(q11, met_a, q12, met_b) + beam * s[_DOWN1 + b]
+        s[_D2 + b] = _dot(q12, met_a, q22, met_b) + beam * s[_DOWN2 + b]
         # R' = R + Q (1 - S R)^-1 S Q
-        j11, j12, j22 = n11 * s11 + n12 * s12, n11 * s12 + n12 * s22, n21 * s12 + n22 * s22
-        i11, i12, i21, i22 = j11 * q11 + j12 * q12, j11 * q12 + j12 * q22, j12 * q11 + j22 * q12, j12 * q12 + j22 * q22
+        j11, j12, j22 = _dot(n11, s11, n12, s12), _dot(n11, s12, n12, s22), _dot(n21, s12, n22, s22)
+        i11, i12, i21, i22 = (
+            _dot(j11, q11, j12, q12),
+            _dot(j11, q12, j12, q22),
+            _dot(j12, q11, j22, q12),
+            _dot(j12, q12, j22, q22),
+        )
         s[_S11 + b], s[_S12 + b] = r11 + q11 * i11 + q12 * i21, r12 + q11 * i12 + q12 * i22
         s[_S22 + b] = r22 + q12 * i12 + q22 * i22
         s[_BEAM + b] = beam * s[_PASSED + b]
