@@ -31,7 +31,7 @@ from contextlib import nullcontext
 from dataclasses import replace
 from datetime import UTC, datetime
 from difflib import get_close_matches
-from functools import lru_cache
+from functools import lru_cache, partial
 from importlib import metadata
 from itertools import combinations
 from pathlib import Path
@@ -121,8 +121,8 @@ def load_weather(site: SitePlan) -> Iterator[Weather]:
         readers.File(file.path, file.shown, file.format, file.timestamps, file.cell, _column_map(file.columns))
         for file in site.weather
     ]
-    for weather in readers.years(files, **overrides):
-        yield screen.screen(weather, site.allow_gaps)
+    # Not a loop, whose variable would hold the year as read beside the year as screened.
+    yield from map(partial(screen.screen, allow_gaps=site.allow_gaps), readers.years(files, **overrides))
     for file in site.weather:
         where = locate(file.path, Path())
         if _digest(where, _state(where)) != file.sha256:

@@ -64,8 +64,7 @@ class Source:
                     raise self.refuse(number, "", f"more than {most} lines", "a shorter file")
                 if b"\x00" in line:
                     raise self.refuse(number, "", "bytes that are not text", "a text file")
-                text = line.removeprefix(_BYTE_ORDER_MARK) if number == 1 else line
-                yield text.decode(self.encoding, errors="replace").rstrip("\r\n")
+                yield _text(line.removeprefix(_BYTE_ORDER_MARK) if number == 1 else line, self.encoding, self.shown, number)
 
     def whole_lines(self) -> list[str]:
         """Return all lines of a file that is read in one go."""
@@ -114,8 +113,19 @@ def open_source(path: str, shown: str | None = None) -> Source:
         raise InputError(Problem(shown, 0, "", "an empty file", "a weather file"))
     head = head.removeprefix(_BYTE_ORDER_MARK)
     encoding = "utf-8" if _is_utf8(head) else "latin-1"
-    lines = () if b"\x00" in head else tuple(head.decode(encoding, errors="replace").splitlines())
+    lines: tuple[str, ...] = ()
+    if b"\x00" not in head:
+        lines = tuple(_text(line, encoding, shown, i) for i, line in enumerate(head.split(b"\n"), start=1))
     return Source(place, shown, head, encoding, lines)
+
+
+def _text(line: bytes, encoding: str, shown: str, number: int) -> str:
+    """Return a line without its end; raises InputError for a carriage return within: to parsers it ends a line."""
+    text = line.decode(encoding, errors="replace").rstrip("\r\n")
+    if "\r" in text:
+        found = "a carriage return within the line"
+        raise InputError(Problem(shown, number, "", found, "lines that end in LF or CR LF"))
+    return text
 
 
 def _is_utf8(head: bytes) -> bool:

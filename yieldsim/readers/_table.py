@@ -18,6 +18,7 @@ from yieldsim.readers._source import Source
 Array = NDArray[np.float64]
 
 BLOCK_ROWS = 65_536  # rows parsed at once: 13 numbers each are 7 MB
+BLOCK_CHARACTERS = 32 * 2**20  # of text parsed at once: rows of 500 characters
 MOST_PROBLEMS = 20  # what a person will read; the count of the rest is given
 MISSING_WORDS = ("", "NA", "N/A", "NaN", "nan", "NAN", "null", "None", "-", "--")
 _NUMBER = re.compile(r"[+-]?(\d+\.?\d*|\.\d+)([eE][+-]?\d{1,3})?", re.ASCII)
@@ -44,6 +45,15 @@ def split(line: str, delimiter: str = ",") -> list[str]:
     if '"' not in line:
         return [cell.strip() for cell in line.split(delimiter)]
     return [cell.strip() for cell in next(csv.reader([line], delimiter=delimiter, skipinitialspace=True), [])]
+
+
+def positions(source: Source, line: int, names: Sequence[str], wanted: Iterable[str]) -> dict[str, int]:
+    """Return where the wanted columns are, those that are there; raises InputError for one that is there twice."""
+    found = {name: names.index(name) for name in wanted if name in names}
+    twice = [name for name in found if names.count(name) > 1]
+    if twice:
+        raise InputError([source.problem(line, name, "the column twice", "one of it") for name in twice])
+    return found
 
 
 def blocks(
@@ -85,13 +95,16 @@ def numbered_blocks(
     """Yield the rows of a table in blocks, each line with its number in the file; see `blocks`."""
     kept: list[str] = []
     rows: list[int] = []
+    held = 0
     for number, line in lines:
         if line and not line.isspace():
             kept.append(line)
             rows.append(number)
-        if len(kept) == BLOCK_ROWS:
-            yield _parse(source, kept, rows, numbers, texts, fields, delimiter)
-            kept, rows = [], []
+            held += len(line)
+        if len(kept) == BLOCK_ROWS or held > BLOCK_CHARACTERS:
+            block = _parse(source, kept, rows, numbers, texts, fields, delimiter)
+            kept, rows, held = [], [], 0
+            yield block
     if kept:
         yield _parse(source, kept, rows, numbers, texts, fields, delimiter)
 

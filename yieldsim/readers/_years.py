@@ -92,17 +92,20 @@ class Stretch:
         self._refuse_going_back(together, number)
         stub: tuple[Mark, ...] = ()
         if self._given is None:
-            first = number == number.min()
-            kept = _without_stub(together, first, "before")
-            if kept is not together:
-                stub, together, number = kept.marks[-1:], kept, number[~first]
+            first, rows = number == number.min(), len(number)
+            together = _without_stub(together, first, "before")
+            if len(together.time) < rows:
+                stub, number = together.marks[-1:], number[~first]
         open_year = int(self._year_of(together, np.array([last - _STUB_S]))[0])
-        for year in np.unique(number[number < open_year]):
-            piece = chosen(together, number == year)
-            piece, stub = replace(piece, marks=(*piece.marks, *stub)), ()
-            self._given = int(year), chosen(piece, np.array([int(np.argmax(piece.time))]))
-            yield weather_from(piece, self._wanted)
+        complete = [chosen(together, number == year) for year in np.unique(number[number < open_year])]
         self._raws = [chosen(together, number >= open_year)] if (number >= open_year).any() else []
+        del together  # the years cut out of it are copies
+        while complete:
+            piece = complete.pop(0)
+            piece, stub = replace(piece, marks=(*piece.marks, *stub)), ()
+            last_row = int(np.argmax(piece.time))
+            self._given = int(self._year_of(piece, piece.time[last_row])), chosen(piece, np.array([last_row]))
+            yield weather_from(piece, self._wanted)
 
     def _year_of(self, raw: Raw, labels: Times) -> Times:
         if self._to_turn_s is None:

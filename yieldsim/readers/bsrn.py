@@ -94,6 +94,8 @@ def _records(source: Source) -> Records:
     current: list[tuple[int, str]] | None = None
     for number, line in enumerate(source.lines(WHOLE_BYTES), start=1):
         if line[:2] in ("*U", "*C"):
+            if line[2:6] == _STATION and _STATION in records:
+                raise source.refuse(number, _STATION, "another record of station and month", "a month a file")
             current = records.setdefault(line[2:6], [])
         elif current is not None:
             current.append((number, line))
@@ -126,19 +128,22 @@ def _place(source: Source, records: Records) -> tuple[float, float, float]:
 
 def _minutes(source: Source, records: Records) -> list[tuple[int, str]]:
     """Return the two lines of each minute as one, cells set apart by commas, with the number of the first."""
-    lines = [(number, line.split()) for number, line in records[_BASIC] if line and not line.isspace()]
-    problems: list[Problem] = [
-        source.problem(number, "", f"{len(cells)} numbers", f"{_FIELDS[i % 2]}")
-        for i, (number, cells) in enumerate(lines)
-        if len(cells) != _FIELDS[i % 2]
-    ]
+    lines: list[tuple[int, str]] = []
+    problems: list[Problem] = []
+    for number, line in records[_BASIC]:
+        if not line or line.isspace():
+            continue
+        cells, wanted = line.split(), _FIELDS[len(lines) % 2]
+        if len(cells) != wanted:
+            problems.append(source.problem(number, "", f"{len(cells)} numbers", f"{wanted}"))
+            if len(problems) == _table.MOST_PROBLEMS:
+                break
+        lines.append((number, ",".join(cells)))
     if len(lines) % 2:
         problems.append(source.problem(lines[-1][0], "", "half a minute", "two lines a minute"))
     if not lines:
         problems.append(source.problem(0, _BASIC, "no rows", "at least one"))
     if problems:
         raise InputError(problems[: _table.MOST_PROBLEMS])
-    return [
-        (number, ",".join([*first, *second]))
-        for (number, first), (_, second) in zip(lines[::2], lines[1::2], strict=True)
-    ]
+    pairs = zip(lines[::2], lines[1::2], strict=True)
+    return [(number, f"{first},{second}") for (number, first), (_, second) in pairs]

@@ -97,7 +97,10 @@ _PLACES_ALONG = ("lat", "lon", "latitude", "longitude", "x", "y")
 def _of_place(dataset: xr.Dataset, names: tuple[str, ...]) -> float | None:
     """Return a number that a file tells of its place, in a variable of one value or an attribute."""
     for name in names:
-        value: Any = dataset[name].values if name in dataset.variables else dataset.attrs.get(name)
+        if name in dataset.variables:
+            value: Any = dataset[name].values if dataset[name].size == 1 else None
+        else:
+            value = dataset.attrs.get(name)
         try:
             number = float(np.asarray(value, dtype=np.float64).squeeze()) if value is not None else np.nan
         except (TypeError, ValueError):

@@ -287,7 +287,7 @@ def label_of(dataset: xr.Dataset, name: str, time: NDArray[np.int64], shown: str
     """Return where labels sit and the interval [s], from the file's bounds; without bounds labels start it."""
     attributes = dataset[name].attrs
     bounds = attributes.get("bounds")
-    if not isinstance(bounds, str) or bounds not in dataset.variables or dataset[bounds].ndim != 2:
+    if not isinstance(bounds, str) or bounds not in dataset.variables or dataset[bounds].shape != (len(time), 2):
         return "start", None
     first, last = (seconds(dataset[bounds].values[:, k], attributes, shown) for k in (0, 1))
     interval = int(np.median(last - first))

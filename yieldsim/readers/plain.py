@@ -36,7 +36,7 @@ from numpy.typing import NDArray
 
 from yieldsim.errors import InputError, Problem
 from yieldsim.readers import _table
-from yieldsim.readers._raw import Raw
+from yieldsim.readers._raw import MOST_OFFSET_H, Raw
 from yieldsim.readers._source import Source
 from yieldsim.weather import COLUMNS, LABELS
 
@@ -157,6 +157,8 @@ def _header_line(
         problems.append(source.problem(number, key, "unknown header line", ", ".join(_KEYS)))
     elif key == "note":
         notes.append(value)
+    elif values.get(key, value) != value:
+        problems.append(source.problem(number, key, f"{value[:40]!r} after {values[key][:40]!r}", "one of it"))
     else:
         values[key] = value
 
@@ -222,6 +224,10 @@ def iso_times(source: Source, block: _table.Block) -> tuple[NDArray[np.int64], i
         return seconds, None
     if "" in offsets:
         raise source.refuse(int(block.row[0]), "time", "times with and without a time zone", "one or the other")
+    beyond = [text for text in offsets if abs(_offset_s(text)) > 3600 * MOST_OFFSET_H]
+    if beyond:
+        i = int(np.argmax(parts[2] == beyond[0]))
+        raise source.refuse(int(block.row[i]), "time", f"a clock of UTC{beyond[0]}", "UTC-14:00 to UTC+14:00")
     each = parts[2].map({text: _offset_s(text) for text in offsets}).to_numpy(dtype=np.int64)
     return seconds - each, 0  # set to UTC, so that a change of offset within the file does no harm
 

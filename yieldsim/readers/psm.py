@@ -72,9 +72,8 @@ def read(source: Source) -> Iterator[Raw]:
     first = next(lines, "")
     fields = max(len(names), first.rstrip(",").count(",") + 1)
     about = dict(zip(_table.split(head[0]), _table.split(head[1]), strict=False)) if at_header == 2 else {}
-    at = {name: i for i, name in enumerate(names)}
-    numbers = {ours: at[theirs] for theirs, (ours, _) in _COLUMNS.items() if theirs in at}
-    numbers |= {name: at[name] for name in (*_DATE, _ALPHA) if name in at}
+    at = _table.positions(source, at_header + 1, names, (*_COLUMNS, *_DATE, _ALPHA))
+    numbers = {_COLUMNS[name][0] if name in _COLUMNS else name: i for name, i in at.items()}
     block = _table.whole(source, chain([first], lines), at_header + 2, numbers, {}, fields)
     year, month, day, hour, minute = (block.numbers[name] for name in _DATE)
     time = _table.calendar_seconds(source, block.row, year, month, day, hour * 3600.0 + minute * 60.0, 86_399)

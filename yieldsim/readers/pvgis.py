@@ -77,7 +77,7 @@ def _from_csv(source: Source) -> Raw:
     later = next((i for i in range(end, len(body)) if _ROW.match(body[i])), None)
     if later is not None:  # the table goes on behind a row that does not begin with a time
         raise source.refuse(start + 2 + end, "time", repr(body[end][:40]), "a time such as 20180101:0000")
-    at = {name: i for i, name in enumerate(names)}
+    at = _table.positions(source, start + 1, names, (_TIME, *_COLUMNS))
     numbers = {ours: at[theirs] for theirs, (ours, _) in _COLUMNS.items() if theirs in at}
     block = _table.whole(source, body[:end], start + 2, numbers, {"time": at[_TIME]}, len(names))
     return _raw_of(source, about, block.texts["time"], block.row, block.numbers)
@@ -88,18 +88,25 @@ def _from_json(source: Source) -> Raw:
         content = json.loads(source.content(_JSON_BYTES).decode(source.encoding))
         about = content["inputs"]["location"]
         rows = content["outputs"]["tmy_hourly"]
-        frame = pd.DataFrame(rows)
-        texts = frame[_TIME].to_numpy(dtype=object)
+        texts = np.array([str(row[_TIME]) for row in rows], dtype=object)
         numbers = {
-            ours: pd.to_numeric(frame[theirs], errors="raise").to_numpy(dtype=np.float64)
+            ours: np.array([_json_number(row.get(theirs)) for row in rows])
             for theirs, (ours, _) in _COLUMNS.items()
-            if theirs in frame
+            if any(theirs in row for row in rows)
         }
         place = {key: float(about[key]) for key in _KEYS if about.get(key) is not None}
     except (ValueError, KeyError, TypeError, AttributeError, OverflowError, RecursionError) as error:
         found = f"not what PVGIS writes ({type(error).__name__}: {str(error)[:60]})"
         raise source.refuse(getattr(error, "lineno", 0), "", found, "inputs.location and outputs.tmy_hourly") from None
     return _raw_of(source, place, texts, np.arange(1, len(texts) + 1, dtype=np.int64), numbers)
+
+
+def _json_number(value: Any) -> float:
+    if value is None:
+        return float("nan")
+    if isinstance(value, bool) or not isinstance(value, int | float):
+        raise TypeError(f"{value!r} where a number should be")
+    return float(value)
 
 
 def _raw_of(

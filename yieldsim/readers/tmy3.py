@@ -56,7 +56,7 @@ def read(source: Source) -> Iterator[Raw]:
     name, offset_h, position = _place(source, head[0])
     clock_s = _raw.offset_s(source, 1, "time zone", offset_h)
     names = _table.split(head[1])
-    at = {name: i for i, name in enumerate(names)}
+    at = _table.positions(source, 2, names, (_DATE, _CLOCK, *_COLUMNS))
     missing = [name for name in (_DATE, _CLOCK) if name not in at]
     if missing:
         raise source.refuse(2, missing[0], "column missing", "the columns of a TMY3 file")

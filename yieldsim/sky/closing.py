@@ -59,6 +59,11 @@ class ClosedSky:
     monthly_aod500: Array
     clear_days: NDArray[np.intp]
 
+    def only(self, chosen: slice) -> ClosedSky:
+        """Return the chosen hours."""
+        hourly = ("beam", "diffuse", "aod500", "cloud_depth", "open_share", "clear")
+        return replace(self, **{name: getattr(self, name)[chosen] for name in hourly})
+
 
 def close(
     air: Air,

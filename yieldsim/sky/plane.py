@@ -50,7 +50,9 @@ class PlaneParts:
 
     def bands(self) -> Array:
         """Return the light in each band, (n, n_band) [W m-2]."""
-        return np.asarray(self.beam + self.sky + self.ground)
+        light = self.beam + self.sky
+        light += self.ground
+        return light
 
     def total(self) -> Array:
         """Return the irradiance of the face, (n,) [W m-2]."""

@@ -48,6 +48,11 @@ class Sight:
     ground_beam: Array
     ground_sky: Array
 
+    def only(self, chosen: slice) -> Sight:
+        """Return the chosen intervals."""
+        every = {name: getattr(self, name) for name in Sight.__slots__}
+        return Sight(**{name: value if value.shape == (1, 1) else value[chosen] for name, value in every.items()})
+
 
 def lit_mean(values: Array, up: NDArray[np.bool_]) -> Array:
     """Return the mean over lit sub-steps of values (n, step) or (1, 1), (n,); 0 where none is lit."""

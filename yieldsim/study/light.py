@@ -21,6 +21,7 @@ if TYPE_CHECKING:  # hourly imports this module
 Array = NDArray[np.float64]
 Shares = tuple[Array, Array | None, float]
 
+_BLOCK = 2048  # intervals at once, all bands of each: 2 MB an array
 COS_85 = float(np.cos(np.radians(85.0)))  # where Perez et al. (1990) stop to follow the sun down
 
 
@@ -83,8 +84,7 @@ SKY_MODELS: Mapping[str, Callable[[SiteSky], Shares]] = {
 
 def plane_parts(site: SiteSky, plan: MountingPlan) -> plane.PlaneParts:
     """Return the band spectra on the front of a mounting, hour means."""
-    seen = sight.of_face(sight.FRONT, stance_of(site, plan), site.sun, rows_of(plan), site.horizon)
-    return plane.on_plane(sky_light(site, plan), seen, site.air.albedo)
+    return _on_face(site, plan, sight.of_face(sight.FRONT, stance_of(site, plan), site.sun, rows_of(plan), site.horizon))
 
 
 def rear_parts(site: SiteSky, plan: MountingPlan, absorbers: Sequence[Absorber]) -> plane.PlaneParts | None:
@@ -95,8 +95,20 @@ def rear_parts(site: SiteSky, plan: MountingPlan, absorbers: Sequence[Absorber])
     if plan.kind == "roof" or not any(absorber.bifaciality > 0 for absorber in absorbers):
         return None
     rows = rows_of(plan) or Rows(plan.row_width_m, plan.height_m)
-    seen = sight.of_face(sight.REAR, stance_of(site, plan), site.sun, rows, site.horizon)
-    return plane.on_plane(sky_light(site, plan), seen, site.air.albedo)
+    return _on_face(site, plan, sight.of_face(sight.REAR, stance_of(site, plan), site.sun, rows, site.horizon))
+
+
+def _on_face(site: SiteSky, plan: MountingPlan, seen: sight.Sight) -> plane.PlaneParts:
+    """Return the band spectra on a face, a block of intervals at a time: what leads to them is thrice their size."""
+    beam, sky, ground = (np.empty_like(site.sky.beam) for _ in range(3))
+    for start in range(0, len(beam), _BLOCK):
+        block = slice(start, start + _BLOCK)
+        lit, month = site.lit[block], site.month[block]
+        light = {name: getattr(site, name).only(block) for name in ("sun", "air", "sky")}
+        hours = replace(site, lit=lit, month=month, calendar=None, **light)
+        found = plane.on_plane(sky_light(hours, plan), seen.only(block), hours.air.albedo)
+        beam[block], sky[block], ground[block] = found.beam, found.sky, found.ground
+    return plane.PlaneParts(beam, sky, ground, seen)
 
 
 def dust_colour(site: SiteSky, losses: LossesPlan) -> Array | None:

@@ -76,6 +76,7 @@ def compute(plan: StudyPlan, site: SitePlan, years: Iterable[Weather], folder: P
         quality += quality_rows(site.name, weather, skies)
         if len(calendar) == 1:
             files, by_hour = datasets_of.write(folder)
+        del weather  # or it would be held while the next year is read
     piece = {"weather_quality": quality, "by_hour": by_hour} | _tables(plan, site, books, calendar)
     if datasets_of.chance is not None:
         found, draws = datasets_of.chance.told(piece["annual"], piece["yearly"])
@@ -184,6 +185,7 @@ class _Datasets:
         for kind in ("hourly", "spectra"):
             if found := getattr(self, kind):
                 path, dataset = folder / kind / f"{store.file_stem(self.site.name)}.nc", datasets.joined(found)
+                found.clear()
                 store.write_netcdf(path, dataset)
                 files.append(path)
                 if kind == "hourly":
