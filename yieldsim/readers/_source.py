@@ -64,7 +64,9 @@ class Source:
                     raise self.refuse(number, "", f"more than {most} lines", "a shorter file")
                 if b"\x00" in line:
                     raise self.refuse(number, "", "bytes that are not text", "a text file")
-                yield _text(line.removeprefix(_BYTE_ORDER_MARK) if number == 1 else line, self.encoding, self.shown, number)
+                yield _text(
+                    line.removeprefix(_BYTE_ORDER_MARK) if number == 1 else line, self.encoding, self.shown, number
+                )
 
     def whole_lines(self) -> list[str]:
         """Return all lines of a file that is read in one go."""

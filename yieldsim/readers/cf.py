@@ -36,12 +36,8 @@ def read(source: Source) -> Iterator[Raw]:
     InputError
         For a file without time, with more than one place, or in units not known.
     """
-    try:
-        with grid.opened(str(source.path), source.shown) as dataset:
-            yield from _raws_of(source, dataset)
-    except grid.BROKEN as error:
-        found = f"it cannot be read ({type(error).__name__}: {str(error)[:80]})"
-        raise source.refuse(0, "", found, "CF NetCDF") from None
+    with grid.opened(str(source.path), source.shown) as dataset:
+        yield from _raws_of(source, dataset)
 
 
 def _raws_of(source: Source, dataset: xr.Dataset) -> Iterator[Raw]:
@@ -85,7 +81,7 @@ def _raws_of(source: Source, dataset: xr.Dataset) -> Iterator[Raw]:
             interval_s=interval_s,
             row=np.arange(start + 1, start + rows + 1, dtype=np.int64),  # there are no lines: the number of the value
             columns={
-                name: np.asarray(part[key].values, dtype=np.float64) * factor + offset
+                name: grid.real_numbers(part[key], source.shown) * factor + offset
                 for name, (key, factor, offset) in use.items()
             },
         )
@@ -101,6 +97,8 @@ def _of_place(dataset: xr.Dataset, names: tuple[str, ...]) -> float | None:
             value: Any = dataset[name].values if dataset[name].size == 1 else None
         else:
             value = dataset.attrs.get(name)
+        if np.iscomplexobj(value):
+            continue
         try:
             number = float(np.asarray(value, dtype=np.float64).squeeze()) if value is not None else np.nan
         except (TypeError, ValueError):

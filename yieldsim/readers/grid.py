@@ -6,6 +6,8 @@ grid.rows(path, "weather.nc", (3, 5))   # the weather of one of them
 
 from __future__ import annotations
 
+from collections.abc import Iterator
+from contextlib import contextmanager
 from dataclasses import dataclass
 from functools import lru_cache
 from pathlib import Path
@@ -22,18 +24,6 @@ from yieldsim.readers._raw import Raw
 from yieldsim.weather import COLUMNS, REQUIRED
 
 FORMAT = "grid"
-#: What libraries raise on bytes that are no such file; a damaged one can trip them anywhere.
-BROKEN = (
-    OSError,
-    ValueError,
-    KeyError,
-    IndexError,
-    TypeError,
-    AttributeError,
-    RuntimeError,
-    OverflowError,
-    MemoryError,
-)
 BLOCK_BYTES = 64_000_000  # of weather held at once by a process
 MOST_CELLS = 1_000_000
 MOST_MOMENTS = 40_000_000  # 75 years of minutes
@@ -179,23 +169,39 @@ class _Block:
     columns: dict[str, NDArray[np.float64]]
 
 
-def opened(path: str, shown: str) -> xr.Dataset:
-    """Open a NetCDF file or a Zarr folder, times as they are written; raises InputError for anything else."""
+@contextmanager
+def opened(path: str, shown: str) -> Iterator[xr.Dataset]:
+    """Give what is in a NetCDF file or a Zarr folder, times as they are written.
+
+    Raises
+    ------
+    InputError
+        For anything else, and for whatever goes wrong while it is read: damaged bytes can trip the libraries anywhere,
+        with any exception.
+    """
     try:
-        if Path(path).is_dir():
-            folder: xr.Dataset = xr.open_zarr(path, chunks=None, decode_times=False)
-            return folder
-        with Path(path).open("rb") as stream:
-            classic = stream.read(3) == b"CDF"
-        if not classic:
-            _refuse_endless(path, shown)
-        return xr.open_dataset(path, engine="scipy" if classic else "h5netcdf", decode_times=False)
-    except ImportError:
-        allowed = 'NetCDF, or Zarr with pip install "yieldsim[cluster]"'
-        raise InputError(Problem(shown, 0, "", "a Zarr folder, and zarr is not installed", allowed)) from None
-    except BROKEN as error:
+        with _dataset(path, shown) as dataset:
+            yield dataset
+    except InputError:
+        raise
+    except Exception as error:
         reason = str(error).splitlines()[0][:120] if str(error) else type(error).__name__
         raise InputError(Problem(shown, 0, "", f"it cannot be read ({reason})", "CF NetCDF 4 or Zarr")) from None
+
+
+def _dataset(path: str, shown: str) -> xr.Dataset:
+    if Path(path).is_dir():
+        try:
+            folder: xr.Dataset = xr.open_zarr(path, chunks=None, decode_times=False)
+        except ImportError:
+            allowed = 'NetCDF, or Zarr with pip install "yieldsim[cluster]"'
+            raise InputError(Problem(shown, 0, "", "a Zarr folder, and zarr is not installed", allowed)) from None
+        return folder
+    with Path(path).open("rb") as stream:
+        classic = stream.read(3) == b"CDF"
+    if not classic:
+        _refuse_endless(path, shown)
+    return xr.open_dataset(path, engine="scipy" if classic else "h5netcdf", decode_times=False)
 
 
 def _refuse_endless(path: str, shown: str) -> None:
@@ -267,17 +273,26 @@ def _block(path: str, shown: str, row: int, column: int, rows: int, columns: int
 
 
 def _in_our_unit(variable: xr.DataArray, column: str, shown: str) -> NDArray[np.float64]:
-    factor, offset = _units.conversion(column, variable.attrs.get("units"), shown, str(variable.name))
-    return np.asarray(variable.values, dtype=np.float64) * factor + offset
+    unit = variable.attrs.get("units")
+    factor, offset = _units.conversion(column, None if unit is None else str(unit), shown, str(variable.name))
+    return real_numbers(variable, shown) * factor + offset
+
+
+def real_numbers(variable: xr.DataArray, shown: str) -> NDArray[np.float64]:
+    """Return the values of a variable; raises InputError where they are text, yes or no, or complex numbers."""
+    if variable.dtype.kind not in "fiu":
+        raise InputError(Problem(shown, 0, str(variable.name), f"values of the type {variable.dtype}", "numbers"))
+    return np.asarray(variable.values, dtype=np.float64)
 
 
 def seconds(values: Any, attributes: Any, shown: str) -> NDArray[np.int64]:
     """Return CF times as UTC unix seconds."""
     told = {name: attributes[name] for name in ("units", "calendar") if name in attributes}
     try:
-        decoded = xr.decode_cf(xr.Dataset({"moment": ("n", np.asarray(values), told)}))["moment"].values
-        return np.asarray(decoded.astype("datetime64[s]").astype(np.int64))
-    except (ValueError, TypeError, OverflowError, ImportError) as error:
+        with np.errstate(invalid="raise"):
+            decoded = xr.decode_cf(xr.Dataset({"moment": ("n", np.asarray(values), told)}))["moment"].values
+            return np.asarray(decoded.astype("datetime64[s]").astype(np.int64))
+    except (ValueError, TypeError, AttributeError, ArithmeticError, ImportError) as error:
         beyond = "its dates lie outside the standard calendar"  # what xarray would hand to a package of other calendars
         reason = beyond if isinstance(error, ImportError) else str(error).splitlines()[0][:120]
         raise InputError(Problem(shown, 0, "time", f"it cannot be read ({reason})", "CF time, UTC")) from None

@@ -12,6 +12,7 @@ from yieldsim.sky.sun import SunCourse
 
 Array = NDArray[np.float64]
 
+_BLOCK = 2048  # intervals at once, all bands of each: 2 MB an array
 LEAST_COS_ZENITH = 0.01745  # cos(89 deg): below it light from around the sun merges with the sky (common practice)
 
 
@@ -221,10 +222,11 @@ def entered(parts: PlaneParts, sun: SunCourse, a_r: float | None) -> Array:
     sky = _share(lit_mean(sight.sky_step * from_sky, sun.up), lit_mean(sight.sky_step, sun.up))
     ground = _share(lit_mean(sight.ground_step * from_ground, sun.up), lit_mean(sight.ground_step, sun.up))
     light = parts.beam * beam[:, None]
-    part = parts.sky * sky[:, None]
-    light += part
-    light += np.multiply(parts.ground, ground[:, None], out=part)
-    return np.asarray(light)
+    for start in range(0, len(light), _BLOCK):
+        block = slice(start, start + _BLOCK)
+        light[block] += parts.sky[block] * sky[block, None]
+        light[block] += parts.ground[block] * ground[block, None]
+    return light
 
 
 def _share(part: Array, whole: Array) -> Array:

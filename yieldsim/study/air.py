@@ -123,6 +123,8 @@ def _albedo(plan: GroundPlan, weather: Weather, lit: NDArray[np.intp]) -> tuple[
         bare = ground.surface(plan.surface)
     elif plan.albedo is not None:
         return np.full(len(lit), plan.albedo), f"study ({plan.albedo:g})"
+    elif not any(name in weather for name in _GROUND_COLUMNS):
+        return np.full(len(lit), DEFAULT_ALBEDO), f"{DEFAULT_ALBEDO:g}, common practice"
     else:
         bare = np.full_like(spectrum.band_wavelengths(), DEFAULT_ALBEDO)
     measured, depth = (weather[name][lit] if name in weather else np.full(len(lit), np.nan) for name in _GROUND_COLUMNS)

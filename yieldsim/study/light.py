@@ -84,7 +84,9 @@ SKY_MODELS: Mapping[str, Callable[[SiteSky], Shares]] = {
 
 def plane_parts(site: SiteSky, plan: MountingPlan) -> plane.PlaneParts:
     """Return the band spectra on the front of a mounting, hour means."""
-    return _on_face(site, plan, sight.of_face(sight.FRONT, stance_of(site, plan), site.sun, rows_of(plan), site.horizon))
+    return _on_face(
+        site, plan, sight.of_face(sight.FRONT, stance_of(site, plan), site.sun, rows_of(plan), site.horizon)
+    )
 
 
 def rear_parts(site: SiteSky, plan: MountingPlan, absorbers: Sequence[Absorber]) -> plane.PlaneParts | None:
