@@ -214,6 +214,107 @@ def test_netcdf_of_more_moments_than_it_can_be(tmp_path):
     refused_quickly(tmp_path / "x", "moments")
 
 
+def test_a_shape_that_trips_the_library_in_an_odd_way(tmp_path):
+    """Records of no width in a classic file: their shape becomes a broken expression, and numpy raises SyntaxError."""
+    from scipy.io import netcdf_file
+
+    with netcdf_file(tmp_path / "x", "w") as file:
+        file.createDimension("time", None)
+        file.createDimension("nv", 0)
+        file.createVariable("time", "f8", ("time",))[:] = np.arange(3.0)
+        file.createVariable("ghi", "f8", ("time", "nv"))
+    refused_quickly(tmp_path / "x", "bomb: found it cannot be read")
+
+
+@pytest.mark.parametrize("name", ["tmy3", "psm3.csv", "plain", "table", "pvgis.csv", "surfrad.dat"])
+def test_a_carriage_return_within_a_line(tmp_path, whole, name):
+    """To some parsers it ends the line and to others not: rows and header would be counted apart."""
+    content, columns = whole[name]
+    lines = content.split(b"\n")
+    for at in (0, len(lines) // 2):
+        half = len(lines[at]) // 2
+        hurt = [*lines[:at], lines[at][:half] + b"\r" + lines[at][half:], *lines[at + 1 :]]
+        (tmp_path / "x").write_bytes(b"\n".join(hurt))
+        refused_quickly(tmp_path / "x", f"bomb:{at + 1}: found a carriage return", columns=columns)
+
+
+@pytest.mark.parametrize(("name", "column"), [("tmy3", b"DNI (W/m^2)"), ("psm3.csv", b"DNI"), ("pvgis.csv", b"Gb(n)")])
+def test_a_column_named_twice(tmp_path, whole, name, column):
+    other = {b"DNI (W/m^2)": b"DHI (W/m^2)", b"DNI": b"DHI", b"Gb(n)": b"Gd(h)"}[column]
+    content = b"\n".join(
+        line.replace(b"," + other + b",", b"," + column + b",") if i < 40 else line
+        for i, line in enumerate(whole[name][0].split(b"\n"))
+    )
+    (tmp_path / "x").write_bytes(content)
+    refused_quickly(tmp_path / "x", "the column twice")
+
+
+def test_header_lines_that_differ(tmp_path):
+    (tmp_path / "x").write_bytes(PLAIN.replace("# interval", "# latitude_deg: -52.6\n# interval").encode())
+    refused_quickly(tmp_path / "x", "bomb:6: latitude_deg: found '-52.6' after '52.6'")
+
+
+def test_a_clock_that_no_place_has(tmp_path):
+    (tmp_path / "x").write_bytes(PLAIN.replace(":00,", ":00+99:00,").encode())
+    refused_quickly(tmp_path / "x", "a clock of UTC")
+
+
+def test_two_months_in_one_file(tmp_path, whole):
+    (tmp_path / "x").write_bytes(2 * whole["bsrn"][0])
+    refused_quickly(tmp_path / "x", "a month a file")
+
+
+@pytest.mark.parametrize("value", ["true", '"500"', "[1]"])
+def test_json_of_other_things_than_numbers(tmp_path, whole, value):
+    content = whole["pvgis.json"][0]
+    at = content.index(b'"G(h)"', content.index(b"tmy_hourly"))
+    end = content.index(b",", at)
+    (tmp_path / "x").write_bytes(content[:at] + f'"G(h)": {value}'.encode() + content[end:])
+    refused_quickly(tmp_path / "x", "where a number should be")
+
+
+def test_json_rows_of_many_keys_take_no_table(tmp_path, whole):
+    """Rows that each name keys of their own: as a table their number squared, as columns read one by one nothing."""
+    import json
+    import tracemalloc
+
+    content = json.loads(whole["pvgis.json"][0])
+    row = content["outputs"]["tmy_hourly"][0]
+    hours = [f"201801{1 + i // 24:02d}:{i % 24:02d}10" for i in range(700)]
+    content["outputs"]["tmy_hourly"] = [
+        {**row, "time(UTC)": hour, **{f"{i} {k}": 0 for k in range(40)}} for i, hour in enumerate(hours)
+    ]
+    (tmp_path / "x").write_bytes(json.dumps(content).encode())
+    readers.read(str(tmp_path / "x"), **HERE)  # what is loaded on the way is no part of it
+    tracemalloc.start()
+    weather = readers.read(str(tmp_path / "x"), **HERE)
+    peak = tracemalloc.get_traced_memory()[1]
+    tracemalloc.stop()
+    assert len(weather) == 700
+    assert peak < 700 * 28_000 * 8 / 2  # half of a table of 700 rows by 28,000 columns
+
+
+@pytest.mark.parametrize("kind", ["c16", "?"])
+def test_netcdf_of_other_things_than_numbers(tmp_path, kind):
+    import h5netcdf
+
+    with h5netcdf.File(tmp_path / "x", "w", invalid_netcdf=True) as file:
+        file.dimensions = {"time": 3}
+        time = file.create_variable("time", ("time",), "f8")
+        time[...], time.attrs["units"] = np.arange(3.0), "hours since 2021-06-01"
+        file.create_variable("ghi", ("time",), kind)[...] = np.ones(3, dtype=kind)
+    refused_quickly(tmp_path / "x", "ghi: found values of the type")
+
+
+def test_long_rows_are_parsed_before_they_fill_the_memory(tmp_path, monkeypatch):
+    """Rows of 50 kB, too many cells each: refused after some megabytes, not after a block of 65,536 of them."""
+    from yieldsim.readers import _table
+
+    monkeypatch.setattr(_table, "BLOCK_CHARACTERS", 500_000)
+    (tmp_path / "x").write_bytes(gzip.compress(PLAIN.encode() + 100 * (b"1," * 25_000 + b"\n") + b"\x00"))
+    refused_quickly(tmp_path / "x", "25001 cells")
+
+
 def test_moments_outside_the_calendar():
     with pytest.raises(InputError, match="cannot be read"):
         seconds(np.array([1e246, 2e246]), {"units": "hours since 2021-06-01"}, "x.nc")

@@ -128,3 +128,29 @@ def test_a_book_of_one_year_is_its_sums(greensboro):
     twice = annual.added(greensboro.sums, greensboro.sums)
     np.testing.assert_array_equal(book.mean().charge, twice.charge)
     assert book.mean_rows("gap_sweep") == []
+
+
+def test_memory_does_not_grow_with_the_years(greensboro_weather, tmp_path, monkeypatch):
+    """Four years take no more than two at their peak: less than half of one year's weather more, so that none is held.
+
+    From the second year on: the first alone gives the datasets.
+    """
+
+    def years(count):
+        for number in range(count):
+            columns = {name: values.copy() for name, values in greensboro_weather.columns.items()}
+            time = greensboro_weather.time + number * 365 * 86_400
+            yield replace(greensboro_weather, time=time, columns=columns)
+
+    def peak(count):
+        tracemalloc.start()
+        piece.compute(study, study.sites[0], years(count), tmp_path)
+        found = tracemalloc.get_traced_memory()[1]
+        tracemalloc.stop()
+        return found
+
+    monkeypatch.setattr(piece, "parts", lambda weather: parts.parts(weather, 800))
+    study = replace(plan(frozenset({"hourly"})), gap_sweep=None)
+    peak(4)  # what is loaded or kept for all runs is no part of it
+    a_year = sum(values.nbytes for values in greensboro_weather.columns.values())
+    assert peak(4) - peak(2) < a_year / 2
