@@ -10,7 +10,6 @@ from yieldsim.config import library
 from yieldsim.study import annual, parts, piece
 from yieldsim.study.book import Book
 from yieldsim.study.plan import GapSweepPlan, LossesPlan, MountingPlan, SitePlan, StudyPlan
-from yieldsim.weather import cut
 
 TILTED = MountingPlan("fixed", "fixed", 30.0, 180.0)
 
@@ -106,18 +105,6 @@ def test_hours_are_on_disk_before_the_next_year_is_read(greensboro_weather, tmp_
         yield following(greensboro_weather, 1)
 
     compute(years(), tmp_path, monkeypatch, keep=frozenset({"hourly"}))
-
-
-def test_memory_does_not_grow_with_the_years(greensboro_weather, tmp_path, monkeypatch):
-    """What is held of a year that is over are its sums: 20 kB, where its light alone takes 1.5 MB."""
-    short = cut(greensboro_weather, 0, 600)
-    peaks = []
-    for count in (2, 2, 8):  # the first time round also imports and tables
-        tracemalloc.start()
-        compute((following(short, i) for i in range(count)), tmp_path / str(count), monkeypatch)
-        peaks.append(tracemalloc.get_traced_memory()[1])
-        tracemalloc.stop()
-    assert peaks[2] - peaks[1] < 1e6
 
 
 def test_a_book_of_one_year_is_its_sums(greensboro):
