@@ -130,8 +130,8 @@ def reruns(greensboro, sand_point):
 
 @pytest.fixture(scope="module")
 def days(greensboro, greensboro_weather):
-    """Five days of February, clear and cloudy, a tandem and one that takes rear light through another glass: a change is
-    seen soon."""
+    """Five days of February, clear and cloudy, a tandem and one that takes rear light through another glass: a change
+    is seen soon."""
     sky = hourly.site_sky(greensboro.plan, cut(greensboro_weather, 24 * 53, 24 * 58))
     few = SimpleNamespace(plan=greensboro.plan, sky=sky, plane=greensboro.plane)
     return Rerun(few, [each for each in sample() if each.name in ("tandem", "both sides")])
