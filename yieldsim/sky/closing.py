@@ -178,7 +178,8 @@ def _solve_haze(
     """Return the haze that each hour's beam tells of, and which hours are clear."""
     solved = np.full(len(dni), AOD_RANGE[1])
     told = dni > _LEAST_BEAM
-    solved[told] = beam_haze(air.only(told), earth_sun[told], dni[told], constants)
+    bare = replace(air, albedo=np.zeros_like(air.aod500))  # the beam does not see the ground
+    solved[told] = beam_haze(bare.only(told), earth_sun[told], dni[told], constants)
     explained = _diffuse_explained(air.with_aod500(solved), earth_sun, dni, dhi, few)
     return solved, explained & _neighbours_agree(solved, explained, consecutive)
 
@@ -244,7 +245,7 @@ def _diffuse_explained(air: Air, earth_sun: Array, dni: Array, dhi: Array, few: 
     inside = (air.aod500 > AOD_RANGE[0]) & (air.aod500 < AOD_RANGE[1]) & (dni > _LEAST_BEAM)
     explained = np.zeros(len(dni), dtype=bool)
     if inside.any():
-        chosen = on_few_bands(air.only(inside))
+        chosen = on_few_bands(air).only(inside)
         passed = column.transmit(chosen, np.zeros(int(inside.sum())), few)
         top = few.extraterrestrial * few.factor
         scattered = ((passed.total - passed.beam) @ top) * earth_sun[inside] * chosen.cos_zenith
