@@ -1,15 +1,18 @@
 """Mutation testing: are the tests of sky, device and study red when a line of them is wrong?
 
     pip install -e ".[dev,mutation]"
-    python tests/mutation/run.py map                    # which test runs which line: once, and again when tests change
+    python tests/mutation/run.py map                # which test runs which line; with --tests: those files anew
     python tests/mutation/run.py map --plain --tests tests/sky tests/device
-    python tests/mutation/run.py run --count 400        # 400 mutants of each package; goes on where it was stopped
-    python tests/mutation/run.py report --survivors     # figures, and the diffs of what lived
+    python tests/mutation/run.py run --count 400    # 400 mutants of each package; goes on where it was stopped
+    python tests/mutation/run.py run --again        # those that lived once more, after new tests; see --budget
+    python tests/mutation/run.py control            # are the tests that killed green without a mutant?
+    python tests/mutation/run.py report --survivors # figures, and the diffs of what lived
 
-cosmic-ray's operators make the mutants; each has a rank from its seed and its own line, so that the sample stays the
+cosmic-ray's operators make the mutants; each has a rank from the seed and its own line, so that the sample stays the
 same where the code does. Left out are mutants in annotations, and those that any call at all would kill (`is` for `<`,
 shifts of floats), since they flatter. A server imports the libraries once and forks a process for each mutant, which
-takes in the mutated source and runs the tests that run the mutated line, cheap ones first, until one is red.
+imports yieldsim with the mutated source and runs the tests that run the mutated line, cheap ones first, until one is
+red.
 Compiled modules, and those whose constants they take in, are run as plain Python on tests that this leaves affordable.
 """
 
@@ -29,6 +32,7 @@ import os
 import resource
 import signal
 import sys
+import tempfile
 import time
 import traceback
 from collections import Counter, defaultdict
@@ -382,6 +386,8 @@ def child(mutant: Mutant, changed: str, groups: list[list[str]], pipe: int) -> N
     import numba
 
     numba.config.DISABLE_JIT = mutant.module in PLAIN  # read where a function is decorated
+    if mutant.operator == "core/RemoveDecorator" and mutant.module in PLAIN:  # what shows only where it is compiled
+        numba.config.DISABLE_JIT, numba.config.CACHE_DIR = False, tempfile.mkdtemp(dir=ROOT / "outputs" / "mutation")
     sys.meta_path.insert(0, Mutated(mutant.module, changed))
     for tests in groups:
         files = dict.fromkeys(name.split("::")[0] for name in tests)
@@ -459,7 +465,7 @@ def run(out: Path, count: int, budget: float, again: bool, only: Iterable[str]) 
         if only and mutant.module not in only:
             continue
         before = known.get((mutant.module, change))
-        if before and not (again and before["verdict"] in ("survived", "no tests")):
+        if before and not (again and before["verdict"] != "timeout" and not before["by"]):
             continue
         _, changed = mutate(mutant) or ("", "")
         tests = choose(records[mutant.module in PLAIN], mutant, budget)
@@ -472,6 +478,24 @@ def run(out: Path, count: int, budget: float, again: bool, only: Iterable[str]) 
         }  # fmt: skip
         with (out / "results.jsonl").open("a", encoding="utf-8") as file:
             file.write(json.dumps(row) + "\n")
+
+
+def control(out: Path) -> None:
+    """Run every test that killed a mutant on the code as it is, compiled and plain, and print those that are red."""
+    warm_up()
+    for plain in (False, True):
+        killers = sorted({r["by"] for r in results(out).values() if r["by"] and (r["module"] in PLAIN) == plain})
+        untouched = Mutant(PLAIN[0] if plain else "sky.sun", "none", 0, 0, "")
+        source = path_of(untouched.module).read_text("utf-8")
+        left = killers
+        while left:
+            verdict, red = attempt(untouched, source, [left], 600.0)
+            if verdict != "killed":
+                break
+            print(f"red without a mutant: {red}", flush=True)
+            left = [name for name in left if name != red]
+        how = "as plain Python" if plain else "compiled"
+        print(f"{len(left)} of {len(killers)} killers are green {how}", flush=True)
 
 
 def report(out: Path, count: int, survivors: bool) -> None:
@@ -493,7 +517,7 @@ def report(out: Path, count: int, survivors: bool) -> None:
 
 def main() -> None:
     parser = argparse.ArgumentParser(description=__doc__, formatter_class=argparse.RawDescriptionHelpFormatter)
-    parser.add_argument("verb", choices=("map", "run", "report"))
+    parser.add_argument("verb", choices=("map", "run", "control", "report"))
     parser.add_argument("--out", type=Path, default=ROOT / "outputs" / "mutation")
     parser.add_argument("--count", type=int, default=400, help="mutants of each package")
     parser.add_argument("--plain", action="store_true", help="with map: compiled modules as plain Python")
@@ -513,6 +537,8 @@ def main() -> None:
         make_map(args.out, args.plain, list(args.tests))
     elif args.verb == "run":
         run(args.out, args.count, args.budget, args.again, args.only)
+    elif args.verb == "control":
+        control(args.out)
     else:
         report(args.out, args.count, args.survivors)
 

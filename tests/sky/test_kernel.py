@@ -80,8 +80,8 @@ def some_bands():
 
 @pytest.mark.parametrize("per_band", [False, True])
 def test_some_bands_equal_the_plain_form(per_band):
-    """As `test_equals_the_plain_form`, on so few bands that it can be run without compiling; one hour has no vapour,
-    one has the exponent of the hour before."""
+    """As `test_equals_the_plain_form`, on so few bands that it can be run without compiling; one hour is without
+    vapour, one has the exponent of the hour before."""
     air, optics, n = any_air(24, 9), some_bands(), 24
     water, exponent = air.water_cm.copy(), air.angstrom_exponent.copy()
     water[0], exponent[2] = 0.0, exponent[1]

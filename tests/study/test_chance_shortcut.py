@@ -130,8 +130,7 @@ def reruns(greensboro, sand_point):
 
 @pytest.fixture(scope="module")
 def days(greensboro, greensboro_weather):
-    """Five days of February, clear and cloudy, a tandem and one that takes rear light through another glass: a change
-    is seen soon."""
+    """Five days of February, clear and cloudy; a tandem and one that takes rear light through another glass."""
     sky = hourly.site_sky(greensboro.plan, cut(greensboro_weather, 24 * 53, 24 * 58))
     few = SimpleNamespace(plan=greensboro.plan, sky=sky, plane=greensboro.plane)
     return Rerun(few, [each for each in sample() if each.name in ("tandem", "both sides")])
@@ -362,8 +361,7 @@ def test_haze_that_is_fixed_is_never_solved(days):
     sky = hourly.site_sky(site, days.sky.weather)
     found = Found.of(site, sky)
     assert not found.hourly
-    assert not (found.own.any())
-    assert not (found.tells.any())
+    assert not np.any(found.own | found.tells)
     more = chance_light.moved(sky, found, {"aod500": np.log(1.5)})
     np.testing.assert_allclose(more.sky.aod500, 1.5 * sky.sky.aod500, rtol=1e-12)
 

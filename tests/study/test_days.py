@@ -1,4 +1,4 @@
-"""A few days of a whole study, small enough to look at every number: datasets and tables against the hours."""
+"""A few days of a whole study: datasets and tables against the hours themselves."""
 
 from dataclasses import replace
 

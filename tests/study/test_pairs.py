@@ -10,7 +10,7 @@ from yieldsim.device.junction import Junction
 from yieldsim.device.response import step
 from yieldsim.device.stack import Absorber
 from yieldsim.study import hourly, pairs, sweep
-from yieldsim.study.plan import GapPairsPlan, LossesPlan
+from yieldsim.study.plan import GapPairsPlan, GapSweepPlan, LossesPlan
 
 
 def stack(top, bottom, terminals, quality=1.0):
@@ -126,9 +126,11 @@ def test_how_far_today_s_pairs_stay_behind():
 
 
 def test_efficiency_is_that_of_the_module():
-    """The light-collecting share of the area counts once: in pairs, in a sweep and in the ranking alike."""
-    whole, part = (replace(stack(1.7, 1.1, 2), area_fraction=share) for share in (1.0, 0.9))
-    for efficiency in (pairs._efficiency, sweep._efficiency):
-        found = efficiency([whole, part])
-        assert found[1] == pytest.approx(0.9 * found[0], rel=1e-12)
-        assert found[0] == pytest.approx(Bank.of([whole]).standard().terminal_power[0] / 1000, rel=1e-12)
+    """The light-collecting share of the area counts once: in pairs and in a sweep alike."""
+    kinds = tuple(replace(stack(1.7, 1.1, 2), area_fraction=share) for share in (1.0, 0.9))
+    wanted = Bank.of([kinds[0]]).standard().terminal_power[0] / 1000 * np.array([1.0, 0.9])
+    of_pairs = pairs.standard_rows(GapPairsPlan(((1.7, 1.1),) * 2, {("q", 2): kinds}))
+    of_gaps = sweep.standard_rows(GapSweepPlan((1.7, 1.7), {"q": kinds}))
+    for rows in (of_pairs, of_gaps):
+        np.testing.assert_allclose([row["standard_efficiency"] for row in rows], wanted, rtol=1e-12)
+        np.testing.assert_allclose([row["energy_kwh_m2"] for row in rows], 1000 * wanted, rtol=1e-12)

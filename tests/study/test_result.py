@@ -72,8 +72,8 @@ def test_half_hours_bring_half_the_energy():
     """Energy is power times time: 100 W/m2 for one of two half hours, over 200 W/m2 rated."""
     found = _hourly([100.0, 0.0, 100.0, 100.0])
     half = found.assign_coords(time=found["time"].values[0] + np.arange(4) * np.timedelta64(30, "m"))
-    for hourly, energy in ((found, [100, 100, 100]), (half, [50, 100])):
-        table = by_hour_table("here", hourly, {"a": 200.0})
+    for dataset, energy in ((found, [100, 100, 100]), (half, [50, 100])):
+        table = by_hour_table({"here": dataset}, {"a": 200.0})
         assert list(table["specific_yield_kwh_kwp"]) == pytest.approx([each / 200.0 for each in energy])
 
 

@@ -92,7 +92,7 @@ def shifted(response: Response, shift_ev: float, gap_ev: float | None = None) ->
     blue = float(energy[0])
     if not 0 < edge + shift_ev < blue or energy[-1] + shift_ev <= 0:
         raise ValueError(f"an edge at {edge:g} eV cannot move by {shift_ev:g} eV: the response ends at {blue:g} eV")
-    weight = np.clip((blue - energy) / (blue - edge), 0.0, 1.0)
+    weight = np.minimum((blue - energy) / (blue - edge), 1.0)
     return Response(wavelength_nm(energy + shift_ev * weight), response.quantum_efficiency)
 
 

@@ -330,26 +330,6 @@ def forward_share(air: Air, constants: Optics | None = None) -> Array:
     return share
 
 
-def beam_transmittance(air: Air, constants: Optics | None = None) -> tuple[Array, Array]:
-    """Return what the cloudless column does to the beam, haze apart.
-
-    Returns
-    -------
-    without_haze : (n, n_band) array [1], transmittance of the beam through all but the haze
-    haze_slope : (n, n_band) array [1], optical depth of haze along the beam per unit of AOD at 500 nm
-    """
-    constants = optics() if constants is None else constants
-    air_mass = relative_air_mass(air.cos_zenith)[:, None]
-    pressure_ratio = air.pressure[:, None] / BIRD_PRESSURE
-    depth = water_depth(constants.water, air.water_cm[:, None] * air_mass)
-    depth += mixed_gas_depth(constants.mixed_gas, pressure_ratio * air_mass)
-    depth += constants.ozone * air.ozone_atm_cm[:, None] * ozone_air_mass(air.cos_zenith)[:, None]
-    depth *= constants.gas_scale
-    depth += pressure_ratio * constants.rayleigh * air_mass
-    slope = np.exp(-air.angstrom_exponent[:, None] * constants.haze_shape) * air_mass
-    return np.exp(-depth), slope
-
-
 def _slants(air_mass: Array, cloud: Array) -> tuple[Array, Array, Array]:
     """Return the slant of light's way through gas above, in and below the cloud, each (n, 1) [1].
 

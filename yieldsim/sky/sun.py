@@ -99,7 +99,9 @@ def course(
 
 
 def _ephemeris(moment: Array) -> tuple[Array, Array, Array, Array]:
-    """Return right ascension, declination [rad], distance [AU] and the nutation in sidereal time [deg], each (n,).
+    """Return right ascension, declination [rad], distance [AU] and how far sidereal time is ahead [deg], each (n,).
+
+    Ahead of `_even_sidereal_deg`: by nutation and by what the days' pace itself changes.
 
     Cubics between four days; they are within 0.000001 deg of the algorithm at every moment.
     """
@@ -120,16 +122,15 @@ def _at_midnights(days: bytes) -> tuple[Array, Array, Array, Array]:
 
     at = np.frombuffer(days, dtype=np.int64).astype(np.float64) * 86400.0
     sidereal, ascension, declination = spa.solar_position(at, 0, 0, 0, 0, 0, _DELTA_T_S, 0, sst=True)
-    nutation = (sidereal - _mean_sidereal_deg(at) + 180.0) % 360.0 - 180.0
+    ahead = (sidereal - _even_sidereal_deg(at) + 180.0) % 360.0 - 180.0
     distance = np.asarray(spa.earthsun_distance(at, _DELTA_T_S, 1))
-    return np.unwrap(np.radians(ascension)), np.radians(declination), distance, np.asarray(nutation)
+    return np.unwrap(np.radians(ascension)), np.radians(declination), distance, np.asarray(ahead)
 
 
-def _mean_sidereal_deg(moment: Array) -> Array:
-    """Return the mean sidereal time at Greenwich [deg] (Reda & Andreas 2004, eq. 28)."""
+def _even_sidereal_deg(moment: Array) -> Array:
+    """Return sidereal time at Greenwich at an even pace [deg]: the linear part of Reda & Andreas (2004), eq. 28."""
     days = moment / 86400.0 + 2440587.5 - 2451545.0
-    century = days / 36525.0
-    return 280.46061837 + 360.98564736629 * days + 0.000387933 * century**2 - century**3 / 38710000.0
+    return 280.46061837 + 360.98564736629 * days
 
 
 def _topocentric(
@@ -140,8 +141,8 @@ def _topocentric(
     The direction's components (n,) point to the equator in the south (on the northern half), to the west and along the
     pole.
     """
-    ascension, declination, distance, nutation = _ephemeris(moment)
-    hour_angle = np.radians(_mean_sidereal_deg(moment) + nutation + longitude_deg) - ascension
+    ascension, declination, distance, ahead = _ephemeris(moment)
+    hour_angle = np.radians(_even_sidereal_deg(moment) + ahead + longitude_deg) - ascension
     parallax = np.sin(np.radians(8.794 / 3600.0 / distance))
     latitude, height = np.radians(latitude_deg), elevation_m / 6378140.0
     reduced = np.arctan(0.99664719 * np.tan(latitude))

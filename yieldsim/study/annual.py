@@ -86,6 +86,11 @@ class Ratings:
             standard.terminal_power,
         )
 
+    def module_efficiency(self, absorbers: Sequence[Absorber]) -> Array:
+        """Return the efficiency of each absorber's module at standard conditions, (n_absorber,) [1]."""
+        area = np.array([absorber.area_fraction for absorber in absorbers])
+        return np.asarray(self.terminals * area / STANDARD_IRRADIANCE)
+
     @staticmethod
     def standard(absorbers: Sequence[Absorber]) -> Standard:
         """Return the whole rating: currents, voltages, efficiencies, temperature coefficients."""

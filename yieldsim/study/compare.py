@@ -65,7 +65,7 @@ def annual_rows(
     """Return one row per absorber with the measures of a year and its ranks."""
     area = np.array([absorber.area_fraction for absorber in absorbers])
     found = measures(total.year(), ratings, area)
-    efficiency = ratings.terminals * area / STANDARD_IRRADIANCE
+    efficiency = ratings.module_efficiency(absorbers)
     ranks = {
         "rank_by_yield": rank(found["specific_yield_kwh_kwp"][:, 0]),
         "rank_by_energy": rank(found["energy_kwh_m2"][:, 0]),

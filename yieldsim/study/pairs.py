@@ -9,7 +9,6 @@ import numpy as np
 from numpy.typing import NDArray
 
 from yieldsim import spectrum
-from yieldsim.constants import STANDARD_IRRADIANCE
 from yieldsim.device.stack import Absorber
 from yieldsim.study import annual
 from yieldsim.study.annual import Ratings
@@ -125,7 +124,7 @@ def standard_rows(plan: GapPairsPlan) -> list[Row]:
     """Return the same rows for 1000 kWh/m2 of the standard spectrum on cells at 25 degC, nothing lost."""
     rows: list[Row] = []
     for (quality, terminals), absorbers in plan.absorbers.items():
-        energy = _efficiency(absorbers) * STANDARD_LIGHT_KWH_M2
+        energy = Ratings.of(absorbers).module_efficiency(absorbers) * STANDARD_LIGHT_KWH_M2
         rows += _rows(STANDARD_SITE, "", quality, terminals, plan, absorbers, STANDARD_LIGHT_KWH_M2, energy)
     return rows
 
@@ -193,7 +192,7 @@ def _rows(
     light: float,
     energy: Array,
 ) -> list[Row]:
-    efficiency = _efficiency(absorbers)
+    efficiency = Ratings.of(absorbers).module_efficiency(absorbers)
     return [
         {
             "site": site,
@@ -208,8 +207,3 @@ def _rows(
         }
         for i, (top, bottom) in enumerate(plan.pairs_ev)
     ]
-
-
-def _efficiency(absorbers: Sequence[Absorber]) -> Array:
-    area = np.array([absorber.area_fraction for absorber in absorbers])
-    return np.asarray(Ratings.standard(absorbers).terminal_power * area / STANDARD_IRRADIANCE)

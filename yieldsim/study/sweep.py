@@ -2,12 +2,8 @@
 
 from __future__ import annotations
 
-from collections.abc import Sequence
-
 import numpy as np
 
-from yieldsim.constants import STANDARD_IRRADIANCE
-from yieldsim.device.stack import Absorber
 from yieldsim.sky.plane import PlaneParts
 from yieldsim.study import annual
 from yieldsim.study.annual import Ratings
@@ -34,7 +30,7 @@ def sweep_rows(
     light = float(parts.total().sum() * step_h)
     for quality, absorbers in plan.absorbers.items():
         power = terminal_powers(sky, mounting, parts, absorbers, dust)
-        efficiency = _efficiency(absorbers)
+        efficiency = Ratings.of(absorbers).module_efficiency(absorbers)
         area = np.array([absorber.area_fraction for absorber in absorbers])
         energy = (power @ (kept * step_h)) * area / 1000.0
         rows.extend(
@@ -56,7 +52,7 @@ def standard_rows(plan: GapSweepPlan) -> list[Row]:
     """Return the same rows for 1000 kWh/m2 of the standard spectrum on cells at 25 degC, nothing lost."""
     rows: list[Row] = []
     for quality, absorbers in plan.absorbers.items():
-        efficiency = _efficiency(absorbers)
+        efficiency = Ratings.of(absorbers).module_efficiency(absorbers)
         rows.extend(
             {
                 "site": STANDARD_SITE,
@@ -70,8 +66,3 @@ def standard_rows(plan: GapSweepPlan) -> list[Row]:
             for i, gap in enumerate(plan.gaps_ev)
         )
     return rows
-
-
-def _efficiency(absorbers: Sequence[Absorber]) -> annual.Array:
-    area = np.array([absorber.area_fraction for absorber in absorbers])
-    return np.asarray(Ratings.of(absorbers).terminals * area / STANDARD_IRRADIANCE)
