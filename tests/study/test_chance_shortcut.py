@@ -14,11 +14,11 @@ from yieldsim.device.junction import moved_to_gap
 from yieldsim.device.response import scaled
 from yieldsim.device.stack import Absorber
 from yieldsim.spectrum import band_wavelengths, reference_bands
-from yieldsim.study import chance_device, chance_inputs, chance_light, chance_shortcut, hourly, light
+from yieldsim.study import chance, chance_device, chance_inputs, chance_light, chance_shortcut, hourly, light
 from yieldsim.study.chance_inputs import BY_NAME, OF_JUNCTION, OF_LIGHT, SHAPES, error_shapes, is_ideal
 from yieldsim.study.chance_light import Found
 from yieldsim.study.chance_shortcut import absorber_owner, junction_owner
-from yieldsim.study.chance_year import spreads_of
+from yieldsim.study.chance_year import YearOfChance, spreads_of
 from yieldsim.study.plan import ChancePlan, GroundPlan, LossesPlan
 from yieldsim.weather import cut
 
@@ -440,3 +440,107 @@ def test_error_shapes_tie_bands_as_far_as_they_reach():
     wanted = np.exp(-(((place[:, None] - place) / 0.35) ** 2) / 2)
     off = share @ (shapes.T @ shapes - wanted) ** 2 @ share
     assert np.sqrt(off) < 0.03
+
+
+YIELDS, ENERGIES = (1000.0, 990.0), (250.0, 150.0)  # invented; the second absorber is the second best
+
+
+def tables(days, absorbers, yearly=(), **plan):
+    """Return all tables of draws of these days, and the draws."""
+    found = chance.Gathered(ChancePlan(seed=3, **plan), days.site, absorbers, LossesPlan())
+    found.add(days.sky, 1.0)
+    annual = [
+        {"mounting": "fixed", "absorber": each.name, "specific_yield_kwh_kwp": per_kw, "energy_kwh_m2": energy}
+        for each, per_kw, energy in zip(absorbers, YIELDS, ENERGIES, strict=False)
+    ]
+    return found.told(annual, yearly)
+
+
+@pytest.fixture(scope="module")
+def of_draws(days):
+    return tables(days, days.absorbers, draws=100)
+
+
+def test_rows_tell_of_the_draws(of_draws):
+    """Definitions, from the draws themselves: quantiles, means, who leads how often, by how much, in which rank."""
+    found, draws = of_draws
+    for row in found["chance"]:
+        values = getattr(draws, row["measure"])[:, 0, draws.absorbers.index(row["absorber"])]
+        np.testing.assert_allclose([row["p90"], row["p50"], row["p10"]], np.quantile(values, [0.1, 0.5, 0.9]))
+        assert (row["mean"], row["sd"]) == pytest.approx((values.mean(), values.std()))
+        assert row["p50_half"] == pytest.approx(np.median(values[:50]))
+        assert row["p90_half"] == pytest.approx(np.quantile(values[:50], 0.1))
+        assert row["base"] == pytest.approx(np.median(values), rel=0.02)
+    for row in found["head_to_head"]:
+        i, j = (draws.absorbers.index(row[name]) for name in ("absorber", "other"))
+        values = getattr(draws, row["measure"])[:, 0]
+        assert row["probability"] == np.mean(values[:, i] > values[:, j])
+        assert row["probability_above"] == np.mean(values[:, i] > 1.01 * values[:, j])
+        assert row["margin_p50"] == pytest.approx(np.median(values[:, i] / values[:, j] - 1))
+        first = next(r for r in found["rank_chance"] if (r["measure"], r["absorber"], r["rank"]) == (
+            row["measure"], row["absorber"], 1))  # fmt: skip
+        assert first["probability"] == row["probability"]
+
+
+def test_flips_are_ties(days, of_draws):
+    """Definition: with the input so many spreads away and all else in its middle, the best two give the same."""
+    found, _ = of_draws
+    names = [each.name for each in days.absorbers]
+    base = np.array([YIELDS, ENERGIES])
+    year = YearOfChance.of(days.shortcut.light, days.absorbers, days.spreads, days.drawn, base, None)
+    one = [row for row in found["flips"] if row["found"] == "tie" and not row["input"].startswith("model")]
+    assert {row["measure"] for row in one} == {"specific_yield_kwh_kwp"}  # energies are too far apart
+    assert len(one) > 4
+    for row in one:
+        assert (row["absorber"], row["other"]) == tuple(names)
+        which = [
+            owner for owner, said in chance_shortcut.owners(row["input"], "here", days.absorbers) if said == row["of"]
+        ]
+        away = np.zeros((1, len(days.drawn)))
+        away[0, [days.drawn.index((row["input"], owner, 0)) for owner in which]] = row["spreads"]
+        assert np.count_nonzero(away) == 1
+        first, second = year.values(away)[0, 0]
+        assert first == pytest.approx(second, rel=1e-4)
+        spread = {**days.spreads.site, **days.spreads.absorbers[0]}[row["input"]]
+        assert row["value"] == pytest.approx(float(BY_NAME[row["input"]].value(spread * row["spreads"])))
+
+
+def test_slopes_are_those_of_the_draws(days):
+    """Central differences at a spread to either side; an input of the other absorber moves nothing."""
+    base = np.array([YIELDS, ENERGIES])
+    year = YearOfChance.of(days.shortcut.light, days.absorbers, days.spreads, days.drawn, base, None)
+    slopes = year.slopes()
+    np.testing.assert_allclose(year.values(np.zeros((1, len(days.drawn))))[:, 0], base, rtol=1e-12)
+    level = days.drawn.index(("nameplate", absorber_owner(days.absorbers[0]), 0))
+    assert slopes[0, level, 0] == pytest.approx(YIELDS[0] * BY_NAME["nameplate"].spread, rel=1e-3)
+    assert slopes[1, level, 0] == 0.0  # energy per area knows no label
+    assert slopes[0, level, 1] == 0.0
+    ageing = days.drawn.index(("degradation", absorber_owner(days.absorbers[1]), 0))
+    assert slopes[1, ageing, 1] != 0.0
+    assert slopes[1, ageing, 0] == 0.0
+    assert year.best_two(0) == (0, 1)
+    assert set(year.active()) == {name for name, _, _ in days.drawn}
+
+
+def test_one_absorber_alone_has_causes_but_no_rival(days):
+    found, draws = tables(days, days.absorbers[:1], draws=25)
+    assert found["flips"] == []
+    assert found["head_to_head"] == []
+    assert {row["other"] for row in found["causes"]} == {""}
+    assert {row["probability"] for row in found["rank_chance"]} == {1.0}
+    assert draws.energy_kwh_m2.shape == (25, 1, 1)
+
+
+def test_years_of_a_file_are_drawn_as_they_are(days):
+    """Invariant: with nothing else drawn each draw is one of the years' energies over their mean, times the study's."""
+    yearly = [
+        {"mounting": "fixed", "absorber": each.name, "year": year, "energy_kwh_m2": energy}
+        for year, share in ((2001, 0.9), (2002, 1.0), (2003, 1.1))
+        for each, energy in zip(days.absorbers, (share * 240.0, share**2 * 160.0), strict=True)
+    ]
+    nothing = {name: 0.0 for name in BY_NAME if name != "year"}
+    _, draws = tables(days, days.absorbers, yearly, draws=60, spreads=nothing)
+    shares = np.array([[0.9, 0.81], [1.0, 1.0], [1.1, 1.21]]) / [1.0, np.mean([0.81, 1.0, 1.21])]
+    found = np.unique(np.round(draws.energy_kwh_m2[:, 0], 9), axis=0)
+    np.testing.assert_allclose(found, shares * ENERGIES, rtol=1e-9)
+    assert np.unique(draws.energy_kwh_m2[:, 0, 0], return_counts=True)[1].min() > 10
