@@ -544,3 +544,14 @@ def test_years_of_a_file_are_drawn_as_they_are(days):
     found = np.unique(np.round(draws.energy_kwh_m2[:, 0], 9), axis=0)
     np.testing.assert_allclose(found, shares * ENERGIES, rtol=1e-9)
     assert np.unique(draws.energy_kwh_m2[:, 0, 0], return_counts=True)[1].min() > 10
+
+
+def test_only_lossless_junctions_stand_for_a_limit():
+    """A limit has every loss at its least: one resistance or a little dark recombination, and it is a device."""
+    limit = sample()[-1].junctions[0]
+    assert is_ideal(limit)
+    for change in (
+        {"external_radiative_efficiency": 0.9}, {"series_resistance_ohm_cm2": 0.1},
+        {"shunt_resistance_ohm_cm2": 1e9},
+    ):  # fmt: skip
+        assert not is_ideal(replace(limit, **change))

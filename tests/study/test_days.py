@@ -13,6 +13,7 @@ from yieldsim.device.stack import Absorber
 from yieldsim.errors import InputError, Problem
 from yieldsim.study import datasets, hourly, light, piece, run
 from yieldsim.study.annual import Ratings
+from yieldsim.study.ledger import ledger_rows
 from yieldsim.study.plan import GapSweepPlan, LossesPlan, MountingPlan, SitePlan, StudyPlan, WorthPlan
 from yieldsim.weather import cut
 
@@ -229,3 +230,22 @@ def test_a_sweep_stands_under_the_same_light(days):
     for site, mounting, poa in zip(sweep["site"], sweep["mounting"], sweep["poa_kwh_m2"], strict=True):
         if mounting:
             assert poa == pytest.approx(light[site, mounting], rel=1e-9)
+
+
+def test_the_ledger_of_days_holds_all_light(days):
+    """Invariant: what became of the light adds up to it, rear light by its share; what is delivered is the yield."""
+    both = replace(SILICON, name="both sides", bifaciality=0.7)
+    for absorber in (SILICON, TANDEM, both):
+        rear = light.rear_parts(days.sky, TILTED, [absorber])
+        faces = hourly.FacesOfYear(days.sky, days.parts[0], rear, None)
+        year = hourly.plane_year(days.sky, TILTED, days.parts[0], [absorber])
+        paid = hourly.light_paid(year, [absorber], days.sky.month)
+        (row,) = ledger_rows("first", "fixed", [absorber], paid, days.plan.losses, 3600)
+        fates = [value for value in row.values() if isinstance(value, float)]
+        behind = 0.0 if rear is None else rear.total().sum()
+        assert (behind > 0) == (absorber is both)
+        wanted = (faces.front.total().sum() + absorber.bifaciality * behind) / 1000
+        assert sum(fates) == pytest.approx(wanted, rel=1e-9)
+        assert row["delivered"] == pytest.approx(0.97 * year.power.sum() / 1000, rel=1e-9)
+        assert row["wiring"] == pytest.approx(0.03 * year.power.sum() / 1000, rel=1e-9)
+        assert min(row[name] for name in ("reflected", "below_gap", "thermalised", "nonradiative_voltage")) > 0
