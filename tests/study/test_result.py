@@ -73,7 +73,7 @@ def test_half_hours_bring_half_the_energy():
     found = _hourly([100.0, 0.0, 100.0, 100.0])
     half = found.assign_coords(time=found["time"].values[0] + np.arange(4) * np.timedelta64(30, "m"))
     for dataset, energy in ((found, [100, 100, 100]), (half, [50, 100])):
-        table = by_hour_table({"here": dataset}, {"a": 200.0})
+        table = by_hour_table("here", dataset, {"a": 200.0})
         assert list(table["specific_yield_kwh_kwp"]) == pytest.approx([each / 200.0 for each in energy])
 
 
