@@ -3,7 +3,6 @@ for a whole, and the next run gives the bytes of an unbroken one."""
 
 import json
 import os
-import resource
 import shutil
 import signal
 import subprocess
@@ -103,20 +102,23 @@ def test_killed_at_every_file_that_is_put_in_place(study, unbroken, tmp_path):
     assert kills > 12  # two sites' hours and pieces, the tables, the page, the record
 
 
+LIMITED = """
+import resource, signal, sys
+from yieldsim.cli import main
+words, most = ["run", sys.argv[1], "--workers", "1", "--quiet", "--out"], int(sys.argv[3])
+main([*words, sys.argv[2] + "-before"])  # all is compiled: its cache has a limit of its own
+signal.signal(signal.SIGXFSZ, signal.SIG_IGN)
+resource.setrlimit(resource.RLIMIT_FSIZE, (most, most))
+sys.exit(main([*words, sys.argv[2]]))
+"""
+
+
 @pytest.mark.parametrize("most", [500, 30_000])
 def test_no_room_for_a_file(study, unbroken, tmp_path, most):
     """A limit to the size of files, which needs no rights; 500 bytes: nothing fits, 30 kB: a site, but no page."""
     folder = tmp_path / "limited"
-    script = "import sys; from yieldsim.cli import main; sys.exit(main(sys.argv[1:]))"
-
-    def limit():
-        signal.signal(signal.SIGXFSZ, signal.SIG_IGN)
-        resource.setrlimit(resource.RLIMIT_FSIZE, (most, most))
-
-    words = ["run", str(study), "--out", str(folder), "--workers", "1", "--quiet"]
-    done = subprocess.run(
-        [sys.executable, "-B", "-c", script, *words], preexec_fn=limit, capture_output=True, text=True
-    )
+    words = [sys.executable, "-B", "-c", LIMITED, str(study), str(folder), str(most)]
+    done = subprocess.run(words, capture_output=True, text=True)
     assert done.returncode == 2, done.stderr
     assert "cannot write" in done.stderr
     assert "run again" in done.stderr
