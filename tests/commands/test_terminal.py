@@ -5,7 +5,8 @@ import io
 import pytest
 
 from yieldsim.commands import _terminal
-from yieldsim.commands._terminal import Progress, bold, cut, duration, plain, table
+from yieldsim.commands._terminal import Progress, bold, cut, duration, table
+from yieldsim.errors import plain
 
 
 class Terminal(io.StringIO):

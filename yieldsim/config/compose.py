@@ -21,6 +21,7 @@ from ruamel.yaml.events import (
 )
 from ruamel.yaml.reader import ReaderError
 
+from yieldsim.config.fields import quoted
 from yieldsim.errors import InputError, Problem, plain
 
 MAX_DEPTH = 12  # the deepest key of a study lies 6 levels down
@@ -202,7 +203,7 @@ class _Composer:
         else:
             first = parent.seen.setdefault(key.value, key.mark)
             if first is not key.mark:
-                self.blame(key.mark, f"key `{key.value}` again (first in line {first.line})", "each key once")
+                self.blame(key.mark, f"key {quoted(key.value)} again (first in line {first.line})", "each key once")
 
 
 def _joined(text: str) -> str:

@@ -6,9 +6,10 @@ Looks at the plain data, so that it has its say also where other parts of the st
 from __future__ import annotations
 
 from collections.abc import Iterator
+from itertools import chain, islice
 from typing import Any
 
-from yieldsim.config.fields import folded, nearest, show
+from yieldsim.config.fields import MOST_PROBLEMS, folded, nearest, show
 from yieldsim.config.tree import Document, KeyPath
 from yieldsim.errors import Problem
 
@@ -18,23 +19,24 @@ Named = list[tuple[KeyPath, str]]
 
 
 def problems(document: Document) -> list[Problem]:
-    """Return everything that is wrong between the parts of a study."""
+    """Return what is wrong between the parts of a study, as many problems as are told."""
     study = document.data
     if not isinstance(study, dict):
         return []
-    return [
-        *_repeated(document, _names(study, "sites"), "sites"),
-        *_repeated(document, _names(study, "absorbers"), "absorbers"),
-        *_reserved(document, _names(study, "sites")),
-        *_repeated(document, _quality_names(study, "gap_sweep"), "qualities"),
-        *_repeated(document, _quality_names(study, "gap_pairs"), "qualities"),
-        *_reference(document, study),
-        *_mountings(document, study),
-        *_weather_twice(document, study),
-        *_portfolio(document, study),
-        *_worth(document, study),
-        *_chance(document, study),
-    ]
+    found = chain(
+        _repeated(document, _names(study, "sites"), "sites"),
+        _repeated(document, _names(study, "absorbers"), "absorbers"),
+        _reserved(document, _names(study, "sites")),
+        _repeated(document, _quality_names(study, "gap_sweep"), "qualities"),
+        _repeated(document, _quality_names(study, "gap_pairs"), "qualities"),
+        _reference(document, study),
+        _mountings(document, study),
+        _weather_twice(document, study),
+        _portfolio(document, study),
+        _worth(document, study),
+        _chance(document, study),
+    )
+    return list(islice(found, MOST_PROBLEMS))
 
 
 def _items(study: dict[str, Any], section: str) -> Iterator[tuple[KeyPath, dict[str, Any]]]:
@@ -133,8 +135,9 @@ def _unknown(
     document: Document, path: KeyPath, given: dict[Any, Any], names: list[str], wanted: str
 ) -> Iterator[Problem]:
     """Find keys that name nothing the study has."""
+    known = set(names)
     for name in given:
-        if name not in names:
+        if name not in known:
             yield document.problem((*path, str(name)), show(name), wanted + nearest(name, names), of_key=True)
 
 

@@ -7,7 +7,7 @@ from typing import Any, TypeVar, get_args
 
 from pydantic import BaseModel, ValidationError
 
-from yieldsim.config.fields import REFUSED, nearest, show
+from yieldsim.config.fields import MOST_PROBLEMS, REFUSED, nearest, quoted, show
 from yieldsim.config.tree import Document, KeyPath
 from yieldsim.errors import InputError, Problem
 
@@ -38,7 +38,13 @@ def validate(
     try:
         return model.model_validate(document.data, context=dict(context or {})), []
     except ValidationError as error:
-        return None, [_problem(model, document, each, frozenset(not_yet)) for each in error.errors(include_url=False)]
+        found = error.errors(include_url=False)
+        problems = [_problem(model, document, each, frozenset(not_yet)) for each in found[:MOST_PROBLEMS]]
+        if len(found) > MOST_PROBLEMS:
+            problems.append(
+                Problem(document.file, 0, "", f"{len(found)} problems", f"the first {MOST_PROBLEMS} are told")
+            )
+        return None, problems
 
 
 def demand(model: type[Model], document: Document) -> Model:
@@ -55,7 +61,7 @@ def _problem(model: type[BaseModel], document: Document, error: Any, not_yet: fr
     if kind == REFUSED:
         return document.problem(path, error["ctx"]["found"], error["ctx"]["allowed"])
     if kind == "missing":
-        return document.problem(path, f"no key `{path[-1]}`", _meaning(model, path))
+        return document.problem(path, f"no key {quoted(path[-1])}", _meaning(model, path))
     if kind in ("extra_forbidden", "invalid_key"):
         return _unknown(document, path, _fields(_models_at(model, path[:-1])), not_yet)
     if kind in ("model_type", "model_attributes_type", "dict_type"):
@@ -70,9 +76,9 @@ def _unknown(document: Document, path: KeyPath, fields: Mapping[str, Any], not_y
     key = str(path[-1])
     path = (*path[:-1], key)  # a number as a key is spelt and found like any other
     if key in not_yet:
-        found, close = f"key `{key}`, which this version does not take yet", ""
+        found, close = f"key {quoted(key)}, which this version does not take yet", ""
     else:
-        found, close = f"unknown key `{key}`", nearest(key, fields)
+        found, close = f"unknown key {quoted(key)}", nearest(key, fields)
     return document.problem(path, found, f"{_keys(fields)}{close}", of_key=True)
 
 

@@ -9,7 +9,7 @@ from __future__ import annotations
 import math
 import re
 import unicodedata
-from collections.abc import Callable, Iterable
+from collections.abc import Callable, Collection
 from dataclasses import dataclass
 from typing import Annotated, Any
 
@@ -229,11 +229,23 @@ class Length(Kind):
         return {**handler(schema), "minItems": self.least, "maxItems": self.most}
 
 
-def nearest(word: Any, words: Iterable[str]) -> str:
+#: A slip is looked for among so many names; with more it would take longer than it helps.
+MOST_NAMES = 300
+#: As many problems of one kind are told; a file with more wants another look as a whole.
+MOST_PROBLEMS = 1000
+
+
+def quoted(key: Any) -> str:
+    """Return a key as it may stand in a message: short, in backquotes."""
+    text = str(key)
+    return f"`{text}`" if len(text) <= 80 else f"`{text[:60]}...` ({len(text)} characters)"
+
+
+def nearest(word: Any, words: Collection[str]) -> str:
     """Return `` (did you mean `x`?)`` for the valid name nearest to a slip, or nothing."""
     import difflib  # only needed once something is wrong
 
-    if not isinstance(word, str):
+    if not isinstance(word, str) or len(words) > MOST_NAMES:
         return ""
     by_folded = {name.casefold(): name for name in words}
     close = difflib.get_close_matches(word.casefold(), by_folded, n=1, cutoff=0.6)

@@ -12,7 +12,7 @@ from typing import Any
 import numpy as np
 from numpy.typing import NDArray
 
-from yieldsim.config.fields import nearest, show
+from yieldsim.config.fields import nearest, quoted, show
 from yieldsim.config.inputs import locate, read_text
 from yieldsim.config.tree import Document
 from yieldsim.errors import InputError, Problem
@@ -90,7 +90,7 @@ def written_out(document: Document, folder: Path, cells: Cells | None) -> Docume
 def _faults(document: Document, many: Mapping[str, Any]) -> list[Problem]:
     faults = [
         document.problem(
-            ("sites", str(key)), f"unknown key `{key}`", f"{', '.join(KEYS)}{nearest(key, KEYS)}", of_key=True
+            ("sites", str(key)), f"unknown key {quoted(key)}", f"{', '.join(KEYS)}{nearest(key, KEYS)}", of_key=True
         )
         for key in many
         if key not in KEYS

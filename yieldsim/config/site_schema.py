@@ -48,10 +48,12 @@ def _mounting_form(value: Any) -> str:
     return "several" if several and all(isinstance(each, dict) for each in value.values()) else "one"
 
 
-Several = Annotated[dict[Name, OneMounting], Tag("<several>")]
+MAX_MOUNTINGS = 20  # of a site: each is computed whole
+Several = Annotated[dict[Name, OneMounting], Field(max_length=MAX_MOUNTINGS), Tag("<several>")]
 Mounting = Annotated[Annotated[OneMounting, Tag("<one>")] | Several, by(_mounting_form)]
 _Names = Annotated[
-    Annotated[Name, Tag("<one>")] | Annotated[list[Name], Length(1, 20, "names"), Tag("<list>")], by(one_or_list)
+    Annotated[Name, Tag("<one>")] | Annotated[list[Name], Length(1, MAX_MOUNTINGS, "names"), Tag("<list>")],
+    by(one_or_list),
 ]
 SiteMounting = Annotated[
     Annotated[OneMounting, Tag("<one>")] | Several | Annotated[_Names, Tag("<names>")], by(_mounting_form)

@@ -18,6 +18,8 @@ from yieldsim.errors import InputError, Problem
 
 MAX_BYTES = 1_000_000  # a study of a thousand sites written out is about 0.3 MB
 
+_LONGEST_PART = 200  # characters of a key in a message; names of sites have no more
+
 KeyPath = tuple[str | int, ...]
 
 
@@ -64,6 +66,8 @@ def spell(path: KeyPath) -> str:
     for part in path:
         if isinstance(part, int):
             text += f"[{part}]"
+        elif len(part) > _LONGEST_PART:
+            text += f"[{part[:_LONGEST_PART]!r}...]"
         elif re.fullmatch(r"[\w\-]+", part):
             text += f".{part}" if text else part
         else:

@@ -10,6 +10,7 @@ from matplotlib.axes import Axes
 from matplotlib.cm import ScalarMappable
 from matplotlib.colors import BoundaryNorm
 from matplotlib.figure import Figure
+from numpy.typing import NDArray
 
 from yieldsim.report.canvas import LABEL_IN, SMALL, head, panels
 from yieldsim.report.marks import shorten
@@ -20,6 +21,8 @@ LEVELS = (0.0, 1.0, 2.0, 5.0, 10.0, 15.0, 20.0, 30.0)
 MOST_MAPS = 24
 _SIZE = (2.5, 2.1)
 _FOOT_LINES = 4
+
+Array = NDArray[np.float64]
 
 
 def draw(result: StudyResult, places: list[tuple[str, str]], names: list[str], more: str) -> Figure | None:
@@ -83,7 +86,8 @@ def _map(
 ) -> None:
     grid = frame.pivot_table(index="bottom_gap_ev", columns="top_gap_ev", values="energy_kwh_m2")
     top, bottom, energy = grid.columns.to_numpy(), grid.index.to_numpy(), grid.to_numpy()
-    behind = 100 * (1 - energy / np.nanmax(energy))
+    behind = 100 * (1 - energy / np.nanmax(energy)) if np.nanmax(energy) > 0 else np.zeros_like(energy)
+    top, bottom, energy, behind = _as_areas(top, bottom, energy, behind)
     axes.contourf(top, bottom, behind, LEVELS, cmap="cividis_r", norm=norm, extend="max")
     if np.nanmax(behind) > 1:
         axes.contour(top, bottom, behind, [1.0], colors="black", linewidths=1.5)
@@ -103,6 +107,16 @@ def _map(
     axes.set_ylabel("bottom gap [eV]")
 
 
+def _as_areas(top: Array, bottom: Array, energy: Array, behind: Array) -> tuple[Array, Array, Array, Array]:
+    """Return a map that has two gaps or more either way: where there is one, a strip of it."""
+    if len(top) == 1:
+        top, energy, behind = top[0] + _STRIP, np.repeat(energy, 2, axis=1), np.repeat(behind, 2, axis=1)
+    if len(bottom) == 1:
+        bottom, energy, behind = bottom[0] + _STRIP, np.repeat(energy, 2, axis=0), np.repeat(behind, 2, axis=0)
+    return top, bottom, energy, behind
+
+
+_STRIP = np.array([0.0, 0.01])  # eV; the star stands at its left or lower edge, on the gap itself
 _PLATE = {"bbox": {"facecolor": "white", "edgecolor": "none", "alpha": 0.75, "pad": 0.8}}
 
 
