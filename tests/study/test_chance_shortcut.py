@@ -555,3 +555,18 @@ def test_only_lossless_junctions_stand_for_a_limit():
         {"shunt_resistance_ohm_cm2": 1e9},
     ):  # fmt: skip
         assert not is_ideal(replace(limit, **change))
+
+
+def test_which_year_is_drawn_hangs_on_the_year_alone(days):
+    """Two draws that differ in other numbers of no spread give the same; other numbers of the year, other years."""
+    spreads = spreads_of(ChancePlan(spreads=dict.fromkeys(BY_NAME, 0.0)), "here", days.absorbers)
+    years = np.array([[0.9, 0.8], [1.0, 1.0], [1.1, 1.2]])
+    base = np.array([YIELDS, ENERGIES])
+    year = YearOfChance.of(days.shortcut.light, days.absorbers, spreads, days.drawn, base, years)
+    own = days.drawn.index(("year", "site here", 0))
+    numbers = np.zeros((6, len(days.drawn)))
+    others = [place for place, (name, _, _) in enumerate(days.drawn) if name in ("nameplate", "degradation")]
+    numbers[:, others] = np.random.default_rng(2).normal(size=(6, len(others)))
+    numbers[:, own] = -2.0, -2.0, 0.0, 0.0, 2.0, 2.0
+    found = year.values(numbers)[1] / base[1]
+    np.testing.assert_allclose(found, np.repeat(years, 2, axis=0), rtol=1e-9)
