@@ -161,6 +161,15 @@ def test_damage_is_mended_or_refused(place, kind, damage, size):
     np.testing.assert_allclose(energy(good), clean_energy(place), rtol=0.005)
 
 
+@pytest.mark.parametrize("place", ["amber_mesa", "birchholm"])
+def test_a_step_that_leaves_a_quarter_of_the_year(place):
+    """Beam a tenth low from 25 March on, a sunny and a dull place: the rest is little, dull days witness nothing."""
+    day, _ = day_and_hour(raw(place))
+    good = screen.screen(with_columns(raw(place), dni=np.where(day >= 84, 0.9, 1.0) * raw(place)["dni"]))
+    assert "level" in {finding.kind for finding in good.findings}
+    np.testing.assert_allclose(energy(good), clean_energy(place), rtol=0.005)
+
+
 @pytest.mark.parametrize("place", [*PLACES, *OTHERS])
 def test_a_clean_year_passes_as_it_is(place):
     """No false alarm: nothing but what is known of these files is found, and light stays what it was."""

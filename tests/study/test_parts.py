@@ -1,15 +1,16 @@
 """A year in parts is the year in one piece."""
 
-import tracemalloc
+import weakref
 from dataclasses import replace
 
 import numpy as np
 import pytest
 
 from yieldsim.config import library
-from yieldsim.study import annual, parts, piece
+from yieldsim.study import annual, hourly, parts, piece
 from yieldsim.study.book import Book
 from yieldsim.study.plan import GapSweepPlan, LossesPlan, MountingPlan, SitePlan, StudyPlan
+from yieldsim.weather import cut
 
 TILTED = MountingPlan("fixed", "fixed", 30.0, 180.0)
 
@@ -117,27 +118,29 @@ def test_a_book_of_one_year_is_its_sums(greensboro):
     assert book.mean_rows("gap_sweep") == []
 
 
-def test_memory_does_not_grow_with_the_years(greensboro_weather, tmp_path, monkeypatch):
-    """Four years take no more than two at their peak: less than half of one year's weather more, so that none is held.
-
-    From the second year on: the first alone gives the datasets.
-    """
+def test_no_year_is_held_while_the_next_is_read(greensboro_weather, tmp_path, monkeypatch):
+    """Memory does not grow with the years: when the next is asked for, nothing of those before is left, light least."""
+    stretch = cut(greensboro_weather, 0, 1416)  # January and February
+    seen: list[weakref.ref] = []
+    skies: list[weakref.ref] = []
 
     def years(count):
         for number in range(count):
-            columns = {name: values.copy() for name, values in greensboro_weather.columns.items()}
-            time = greensboro_weather.time + number * 365 * 86_400
-            yield replace(greensboro_weather, time=time, columns=columns)
+            assert not any(ref() is not None for ref in (*seen, *skies)), number
+            columns = {name: values.copy() for name, values in stretch.columns.items()}
+            year = replace(stretch, time=stretch.time + number * 365 * 86_400, columns=columns)
+            seen.extend(weakref.ref(values) for values in (year.time, *columns.values()))
+            del columns
+            yield year
+            del year
 
-    def peak(count):
-        tracemalloc.start()
-        piece.compute(study, study.sites[0], years(count), tmp_path)
-        found = tracemalloc.get_traced_memory()[1]
-        tracemalloc.stop()
-        return found
+    def site_sky(*given):
+        sky = hourly.site_sky(*given)
+        skies.extend(weakref.ref(light) for light in (sky.sky.beam, sky.sky.diffuse))
+        return sky
 
+    monkeypatch.setattr(piece, "site_sky", site_sky)
     monkeypatch.setattr(piece, "parts", lambda weather: parts.parts(weather, 800))
-    study = replace(plan(frozenset({"hourly"})), gap_sweep=None)
-    peak(4)  # what is loaded or kept for all runs is no part of it
-    a_year = sum(values.nbytes for values in greensboro_weather.columns.values())
-    assert peak(4) - peak(2) < a_year / 2
+    study = replace(plan(frozenset({"hourly", "spectra"})), gap_sweep=None)
+    piece.compute(study, study.sites[0], years(3), tmp_path)
+    assert len(skies) == 3 * 2 * 2  # years, months, beam and diffuse

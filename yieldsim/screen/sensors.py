@@ -105,12 +105,14 @@ def _levelled(weather: Weather, course: sun.SunCourse, horizontal: Array, usable
     day = (weather.time + round(weather.utc_offset_h * 3600)) // 86_400
     day = day - day[0]
     ratio = _by_day(weather, horizontal, usable, day)
-    for start, end in _stretches(ratio):
-        inside = np.zeros(len(ratio), dtype=bool)
-        inside[start:end] = True
-        if not np.isfinite(ratio[~inside]).any() or np.nanmedian(np.abs(np.log(ratio[~inside]))) > _STEP_LEFT:
-            continue  # nothing to hold the level to
-        rows = inside[day]
+    stretches = _stretches(ratio)
+    rest = np.isfinite(ratio)
+    for start, end in stretches:
+        rest[start:end] = False
+    if not rest.any() or np.median(np.abs(np.log(ratio[rest]))) > _STEP_LEFT:
+        return weather  # nothing to hold a level to
+    for start, end in stretches:
+        rows = (day >= start) & (day < end)
         weather = _scaled(weather, course, horizontal, usable & rows, rows)
     return weather
 
@@ -129,15 +131,16 @@ def _by_day(weather: Weather, horizontal: Array, usable: Mask, day: NDArray[np.i
         whole = np.bincount(day, ghi, count) / np.bincount(day, beam + sky, count)
         of_beam = np.bincount(day, (ghi - sky) * beam, count) / np.bincount(day, beam**2, count)
         off = np.bincount(day, np.abs(ghi - beam - sky), count) / rows
-        sunny = np.bincount(day, beam, count) > 0.3 * np.bincount(day, ghi, count)
+        sunny = np.bincount(day, beam, count) > _SUNNY * np.bincount(day, ghi, count)
     level = np.where(sunny & (np.abs(np.log(np.clip(of_beam, 0.1, 10))) > STEP_SHARE), of_beam, whole)
     level = np.where(off < _CLOSES, 1.0, level)
-    # A sunless day tells nothing of the beam's level: it is no witness against it.
-    dull = np.bincount(day, beam, count) < 0.05 * np.bincount(day, ghi, count)
-    level = np.where(dull & (np.abs(np.log(np.clip(level, 0.1, 10))) < STEP_SHARE), np.nan, level)
+    # A day with little beam does not show the least step of it that is to be found, a tenth: no witness against it.
+    unseen = ~sunny & (np.abs(np.log(np.clip(level, 0.1, 10))) < STEP_SHARE)
+    level = np.where(unseen, np.nan, level)
     return np.asarray(np.where(rows > 0, np.clip(level, 0.1, 10.0), np.nan))
 
 
+_SUNNY = STEP_SHARE / 0.1  # share of a day's light that is beam, from which on a tenth of it is seen in the whole
 _CLOSES = 4.0  # W m-2, mean distance of a day's rows from closure that says nothing
 
 

@@ -69,11 +69,7 @@ def compute(plan: StudyPlan, site: SitePlan, years: Iterable[Weather], folder: P
     by_hour: list[Row] = []
     for weather in years:
         calendar.append(_calendar_year(weather))
-        skies: list[_Told] = []
-        for part in parts(weather):
-            kept = datasets_of if len(calendar) == 1 else None
-            skies.append(_entered(books, plan, site, part, kept, new_year=not skies, share=len(part) / len(weather)))
-        quality += quality_rows(site.name, weather, skies)
+        quality += _year(books, plan, site, weather, datasets_of if len(calendar) == 1 else None)
         if len(calendar) == 1:
             files, by_hour = datasets_of.write(folder)
         del weather  # or it would be held while the next year is read
@@ -84,6 +80,16 @@ def compute(plan: StudyPlan, site: SitePlan, years: Iterable[Weather], folder: P
         files.append(chance_store.write_draws(folder, site.name, draws))
     store.write_piece(folder, store.file_stem(site.name), key(plan, site), piece, files)
     return piece
+
+
+def _year(
+    books: Mapping[str, Book], plan: StudyPlan, site: SitePlan, weather: Weather, kept: _Datasets | None
+) -> list[Row]:
+    """Enter a year, part by part, into all books of a site; return what was found in its weather."""
+    skies: list[_Told] = []
+    for part in parts(weather):
+        skies.append(_entered(books, plan, site, part, kept, new_year=not skies, share=len(part) / len(weather)))
+    return quality_rows(site.name, weather, skies)
 
 
 def _entered(
